@@ -24,15 +24,30 @@ __all__ = [
 _PREFIXES = {-18: "a", -15: "f", -12: "p", -9: "n", -6: "µ", -3: "m", 0: "", 3: "k", 6: "M", 9: "G", 12: "T"}
 # Spellings of one unit that people type; the first is how fitamp writes it.
 _SAME_UNIT = {
-    "Ω": ("Ω", "Ω", "ohm", "ohms"),
-    "S": ("S", "A/V", "mho"),
+    "Ω": ("Ω", "ohm", "ohms"),
+    "S": ("S", "A/V"),
     "F": ("F",),
-    "Hz": ("Hz", "hz"),
+    "Hz": ("Hz",),
     "s": ("s",),
-    "V/V": ("", "V/V"),
+    "V/V": ("V/V", ""),
     "deg": ("deg", "°", "degrees"),
-    "dB": ("dB", "db"),
+    "dB": ("dB",),
 }
+# Written without prefix: nobody reads "65 mdeg" or "12 kV/V".
+_NO_PREFIX = {"", "V/V", "deg", "°", "dB", "%"}
+_EXAMPLES = {
+    "Ω": "1.3 kOhm",
+    "S": "1.6 mS",
+    "F": "1.8 pF",
+    "Hz": "1.2 kHz",
+    "s": "0.5 ns",
+    "V/V": "12000",
+    "deg": "60 deg",
+    "dB": "82 dB",
+}
+# One number and one word. The library that reads the prefixes also takes names ("gm = 1 mS"), remarks and
+# digit groups, none of which belongs here.
+_NUMBER_AND_UNIT = re.compile(r"[+-]?[0-9.]+(?:[eE][+-]?[0-9]+)?\s*[^\s0-9=:_-]*")
 
 
 def parse_quantity(text: str, unit: str) -> float:
@@ -47,26 +62,32 @@ def parse_quantity(text: str, unit: str) -> float:
 
     if "," in text:
         raise ValueError(f"{text!r} has a comma; write the decimal mark as a point")
+    plain = _plain_minus(text)
     try:
-        quantity = Quantity(text.strip().replace("\N{MINUS SIGN}", "-"))
+        if not _NUMBER_AND_UNIT.fullmatch(plain):
+            raise InvalidNumber(plain)
+        quantity = Quantity(plain)
     except InvalidNumber:
-        raise ValueError(f"{text!r} is not a number with unit; expected something like {_example(unit)!r}") from None
+        example = _example(unit)
+        raise ValueError(f"{text!r} is not a number with unit; expected something like {example!r}") from None
     spelled = str(quantity.units)
-    accepted = {name.lower() for name in _SAME_UNIT.get(unit, (unit,))}
-    if spelled.lower() not in accepted:
+    if not _is_spelling_of(unit, spelled):
         found = f"unit {spelled!r}" if spelled else "no unit"
         raise ValueError(f"{text!r} has {found}; expected {unit}, as in {_example(unit)!r}")
-    value = float(quantity)
-    if not math.isfinite(value):
-        raise ValueError(f"{text!r} is not finite")
-    return value
+    return _finite(float(quantity), text)
 
 
 def parse_ratio(text: str | float) -> float:
-    """Read a relative number: ``"10 %"`` and ``0.1`` are both 0.1."""
+    """Read a relative number: ``"10 %"`` and ``0.1`` are both 0.1.
+
+    Raises
+    ------
+    ValueError
+        With what was found and what was expected, when it is no finite ratio.
+    """
     if isinstance(text, (int, float)) and not isinstance(text, bool):
-        return float(text)
-    match = re.fullmatch(r"\s*([0-9.eE+-]+)\s*(%?)\s*", str(text))
+        return _finite(float(text), text)
+    match = re.fullmatch(r"([0-9.eE+-]+)\s*(%?)", _plain_minus(str(text)))
     try:
         value = float(match[1]) if match else math.nan
     except ValueError:
@@ -77,12 +98,21 @@ def parse_ratio(text: str | float) -> float:
 
 
 def parse_gain(text: str | float) -> float:
-    """Read a gain: ``"82 dB"``, ``"12600"``, ``"12600 V/V"`` or a plain number, as V/V."""
+    """Read a gain: ``"82 dB"``, ``"12600"``, ``"12600 V/V"`` or a plain number, as V/V.
+
+    Raises
+    ------
+    ValueError
+        With what was found and what was expected, when it is no finite gain.
+    """
     if isinstance(text, (int, float)) and not isinstance(text, bool):
-        return float(text)
-    if str(text).strip().lower().endswith("db"):
+        return _finite(float(text), text)
+    if not str(text).strip().lower().endswith("db"):
+        return parse_quantity(str(text), "V/V")
+    try:
         return from_db(parse_quantity(str(text), "dB"))
-    return parse_quantity(str(text), "V/V")
+    except OverflowError:
+        raise ValueError(f"{text!r} is beyond any gain; expected something like '82 dB'") from None
 
 
 def to_db(ratio: float) -> float:
@@ -100,48 +130,75 @@ def si(value: float | None, unit: str, digits: int = 4) -> str:
     if value is None or math.isnan(value):
         return "–"
     if value == 0 or math.isinf(value):
-        return f"{value:g} {unit}".strip()
-    exponent = _prefix_exponent(value, digits)
-    scaled = value / 10**exponent
-    decimals = max(0, digits - 1 - math.floor(math.log10(abs(scaled)) + 1e-12))
-    return f"{_minus(f'{scaled:.{decimals}f}')} {_PREFIXES[exponent]}{unit}".strip()
+        return f"{_minus(f'{value:g}')} {unit}".strip()
+    rounded = float(f"{value:.{digits - 1}e}")  # first, because 999.96 kHz is 1.000 MHz in four digits
+    exponent = _prefix_exponent(rounded, unit)
+    decimals = digits - 1 - _decade(rounded) + exponent
+    return f"{_fixed(rounded / 10**exponent, decimals)} {_PREFIXES[exponent]}{unit}".strip()
 
 
 def si_with_error(value: float | None, error: float | None, unit: str) -> str:
-    """Write value ± standard error, rounded together: ``"58.23 ± 0.12 MHz"``."""
-    if value is None or error is None or not math.isfinite(error) or error <= 0:
+    """Write value ± standard error, rounded together: ``"58.23 ± 0.12 MHz"``.
+
+    Without an error, or without a value, it is `si`'s text.
+    """
+    if value is None or error is None or not math.isfinite(value) or not math.isfinite(error) or error <= 0:
         return si(value, unit)
-    exponent = _prefix_exponent(value if abs(value) >= error else error, 3)
-    scaled, scaled_error = value / 10**exponent, error / 10**exponent
-    decimals = max(0, min(_error_decimals(scaled_error), 6))
-    number = f"{_minus(f'{scaled:.{decimals}f}')} ± {scaled_error:.{decimals}f}"
-    prefix_and_unit = f"{_PREFIXES[exponent]}{unit}"
-    return f"{number} {prefix_and_unit}".strip()
+    rounded, decimals = _rounded_error(error)
+    exponent = _prefix_exponent(max(abs(round(value, decimals)), rounded), unit)
+    number, spread = (_fixed(part / 10**exponent, decimals + exponent) for part in (value, rounded))
+    return f"{number} ± {spread} {_PREFIXES[exponent]}{unit}".strip()
 
 
-def _error_decimals(error: float) -> int:
-    """Decimals that keep the error's digits by the Particle Data Group's rule."""
-    exponent = math.floor(math.log10(error))
-    leading = round(error / 10**exponent * 100)
-    if leading <= 354:
-        return 1 - exponent
-    if leading <= 949:
-        return -exponent
-    return -exponent  # 950 to 999 rounds up to 1000 and keeps two digits, one decade higher
+def _rounded_error(error: float) -> tuple[float, int]:
+    """The error by the Particle Data Group's rule, and its decimals (negative: tens, hundreds, …)."""
+    decade = _decade(error)
+    leading = round(error / 10.0**decade * 100)
+    if leading >= 950:
+        return 10.0 ** (decade + 1), -decade  # two digits of the next decade
+    decimals = 1 - decade if leading <= 354 else -decade
+    return round(error, decimals), decimals
 
 
-def _prefix_exponent(value: float, digits: int) -> int:
-    if value == 0:
+def _decade(value: float) -> int:
+    """Power of ten of the first digit: 3 for 1000 to 9999."""
+    # Read off 15 digits, because the double next to 1e-12 starts with 9.99 when written in full.
+    return int(f"{abs(value):.14e}".partition("e")[2])
+
+
+def _prefix_exponent(value: float, unit: str) -> int:
+    if value == 0 or unit in _NO_PREFIX:
         return 0
-    rounded = float(f"{abs(value):.{max(digits - 1, 0)}e}")
-    exponent = 3 * math.floor(math.log10(rounded) / 3 + 1e-12)
+    exponent = 3 * (_decade(value) // 3)
     return min(max(exponent, min(_PREFIXES)), max(_PREFIXES))
+
+
+def _fixed(value: float, decimals: int) -> str:
+    """Write with `decimals` places, or rounded to tens, hundreds … where that is negative."""
+    rounded = round(value, decimals) + 0.0  # the sum turns -0.0 into 0.0
+    return _minus(f"{rounded:.{max(0, decimals)}f}")
 
 
 def _minus(number: str) -> str:
     return number.replace("-", "\N{MINUS SIGN}")
 
 
+def _plain_minus(text: str) -> str:
+    return text.strip().replace("\N{MINUS SIGN}", "-")
+
+
+def _finite(value: float, text: str | float) -> float:
+    if not math.isfinite(value):
+        raise ValueError(f"{text!r} is not finite")
+    return value
+
+
+def _is_spelling_of(unit: str, spelled: str) -> bool:
+    names = _SAME_UNIT.get(unit, (unit,))
+    if "s" in {unit.lower(), spelled.lower()}:  # here case tells siemens from seconds
+        return spelled in names
+    return spelled.lower() in {name.lower() for name in names}
+
+
 def _example(unit: str) -> str:
-    examples = {"Ω": "1.3 kOhm", "S": "1.6 mS", "F": "1.8 pF", "Hz": "1.2 kHz", "s": "0.5 ns", "deg": "60 deg", "dB": "82 dB"}
-    return examples.get(unit, f"1.0 {unit}".strip())
+    return _EXAMPLES.get(unit, f"1.0 {unit}".strip())
