@@ -10,6 +10,7 @@ import hashlib
 import os
 import subprocess
 import sys
+import textwrap
 from pathlib import Path
 
 __all__ = ["ROOT", "command", "prepare", "python", "run", "say", "stop"]
@@ -124,7 +125,7 @@ def _complaint(output: str, *, otherwise: int) -> str:
     """The line of a failed command's output that says most: its first error, or else line `otherwise`."""
     lines = [line.strip() for line in output.splitlines() if line.strip()] or ["it said nothing"]
     errors = [line for line in lines if line.lower().startswith("error:")]
-    return (errors or [lines[otherwise]])[0].rstrip(".;")
+    return textwrap.shorten((errors or [lines[otherwise]])[0].rstrip(".;"), 200, placeholder=" ...")
 
 
 def _version_inside() -> tuple[int, ...] | None:
