@@ -1,0 +1,29 @@
+"""Fitting a two-pole, one-zero loop gain to a sweep. One door: `fit_sweep`."""
+
+from fitamp.fitting.fit import MIN_POINTS, fit_sweep
+from fitamp.fitting.result import (
+    FittedMargins,
+    FittedParameters,
+    FitWarning,
+    LoopFit,
+    Root,
+    WarningCode,
+    ZeroPlace,
+    ZeroSeen,
+)
+from fitamp.fitting.two_pole import DelayPrior, FarPolePrior
+
+__all__ = [
+    "MIN_POINTS",
+    "DelayPrior",
+    "FarPolePrior",
+    "FitWarning",
+    "FittedMargins",
+    "FittedParameters",
+    "LoopFit",
+    "Root",
+    "WarningCode",
+    "ZeroPlace",
+    "ZeroSeen",
+    "fit_sweep",
+]

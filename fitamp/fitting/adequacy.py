@@ -1,0 +1,74 @@
+"""Do the residuals look like the noise: in level, and without structure along the frequency axis?"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from fitamp.arrays import ComplexArray
+from fitamp.fitting.two_pole import Solution
+
+__all__ = ["Adequacy", "judge"]
+
+# Both statistics are about standard normal for a right model; 4.5 keeps false alarms below one in a few thousand
+# sweeps, the noise having been estimated from the same points.
+ALARM = 4.5
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Adequacy:
+    """Verdict on the model's residuals.
+
+    level, structure : reduced chi-square and lag correlation, each as standard deviations from what noise gives
+    inflation : factor on the covariance, 1 for an adequate model, otherwise reduced chi-square times the correlation
+        length of the residuals: neighbours that err together count as fewer points
+    """
+
+    reduced_chi_square: float
+    level: float
+    structure: float
+    inflation: float
+
+    @property
+    def adequate(self) -> bool:
+        """Whether neither statistic raises the alarm."""
+        return self.level < ALARM and self.structure < ALARM
+
+    @property
+    def sentence(self) -> str:
+        """What was seen, in plain words."""
+        if self.adequate:
+            return "residuals look like the noise"
+        seen = []
+        if self.structure >= ALARM:
+            seen.append("the residuals follow a pattern along frequency")
+        if self.level >= ALARM:
+            seen.append(f"they are {np.sqrt(self.reduced_chi_square):.2g} times as large as the scatter allows")
+        return " and ".join(seen)
+
+
+def judge(solution: Solution) -> Adequacy:
+    """Compare residuals with noise.
+
+    The lag correlations ρ_l of the complex residuals are each normal with variance 1/(2n) under white noise; their sum
+    over n/12 lags catches slow patterns that a single lag misses (portmanteau idea of G. E. P. Box and D. A. Pierce,
+    one-sided because a wrong model makes neighbours err alike).
+    """
+    residuals = solution.residuals
+    count = len(residuals)
+    chi = solution.reduced_chi_square
+    # The noise level comes from second differences of the same points: variance 35/18 in place of 1.
+    level = (chi - 1) * np.sqrt(count / (35 / 18 if solution.noise.source.startswith("estimated") else 1.0))
+    lags = max(count // 12, 1)
+    correlations = _correlations(residuals, lags)
+    structure = float(correlations.sum() * np.sqrt(2 * count / lags))
+    inflation = 1.0
+    if level >= ALARM or structure >= ALARM:
+        inflation = max(chi, 1.0) * max(1 + 2 * float(_correlations(residuals, count // 4).clip(0).sum()), 1.0)
+    return Adequacy(reduced_chi_square=chi, level=float(level), structure=structure, inflation=inflation)
+
+
+def _correlations(residuals: ComplexArray, lags: int) -> np.ndarray:
+    energy = float((np.abs(residuals) ** 2).sum()) or 1.0
+    return np.array([(residuals[lag:] * np.conj(residuals[:-lag])).sum().real / energy for lag in range(1, lags + 1)])

@@ -1,0 +1,165 @@
+"""From a solution to estimates: gain, poles, zero time, roots with their covariance, margins."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+
+import numpy as np
+from fitamp.margins import closed_loop_step, margins
+
+from fitamp.arrays import FloatArray, frozen_float
+from fitamp.estimate import Estimate
+from fitamp.fitting.adequacy import Adequacy
+from fitamp.fitting.intervals import (
+    Profile,
+    estimate_by_curvature,
+    estimate_by_profile,
+    estimates_by_curvature,
+    gradient,
+    profile,
+)
+from fitamp.fitting.result import FittedMargins, FittedParameters, Root
+from fitamp.fitting.two_pole import Solution, TwoPole
+from fitamp.sweep import Sweep
+from fitamp.transfer import Transfer
+
+__all__ = ["fitted_margins", "fitted_parameters", "fitted_roots"]
+
+# Above this standard deviation of a logarithm the likelihood is no longer near-quadratic and is profiled.
+QUADRATIC_LN = 0.15
+LN_Q, LN_B, ZERO = 1, 2, 3
+
+
+def fitted_parameters(solution: Solution, sweep: Sweep, adequacy: Adequacy, quantile: float) -> FittedParameters:
+    """Estimate every quantity of the model; bounds where the band cannot tell."""
+    model = solution.model
+    covariance = solution.covariance * adequacy.inflation
+    deviations = np.sqrt(np.diag(covariance))
+
+    def curved(quantity: Callable[[FloatArray], float | None], *, positive: bool) -> Estimate:
+        return estimate_by_curvature(quantity, solution.values, covariance, quantile=quantile, positive=positive)
+
+    def profiled(index: int) -> Profile:
+        return profile(solution, sweep, index, inflation=adequacy.inflation)
+
+    def dc_gain(values: FloatArray) -> float:
+        g, q, *_ = model.physical(values)
+        return g / q
+
+    if deviations[LN_Q] > QUADRATIC_LN:
+        edges = profiled(LN_Q)
+        gain = estimate_by_profile(dc_gain, solution, edges, rising=False)
+        first = estimate_by_profile(lambda v: _pole_distance(model, v, 0), solution, edges, rising=True)
+    else:
+        gain = curved(dc_gain, positive=True)
+        first = curved(lambda v: _pole_distance(model, v, 0), positive=True)
+    if deviations[LN_B] > QUADRATIC_LN:
+        second = estimate_by_profile(lambda v: _pole_distance(model, v, 1), solution, profiled(LN_B), rising=False)
+        zero = estimate_by_profile(lambda v: model.physical(v)[3], solution, profiled(ZERO), rising=True)
+    else:
+        second = curved(lambda v: _pole_distance(model, v, 1), positive=True)
+        zero = curved(lambda v: model.physical(v)[3], positive=False)
+    return FittedParameters(
+        dc_gain=gain,
+        gain_bandwidth_hz=curved(lambda v: _gain_bandwidth_hz(model, v), positive=True),
+        pole1_hz=first,
+        pole2_hz=second,
+        zero_time_s=zero,
+        delay_s=_extra(solution, covariance, "delay", model.delay.mean_s, quantile),
+        far_pole_s=_extra(solution, covariance, "far_pole", model.far_pole.intercept_s, quantile),
+        zero_pole2_split_s=curved(lambda v: model.physical(v)[3] - model.physical(v)[2], positive=False),
+    )
+
+
+def fitted_roots(solution: Solution, covariance: FloatArray) -> tuple[tuple[Root, ...], tuple[Root, ...]]:
+    """Poles and zeros of the fitted response, each with the covariance of (re, im) where its error is not larger."""
+    model, values = solution.model, solution.values
+    response = model.response(values)
+    return (
+        tuple(_root(model, values, covariance, index, _sorted_poles) for index in range(len(response.poles_hz))),
+        tuple(_root(model, values, covariance, index, _zeros) for index in range(len(response.zeros_hz))),
+    )
+
+
+def fitted_margins(
+    solution: Solution, covariance: FloatArray, quantile: float, extra: Transfer | None = None
+) -> FittedMargins:
+    """Margins and closed-loop step of the fitted response, times `extra` (the chip's own known factor) where given."""
+    model = solution.model
+
+    def loop(values: FloatArray) -> Transfer:
+        response = model.response(values)
+        return response if extra is None else response.cascade(extra)
+
+    def quantities(values: FloatArray) -> tuple[float | None, ...]:
+        response = loop(values)
+        seen, step = margins(response), closed_loop_step(response)
+        return (seen.crossover_hz, seen.phase_margin_deg, seen.gain_margin_db, step.overshoot, step.settling_s)
+
+    crossover, phase_margin, gain_margin, overshoot, settling = estimates_by_curvature(
+        quantities, solution.values, covariance, quantile=quantile, positive=(True, False, False, False, True)
+    )
+    return FittedMargins(
+        crossover_hz=crossover,
+        phase_margin_deg=phase_margin,
+        gain_margin_db=gain_margin,
+        overshoot=_not_negative(overshoot),
+        settling_s=settling,
+    )
+
+
+def _not_negative(estimate: Estimate) -> Estimate:
+    low, high = estimate.ci95
+    if low is None or high is None:
+        return estimate
+    return Estimate(value=estimate.value, stderr=estimate.stderr, ci95=(max(low, 0.0), high), known=estimate.known)
+
+
+def _extra(solution: Solution, covariance: FloatArray, name: str, held: float, quantile: float) -> Estimate:
+    """A nuisance parameter: held at its value, or estimated."""
+    model = solution.model
+    if name not in model.names:
+        return Estimate(value=held, stderr=None, ci95=(None, None))
+    index = model.names.index(name)
+    return Estimate.gaussian(
+        float(solution.values[index] * model.time_s),
+        float(np.sqrt(covariance[index, index]) * model.time_s),
+        quantile=quantile,
+    )
+
+
+def _sorted_poles(model: TwoPole, values: FloatArray) -> tuple[complex, ...]:
+    return tuple(sorted(model.response(values).poles_hz, key=lambda pole: (abs(pole), pole.imag)))
+
+
+def _zeros(model: TwoPole, values: FloatArray) -> tuple[complex, ...]:
+    return model.response(values).zeros_hz
+
+
+def _pole_distance(model: TwoPole, values: FloatArray, index: int) -> float:
+    return abs(_sorted_poles(model, values)[index])
+
+
+def _gain_bandwidth_hz(model: TwoPole, values: FloatArray) -> float:
+    g, q, *_ = model.physical(values)
+    return g / q * _pole_distance(model, values, 0)
+
+
+def _root(
+    model: TwoPole,
+    values: FloatArray,
+    covariance: FloatArray,
+    index: int,
+    roots: Callable[[TwoPole, FloatArray], tuple[complex, ...]],
+) -> Root:
+    def parts(vector: FloatArray) -> tuple[float | None, float | None]:
+        found = roots(model, vector)
+        return (found[index].real, found[index].imag) if index < len(found) else (None, None)
+
+    value = roots(model, values)[index]
+    jacobian = gradient(parts, values)
+    spread = jacobian @ covariance @ jacobian.T
+    # Also true where a difference did not exist (NaN): then the root is there, its error is not.
+    if not np.sqrt(np.trace(spread)) < abs(value):
+        return Root(value_hz=value, covariance=None)
+    return Root(value_hz=value, covariance=frozen_float(spread))

@@ -1,0 +1,133 @@
+"""Starting values: vector fitting of the closed-loop pair, with straight-line estimates beside it.
+
+T/(1+T) and 1/(1+T) share their poles, are bounded by about 1 and carry receiver noise as it is, so scikit-rf's
+unweighted vector fitting is dependable on them. The zeros of the first are the zeros of T, the zeros of the second the
+poles of T. (Vector fitting: B. Gustavsen and A. Semlyen, IEEE Trans. Power Delivery 14, 1999.)
+"""
+
+from __future__ import annotations
+
+import warnings
+from dataclasses import dataclass
+
+import numpy as np
+
+from fitamp.arrays import ComplexArray, FloatArray
+from fitamp.sweep import Sweep
+
+__all__ = ["Start", "starts"]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Start:
+    """A guess of the loop: g = T(0)/a1 (1/s), q = 1/a1 (1/s), b = a2/a1 (s) and the zero time (s)."""
+
+    g: float
+    q: float
+    b: float
+    zero_time_s: float
+
+
+def starts(sweep: Sweep) -> tuple[Start, ...]:
+    """Candidate starting values, the likelier first; whoever fits keeps the best end."""
+    found = [guess for count in (2, 3) if (guess := _from_vector_fit(sweep, count)) is not None]
+    line = _from_straight_lines(sweep)
+    return (*found, line)
+
+
+def _from_straight_lines(sweep: Sweep) -> Start:
+    """Integrator slope and the ends of the band; needs nothing to be visible but a falling stretch."""
+    omega = 2 * np.pi * sweep.freq_hz
+    magnitude = np.abs(sweep.gain)
+    near_one = int(np.argmin(np.abs(np.log(np.maximum(magnitude, 1e-300)))))
+    g = omega[near_one] * max(magnitude[near_one], 1e-12)
+    q = g / max(float(magnitude.max()), 1e-12)
+    return Start(g=float(g), q=float(q), b=float(0.3 / g), zero_time_s=0.0)
+
+
+def _from_vector_fit(sweep: Sweep, poles: int) -> Start | None:
+    """The two lowest poles and the nearest zero of a pair fit with `poles` poles, or None where it gives no such."""
+    model = _fit_pair(sweep, poles)
+    if model is None:
+        return None
+    pole_matrix, residues, constant = model
+    zeros_of = [_zeros(pole_matrix, residues[i], constant[i]) for i in range(2)]
+    loop_zeros, loop_poles = zeros_of
+    loop_poles = loop_poles[np.argsort(np.abs(loop_poles))]
+    if len(loop_poles) < 2:
+        return None
+    first, second = loop_poles[:2]
+    total, product = (first + second).real, (first * second).real
+    # Denominator 1 + a1 s + a2 s²: signs that the two-pole model cannot hold are mirrored; it is only a start.
+    a1, a2 = abs(total / product), abs(1 / product)
+    dc = _dc_gain(pole_matrix, residues, constant)
+    if not (np.isfinite(a1) and a1 > 0 and np.isfinite(dc) and dc > 0):
+        return None
+    zero_time_s = 0.0
+    if len(loop_zeros):
+        nearest = loop_zeros[np.argmin(np.abs(loop_zeros))]
+        zero_time_s = float(-(1 / nearest).real)
+    return Start(g=float(dc / a1), q=float(1 / a1), b=float(a2 / a1), zero_time_s=zero_time_s)
+
+
+def _fit_pair(sweep: Sweep, poles: int) -> tuple[ComplexArray, ComplexArray, FloatArray] | None:
+    import skrf
+    from skrf.vectorFitting import VectorFitting
+
+    through = 1 + sweep.gain
+    pair = np.zeros((len(sweep), 2, 2), dtype=complex)
+    pair[:, 0, 0] = pair[:, 1, 1] = sweep.gain / through
+    pair[:, 0, 1] = pair[:, 1, 0] = 1 / through
+    with warnings.catch_warnings(), np.errstate(all="ignore"):
+        # scikit-rf warns where the fit is poor or not passive; a start may be either, and the end is judged later.
+        warnings.simplefilter("ignore")
+        fit = VectorFitting(skrf.Network(f=sweep.freq_hz, f_unit="Hz", s=pair))
+        try:
+            fit.vector_fit(
+                n_poles_real=poles,
+                n_poles_cmplx=0,
+                init_pole_spacing="log",
+                fit_constant=True,
+                fit_proportional=False,
+                enforce_dc=False,
+            )
+        except (np.linalg.LinAlgError, ValueError, RuntimeError, ZeroDivisionError, IndexError):
+            return None
+    roots = np.asarray(fit.poles, dtype=complex)
+    residues = np.asarray(fit.residues, dtype=complex)[:2]
+    constant = np.asarray(fit.constant_coeff, dtype=float)[:2]
+    if not (np.isfinite(roots).all() and np.isfinite(residues).all() and np.isfinite(constant).all()):
+        return None
+    return *_with_conjugates(roots, residues), constant
+
+
+def _with_conjugates(poles: ComplexArray, residues: ComplexArray) -> tuple[ComplexArray, ComplexArray]:
+    """scikit-rf stores a complex pair once; here both halves stand."""
+    paired = poles.imag != 0
+    return (
+        np.concatenate([poles, np.conj(poles[paired])]),
+        np.concatenate([residues, np.conj(residues[:, paired])], axis=1),
+    )
+
+
+def _zeros(poles: ComplexArray, residues: ComplexArray, constant: float) -> ComplexArray:
+    """Finite zeros of constant + Σ residue/(s − pole), by the generalised eigenvalues of its state space."""
+    from scipy.linalg import eigvals
+
+    order = len(poles)
+    # Time scaled by the fastest pole, so that the eigenvalues are of order 1.
+    scale = float(np.abs(poles).max())
+    system = np.zeros((order + 1, order + 1), dtype=complex)
+    system[:order, :order] = np.diag(poles / scale)
+    system[:order, order] = 1.0
+    system[order, :order] = residues / scale
+    system[order, order] = constant
+    roots = eigvals(system, np.diag([1.0] * order + [0.0]).astype(complex))
+    with np.errstate(all="ignore"):
+        finite = np.isfinite(roots) & (np.abs(roots) < 1e6) & (np.abs(roots) > 0)
+    return np.asarray(roots[finite] * scale)
+
+
+def _dc_gain(poles: ComplexArray, residues: ComplexArray, constant: FloatArray) -> float:
+    closed, error = (float((constant[i] - (residues[i] / poles).sum()).real) for i in range(2))
+    return abs(closed / error) if error else float("inf")

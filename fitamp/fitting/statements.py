@@ -1,0 +1,128 @@
+"""What a fit may say in words: the half plane of the zero, and the warnings."""
+
+from __future__ import annotations
+
+import math
+
+from fitamp.estimate import Estimate, Known
+from fitamp.fitting.adequacy import Adequacy
+from fitamp.fitting.result import (
+    FittedMargins,
+    FittedParameters,
+    FitWarning,
+    WarningCode,
+    ZeroPlace,
+    ZeroSeen,
+)
+from fitamp.sweep import Sweep
+from fitamp.units import si
+
+__all__ = ["place_of_zero", "warnings_of"]
+
+# Without a design, a zero farther out than ten times pole 2 counts as gone.
+SMALL_AGAINST_POLE2 = 0.1
+
+
+def place_of_zero(parameters: FittedParameters, with_any_lag: Estimate | None) -> ZeroSeen:
+    """State the half plane only where the whole 95 % interval agrees.
+
+    Parameters
+    ----------
+    with_any_lag
+        Zero time with third pole and delay free; None where priors for them are already in `parameters`. A forgotten
+        lag can only make a zero look farther right, so "left" holds without it while "right" and "infinity" do not.
+    """
+    plain = parameters.zero_time_s
+    strict = with_any_lag or plain
+    small_s = _small_s(parameters)
+    if plain.known is Known.UNDETERMINED:
+        place = ZeroPlace.UNDECIDED
+    elif strict.is_within(-small_s, small_s):
+        place = ZeroPlace.INFINITY
+    elif plain.is_within(0.0, math.inf):
+        place = ZeroPlace.LEFT
+    elif strict.is_within(-math.inf, 0.0):
+        place = ZeroPlace.RIGHT
+    else:
+        place = ZeroPlace.UNDECIDED
+    return ZeroSeen(
+        half_plane=place,
+        frequency_hz=_frequency(plain.value),
+        ci95_hz=_frequency_interval(plain),
+    )
+
+
+def _small_s(parameters: FittedParameters) -> float:
+    pole2_hz = parameters.pole2_hz.value
+    return SMALL_AGAINST_POLE2 / (2 * math.pi * pole2_hz) if pole2_hz else 0.0
+
+
+def _frequency(time_s: float | None) -> float | None:
+    return 1 / (2 * math.pi * abs(time_s)) if time_s else None
+
+
+def _frequency_interval(zero_time: Estimate) -> tuple[float | None, float | None]:
+    low, high = zero_time.ci95
+    if low is None or high is None:
+        return None, None
+    nearest = _frequency(max(abs(low), abs(high)))
+    farthest = None if low <= 0 <= high else _frequency(min(abs(low), abs(high)))
+    return nearest, farthest
+
+
+def warnings_of(
+    sweep: Sweep,
+    parameters: FittedParameters,
+    margins: FittedMargins,
+    adequacy: Adequacy,
+    with_any_lag: Estimate | None,
+) -> tuple[FitWarning, ...]:
+    """Everything a reader has to know before leaning on the numbers."""
+    found: list[FitWarning] = []
+
+    def warn(code: WarningCode, message: str) -> None:
+        found.append(FitWarning(code=code, message=message))
+
+    if not adequacy.adequate:
+        warn(
+            WarningCode.MODEL_INADEQUATE,
+            f"two poles and a zero are not the whole story: {adequacy.sentence}; intervals are widened "
+            f"{math.sqrt(adequacy.inflation):.2g} times and may still be too narrow",
+        )
+    if parameters.pole1_hz.known is not Known.MEASURED:
+        warn(
+            WarningCode.POLE1_BELOW_BAND,
+            f"pole 1 is not determined by a band from {si(sweep.f_min_hz, 'Hz')}; only the gain-bandwidth product is: "
+            "start the sweep lower",
+        )
+    if parameters.pole2_hz.known is not Known.MEASURED:
+        split = parameters.zero_pole2_split_s
+        warn(
+            WarningCode.POLE2_ABOVE_BAND,
+            f"pole 2 is not determined by a band up to {si(sweep.f_max_hz, 'Hz')}; only the split "
+            f"τz − 1/pole 2 = {si(split.value, 's')} is: sweep higher, or average more",
+        )
+    if parameters.zero_time_s.known is Known.UNDETERMINED:
+        warn(WarningCode.ZERO_UNDETERMINED, "the zero time is not determined by this band and noise")
+    if with_any_lag is not None and _lag_matters(parameters.zero_time_s, with_any_lag):
+        warn(
+            WarningCode.LAG_AMBIGUITY,
+            "a third pole or path delay passes for a right-half-plane zero: without a design file or a known delay, "
+            "what is determined is τz − 1/pole 3 − delay",
+        )
+    crossover_hz = margins.crossover_hz.value
+    if crossover_hz is None:
+        warn(WarningCode.NO_CROSSOVER, "the fitted loop gain does not cross 1: there is no phase margin to state")
+    elif not sweep.f_min_hz <= crossover_hz <= sweep.f_max_hz:
+        warn(
+            WarningCode.CROSSOVER_OUTSIDE_BAND,
+            f"crossover at {si(crossover_hz, 'Hz')} lies outside the band; margins are extrapolated by the model",
+        )
+    return tuple(found)
+
+
+def _lag_matters(plain: Estimate, with_any_lag: Estimate) -> bool:
+    """Whether freeing the lag changes what could be said: always, unless the zero is seen left beyond doubt."""
+    if plain.is_within(0.0, math.inf):
+        return False
+    return with_any_lag.touches(0.0, math.inf)

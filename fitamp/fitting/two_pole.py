@@ -1,0 +1,238 @@
+"""The two-pole, one-zero loop gain as a model with analytic derivatives, and the loop-equation residual.
+
+    T(s) = K(s) · g (1 + s τz) e^(−s τd) / (q + s + b s² + b τ3 s³)
+
+with g = T(0)/a1, q = 1/a1, b = a2/a1 of the denominator 1 + a1 s + a2 s² (s = j2πf in rad/s). One smooth set of
+parameters serves real and complex pole pairs, a pole 1 below the band (q → 0 leaves an integrator) and a pole 2 above
+it (b → 0). K holds what is known beforehand. τ3, the far-pole time a3/a2, and the delay τd are held at known values or
+free under a Gaussian prior: they are the two things that pass for a right-half-plane zero.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from fitamp.arrays import ComplexArray, FloatArray
+from fitamp.fitting.leastsq import Optimum, interleaved, minimise
+from fitamp.sweep import NoiseLevels, Sweep
+from fitamp.transfer import Transfer
+
+__all__ = ["DelayPrior", "FarPolePrior", "Solution", "TwoPole", "solve"]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class FarPolePrior:
+    """What is known of the far-pole time: τ3 = intercept + slope·τz ± sd (s; one standard deviation).
+
+    In the circuit τ3 is proportional to Rz, and so a straight line in the zero time. sd_s = 0 holds τ3 on the line's
+    intercept (slope must be 0); sd_s = inf leaves it free.
+    """
+
+    intercept_s: float = 0.0
+    slope: float = 0.0
+    sd_s: float = 0.0
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class DelayPrior:
+    """What is known of the path delay: mean ± sd, in seconds; 0 holds it, inf leaves it free."""
+
+    mean_s: float = 0.0
+    sd_s: float = 0.0
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class TwoPole:
+    """The model's fixed side: what is known, what is free, and the time by which τz, τ3 and τd are scaled.
+
+    Parameter vector, in the order of `names`: ln g, ln q, ln b, τz/time_s, then τ3/time_s and τd/time_s where free.
+    """
+
+    time_s: float
+    known: Transfer | None = None
+    far_pole: FarPolePrior = FarPolePrior()
+    delay: DelayPrior = DelayPrior()
+
+    @property
+    def names(self) -> tuple[str, ...]:
+        """Names of the free parameters, in order."""
+        extra = (("far_pole",) if self.far_pole.sd_s else ()) + (("delay",) if self.delay.sd_s else ())
+        return ("ln_g", "ln_q", "ln_b", "zero", *extra)
+
+    def physical(self, values: FloatArray) -> tuple[float, float, float, float, float, float]:
+        """(g, q, b, τz, τ3, τd) in SI units of a parameter vector."""
+        g, q, b = np.exp(values[:3])
+        by_name = dict(zip(self.names, values, strict=True))
+        far_pole_s = by_name["far_pole"] * self.time_s if "far_pole" in by_name else self.far_pole.intercept_s
+        delay_s = by_name["delay"] * self.time_s if "delay" in by_name else self.delay.mean_s
+        return float(g), float(q), float(b), float(values[3] * self.time_s), float(far_pole_s), float(delay_s)
+
+    def vector(self, *, g: float, q: float, b: float, zero_time_s: float) -> FloatArray:
+        """Parameter vector of SI values; τ3 and τd, where free, start from their priors."""
+        values = [np.log(g), np.log(q), np.log(b), zero_time_s / self.time_s]
+        if self.far_pole.sd_s:
+            values.append(max(self.far_pole.intercept_s + self.far_pole.slope * zero_time_s, 0.0) / self.time_s)
+        if self.delay.sd_s:
+            values.append(self.delay.mean_s / self.time_s)
+        return np.array(values)
+
+    def gain(self, values: FloatArray, freq_hz: FloatArray) -> ComplexArray:
+        """Loop gain of a parameter vector, shape (n,)."""
+        return self.gain_and_derivatives(values, freq_hz)[0]
+
+    def gain_and_derivatives(self, values: FloatArray, freq_hz: FloatArray) -> tuple[ComplexArray, ComplexArray]:
+        """Loop gain, shape (n,), and its derivatives by the parameters, shape (n, p)."""
+        g, q, b, zero_time_s, far_pole_s, delay_s = self.physical(values)
+        s = 2j * np.pi * freq_hz
+        denominator = q + s + b * s**2 + b * far_pole_s * s**3
+        outer = np.exp(-s * delay_s) * g / denominator
+        if self.known is not None:
+            outer = outer * self.known.evaluate(freq_hz)
+        gain = outer * (1 + s * zero_time_s)
+        columns = [
+            gain,
+            -gain * q / denominator,
+            -gain * (b * s**2 + b * far_pole_s * s**3) / denominator,
+            outer * s * self.time_s,
+        ]
+        if self.far_pole.sd_s:
+            columns.append(-gain * b * s**3 / denominator * self.time_s)
+        if self.delay.sd_s:
+            columns.append(-s * gain * self.time_s)
+        return gain, np.stack(columns, axis=1)
+
+    def prior_rows(self, values: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """Residuals of the priors in standard deviations, shape (r,), and their derivatives, shape (r, p)."""
+        residuals: list[float] = []
+        rows: list[FloatArray] = []
+        for name, mean, slope, sd in (
+            ("far_pole", self.far_pole.intercept_s, self.far_pole.slope, self.far_pole.sd_s),
+            ("delay", self.delay.mean_s, 0.0, self.delay.sd_s),
+        ):
+            if not 0 < sd < np.inf:
+                continue
+            index = self.names.index(name)
+            row = np.zeros(len(values))
+            row[index], row[3] = self.time_s / sd, -slope * self.time_s / sd
+            residuals.append(float(row @ values - mean / sd))
+            rows.append(row)
+        return np.array(residuals), np.array(rows).reshape(len(rows), len(values))
+
+    def response(self, values: FloatArray) -> Transfer:
+        """The fitted response as gain, poles and zero, without `known` and without the path delay.
+
+        A far pole enters only where its time is positive: noise can push a τ3 near zero below it.
+        """
+        g, q, b, zero_time_s, far_pole_s, _ = self.physical(values)
+        denominator = [1.0, 1 / q, b / q] + ([b * far_pole_s / q] if far_pole_s > 0 else [])
+        numerator = [g / q] + ([g / q * zero_time_s] if zero_time_s else [])
+        return Transfer.from_polynomials(numerator, denominator)
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Solution:
+    """A model fitted to a sweep: the optimum, and the noise it was weighted with."""
+
+    model: TwoPole
+    optimum: Optimum
+    noise: NoiseLevels
+    points: int
+
+    @property
+    def values(self) -> FloatArray:
+        """Parameter vector at the optimum."""
+        return self.optimum.values
+
+    @property
+    def covariance(self) -> FloatArray:
+        """Covariance of the parameter vector."""
+        return self.optimum.covariance
+
+    @property
+    def residuals(self) -> ComplexArray:
+        """Loop-equation residuals in standard deviations per component, shape (n,), without the priors' rows."""
+        rows = self.optimum.residuals[: 2 * self.points]
+        return np.asarray(rows[0::2] + 1j * rows[1::2])
+
+    @property
+    def reduced_chi_square(self) -> float:
+        """Chi-square per degree of freedom; near 1 where model and noise are right."""
+        return self.optimum.chi_square / max(len(self.optimum.residuals) - len(self.values), 1)
+
+
+def loop_equation(
+    model: TwoPole, values: FloatArray, sweep: Sweep, noise: NoiseLevels
+) -> tuple[ComplexArray, ComplexArray]:
+    """Residuals (n,) of the loop equation in standard deviations per component, and derivatives (n, p).
+
+    With drive 1 the receivers see error = 1/(1+T) and return = T/(1+T), each with its own floor, so
+    (T_meas − M)/(1 + T_meas) has the variance n_r² + |M|² n_e² + rel² |T/(1+T)|². M stays in that variance and is
+    differentiated with it; weights frozen at the data bias the low end (errors in variables: R. Pintelon and
+    J. Schoukens, System Identification: A Frequency Domain Approach).
+    """
+    gain, slopes = model.gain_and_derivatives(values, sweep.freq_hz)
+    through = 1 + sweep.gain
+    variance = (
+        noise.return_channel**2
+        + np.abs(gain) ** 2 * noise.error_channel**2
+        + noise.relative**2 * np.abs(sweep.gain / through) ** 2
+    )
+    weight = np.sqrt(2 / variance) / np.abs(through)
+    residual = (sweep.gain - gain) * weight
+    variance_slopes = 2 * noise.error_channel**2 * (np.conj(gain)[:, np.newaxis] * slopes).real
+    derivatives = -slopes * weight[:, np.newaxis] - 0.5 * (residual / variance)[:, np.newaxis] * variance_slopes
+    return residual, derivatives
+
+
+def solve(
+    model: TwoPole,
+    sweep: Sweep,
+    noise: NoiseLevels,
+    start: FloatArray,
+    *,
+    hold: tuple[int, float] | None = None,
+) -> Solution:
+    """Fit the model by weighted least squares from `start`; `hold` = (index, value) keeps one parameter there."""
+    free = [i for i in range(len(start)) if hold is None or i != hold[0]]
+    template = np.array(start, dtype=float)
+    if hold is not None:
+        template[hold[0]] = hold[1]
+
+    def full(partial: FloatArray) -> FloatArray:
+        values = template.copy()
+        values[free] = partial
+        return values
+
+    def residual(partial: FloatArray) -> FloatArray:
+        values = full(partial)
+        return np.concatenate([interleaved(loop_equation(model, values, sweep, noise)[0]), model.prior_rows(values)[0]])
+
+    def jacobian(partial: FloatArray) -> FloatArray:
+        values = full(partial)
+        rows = np.vstack([interleaved(loop_equation(model, values, sweep, noise)[1]), model.prior_rows(values)[1]])
+        return np.asarray(rows[:, free])
+
+    # An iterate that overflows costs one step, not a warning: the residual is not finite there and MINPACK turns back.
+    with np.errstate(over="ignore", invalid="ignore", divide="ignore"):
+        optimum = minimise(residual, template[free], names=[model.names[i] for i in free], jacobian=jacobian)
+    return Solution(
+        model=model, optimum=_completed(optimum, model, full(optimum.values), free), noise=noise, points=len(sweep)
+    )
+
+
+def _completed(optimum: Optimum, model: TwoPole, values: FloatArray, free: list[int]) -> Optimum:
+    """The optimum over all parameters, a held one with variance 0."""
+    if len(free) == len(values):
+        return optimum
+    covariance = np.zeros((len(values), len(values)))
+    covariance[np.ix_(free, free)] = optimum.covariance
+    return Optimum(
+        names=model.names,
+        values=values,
+        covariance=covariance,
+        chi_square=optimum.chi_square,
+        residuals=optimum.residuals,
+        converged=optimum.converged,
+    )
