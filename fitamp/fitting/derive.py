@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Callable
 
 import numpy as np
-from fitamp.margins import closed_loop_step, margins
 
 from fitamp.arrays import FloatArray, frozen_float
 from fitamp.estimate import Estimate
@@ -20,6 +19,7 @@ from fitamp.fitting.intervals import (
 )
 from fitamp.fitting.result import FittedMargins, FittedParameters, Root
 from fitamp.fitting.two_pole import Solution, TwoPole
+from fitamp.margins import closed_loop_step, margins
 from fitamp.sweep import Sweep
 from fitamp.transfer import Transfer
 

@@ -47,7 +47,8 @@ def fit_sweep(
         What is known of a third pole's time and of the path delay. Without them both are taken as 0 in the estimates,
         and the half plane of the zero is stated only as far as it holds whatever they are.
     known
-        A factor of the loop gain known beforehand (a mirror pole-zero pair, say); its DC gain must be 1.
+        A factor of the chip's loop gain known beforehand (a mirror pole-zero pair, say); its DC gain must be 1. Margins
+        include it, poles and zeros do not.
 
     Returns
     -------
@@ -76,7 +77,7 @@ def fit_sweep(
     free_of_lag = None
     if far_pole is None and delay is None:
         free_of_lag = _zero_time_with_any_lag(sweep, solution, adequacy, quantile)
-    margins = fitted_margins(solution, covariance, quantile)
+    margins = fitted_margins(solution, covariance, quantile, known)
     return LoopFit(
         sweep=sweep,
         response=solution.model.response(solution.values),

@@ -1,0 +1,105 @@
+"""fitamp: where the poles and the Miller zero of a two-stage amplifier are on silicon, how surely, and what to change.
+
+    sweep = fitamp.read_sweep("bench7.csv")
+    fit = fitamp.fit_sweep(sweep)
+    comparison = fitamp.compare(sweep, fitamp.read_design("miller.toml"))
+
+Names are loaded when first used, so that importing fitamp costs nothing.
+"""
+
+from __future__ import annotations
+
+from importlib import import_module
+from typing import TYPE_CHECKING
+
+if TYPE_CHECKING:
+    from fitamp.amplifier import Elements
+    from fitamp.comparison import Comparison, Nulling, compare
+    from fitamp.design import Design, HalfPlane, read_design, write_design
+    from fitamp.errors import DesignError, FitampError, FitError, InputError, SweepError, UsageError
+    from fitamp.estimate import Estimate, Known
+    from fitamp.fitting import DelayPrior, FarPolePrior, LoopFit, ZeroPlace, fit_sweep
+    from fitamp.importers import read_sweep, write_sweep
+    from fitamp.margins import closed_loop_step, margins
+    from fitamp.noise import estimate_noise, simulate_bench
+    from fitamp.sweep import NoiseLevels, Sign, Sweep
+    from fitamp.transfer import Transfer
+
+_HOME = {
+    "Comparison": "comparison",
+    "DelayPrior": "fitting",
+    "Design": "design",
+    "DesignError": "errors",
+    "Elements": "amplifier",
+    "Estimate": "estimate",
+    "FarPolePrior": "fitting",
+    "FitError": "errors",
+    "FitampError": "errors",
+    "HalfPlane": "design",
+    "InputError": "errors",
+    "Known": "estimate",
+    "LoopFit": "fitting",
+    "NoiseLevels": "sweep",
+    "Nulling": "comparison",
+    "Sign": "sweep",
+    "Sweep": "sweep",
+    "SweepError": "errors",
+    "Transfer": "transfer",
+    "UsageError": "errors",
+    "ZeroPlace": "fitting",
+    "closed_loop_step": "margins",
+    "compare": "comparison",
+    "estimate_noise": "noise",
+    "fit_sweep": "fitting",
+    "margins": "margins",
+    "read_design": "design",
+    "read_sweep": "importers",
+    "simulate_bench": "noise",
+    "write_design": "design",
+    "write_sweep": "importers",
+}
+
+__version__ = "0.1.0"
+__all__ = [
+    "Comparison",
+    "DelayPrior",
+    "Design",
+    "DesignError",
+    "Elements",
+    "Estimate",
+    "FarPolePrior",
+    "FitError",
+    "FitampError",
+    "HalfPlane",
+    "InputError",
+    "Known",
+    "LoopFit",
+    "NoiseLevels",
+    "Nulling",
+    "Sign",
+    "Sweep",
+    "SweepError",
+    "Transfer",
+    "UsageError",
+    "ZeroPlace",
+    "closed_loop_step",
+    "compare",
+    "estimate_noise",
+    "fit_sweep",
+    "margins",
+    "read_design",
+    "read_sweep",
+    "simulate_bench",
+    "write_design",
+    "write_sweep",
+]
+
+
+def __getattr__(name: str) -> object:
+    if name not in _HOME:
+        raise AttributeError(f"module 'fitamp' has no attribute {name!r}")
+    return getattr(import_module(f"fitamp.{_HOME[name]}"), name)
+
+
+def __dir__() -> list[str]:
+    return sorted((*__all__, "__version__"))

@@ -1,0 +1,47 @@
+"""Measured against designed: one door, `compare`."""
+
+from __future__ import annotations
+
+from fitamp.comparison.expectation import designed_as_measured, fit_with_design
+from fitamp.comparison.parasitic import parasitics
+from fitamp.comparison.result import Advice, Comparison, Nulling, Parasitic, Row, Verdict, Window
+from fitamp.comparison.rows import comparison_rows
+from fitamp.comparison.verdict import advise, judge_nulling
+from fitamp.design import Design
+from fitamp.sweep import NoiseLevels, Sweep
+
+__all__ = ["Advice", "Comparison", "Nulling", "Parasitic", "Row", "Verdict", "Window", "compare"]
+
+
+def compare(sweep: Sweep, design: Design, *, noise: NoiseLevels | None = None) -> Comparison:
+    """Fit a sweep with what its design expects, and hold the two against each other.
+
+    Parameters
+    ----------
+    sweep
+        Loop gain, positive real at DC.
+    design
+        Element values with spreads, or poles, zero and gain.
+    noise
+        Noise levels; estimated from the sweep where neither this nor ``sweep.noise`` is given.
+
+    Raises
+    ------
+    FitError
+        When the sweep cannot be fitted.
+    """
+    fit = fit_with_design(sweep, design, noise=noise)
+    designed_fit = designed_as_measured(design, fit)
+    verdict = judge_nulling(fit, design)
+    designed_zero_s = design.zero_time_s
+    if designed_fit is not None and designed_fit.parameters.zero_time_s.value is not None:
+        designed_zero_s = designed_fit.parameters.zero_time_s.value
+    return Comparison(
+        design=design,
+        fit=fit,
+        designed_fit=designed_fit,
+        rows=comparison_rows(fit, designed_fit, design, verdict.window),
+        verdict=verdict,
+        advice=advise(verdict, design, designed_zero_s),
+        parasitic=parasitics(fit, design),
+    )

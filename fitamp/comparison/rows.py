@@ -1,0 +1,102 @@
+"""The comparison table: each quantity designed, designed seen as measured, measured, and against its limit."""
+
+from __future__ import annotations
+
+from fitamp.comparison.result import Row, Window
+from fitamp.design import Design
+from fitamp.estimate import Estimate, Known
+from fitamp.fitting import LoopFit
+from fitamp.margins import margins
+from fitamp.transfer import Transfer
+
+__all__ = ["comparison_rows", "designed_values"]
+
+QUANTITIES = (
+    "dc_gain",
+    "gain_bandwidth_hz",
+    "pole1_hz",
+    "pole2_hz",
+    "zero_time_s",
+    "crossover_hz",
+    "phase_margin_deg",
+    "gain_margin_db",
+)
+# Already relative or logarithmic: their deviation is a difference, not a ratio.
+BY_DIFFERENCE = frozenset({"phase_margin_deg", "gain_margin_db"})
+
+
+def designed_values(design: Design) -> dict[str, float | None]:
+    """The exact designed value of every quantity, from all roots of the design (with the bench's load)."""
+    response: Transfer = design.on_bench()
+    seen = margins(Transfer(dc_gain=response.dc_gain, poles_hz=response.poles_hz, zeros_hz=response.zeros_hz))
+    # A mirror pole is no pole of the compensation, however low it lies.
+    mirror_hz = design.elements.mirror_pole_hz if design.elements is not None else None
+    poles = sorted(abs(pole) for pole in response.poles_hz if mirror_hz is None or pole != -mirror_hz)
+    return {
+        "dc_gain": response.dc_gain,
+        "gain_bandwidth_hz": response.gain_bandwidth_hz,
+        "pole1_hz": poles[0],
+        "pole2_hz": poles[1],
+        "zero_time_s": design.zero_time_s,
+        "crossover_hz": seen.crossover_hz,
+        "phase_margin_deg": seen.phase_margin_deg,
+        "gain_margin_db": seen.gain_margin_db,
+    }
+
+
+def measured_values(fit: LoopFit) -> dict[str, Estimate]:
+    """The measured counterpart of every quantity."""
+    return dict((*fit.parameters.items(), *fit.margins.items()))
+
+
+def comparison_rows(fit: LoopFit, designed_fit: LoopFit | None, design: Design, window: Window) -> tuple[Row, ...]:
+    """One row a quantity, in a fixed order."""
+    exact, measured = designed_values(design), measured_values(fit)
+    as_measured = measured_values(designed_fit) if designed_fit else {}
+    rows = []
+    for quantity in QUANTITIES:
+        reference = as_measured[quantity].value if quantity in as_measured else None
+        low, high = _limits(quantity, design, window)
+        estimate = measured[quantity]
+        deviation, sigma = _deviation(quantity, estimate, reference)
+        rows.append(
+            Row(
+                quantity=quantity,
+                designed=exact[quantity],
+                designed_as_measured=reference,
+                measured=estimate,
+                deviation=deviation,
+                sigma=sigma,
+                low=low,
+                high=high,
+                inside=_inside(estimate, low, high),
+            )
+        )
+    return tuple(rows)
+
+
+def _limits(quantity: str, design: Design, window: Window) -> tuple[float | None, float | None]:
+    if quantity == "zero_time_s":
+        return window.low_s, window.high_s
+    limit = design.limits.get(quantity)
+    return (None, None) if limit is None else (limit.low, limit.high)
+
+
+def _deviation(quantity: str, estimate: Estimate, reference: float | None) -> tuple[float | None, float | None]:
+    if estimate.value is None or reference is None:
+        return None, None
+    difference = estimate.value - reference
+    sigma = difference / estimate.stderr if estimate.stderr else None
+    if quantity in BY_DIFFERENCE:
+        return difference, sigma
+    return (difference / abs(reference) if reference else None), sigma
+
+
+def _inside(estimate: Estimate, low: float | None, high: float | None) -> bool | None:
+    if (low is None and high is None) or estimate.known is Known.UNDETERMINED:
+        return None
+    start = float("-inf") if low is None else low
+    end = float("inf") if high is None else high
+    if estimate.is_within(start, end):
+        return True
+    return None if estimate.touches(start, end) else False

@@ -1,0 +1,197 @@
+"""Verdict and advice on the nulling resistor, taken on the line of zero times.
+
+On that line the zero passes through infinity at 0 without a jump, so every verdict is an interval in one region.
+"""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+
+from fitamp.comparison.result import Advice, Nulling, Verdict, Window
+from fitamp.design import Design, HalfPlane
+from fitamp.estimate import NOT_KNOWN, Estimate, Known
+from fitamp.fitting import LoopFit
+from fitamp.units import si, si_with_error
+
+__all__ = ["advise", "judge_nulling", "window_of"]
+
+# Window of a design without limits: 95 % of parts built with the design's own spreads.
+WINDOW_QUANTILE = 1.96
+# A design given by roots has no element spreads; its zero may be this far off.
+ROOTS_WINDOW = 0.10
+
+Regions = tuple[tuple[Nulling, float, float], ...]
+
+
+def window_of(design: Design) -> Window:
+    """Zero times inside the limits, or, without limits, those that the design's own spreads give."""
+    side = -1.0 if design.half_plane is HalfPlane.RIGHT else 1.0
+    limit = design.limits.get("zero_hz")
+    if limit is not None and design.half_plane is not HalfPlane.INFINITY:
+        nearest = math.inf if not limit.low else 1 / (2 * math.pi * limit.low)
+        farthest = 0.0 if limit.high is None else 1 / (2 * math.pi * limit.high)
+        low, high = sorted((side * farthest, side * nearest))
+        return Window(low_s=low, high_s=high, source="the limits on the zero")
+    centre, small = design.zero_time_s, design.small_zero_time_s
+    if design.elements is not None:
+        elements, spreads = design.elements, design.spreads
+        sd = math.hypot(
+            centre * spreads["Cc"],
+            elements.Cc * elements.Rz * spreads["Rz"],
+            elements.Cc / elements.gm2 * spreads["gm2"],
+        )
+        reach, source = WINDOW_QUANTILE * sd, "the design's own spreads"
+    else:
+        reach, source = ROOTS_WINDOW * abs(centre), "10 % around the designed zero"
+    if design.half_plane is HalfPlane.INFINITY:
+        reach = max(reach, small)
+        return Window(low_s=-reach, high_s=reach, source=source)
+    low, high = centre - reach, centre + reach
+    # The designed half plane is part of what was designed.
+    return Window(low_s=max(low, 0.0) if side > 0 else low, high_s=high if side > 0 else min(high, 0.0), source=source)
+
+
+def regions_of(design: Design, window: Window) -> Regions:
+    """The regions that tile the line of zero times, as (verdict, from, to)."""
+    small, inf = design.small_zero_time_s, math.inf
+    if design.half_plane is HalfPlane.INFINITY:
+        return (
+            (Nulling.TOO_LITTLE, -inf, window.low_s),
+            (Nulling.AS_DESIGNED, window.low_s, window.high_s),
+            (Nulling.TOO_MUCH, window.high_s, inf),
+        )
+    mirrored = design.half_plane is HalfPlane.RIGHT
+    low, high = (-window.high_s, -window.low_s) if mirrored else (window.low_s, window.high_s)
+    edge = min(small, low)
+    tiles: Regions = (
+        (Nulling.WRONG_SIDE, -inf, -small),
+        (Nulling.AT_INFINITY, -small, edge),
+        (Nulling.TOO_LITTLE, edge, low),
+        (Nulling.AS_DESIGNED, low, high),
+        (Nulling.TOO_MUCH, high, inf),
+    )
+    if mirrored:
+        tiles = tuple((verdict, -to, -start) for verdict, start, to in tiles)
+    return tuple(tile for tile in tiles if tile[1] < tile[2])
+
+
+def judge_nulling(fit: LoopFit, design: Design) -> Verdict:
+    """Verdict of a fit made with the design's priors."""
+    window = window_of(design)
+    zero_time = fit.parameters.zero_time_s
+    tiles = regions_of(design, window)
+    if zero_time.known is Known.UNDETERMINED:
+        nulling, reason = Nulling.UNDECIDED, f"the sweep does not determine the zero; {_what_settles(fit)}"
+    else:
+        whole = [verdict for verdict, start, to in tiles if zero_time.is_within(start, to)]
+        touched = [verdict for verdict, start, to in tiles if zero_time.touches(start, to)]
+        nulling = whole[0] if whole else Nulling.UNDECIDED
+        reason = _reason(nulling, zero_time, window, touched=touched, design=design, fit=fit)
+    return Verdict(
+        nulling=nulling, reason=reason, zero_time_s=zero_time, gm2_rz=_nulling_product(zero_time, design), window=window
+    )
+
+
+def _reason(
+    nulling: Nulling, zero_time: Estimate, window: Window, *, touched: list[Nulling], design: Design, fit: LoopFit
+) -> str:
+    seen = f"zero time {si_with_error(zero_time.value, zero_time.stderr, 's')} ({place_of(zero_time.value)})"
+    allowed = f"{span_of(window.low_s, window.high_s)}, from {window.source}"
+    small = si(design.small_zero_time_s, "s")
+    if nulling is Nulling.UNDECIDED:
+        reach = f"{si(zero_time.ci95[0], 's')} to {si(zero_time.ci95[1], 's')}"
+        names = " and ".join(verdict.value for verdict in touched)
+        return f"the 95 % interval of the zero time, {reach}, reaches into {names}; {_what_settles(fit)}"
+    sentences = {
+        Nulling.AS_DESIGNED: f"{seen} lies in the window {allowed}",
+        Nulling.TOO_LITTLE: f"{seen} gives less lead than the window {allowed}",
+        Nulling.TOO_MUCH: f"{seen} lies beyond the window {allowed}",
+        Nulling.WRONG_SIDE: f"{seen} is in the other half plane than designed ({design.half_plane.value})",
+        Nulling.AT_INFINITY: f"{seen} is within ±{small}, so far out that it neither helps nor harms; "
+        f"designed was {place_of(design.zero_time_s)}",
+    }
+    if nulling is Nulling.TOO_LITTLE and design.half_plane is not HalfPlane.LEFT:
+        sentences[nulling] = f"{seen} lies short of the window {allowed}"
+    return sentences[nulling]
+
+
+def place_of(zero_time_s: float | None) -> str:
+    """A zero time as a place: "left half plane, 110 MHz"."""
+    if zero_time_s is None:
+        return "nowhere known"
+    if zero_time_s == 0:
+        return "at infinity"
+    side = "left" if zero_time_s > 0 else "right"
+    return f"{side} half plane, {si(1 / (2 * math.pi * abs(zero_time_s)), 'Hz', digits=3)}"
+
+
+def span_of(low_s: float, high_s: float) -> str:
+    """A window of zero times in words."""
+    if math.isinf(high_s):
+        return f"above {si(low_s, 's', digits=3)}"
+    if math.isinf(low_s):
+        return f"below {si(high_s, 's', digits=3)}"
+    return f"{si(low_s, 's', digits=3)} to {si(high_s, 's', digits=3)}"
+
+
+def _nulling_product(zero_time: Estimate, design: Design) -> Estimate:
+    """gm2·Rz = 1 + τz·gm2/Cc, uncertain by the fit and by the spreads of gm2 and Cc."""
+    elements = design.elements
+    if elements is None or zero_time.value is None or zero_time.stderr is None:
+        return NOT_KNOWN
+    rate = elements.gm2 / elements.Cc
+    spread = abs(zero_time.value) * rate * math.hypot(design.spreads["gm2"], design.spreads["Cc"])
+    return Estimate.gaussian(
+        1 + zero_time.value * rate, math.hypot(zero_time.stderr * rate, spread), quantile=WINDOW_QUANTILE
+    )
+
+
+def _what_settles(fit: LoopFit) -> str:
+    """The measurement that would shrink the larger part of the zero time's variance."""
+    names = fit.solution.model.names
+    information = np.linalg.pinv(fit.covariance)
+    total = float(fit.covariance[3, 3])
+
+    def variance_without(fixed: set[str]) -> float:
+        kept = [index for index, name in enumerate(names) if name not in fixed]
+        return float(np.linalg.pinv(information[np.ix_(kept, kept)])[kept.index(3), kept.index(3)])
+
+    delay_share = 1 - variance_without({"delay"}) / total if "delay" in names else 0.0
+    far_pole_share = 1 - variance_without({"far_pole"}) / total if "far_pole" in names else 0.0
+    if max(delay_share, far_pole_share) < 0.5:
+        return (
+            "the noise decides: average more, or use a denser sweep with the top of the band a few times above pole 2"
+        )
+    if delay_share >= far_pole_share:
+        return "the path delay decides: measure it with a through sweep and state it under [bench]"
+    return (
+        "the third pole decides: state tighter spreads for C1, CL, Cc and gm2 (or pole3), or sweep up to where "
+        "the third pole shows"
+    )
+
+
+def advise(verdict: Verdict, design: Design, designed_zero_s: float) -> Advice:
+    """Change of Rz that would put the zero at the designed place: (τz_designed − τz)/Cc."""
+    zero_time, elements = verdict.zero_time_s, design.elements
+    if elements is None:
+        return Advice(
+            rz_change_ohm=NOT_KNOWN,
+            sentence="a design given by roots has no Cc: give [elements] for the change of Rz",
+        )
+    if zero_time.value is None or zero_time.stderr is None:
+        return Advice(rz_change_ohm=NOT_KNOWN, sentence=f"no change of Rz can be advised; {verdict.reason}")
+    change = (designed_zero_s - zero_time.value) / elements.Cc
+    stderr = math.hypot(zero_time.stderr / elements.Cc, change * design.spreads["Cc"])
+    estimate = Estimate.gaussian(change, stderr, quantile=WINDOW_QUANTILE)
+    amount = si_with_error(abs(change), stderr, "Ω")
+    direction = "raise" if change > 0 else "lower"
+    if verdict.nulling is Nulling.AS_DESIGNED:
+        way = "more" if change > 0 else "less"
+        sentence = f"nothing has to change; the exact nominal place would take {amount} {way} Rz"
+    elif verdict.nulling is Nulling.UNDECIDED:
+        sentence = f"settle the verdict first; as it stands, {direction} Rz by {amount}"
+    else:
+        sentence = f"{direction} Rz by {amount} to put the zero at the designed place"
+    return Advice(rz_change_ohm=estimate, sentence=sentence)

@@ -1,0 +1,1 @@
+"""Results as JSON, as tables for a terminal, and as files written whole or not at all."""

@@ -1,0 +1,142 @@
+"""Results as plain dictionaries for JSON: fixed keys, null for what is not known, never NaN."""
+
+from __future__ import annotations
+
+import json
+import math
+from typing import Any
+
+from fitamp.comparison import Comparison
+from fitamp.estimate import Estimate
+from fitamp.fitting import LoopFit, Root
+from fitamp.sweep import Sweep
+
+__all__ = ["comparison_as_dict", "dumps", "fit_as_dict", "sweep_as_dict"]
+
+
+def dumps(record: dict[str, Any]) -> str:
+    """One JSON object as text; ValueError for a NaN or infinity that slipped in."""
+    return json.dumps(record, indent=2, ensure_ascii=False, allow_nan=False)
+
+
+def sweep_as_dict(sweep: Sweep) -> dict[str, Any]:
+    """What was read (schema fitamp/read/1)."""
+    return {"schema": "fitamp/read/1", "sweep": _sweep(sweep)}
+
+
+def fit_as_dict(fit: LoopFit) -> dict[str, Any]:
+    """A fit (schema fitamp/fit/1)."""
+    return {
+        "schema": "fitamp/fit/1",
+        "sweep": _sweep(fit.sweep),
+        "model": {
+            "name": fit.model_name,
+            "poles": len(fit.poles),
+            "zeros": len(fit.zeros),
+            "adequate": fit.adequacy.adequate,
+            "reduced_chi_square": _finite(fit.adequacy.reduced_chi_square),
+            "residuals": fit.adequacy.sentence,
+        },
+        "noise": {
+            "error_channel": fit.noise.error_channel,
+            "return_channel": fit.noise.return_channel,
+            "relative": fit.noise.relative,
+            "source": fit.noise.source,
+        },
+        "parameters": {name: _estimate(estimate) for name, estimate in fit.parameters.items()},
+        "zero": {
+            "half_plane": fit.zero.half_plane.value,
+            "frequency_hz": _finite(fit.zero.frequency_hz),
+            "ci95_hz": [_finite(end) for end in fit.zero.ci95_hz],
+        },
+        "poles": [_root(root) for root in fit.poles],
+        "zeros": [_root(root) for root in fit.zeros],
+        "margins": {name: _estimate(estimate) for name, estimate in fit.margins.items()},
+        "warnings": [{"code": warning.code.value, "message": warning.message} for warning in fit.warnings],
+    }
+
+
+def comparison_as_dict(comparison: Comparison) -> dict[str, Any]:
+    """A comparison (schema fitamp/compare/1): all of the fit, and more."""
+    record = fit_as_dict(comparison.fit)
+    record["schema"] = "fitamp/compare/1"
+    verdict, parasitic, design = comparison.verdict, comparison.parasitic, comparison.design
+    record["design"] = {
+        "file": design.file,
+        "name": design.name,
+        "half_plane": design.half_plane.value,
+        "assumed_spreads": list(design.assumed_spreads),
+        "sha256": design.sha256,
+    }
+    record["comparison"] = [
+        {
+            "quantity": row.quantity,
+            "designed": _finite(row.designed),
+            "designed_as_measured": _finite(row.designed_as_measured),
+            "measured": _finite(row.measured.value),
+            "stderr": _finite(row.measured.stderr),
+            "ci95": [_finite(end) for end in row.measured.ci95],
+            "deviation": _finite(row.deviation),
+            "sigma": _finite(row.sigma),
+            "low": _finite(row.low),
+            "high": _finite(row.high),
+            "inside": row.inside,
+        }
+        for row in comparison.rows
+    ]
+    record["verdict"] = {
+        "nulling": verdict.nulling.value,
+        "reason": verdict.reason,
+        "zero_time_s": _estimate(verdict.zero_time_s),
+        "gm2_rz": _estimate(verdict.gm2_rz),
+        "window_s": [_finite(verdict.window.low_s), _finite(verdict.window.high_s)],
+    }
+    record["advice"] = {
+        "rz_change_ohm": _estimate(comparison.advice.rz_change_ohm),
+        "sentence": comparison.advice.sentence,
+    }
+    record["parasitic"] = None
+    if parasitic is not None:
+        record["parasitic"] = {
+            "load_total_f": _estimate(parasitic.load_total_f),
+            "load_f": _estimate(parasitic.load_f),
+            "first_stage_f": _estimate(parasitic.first_stage_f),
+            "sentence": parasitic.sentence,
+        }
+    return record
+
+
+def _sweep(sweep: Sweep) -> dict[str, Any]:
+    return {
+        "file": sweep.origin.file,
+        "sha256": sweep.origin.sha256,
+        "form": sweep.origin.form,
+        "trace": sweep.origin.trace,
+        "points": len(sweep) + len(sweep.left_out),
+        "points_used": len(sweep),
+        "f_min_hz": sweep.f_min_hz,
+        "f_max_hz": sweep.f_max_hz,
+        "sign": sweep.sign.value,
+        "left_out": [{"f_hz": point.f_hz, "reason": point.reason} for point in sweep.left_out],
+        "decisions": [
+            {"topic": decision.topic, "choice": decision.choice, "reason": decision.reason}
+            for decision in sweep.decisions
+        ],
+    }
+
+
+def _estimate(estimate: Estimate) -> dict[str, Any]:
+    return {
+        "value": _finite(estimate.value),
+        "stderr": _finite(estimate.stderr),
+        "ci95": [_finite(end) for end in estimate.ci95],
+        "known": estimate.known.value,
+    }
+
+
+def _root(root: Root) -> dict[str, Any]:
+    return {"re_hz": root.value_hz.real, "im_hz": root.value_hz.imag}
+
+
+def _finite(value: float | None) -> float | None:
+    return None if value is None or not math.isfinite(value) else float(value)

@@ -1,0 +1,240 @@
+"""Results as tables for a terminal, at most 100 columns wide, by rich.
+
+Text from files is printed as it is, never read as markup, and control characters are shown, not sent.
+"""
+
+from __future__ import annotations
+
+import io
+import math
+from collections.abc import Sequence
+from typing import TYPE_CHECKING
+
+from fitamp.comparison import Comparison, Row
+from fitamp.fitting import LoopFit
+from fitamp.fitting.result import text_of, unit_of
+from fitamp.sweep import Sweep
+from fitamp.units import si, si_with_error
+
+if TYPE_CHECKING:
+    from rich.console import Console
+
+__all__ = ["comparison_text", "fit_text", "printable", "sweep_text"]
+
+WIDTH = 100
+LABELS = {
+    "dc_gain": "T(0)",
+    "gain_bandwidth_hz": "gain-bandwidth",
+    "pole1_hz": "pole 1",
+    "pole2_hz": "pole 2",
+    "zero_time_s": "zero time τz",
+    "delay_s": "path delay",
+    "far_pole_s": "third pole time",
+    "zero_pole2_split_s": "τz − 1/pole 2",
+    "crossover_hz": "crossover",
+    "phase_margin_deg": "phase margin",
+    "gain_margin_db": "gain margin",
+    "overshoot": "overshoot",
+    "settling_s": "settling to 1 %",
+}
+
+
+def printable(text: str) -> str:
+    """Text with control characters written as escapes, so that a file name cannot steer a terminal."""
+    return "".join(c if c.isprintable() else c.encode("unicode_escape").decode("ascii") for c in text)
+
+
+def sweep_text(sweep: Sweep) -> str:
+    """What was understood of a file, and why."""
+    console = _console()
+    rows = [
+        ("points", f"{len(sweep)} used, {len(sweep.left_out)} left out", ""),
+        ("band", f"{si(sweep.f_min_hz, 'Hz')} to {si(sweep.f_max_hz, 'Hz')}", ""),
+        ("loop gain", f"{sweep.magnitude_db[0]:.1f} dB to {sweep.magnitude_db[-1]:.1f} dB", "low end to high end"),
+        *((decision.topic, decision.choice, decision.reason) for decision in sweep.decisions),
+    ]
+    _print_table(console, printable(sweep.origin.file), ("", "understood", "why"), rows)
+    first = [
+        (si(f, "Hz", digits=6), f"{m:.3f}", f"{p:.2f}")
+        for f, m, p in zip(sweep.freq_hz[:3], sweep.magnitude_db[:3], sweep.phase_deg[:3], strict=True)
+    ]
+    _print_table(console, "first points", ("frequency", "|T| (dB)", "phase (°)"), first, numbers=True)
+    if sweep.left_out:
+        left = [(si(point.f_hz, "Hz"), point.reason) for point in sweep.left_out[:10]]
+        _print_table(console, "left out", ("frequency", "reason"), left)
+    return _text(console)
+
+
+def fit_text(fit: LoopFit) -> str:
+    """A fit: parameters, the zero in words, margins, what to know."""
+    console = _console()
+    rows = [
+        (LABELS[name], text_of(name, estimate), _interval(name, estimate.ci95), estimate.known.value)
+        for name, estimate in fit.parameters.items()
+        if name not in {"delay_s", "far_pole_s"} or estimate.stderr is not None
+    ]
+    _print_table(console, printable(fit.sweep.origin.file), ("quantity", "value ± 1 σ", "95 % interval", "known"), rows)
+    _say(console, f"zero: {zero_sentence(fit)}")
+    _margins(console, fit)
+    _say(
+        console,
+        f"model: two poles, one zero; {fit.adequacy.sentence} (reduced chi-square "
+        f"{fit.adequacy.reduced_chi_square:.3g})",
+    )
+    _say(console, noise_sentence(fit))
+    _warnings(console, fit)
+    return _text(console)
+
+
+def comparison_text(comparison: Comparison) -> str:
+    """A comparison: verdict first, then what to do, then the numbers."""
+    console = _console()
+    verdict = comparison.verdict
+    _say(console, f"{verdict.nulling.value.upper()}: {verdict.reason}", style="bold")
+    _say(console, f"what to do: {comparison.advice.sentence}")
+    if comparison.parasitic is not None:
+        _say(console, f"parasitic: {comparison.parasitic.sentence}")
+    gm2_rz = verdict.gm2_rz
+    if gm2_rz.value is not None:
+        _say(
+            console,
+            f"gm2·Rz: {si_with_error(gm2_rz.value, gm2_rz.stderr, '')} "
+            "(1 puts the zero at infinity; with gm2 and Cc as designed)",
+        )
+    title = f"{printable(comparison.fit.sweep.origin.file)} against {printable(comparison.design.file)}"
+    headings = ("quantity", "designed", "seen as\nmeasured", "measured", "deviation", "σ", "limits", "inside")
+    _print_table(console, title, headings, [_comparison_row(row) for row in comparison.rows], numbers=True)
+    _margins(console, comparison.fit, rows=("overshoot", "settling_s"))
+    _say(
+        console,
+        f"model: {comparison.fit.adequacy.sentence} (reduced chi-square "
+        f"{comparison.fit.adequacy.reduced_chi_square:.3g}); {noise_sentence(comparison.fit)}",
+    )
+    if comparison.design.assumed_spreads:
+        _say(
+            console,
+            f"assumed: a spread of 20 % for {', '.join(comparison.design.assumed_spreads)}, not stated in "
+            "the design file",
+        )
+    _warnings(console, comparison.fit)
+    return _text(console)
+
+
+def zero_sentence(fit: LoopFit) -> str:
+    """The half plane of the zero, and how far out it is."""
+    near, far = fit.zero.ci95_hz
+    place = {"left": "left half plane", "right": "right half plane", "infinity": "as good as at infinity"}.get(
+        fit.zero.half_plane.value, "half plane undecided"
+    )
+    if near is None:
+        return place
+    if far is None:
+        return f"{place}, farther out than {si(near, 'Hz')}"
+    return f"{place}, {si(fit.zero.frequency_hz, 'Hz')} (95 %: {si(near, 'Hz')} to {si(far, 'Hz')})"
+
+
+def noise_sentence(fit: LoopFit) -> str:
+    """The three noise numbers in words."""
+    noise = fit.noise
+    return (
+        f"noise: error channel {noise.error_channel:.2g}, return channel {noise.return_channel:.2g}, "
+        f"relative {noise.relative:.2g} ({noise.source})"
+    )
+
+
+def _comparison_row(row: Row) -> tuple[str, ...]:
+    unit = unit_of(row.quantity)
+    deviation = "–"
+    if row.deviation is not None:
+        deviation = f"{row.deviation:+.2f} {unit}" if unit in {"°", "dB"} else f"{100 * row.deviation:+.2f} %"
+    return (
+        LABELS[row.quantity],
+        _short(row.designed, unit),
+        _short(row.designed_as_measured, unit),
+        text_of(row.quantity, row.measured),
+        deviation.replace("-", "−"),
+        "–" if row.sigma is None else _sigma(row.sigma),
+        _limits(row.low, row.high, unit),
+        {True: "yes", False: "NO", None: "–" if row.low is None and row.high is None else "?"}[row.inside],
+    )
+
+
+def _sigma(sigma: float) -> str:
+    return (f"{sigma:+.1f}" if abs(sigma) < 100 else f"{sigma:+.0f}").replace("-", "−")
+
+
+def _short(value: float | None, unit: str) -> str:
+    return si(value, unit)
+
+
+def _limits(low: float | None, high: float | None, unit: str) -> str:
+    if low is not None and high is not None and math.isfinite(low) and math.isfinite(high):
+        return f"{si(low, unit, digits=3)} … {si(high, unit, digits=3)}"
+    if low is not None and math.isfinite(low):
+        return f"≥ {si(low, unit, digits=3)}"
+    if high is not None and math.isfinite(high):
+        return f"≤ {si(high, unit, digits=3)}"
+    return "–"
+
+
+def _interval(name: str, ci95: tuple[float | None, float | None]) -> str:
+    low, high = ci95
+    unit = unit_of(name)
+    if low is None and high is None:
+        return "–"
+    return f"{'…' if low is None else si(low, unit)} to {'…' if high is None else si(high, unit)}"
+
+
+def _margins(console: Console, fit: LoopFit, rows: Sequence[str] | None = None) -> None:
+    parts = []
+    for name, estimate in fit.margins.items():
+        if rows is not None and name not in rows:
+            continue
+        if name == "overshoot" and estimate.value is not None and estimate.stderr is not None:
+            parts.append(f"overshoot {si_with_error(100 * estimate.value, 100 * estimate.stderr, '%')}")
+        elif name == "gain_margin_db" and estimate.value is None:
+            parts.append("gain margin unlimited (phase never reaches −180°)")
+        else:
+            parts.append(f"{LABELS[name]} {text_of(name, estimate)}")
+    _say(console, f"closed loop: {', '.join(parts)}")
+
+
+def _warnings(console: Console, fit: LoopFit) -> None:
+    for warning in fit.warnings:
+        _say(console, f"note ({warning.code.value}): {warning.message}", style="yellow")
+
+
+def _console() -> Console:
+    from rich.console import Console
+
+    return Console(file=io.StringIO(), width=WIDTH, markup=False, highlight=False, emoji=False, no_color=True)
+
+
+def _say(console: Console, text: str, style: str | None = None) -> None:
+    console.print(printable(text), style=style)
+
+
+def _print_table(
+    console: Console,
+    title: str,
+    headings: Sequence[str],
+    rows: Sequence[Sequence[str]],
+    *,
+    numbers: bool = False,
+) -> None:
+    from rich import box
+    from rich.table import Table
+    from rich.text import Text
+
+    table = Table(title=Text(title), title_justify="left", box=box.SIMPLE_HEAD, pad_edge=False, padding=(0, 1, 0, 0))
+    for index, heading in enumerate(headings):
+        table.add_column(Text(heading), justify="right" if numbers and index else "left")
+    for row in rows:
+        table.add_row(*(Text(printable(cell)) for cell in row))
+    console.print(table)
+
+
+def _text(console: Console) -> str:
+    stream = console.file
+    assert isinstance(stream, io.StringIO)
+    return "\n".join(line.rstrip() for line in stream.getvalue().splitlines()) + "\n"
