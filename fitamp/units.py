@@ -12,11 +12,13 @@ import math
 import re
 
 __all__ = [
+    "example_of",
     "from_db",
     "parse_gain",
     "parse_quantity",
     "parse_ratio",
     "si",
+    "si_exact",
     "si_with_error",
     "to_db",
 ]
@@ -68,12 +70,12 @@ def parse_quantity(text: str, unit: str) -> float:
             raise InvalidNumber(plain)
         quantity = Quantity(plain)
     except InvalidNumber:
-        example = _example(unit)
+        example = example_of(unit)
         raise ValueError(f"{text!r} is not a number with unit; expected something like {example!r}") from None
     spelled = str(quantity.units)
     if not _is_spelling_of(unit, spelled):
         found = f"unit {spelled!r}" if spelled else "no unit"
-        raise ValueError(f"{text!r} has {found}; expected {unit}, as in {_example(unit)!r}")
+        raise ValueError(f"{text!r} has {found}; expected {unit}, as in {example_of(unit)!r}")
     return _finite(float(quantity), text)
 
 
@@ -115,6 +117,11 @@ def parse_gain(text: str | float) -> float:
         raise ValueError(f"{text!r} is beyond any gain; expected something like '82 dB'") from None
 
 
+def example_of(unit: str) -> str:
+    """A quantity in that unit, to show in a message how one is written: "1.3 kOhm" for Ω."""
+    return _EXAMPLES.get(unit, f"1.0 {unit}".strip())
+
+
 def to_db(ratio: float) -> float:
     """20 log10 of an amplitude ratio."""
     return 20 * math.log10(ratio)
@@ -135,6 +142,17 @@ def si(value: float | None, unit: str, digits: int = 4) -> str:
     exponent = _prefix_exponent(rounded, unit)
     decimals = digits - 1 - _decade(rounded) + exponent
     return f"{_fixed(rounded / 10**exponent, decimals)} {_PREFIXES[exponent]}{unit}".strip()
+
+
+def si_exact(value: float, unit: str) -> str:
+    """Write with as many digits as it takes for `parse_quantity` to give back the very same number."""
+    exponent = _prefix_exponent(value, unit)
+    for digits in range(3, 18):
+        number = f"{value / 10**exponent:.{digits}g}"
+        text = f"{number} {_PREFIXES[exponent]}{unit}".strip()
+        if "e" not in number and parse_quantity(text, unit) == value:
+            return text
+    return f"{value!r} {unit}".strip()
 
 
 def si_with_error(value: float | None, error: float | None, unit: str) -> str:
@@ -198,7 +216,3 @@ def _is_spelling_of(unit: str, spelled: str) -> bool:
     if "s" in {unit.lower(), spelled.lower()}:  # here case tells siemens from seconds
         return spelled in names
     return spelled.lower() in {name.lower() for name in names}
-
-
-def _example(unit: str) -> str:
-    return _EXAMPLES.get(unit, f"1.0 {unit}".strip())

@@ -8,7 +8,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from fitamp.units import from_db, parse_gain, parse_quantity, parse_ratio, si, si_with_error, to_db
+from fitamp.units import from_db, parse_gain, parse_quantity, parse_ratio, si, si_exact, si_with_error, to_db
 
 
 @pytest.mark.parametrize(
@@ -169,6 +169,15 @@ def test_number_is_written_with_its_prefix(value: float | None, unit: str, text:
 def test_what_is_written_reads_back(value: float, unit: str) -> None:
     # Four digits: half a step of the fourth is 0.05 % at worst.
     assert parse_quantity(si(value, unit), unit) == pytest.approx(value, rel=5.01e-4)
+
+
+@given(st.floats(min_value=1e-30, max_value=1e30), st.sampled_from(["Hz", "F", "Ω", "S", "s", "V/V"]))
+def test_exact_text_reads_back_as_the_very_number(value: float, unit: str) -> None:
+    assert parse_quantity(si_exact(value, unit), unit) == value
+
+
+def test_exact_text_stays_short_where_it_can() -> None:
+    assert [si_exact(1.6e-3, "S"), si_exact(1.8e-12, "F"), si_exact(0.0, "Ω")] == ["1.6 mS", "1.8 pF", "0 Ω"]
 
 
 @given(st.floats(min_value=1e-12, max_value=1e12), st.floats(min_value=1e-5, max_value=10))
