@@ -1,0 +1,118 @@
+"""Whether a file holds T or −T.
+
+T is the return ratio, positive real at DC for negative feedback. Many set-ups read it with an inversion, 180° at
+DC. The magnitude decides which: for a minimum-phase response the phase is 90° times the slope of ln |T| against
+ln f where that slope is locally steady (H. W. Bode, *Network Analysis and Feedback Amplifier Design*, 1945, ch. XIV
+on relations between attenuation and phase; from memory). Flat: 0°, integrator: −90°, two poles: −180°. A read-out
+that is 180° away from this is inverted. Only the part with |T| above 1 is asked, and of that the lower half in
+log f, because a right-half-plane zero, a delay or receiver noise has the least say there.
+"""
+
+from __future__ import annotations
+
+from dataclasses import replace
+
+import numpy as np
+
+from fitamp.arrays import FloatArray
+from fitamp.errors import SweepError
+from fitamp.sweep import Sign, Sweep
+from fitamp.units import si
+
+__all__ = ["settle_sign"]
+
+# The slope is fitted over this many decades to either side of a point: wide against point noise at ten points a
+# decade, narrow against the two or three decades between the poles of a compensated amplifier.
+_HALF_WINDOW_DECADES = 0.3
+_MIN_WINDOW_POINTS = 5
+# Within 60° of one answer and hence 120° or more from the other: decided. In between: ask.
+_DECIDED_COSINE = 0.5
+_ASK = "give --sign as-read or --sign inverted"
+
+
+def settle_sign(sweep: Sweep, wanted: Sign | None = None) -> Sweep:
+    """Return the sweep with T in it and its sign settled.
+
+    Parameters
+    ----------
+    sweep
+        As read. One whose sign is settled already is turned only when `wanted` says otherwise.
+    wanted
+        `Sign.AS_READ` or `Sign.INVERTED` where the user knows, None to recognise it from the band,
+        `Sign.UNKNOWN` to leave it open.
+
+    Returns
+    -------
+    Sweep
+        With `Sweep.sign` set and a decision saying what was seen; gains (also of points left out) are negated
+        for an inverted read-out.
+
+    Raises
+    ------
+    SweepError
+        When the sign is to be recognised and the band does not show it.
+    """
+    if wanted is Sign.UNKNOWN or (sweep.sign is not Sign.UNKNOWN and wanted in (None, sweep.sign)):
+        return sweep
+    if wanted is None:
+        seen, text = _recognise(sweep)
+        if seen is Sign.UNKNOWN:
+            raise SweepError(f"{sweep.origin.file}: cannot tell whether the sweep holds T or −T, {text}; {_ASK}")
+        return _with_sign(sweep, seen, text)
+    seen, text = _recognise(sweep) if sweep.sign is Sign.UNKNOWN else (Sign.UNKNOWN, "settled anew")
+    remark = f"as given; the band by itself says {seen}: {text}" if seen not in (wanted, Sign.UNKNOWN) else "as given"
+    return _with_sign(sweep, wanted, remark)
+
+
+def _with_sign(sweep: Sweep, sign: Sign, reason: str) -> Sweep:
+    turned = sign is Sign.INVERTED if sweep.sign is Sign.UNKNOWN else sign is not sweep.sign
+    if turned:
+        left_out = tuple(replace(point, gain=-point.gain) for point in sweep.left_out)
+        sweep = replace(sweep, gain=-sweep.gain, left_out=left_out)
+    return replace(sweep, sign=sign).with_decision("sign", sign.value, reason)
+
+
+def _recognise(sweep: Sweep) -> tuple[Sign, str]:
+    """The sign that the band shows, and what was seen."""
+    size = np.abs(sweep.gain)
+    usable = size > 0
+    if usable.sum() < 3:
+        return Sign.UNKNOWN, "it has fewer than three points"
+    log_f, log_size = np.log(sweep.freq_hz[usable]), np.log(size[usable])
+    phase = np.angle(sweep.gain[usable])
+    low = _lower_half_above_unity(log_f, log_size)
+    if low is None:
+        return Sign.UNKNOWN, "its magnitude is below 1 nearly everywhere, where a delay or zero looks like an inversion"
+    deviation = phase - np.pi / 2 * _local_slope(log_f, log_size)
+    agreement = float(np.median(np.cos(deviation[low])))
+    apart_deg = float(np.degrees(np.arccos(np.clip(agreement, -1, 1))))
+    band = f"from {si(float(np.exp(log_f[low][0])), 'Hz')} to {si(float(np.exp(log_f[low][-1])), 'Hz')}"
+    seen = f"{band} the phase is {apart_deg:.0f}° away from what the slope of the magnitude asks for (median)"
+    if agreement >= _DECIDED_COSINE:
+        return Sign.AS_READ, seen
+    if agreement <= -_DECIDED_COSINE:
+        return Sign.INVERTED, seen
+    return Sign.UNKNOWN, seen
+
+
+def _lower_half_above_unity(log_f: FloatArray, log_size: FloatArray) -> np.ndarray | None:
+    """Indices of the points to ask, or None where there are too few with |T| > 1."""
+    above = np.flatnonzero(log_size > 0)
+    if len(above) < 3:
+        return None
+    middle = (log_f[above[0]] + log_f[above[-1]]) / 2
+    low = above[log_f[above] <= middle]
+    return low if len(low) >= 3 else above[:3]
+
+
+def _local_slope(log_f: FloatArray, log_size: FloatArray) -> FloatArray:
+    """Slope of ln |T| against ln f around each point, by a straight line through its neighbours; shape (n,)."""
+    half = _HALF_WINDOW_DECADES * np.log(10)
+    slope = np.empty_like(log_f)
+    for index, centre in enumerate(log_f):
+        first, last = np.searchsorted(log_f, [centre - half, centre + half])
+        first = min(first, max(index - _MIN_WINDOW_POINTS // 2, 0))
+        last = max(last, min(index + _MIN_WINDOW_POINTS // 2 + 1, len(log_f)))
+        x = log_f[first:last] - log_f[first:last].mean()
+        slope[index] = x @ (log_size[first:last] - log_size[first:last].mean()) / (x @ x)
+    return slope

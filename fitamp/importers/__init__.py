@@ -1,0 +1,85 @@
+"""Files to sweeps, by one door: `read_sweep`; and back to a plain file: `write_sweep`.
+
+Text tables (CSV and its kin) and Touchstone files are told apart by suffix and content. Reading is strict,
+explained and lossless: what the file does not decide is refused with the option that decides it, and every
+decision is kept in the sweep.
+"""
+
+from __future__ import annotations
+
+import os
+import re
+from pathlib import PurePath
+
+from fitamp.conditioning.sign import settle_sign
+from fitamp.errors import SweepError, UsageError
+from fitamp.importers.choice import ColumnChoice, ColumnRef
+from fitamp.importers.csv import read_csv
+from fitamp.importers.quantity import Quantity, Unit
+from fitamp.importers.source import Source, load_source
+from fitamp.importers.touchstone import read_touchstone
+from fitamp.importers.write import write_sweep
+from fitamp.sweep import Sign, Sweep
+
+__all__ = ["ColumnChoice", "ColumnRef", "Quantity", "Unit", "read_sweep", "write_sweep"]
+
+_TOUCHSTONE_SUFFIX = re.compile(r"\.(s[0-9]+p|ts)", re.IGNORECASE)
+# An option line or a version keyword at the start of a line, in a file whose name says something else.
+_TOUCHSTONE_CONTENT = re.compile(
+    rb"^[ \t]*(?:\[version\][ \t]*[0-9]|#[ \t]*[kmg]?hz[ \t]+[syzgh][ \t]+(?:ri|ma|db)\b)", re.IGNORECASE | re.MULTILINE
+)
+
+
+def read_sweep(
+    path: str | os.PathLike[str],
+    *,
+    columns: str | ColumnChoice | None = None,
+    trace: str | None = None,
+    sign: Sign | None = None,
+) -> Sweep:
+    """Read one sweep from a CSV or Touchstone file.
+
+    Parameters
+    ----------
+    path
+        ``.s1p``, ``.s2p``, ... and ``.ts`` in any case are read as Touchstone, all else as a text table.
+    columns
+        For text tables whose header does not decide: which column holds what, in which unit, as in
+        ``"f=1:Hz mag=2:dB phase=3:deg"`` or ``"f='Frequency':MHz re='Re' im='Im'"`` (see `ColumnChoice`).
+    trace
+        For Touchstone: the S-parameter that holds the loop gain, as in ``"S21"``. Without it S11 of a one-port
+        and S21 of a two-port.
+    sign
+        Whether the file holds T or −T; None to recognise it from the band, `Sign.UNKNOWN` to leave it open.
+
+    Returns
+    -------
+    Sweep
+        Frequency in hertz, rising; loop gain T, positive real at DC for negative feedback. Each decision is in
+        `Sweep.decisions`, each point that was left out in `Sweep.left_out`.
+
+    Raises
+    ------
+    SweepError
+        When the file cannot be read without guessing: file, line, column, what is wrong and what to do.
+    UsageError
+        When an option is malformed or does not fit the kind of file.
+    """
+    choice = ColumnChoice.parse(columns) if isinstance(columns, str) else columns
+    source = load_source(path)
+    if _TOUCHSTONE_SUFFIX.fullmatch(PurePath(source.file).suffix):
+        if choice is not None:
+            raise UsageError(f"{source.file}: --columns is for text tables; a Touchstone file takes --trace")
+        return settle_sign(read_touchstone(source, trace=trace), sign)
+    _refuse_touchstone_content(source)
+    if trace is not None:
+        raise UsageError(f"{source.file}: --trace is for Touchstone files; a text table takes --columns")
+    return settle_sign(read_csv(source, columns=choice), sign)
+
+
+def _refuse_touchstone_content(source: Source) -> None:
+    if _TOUCHSTONE_CONTENT.search(source.data):
+        raise SweepError(
+            f"{source.file}: the content is Touchstone, but the name does not say for how many ports; "
+            "rename it to end in .s1p or .s2p"
+        )

@@ -1,0 +1,224 @@
+"""How a text table is laid out: separator, decimal mark, comments, and where its rows of numbers are.
+
+Everything here is told from the rows of numbers themselves, because headers and preambles follow no rule.
+"""
+
+from __future__ import annotations
+
+import csv
+import re
+from collections import Counter
+from collections.abc import Iterable, Sequence
+from dataclasses import dataclass
+from enum import Enum
+
+from fitamp.errors import SweepError
+from fitamp.importers.cells import MINUS, is_complex_like, is_number_like
+from fitamp.importers.text import Line
+
+__all__ = ["Block", "Separator", "decimal_mark", "find_block", "is_comment", "split_cells", "uncommented"]
+
+_COMMENT = re.compile(r"\s*(?:#|!|%|//)+")
+# A pair in parentheses is one cell also where its comma is the separator.
+_BARE_PAIR = re.compile(r"(^|[,;\s])\s*(\([^()\",;]*[,;][^()\",;]*\))")
+_COMMA_PAIR = re.compile(r"\([^;ij]*,[^;ij]*\)")
+# Separator and first row are told from this many lines; no preamble is longer.
+_SAMPLE = 5000
+
+
+class Separator(Enum):
+    """What stands between two cells, in the order in which a tie is settled."""
+
+    TAB = "\t"
+    SEMICOLON = ";"
+    COMMA = ","
+    SPACE = " "
+
+    @property
+    def label(self) -> str:
+        """The separator in words."""
+        return "runs of spaces" if self is Separator.SPACE else self.name.lower()
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Block:
+    """The rows of numbers of a text table.
+
+    separator : how their cells are apart
+    rows : the lines, blank and comment lines left aside, a separator at the end of every row taken off
+    width : how many cells each of them has
+    above : the lines before them
+    comments : how many comment lines stand between them
+    trailing : whether every row ended with a separator
+    """
+
+    separator: Separator
+    rows: tuple[Line, ...]
+    width: int
+    above: tuple[Line, ...]
+    comments: int
+    trailing: bool
+
+
+def is_comment(text: str) -> bool:
+    """Whether a line is a comment: it starts with #, !, % or //."""
+    return bool(_COMMENT.match(text))
+
+
+def uncommented(text: str) -> str:
+    """The text of a comment line without its mark."""
+    return _COMMENT.sub("", text, count=1).strip()
+
+
+def protected(text: str, separator: Separator) -> str:
+    """The line as a reader of quoted cells takes it: without outer blanks, bare ``(1.2,3.4)`` in quotes."""
+    if separator is Separator.TAB:
+        return text.strip(" ")
+    return _BARE_PAIR.sub(r'\1"\2"', text.strip())
+
+
+def split_cells(text: str, separator: Separator) -> tuple[str, ...]:
+    """Split one line into stripped cells; quotes keep a separator inside a cell.
+
+    Raises
+    ------
+    ValueError
+        When a quote is not closed on the line.
+    """
+    if text.count('"') % 2:
+        raise ValueError("a quote is not closed on this line; close it or remove it")
+    guarded = protected(text, separator)
+    if separator is Separator.SPACE:
+        return tuple(cell.strip('"').strip() for cell in re.findall(r'"[^"]*"|[^\s"]+', guarded))
+    row = next(csv.reader([guarded], delimiter=separator.value, skipinitialspace=True), [])
+    return tuple(cell.strip() for cell in row)
+
+
+def find_block(file: str, lines: Sequence[Line]) -> Block:
+    """Find separator and rows of numbers: all lines from the first row of numbers to the end of the file.
+
+    Raises
+    ------
+    SweepError
+        When there are no rows of numbers, or rows differ in their number of cells.
+    """
+    used = [line for line in lines if line.text.strip() and not is_comment(line.text)]
+    separator = _find_separator(file, used[:_SAMPLE])
+    start = _find_start(used[:_SAMPLE], separator)
+    trailing = _all_end_with(used[start:], separator)
+    rows = tuple(
+        Line(number=line.number, text=line.text.rstrip(" ")[:-1] if trailing else line.text) for line in used[start:]
+    )
+    first = rows[0].number
+    return Block(
+        separator=separator,
+        rows=rows,
+        width=_common_width(file, rows, separator),
+        above=tuple(line for line in lines if line.number < first),
+        comments=sum(is_comment(line.text) for line in lines if line.number > first),
+        trailing=trailing,
+    )
+
+
+def decimal_mark(file: str, cells: Iterable[tuple[int, str]]) -> tuple[str, str]:
+    """The decimal mark of the cells, "." or ",", and why.
+
+    Parameters
+    ----------
+    cells
+        Line number and text of every cell.
+
+    Raises
+    ------
+    SweepError
+        When commas may be decimal marks as well as thousands separators, or both marks are in use.
+    """
+    marked = [(line, text) for line, text in cells if ("," in text or "." in text) and is_number_like(text)]
+    commas = [(line, text) for line, text in marked if "," in text and not _COMMA_PAIR.fullmatch(text)]
+    if not commas:
+        return ".", "no number has a decimal comma"
+    for line, text in commas:
+        if text.count(",") > 1 + is_complex_like(text) or "." in text:
+            raise SweepError(f"{file}, line {line}: {text!r} has thousands separators; export the numbers without them")
+    line, text = commas[0]
+    if any("." in text for _, text in marked):
+        raise SweepError(
+            f"{file}, line {line}: {text!r} has a comma where other cells have a decimal point; "
+            "export with one decimal mark and without thousands separators"
+        )
+    if all(re.fullmatch(rf"[+\-{MINUS}]?[1-9][0-9]{{0,2}},[0-9]{{3}}", text) for _, text in commas):
+        raise SweepError(
+            f"{file}, line {line}: {text!r} may have a decimal comma or a thousands separator; "
+            "export with a decimal point and without thousands separators"
+        )
+    return ",", f"numbers such as {text!r} on line {line} have one comma each and no point"
+
+
+def _find_separator(file: str, lines: Sequence[Line]) -> Separator:
+    """The separator under which the most cells of rows are numbers."""
+    scores = {separator: _score(lines, separator) for separator in Separator}
+    best = max(scores, key=lambda separator: scores[separator])  # the first of equals
+    if scores[best] == 0:
+        raise SweepError(
+            f"{file}: no row with two or more numbers found; expected columns of numbers for frequency and loop gain, "
+            "apart by comma, semicolon, tab or spaces"
+        )
+    return best
+
+
+def _score(lines: Sequence[Line], separator: Separator) -> float:
+    total = 0.0
+    for line in lines:
+        cells = _lenient_cells(line, separator)
+        numbers = _count_numbers(cells)
+        if numbers >= 2:
+            total += numbers / max(len(cells), 1)
+    return total
+
+
+def _find_start(lines: Sequence[Line], separator: Separator) -> int:
+    """Index of the first row of numbers."""
+    rows = [_lenient_cells(line, separator) for line in lines]
+    like = [_count_numbers(row) >= 2 for row in rows]
+    width = Counter(len(row) for row, is_row in zip(rows, like, strict=True) if is_row).most_common(1)[0][0]
+    fits = [is_row and len(row) == width for row, is_row in zip(rows, like, strict=True)]
+    start = next((i for i, fit in enumerate(fits) if fit and all(fits[i : i + 2])), fits.index(True))
+    # A row just above that has a number in it, and words where numbers should be, is a row with a fault, not a header.
+    while start > 0 and len(rows[start - 1]) == width and _count_numbers(rows[start - 1]):
+        start -= 1
+    return start
+
+
+def _lenient_cells(line: Line, separator: Separator) -> tuple[str, ...]:
+    try:
+        cells = split_cells(line.text, separator)
+    except ValueError:
+        return ()
+    return cells[:-1] if len(cells) > 1 and not cells[-1] else cells
+
+
+def _count_numbers(cells: Iterable[str]) -> int:
+    return sum(is_number_like(cell) for cell in cells)
+
+
+def _all_end_with(rows: Sequence[Line], separator: Separator) -> bool:
+    if separator is Separator.SPACE:
+        return False
+    return all(row.text.rstrip(" ").endswith(separator.value) for row in rows)
+
+
+def _common_width(file: str, rows: Sequence[Line], separator: Separator) -> int:
+    widths = []
+    for row in rows:
+        try:
+            widths.append(len(split_cells(row.text, separator)))
+        except ValueError as error:
+            raise SweepError(f"{file}, line {row.number}: {error}") from error
+    usual = Counter(widths).most_common(1)[0][0]
+    for row, width in zip(rows, widths, strict=True):
+        if width != usual:
+            raise SweepError(
+                f"{file}, line {row.number}: {width} cells where other rows have {usual} "
+                f"(separator: {separator.label}); complete the row or remove it"
+            )
+    return usual

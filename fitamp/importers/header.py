@@ -1,0 +1,153 @@
+"""The header of a text table: the line that names its columns, and a row of units under it."""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+
+from fitamp.errors import SweepError
+from fitamp.importers.cells import is_number_like, show
+from fitamp.importers.dialect import Block, Separator, is_comment, split_cells, uncommented
+from fitamp.importers.quantity import Meaning, Quantity, Unit, meaning_of, unit_of
+from fitamp.importers.text import Line
+from fitamp.sweep import Decision
+
+__all__ = ["Header", "find_header"]
+
+# Cells of a units row that say "no unit".
+_NO_UNIT = frozenset({"", "-", "–", "1", "[-]", "[1]", "(-)", "[]", "()", "v/v", "[v/v]", "(v/v)"})
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Header:
+    """What the columns hold, one meaning for each; `line` is None where the file has no header."""
+
+    line: int | None
+    meanings: tuple[Meaning, ...]
+    decisions: tuple[Decision, ...]
+
+
+def find_header(file: str, block: Block) -> Header:
+    """Find the header just above the rows of numbers, with its row of units where it has one.
+
+    Raises
+    ------
+    SweepError
+        When the line above the rows is neither header nor units, or a row of units contradicts the header.
+    """
+    above = [line for line in block.above if line.text.strip()]
+    plain = [line for line in above if not is_comment(line.text)]
+    comments = [line for line in above if is_comment(line.text)]
+    names, units = _plain_header(file, plain, block)
+    in_comment, comment_units = _commented_header(comments, block)
+    reason = "the line above the numbers"
+    if in_comment is not None and (names is None or in_comment[0] > names[0]):
+        names, units, reason = in_comment, comment_units, "a comment line whose cells name the columns"
+    if names is None:
+        blank = tuple(Meaning(text="") for _ in range(block.width))
+        return Header(line=None, meanings=blank, decisions=())
+    decisions = [Decision(topic="header", choice=f"line {names[0]}", reason=reason)]
+    meanings = tuple(meaning_of(cell) for cell in names[1])
+    if units is not None:
+        meanings = _with_units(file, meanings, units)
+        under = "the line under the header has only units"
+        decisions.append(Decision(topic="units row", choice=f"line {units[0]}", reason=under))
+    return Header(line=names[0], meanings=meanings, decisions=tuple(decisions))
+
+
+_Cells = tuple[int, tuple[str, ...]]
+
+
+def _plain_header(file: str, plain: Sequence[Line], block: Block) -> tuple[_Cells | None, _Cells | None]:
+    """Header and units row among the lines that are no comments."""
+    for line in plain:
+        _refuse_numbers(file, line, block, nearest=line is plain[-1])
+    last = _cells_of(plain[-1].text, block) if plain else None
+    if last is None:
+        return None, None
+    if _is_units_row(last) and len(plain) > 1:
+        over = _cells_of(plain[-2].text, block)
+        if over is not None and _is_header(over):
+            return (plain[-2].number, over), (plain[-1].number, last)
+    return ((plain[-1].number, last), None) if _is_header(last) else (None, None)
+
+
+def _refuse_numbers(file: str, line: Line, block: Block, *, nearest: bool) -> None:
+    """Refuse a line of numbers above the rows of numbers: it would be lost in silence."""
+    cells = re.split(r"[\s,;]+", line.text.strip(" \t,;"))
+    if all(is_number_like(cell) for cell in cells) and (nearest or len(cells) == block.width):
+        raise SweepError(
+            f"{file}, line {line.number}: a row of numbers apart from the {block.width} columns below it; "
+            "complete the row or remove it"
+        )
+
+
+def _commented_header(comments: Sequence[Line], block: Block) -> tuple[_Cells | None, _Cells | None]:
+    """Header among the comment lines: the last one that names a frequency column and one more."""
+    units: _Cells | None = None
+    for line in reversed(comments):
+        cells = _cells_of(uncommented(line.text), block)
+        if cells is None:
+            continue
+        found = {meaning.quantity for meaning in map(meaning_of, cells)} - {None}
+        if units is None and _is_units_row(cells):
+            units = (line.number, cells)
+        elif Quantity.FREQUENCY in found and len(found) > 1:
+            adjoining = units is not None and units[0] == line.number + 1
+            return (line.number, cells), units if adjoining else None
+    return units, None  # a lone line of units ("# Hz, dB, deg") names the columns as well as any header
+
+
+def _is_header(cells: Sequence[str]) -> bool:
+    return any(cells) and not any(is_number_like(cell) for cell in cells)
+
+
+def _is_units_row(cells: Sequence[str]) -> bool:
+    known = [unit_of(cell) for cell in cells]
+    return any(known) and all(
+        unit is not None or cell.strip().lower() in _NO_UNIT for unit, cell in zip(known, cells, strict=True)
+    )
+
+
+def _cells_of(text: str, block: Block) -> tuple[str, ...] | None:
+    """The cells of a header line, as many as there are columns; None where no way of splitting gives that many."""
+    if text.count('"') % 2:
+        return None
+    for separator in (block.separator, *(other for other in Separator if other is not block.separator)):
+        candidates = [split_cells(text, separator)]
+        if separator is Separator.SPACE:
+            candidates = [_spaced(text, r"\t|\s{2,}"), _spaced(text, r"\s+(?![^(\[]*[)\]])"), *candidates]
+        for cells in candidates:
+            if len(cells) == block.width:
+                return cells
+            if block.trailing and len(cells) == block.width + 1:
+                return cells[:-1]
+    return None
+
+
+def _spaced(text: str, gap: str) -> tuple[str, ...]:
+    """Cells apart by a kind of gap, a unit in brackets kept with the name before it."""
+    cells: list[str] = []
+    for part in re.split(gap, text.strip()):
+        if cells and re.fullmatch(r"[(\[].*[)\]]", part):
+            cells[-1] = f"{cells[-1]} {part}"
+        else:
+            cells.append(part.strip('"'))
+    return tuple(cells)
+
+
+def _with_units(file: str, meanings: Sequence[Meaning], units: _Cells) -> tuple[Meaning, ...]:
+    merged = []
+    for column, (meaning, cell) in enumerate(zip(meanings, units[1], strict=True), start=1):
+        unit: Unit | None = unit_of(cell)
+        if unit is None:
+            merged.append(meaning)
+            continue
+        if meaning.unit is not None and meaning.unit is not unit:
+            raise SweepError(
+                f"{file}, line {units[0]}, column {column}: unit {show(cell)} contradicts {meaning.unit} in the "
+                f"header {show(meaning.text)}; correct one of them"
+            )
+        merged.append(replace(meaning.with_unit(unit), text=meaning.text))
+    return tuple(merged)

@@ -1,0 +1,75 @@
+"""The points of a file to a checked sweep: order, duplicates, points at 0 Hz."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from fitamp.arrays import ComplexArray, FloatArray
+from fitamp.errors import SweepError
+from fitamp.sweep import Decision, LeftOut, Origin, Sweep
+
+__all__ = ["Points", "finish"]
+
+_AT_ZERO = "0 Hz has no place on a logarithmic frequency axis"
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Points:
+    """The points of a file in its order, each with the line it came from."""
+
+    lines: tuple[int, ...]
+    freq_hz: FloatArray
+    gain: ComplexArray
+
+
+def finish(points: Points, *, origin: Origin, decisions: tuple[Decision, ...], may_fall: bool) -> Sweep:
+    """Build the sweep: falling order is turned round where `may_fall`, a point at 0 Hz is left out with a reason.
+
+    Raises
+    ------
+    SweepError
+        For a negative or repeated frequency, or frequencies in no order; the message has the line.
+    """
+    file, lines, freq_hz, gain = origin.file, points.lines, points.freq_hz, points.gain
+    negative = freq_hz < 0
+    if negative.any():
+        row = int(np.argmax(negative))
+        raise SweepError(
+            f"{file}, line {lines[row]}: frequency {freq_hz[row]:g} Hz is negative; remove the row or check the columns"
+        )
+    step = np.diff(freq_hz)
+    if may_fall and len(step) and (step < 0).sum() > (step > 0).sum():
+        freq_hz, gain, lines, step = freq_hz[::-1], gain[::-1], lines[::-1], -step[::-1]
+        reason = f"the file starts at {freq_hz[-1]:g} Hz and falls to {freq_hz[0]:g} Hz"
+        decisions = (*decisions, Decision(topic="order", choice="reversed", reason=reason))
+        step = np.diff(freq_hz)
+    _refuse_disorder(file, lines, freq_hz)
+    left_out = tuple(
+        LeftOut(f_hz=0.0, gain=complex(t), reason=_AT_ZERO) for f, t in zip(freq_hz, gain, strict=True) if f == 0
+    )
+    if left_out:
+        decisions = (*decisions, Decision(topic="point at 0 Hz", choice="left out", reason=_AT_ZERO))
+    keep = freq_hz > 0
+    if not keep.any():
+        raise SweepError(f"{file}: no point above 0 Hz; a sweep needs at least one")
+    return Sweep(freq_hz=freq_hz[keep], gain=gain[keep], origin=origin, decisions=decisions, left_out=left_out)
+
+
+def _refuse_disorder(file: str, lines: tuple[int, ...], freq_hz: FloatArray) -> None:
+    same = np.unique(freq_hz, return_counts=True)
+    repeated = same[0][same[1] > 1]
+    if len(repeated):
+        first, second, *_ = sorted(lines[row] for row in np.flatnonzero(freq_hz == repeated[0]))
+        raise SweepError(
+            f"{file}, line {second}: frequency {repeated[0]:g} Hz is there already on line {first}; "
+            "keep one of the rows, or one sweep per file"
+        )
+    falls = np.diff(freq_hz) < 0
+    if falls.any():
+        row = int(np.argmax(falls)) + 1
+        raise SweepError(
+            f"{file}, line {lines[row]}: frequency must rise, but {freq_hz[row]:g} Hz stands beside "
+            f"{freq_hz[row - 1]:g} Hz of line {lines[row - 1]}; sort the rows or export one sweep per file"
+        )

@@ -1,0 +1,107 @@
+"""Bytes to numbered lines: encoding, byte order mark, line ends."""
+
+from __future__ import annotations
+
+import codecs
+import re
+from dataclasses import dataclass
+
+from fitamp.errors import SweepError
+from fitamp.importers.source import Source
+from fitamp.sweep import Decision
+
+__all__ = ["Line", "Text", "decode"]
+
+_UTF32_MARKS = (codecs.BOM_UTF32_LE, codecs.BOM_UTF32_BE)
+_LINE_END = re.compile(r"\r\n|\n|\r")
+# Control characters that no text export holds; tab, line ends, form feed and a closing Ctrl-Z are fine.
+_BINARY = re.compile(r"[\x00-\x08\x0e-\x1f\x7f]")
+_CTRL_Z = "\x1a"
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Line:
+    """One line of a file; `number` counts from 1 as editors do."""
+
+    number: int
+    text: str
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Text:
+    """The lines of a file, its encoding by name, and the decision on it."""
+
+    lines: tuple[Line, ...]
+    encoding: str
+    decision: Decision
+
+
+def decode(source: Source) -> Text:
+    """Decode a file: UTF-8 or UTF-16, each with or without byte order mark, else Latin-1.
+
+    Raises
+    ------
+    SweepError
+        When the bytes are not text.
+    """
+    content, encoding, reason = _decode(source)
+    content = content.rstrip(_CTRL_Z)
+    binary = _BINARY.search(content)
+    if binary:
+        number = len(_LINE_END.findall(content, 0, binary.start())) + 1
+        raise SweepError(
+            f"{source.file}, line {number}: this is a binary file, not text (control character "
+            f"0x{ord(binary[0]):02x}); export the sweep as CSV or Touchstone"
+        )
+    texts = _LINE_END.split(content)
+    if texts[-1] == "":
+        texts.pop()
+    lines = tuple(Line(number=number, text=text) for number, text in enumerate(texts, start=1))
+    return Text(lines=lines, encoding=encoding, decision=Decision(topic="encoding", choice=encoding, reason=reason))
+
+
+def _decode(source: Source) -> tuple[str, str, str]:
+    """Content without byte order mark, encoding, and why this one."""
+    data = source.data
+    if data.startswith(_UTF32_MARKS):
+        raise SweepError(f"{source.file}: the file is UTF-32; save it as UTF-8")
+    for mark, codec, encoding in (
+        (codecs.BOM_UTF8, "utf-8", "UTF-8"),
+        (codecs.BOM_UTF16_LE, "utf-16-le", "UTF-16 LE"),
+        (codecs.BOM_UTF16_BE, "utf-16-be", "UTF-16 BE"),
+    ):
+        if data.startswith(mark):
+            return _strictly(source, data[len(mark) :], codec, encoding), encoding, "byte order mark"
+    order = _utf16_without_mark(data)
+    if order:
+        codec = f"utf-16-{order}"
+        content = _strictly(source, data, codec, f"UTF-16 {order.upper()}")
+        return content, f"UTF-16 {order.upper()}", "no byte order mark, but every other byte is zero"
+    try:
+        return data.decode("utf-8"), "UTF-8", "all bytes are valid UTF-8"
+    except UnicodeDecodeError as error:
+        number = len(_LINE_END.findall(data[: error.start].decode("latin-1"))) + 1
+        reason = f"line {number} is not valid UTF-8; bytes above 127 are taken as Latin-1"
+        return data.decode("latin-1"), "Latin-1", reason
+
+
+def _strictly(source: Source, data: bytes, codec: str, encoding: str) -> str:
+    try:
+        return data.decode(codec)
+    except UnicodeDecodeError as error:
+        raise SweepError(
+            f"{source.file}: marked as {encoding}, but byte {error.start + 1} does not fit; save it as UTF-8"
+        ) from error
+
+
+def _utf16_without_mark(data: bytes) -> str | None:
+    """'le' or 'be' where nearly every second byte is zero, as in UTF-16 text of Latin letters and digits."""
+    if len(data) % 2 or not data:
+        return None
+    half = len(data) // 2
+    even, odd = data[0::2].count(0) / half, data[1::2].count(0) / half
+    if odd > 0.9 and even == 0:
+        return "le"
+    if even > 0.9 and odd == 0:
+        return "be"
+    return None
