@@ -139,6 +139,8 @@ def si(value: float | None, unit: str, digits: int = 4) -> str:
     if value == 0 or math.isinf(value):
         return f"{_minus(f'{value:g}')} {unit}".strip()
     rounded = float(f"{value:.{digits - 1}e}")  # first, because 999.96 kHz is 1.000 MHz in four digits
+    if _is_beyond_prefixes(rounded, unit):
+        return f"{_minus(f'{value:.{digits - 1}e}')} {unit}".strip()
     exponent = _prefix_exponent(rounded, unit)
     decimals = digits - 1 - _decade(rounded) + exponent
     return f"{_fixed(rounded / 10**exponent, decimals)} {_PREFIXES[exponent]}{unit}".strip()
@@ -162,6 +164,8 @@ def si_with_error(value: float | None, error: float | None, unit: str) -> str:
     """
     if value is None or error is None or not math.isfinite(value) or not math.isfinite(error) or error <= 0:
         return si(value, unit)
+    if _is_beyond_prefixes(max(abs(value), error), unit):
+        return f"{_minus(f'{value:.3e} ± {error:.1e}')} {unit}".strip()
     rounded, decimals = _rounded_error(error)
     exponent = _prefix_exponent(max(abs(round(value, decimals)), rounded), unit)
     number, spread = (_fixed(part / 10**exponent, decimals + exponent) for part in (value, rounded))
@@ -189,6 +193,11 @@ def _prefix_exponent(value: float, unit: str) -> int:
         return 0
     exponent = 3 * (_decade(value) // 3)
     return min(max(exponent, min(_PREFIXES)), max(_PREFIXES))
+
+
+def _is_beyond_prefixes(value: float, unit: str) -> bool:
+    """Whether fixed digits would run on and on, as for a value far outside what electronics meets."""
+    return not (-9 <= _decade(value) < 9 if unit in _NO_PREFIX else -18 <= _decade(value) < 15)
 
 
 def _fixed(value: float, decimals: int) -> str:
