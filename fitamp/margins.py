@@ -14,7 +14,8 @@ import numpy as np
 
 from fitamp.arrays import FloatArray
 from fitamp.closed_loop import StepResponse, bracketed_root, closed_loop_poles_hz, closed_loop_step
-from fitamp.transfer import EPSILON, TWO_PI, Transfer, polynomial_roots
+from fitamp.roots import EPSILON, polynomial_roots
+from fitamp.transfer import TWO_PI, Transfer
 
 __all__ = ["Margins", "StepResponse", "closed_loop_poles_hz", "closed_loop_step", "margins"]
 

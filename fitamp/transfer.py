@@ -11,24 +11,19 @@ import cmath
 import math
 from collections.abc import Iterable
 from dataclasses import dataclass
-from itertools import pairwise
 
 import numpy as np
 from numpy.typing import ArrayLike
 
 from fitamp.arrays import ComplexArray, FloatArray
+from fitamp.roots import in_order, polynomial_roots
 from fitamp.units import si, to_db
 
-__all__ = ["Transfer", "polynomial_roots"]
+__all__ = ["TWO_PI", "Transfer"]
 
 TWO_PI = 2 * math.pi
 # Two roots given as a conjugate pair may differ by rounding, relative to their distance from the origin.
 CONJUGATE_RTOL = 1e-9
-# Simultaneous root iterations: well-separated roots need 3 to 6, a triple root about 40.
-MAX_ITERATIONS = 200
-# A residual this many roundings above zero cannot be improved in double precision.
-RESIDUAL_ROUNDINGS = 2.0
-EPSILON = float(np.finfo(float).eps)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -146,117 +141,6 @@ class Transfer:
         return "; ".join(parts)
 
 
-def polynomial_roots(coefficients: ArrayLike) -> tuple[complex, ...]:
-    """Return the roots of a real polynomial, nearest the origin first, complex ones in exact conjugate pairs.
-
-    Parameters
-    ----------
-    coefficients : array_like, shape (n,)
-        Ascending powers, real. Zeros at the end are left off; zeros at the start give roots at the origin.
-
-    Returns
-    -------
-    tuple of complex, of length n − 1 after leaving off
-
-    Notes
-    -----
-    Simultaneous iteration after O. Aberth, Math. Comp. 27 (1973) 339, started on the radii of the Newton
-    polygon after D. A. Bini, Numer. Algorithms 13 (1996) 179. Both work root by root, so each root has the
-    relative precision that its own conditioning allows. Eigenvalues of a companion matrix are sure only
-    relative to the largest root, which can cost a dominant pole eight decades below it its digits. An m-fold
-    root is right to about the m-th root of the rounding error, as it must be from rounded coefficients.
-    """
-    values = [float(value) for value in np.trim_zeros(np.asarray(coefficients, dtype=float), "b")]
-    if not all(math.isfinite(value) for value in values):
-        raise ValueError("polynomial coefficients must be finite")
-    at_origin = next((index for index, value in enumerate(values) if value != 0), 0)
-    values = values[at_origin:]
-    degree = len(values) - 1
-    if degree < 1:
-        return (0j,) * at_origin
-    # In x = s/scale the geometric mean of the roots is 1, so that no power over- or underflows.
-    scale = math.exp((math.log(abs(values[0])) - math.log(abs(values[-1]))) / degree)
-    scaled = [value * scale**power / values[0] for power, value in enumerate(values)]
-    found = _pair_conjugates(_iterate(scaled, _starts(scaled)))
-    return (0j,) * at_origin + _in_order(root * scale for root in found)
-
-
-def _iterate(coefficients: list[float], starts: list[complex]) -> list[complex]:
-    """Aberth's iteration until no residual is above rounding."""
-    roots = list(starts)
-    moving = set(range(len(roots)))
-    for _ in range(MAX_ITERATIONS):
-        for index in sorted(moving):
-            x = roots[index]
-            value, slope, size = 0j, 0j, 0.0
-            for coefficient in reversed(coefficients):
-                slope = slope * x + value
-                value = value * x + coefficient
-                size = size * abs(x) + abs(coefficient)
-            if abs(value) <= RESIDUAL_ROUNDINGS * EPSILON * size:
-                moving.discard(index)
-                continue
-            repulsion = sum(1 / (x - other) for i, other in enumerate(roots) if i != index and other != x)
-            divisor = slope - value * repulsion
-            # A stationary point sends the step to infinity; a small turn leaves it.
-            step = value / divisor if divisor else 0.1 * x * cmath.exp(1j)
-            roots[index] = x - step
-            if abs(step) <= EPSILON * abs(x):
-                moving.discard(index)
-        if not moving:
-            break
-    return roots
-
-
-def _starts(coefficients: list[float]) -> list[complex]:
-    """Starting points from the upper convex hull of ln|a_k| over k; edge of length m puts m on one circle."""
-    points = [(k, math.log(abs(value))) for k, value in enumerate(coefficients) if value != 0]
-    hull: list[tuple[int, float]] = []
-    for point in points:
-        while len(hull) > 1 and _is_below(hull[-2], hull[-1], point):
-            hull.pop()
-        hull.append(point)
-    starts: list[complex] = []
-    for (left, low), (right, high) in pairwise(hull):
-        count = right - left
-        radius = math.exp((low - high) / count)
-        # Alone on its circle a root is real and its sign known. The turn is for two such neighbours that are
-        # a pair in truth: from real starts no iteration would leave the real axis.
-        sign = -coefficients[left] / coefficients[right] if count == 1 else 1.0
-        turns = (TWO_PI * i / count + (0.1 if count == 1 else 0.7) for i in range(count))
-        starts += [math.copysign(radius, sign) * cmath.exp(1j * turn) for turn in turns]
-    return starts
-
-
-def _is_below(left: tuple[int, float], middle: tuple[int, float], right: tuple[int, float]) -> bool:
-    chord = left[1] + (right[1] - left[1]) * (middle[0] - left[0]) / (right[0] - left[0])
-    return middle[1] <= chord
-
-
-def _pair_conjugates(roots: list[complex]) -> list[complex]:
-    """Make roots of a real polynomial exactly real or exactly paired, closest matches first."""
-    distances = sorted(
-        (abs(a - b.conjugate()), i, j) for i, a in enumerate(roots) for j, b in enumerate(roots) if i <= j
-    )
-    paired: list[complex] = []
-    left = set(range(len(roots)))
-    for _, i, j in distances:
-        if i not in left or j not in left:
-            continue
-        left -= {i, j}
-        if i == j:
-            paired.append(complex(roots[i].real))
-        else:
-            mean = (roots[i] + roots[j].conjugate()) / 2
-            paired += [mean, mean.conjugate()]
-    return paired
-
-
-def _in_order(roots: Iterable[complex]) -> tuple[complex, ...]:
-    """Nearest the origin first; of a pair, the one with positive imaginary part first."""
-    return tuple(sorted(roots, key=lambda root: (abs(root), root.real, -root.imag)))
-
-
 def _checked_roots(name: str, roots: Iterable[complex]) -> tuple[complex, ...]:
     values = [complex(root) for root in roots]
     for value in values:
@@ -273,7 +157,7 @@ def _checked_roots(name: str, roots: Iterable[complex]) -> tuple[complex, ...]:
         kept += [value, value.conjugate()]
     if lower:
         raise ValueError(f"{name} {lower[0]!r} Hz lacks its conjugate")
-    return _in_order(kept)
+    return in_order(kept)
 
 
 def _coefficients(name: str, values: ArrayLike) -> FloatArray:
