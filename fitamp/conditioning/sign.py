@@ -13,6 +13,7 @@ from __future__ import annotations
 from dataclasses import replace
 
 import numpy as np
+from numpy.typing import NDArray
 
 from fitamp.arrays import FloatArray
 from fitamp.errors import SweepError
@@ -27,6 +28,8 @@ _HALF_WINDOW_DECADES = 0.3
 _MIN_WINDOW_POINTS = 5
 # Within 60° of one answer and hence 120° or more from the other: decided. In between: ask.
 _DECIDED_COSINE = 0.5
+# A median needs no more points than this.
+_MOST_ASKED = 200
 _ASK = "give --sign as-read or --sign inverted"
 
 
@@ -57,7 +60,7 @@ def settle_sign(sweep: Sweep, wanted: Sign | None = None) -> Sweep:
     if wanted is None:
         seen, text = _recognise(sweep)
         if seen is Sign.UNKNOWN:
-            raise SweepError(f"{sweep.origin.file}: cannot tell whether the sweep holds T or −T, {text}; {_ASK}")
+            raise SweepError(f"{sweep.origin.file}: cannot tell whether the sweep holds T or -T: {text}; {_ASK}")
         return _with_sign(sweep, seen, text)
     seen, text = _recognise(sweep) if sweep.sign is Sign.UNKNOWN else (Sign.UNKNOWN, "settled anew")
     remark = f"as given; the band by itself says {seen}: {text}" if seen not in (wanted, Sign.UNKNOWN) else "as given"
@@ -82,9 +85,13 @@ def _recognise(sweep: Sweep) -> tuple[Sign, str]:
     phase = np.angle(sweep.gain[usable])
     low = _lower_half_above_unity(log_f, log_size)
     if low is None:
-        return Sign.UNKNOWN, "its magnitude is below 1 nearly everywhere, where a delay or zero looks like an inversion"
-    deviation = phase - np.pi / 2 * _local_slope(log_f, log_size)
-    agreement = float(np.median(np.cos(deviation[low])))
+        return (
+            Sign.UNKNOWN,
+            "its magnitude is above 1 at fewer than three points, and below a delay or zero may look like an inversion",
+        )
+    asked = low[np.unique(np.linspace(0, len(low) - 1, _MOST_ASKED).astype(int))]
+    deviation = phase[asked] - np.pi / 2 * _local_slope(log_f, log_size, asked)
+    agreement = float(np.median(np.cos(deviation)))
     apart_deg = float(np.degrees(np.arccos(np.clip(agreement, -1, 1))))
     band = f"from {si(float(np.exp(log_f[low][0])), 'Hz')} to {si(float(np.exp(log_f[low][-1])), 'Hz')}"
     seen = f"{band} the phase is {apart_deg:.0f}° away from what the slope of the magnitude asks for (median)"
@@ -95,7 +102,7 @@ def _recognise(sweep: Sweep) -> tuple[Sign, str]:
     return Sign.UNKNOWN, seen
 
 
-def _lower_half_above_unity(log_f: FloatArray, log_size: FloatArray) -> np.ndarray | None:
+def _lower_half_above_unity(log_f: FloatArray, log_size: FloatArray) -> NDArray[np.intp] | None:
     """Indices of the points to ask, or None where there are too few with |T| > 1."""
     above = np.flatnonzero(log_size > 0)
     if len(above) < 3:
@@ -105,14 +112,14 @@ def _lower_half_above_unity(log_f: FloatArray, log_size: FloatArray) -> np.ndarr
     return low if len(low) >= 3 else above[:3]
 
 
-def _local_slope(log_f: FloatArray, log_size: FloatArray) -> FloatArray:
-    """Slope of ln |T| against ln f around each point, by a straight line through its neighbours; shape (n,)."""
+def _local_slope(log_f: FloatArray, log_size: FloatArray, at: NDArray[np.intp]) -> FloatArray:
+    """Slope of ln |T| against ln f around the points `at`, by a straight line through their neighbours."""
     half = _HALF_WINDOW_DECADES * np.log(10)
-    slope = np.empty_like(log_f)
-    for index, centre in enumerate(log_f):
-        first, last = np.searchsorted(log_f, [centre - half, centre + half])
+    slopes = []
+    for index in at.tolist():
+        first, last = np.searchsorted(log_f, [log_f[index] - half, log_f[index] + half]).tolist()
         first = min(first, max(index - _MIN_WINDOW_POINTS // 2, 0))
         last = max(last, min(index + _MIN_WINDOW_POINTS // 2 + 1, len(log_f)))
         x = log_f[first:last] - log_f[first:last].mean()
-        slope[index] = x @ (log_size[first:last] - log_size[first:last].mean()) / (x @ x)
-    return slope
+        slopes.append(float(x @ log_size[first:last] / (x @ x)))
+    return np.array(slopes)

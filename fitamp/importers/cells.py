@@ -111,7 +111,7 @@ def _finite(cell: str, text: str) -> float:
 def _why_not(text: str, decimal: str) -> str:
     cell = text.strip().replace(MINUS, "-")
     shown = show(text.strip())
-    mark, other = ("comma", ".") if decimal == "," else ("point", ",")
+    mark, other, other_word = ("comma", ".", "point") if decimal == "," else ("point", ",", "comma")
     if not cell:
         return "the cell is empty; measure the point again or remove the row"
     if re.fullmatch(r"[+-]?(nan|inf|infinity|#n/a|n/a|na)", cell.lower()):
@@ -121,7 +121,7 @@ def _why_not(text: str, decimal: str) -> str:
     if re.fullmatch(r"[+-]?[0-9]{1,3}(?:[,.' \u00a0\u202f\u2019][0-9]{3})+(?:[.,][0-9]+)?", cell):
         return f"{shown} has thousands separators; export the numbers without them"
     if other in cell and re.fullmatch(r"[+-]?[0-9.,]+([eE][+-]?[0-9]+)?", cell):
-        return f"{shown} does not have the decimal {mark} of the other cells; export with one decimal mark"
+        return f"{shown} has a {other_word} where the decimal mark is a {mark}; export with one decimal mark"
     if re.fullmatch(r"[+-]?[0-9.,]+(?:[eE][+-]?[0-9]+)?\s*[A-Za-zµμΩ%°/]+", cell):
         return f"{shown} has a prefix or unit; write the plain number and put the unit into the header"
     if is_complex_like(cell):

@@ -70,11 +70,12 @@ def told_columns(file: str, header: Header, complex_columns: Sequence[int]) -> C
     """
     meanings = [_with_content(m, index in complex_columns) for index, m in enumerate(header.meanings)]
     remedy = f"say which columns to use, as in {example_choice(meanings)}"
+    unnamed = any(meaning.quantity is None for meaning in meanings)
     if header.line is None:
         raise SweepError(f"{file}: no header names the {len(meanings)} columns; {remedy}")
     place = f"{file}, line {header.line}"
     frequency = _the_one(place, Quantity.FREQUENCY, meanings, remedy)
-    form = _form(place, meanings, remedy)
+    form = _form(place, meanings, remedy if unnamed else "export what is missing")
     gain = tuple(_the_one(place, quantity, meanings, remedy) for quantity in form)
     check: tuple[Column, ...] = ()
     if form == FORMS[0] and _is_determined(meanings, FORMS[1]):
@@ -128,7 +129,7 @@ def _the_one(place: str, quantity: Quantity, meanings: Sequence[Meaning], remedy
         raise SweepError(f"{place}: {names} may each be the {_WORDS[quantity]}; {remedy}")
     if not determined:
         index, meaning = held[0]
-        wanted = " or ".join(units)
+        wanted = " or ".join([", ".join(units[:-1]), units[-1]])
         raise SweepError(
             f"{place}, column {index + 1}: {show(meaning.text)} does not say whether the {_WORDS[quantity]} is in "
             f"{wanted}; {remedy}"

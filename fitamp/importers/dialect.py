@@ -20,7 +20,7 @@ __all__ = ["Block", "Separator", "decimal_mark", "find_block", "is_comment", "sp
 
 _COMMENT = re.compile(r"\s*(?:#|!|%|//)+")
 # A pair in parentheses is one cell also where its comma is the separator.
-_BARE_PAIR = re.compile(r"(^|[,;\s])\s*(\([^()\",;]*[,;][^()\",;]*\))")
+_BARE_PAIR = re.compile(r"(^|[,;\s])\s*(\([^()\"]*[,;][^()\"]*\))")
 _COMMA_PAIR = re.compile(r"\([^;ij]*,[^;ij]*\)")
 # Separator and first row are told from this many lines; no preamble is longer.
 _SAMPLE = 5000
@@ -191,10 +191,9 @@ def _find_start(lines: Sequence[Line], separator: Separator) -> int:
 
 def _lenient_cells(line: Line, separator: Separator) -> tuple[str, ...]:
     try:
-        cells = split_cells(line.text, separator)
+        return split_cells(line.text, separator)
     except ValueError:
         return ()
-    return cells[:-1] if len(cells) > 1 and not cells[-1] else cells
 
 
 def _count_numbers(cells: Iterable[str]) -> int:
@@ -218,7 +217,7 @@ def _common_width(file: str, rows: Sequence[Line], separator: Separator) -> int:
     for row, width in zip(rows, widths, strict=True):
         if width != usual:
             raise SweepError(
-                f"{file}, line {row.number}: {width} cells where other rows have {usual} "
+                f"{file}, line {row.number}: {width} cell{'s' if width > 1 else ''} where other rows have {usual} "
                 f"(separator: {separator.label}); complete the row or remove it"
             )
     return usual

@@ -19,6 +19,10 @@ __all__ = ["Header", "find_header"]
 _NO_UNIT = frozenset({"", "-", "–", "1", "[-]", "[1]", "(-)", "[]", "()", "v/v", "[v/v]", "(v/v)"})
 
 
+# A drawn line under a header.
+_RULE = re.compile(r"[\s|+]*(?:[-=_]{3,}[\s|+]*)+")
+
+
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Header:
     """What the columns hold, one meaning for each; `line` is None where the file has no header."""
@@ -37,7 +41,7 @@ def find_header(file: str, block: Block) -> Header:
         When the line above the rows is neither header nor units, or a row of units contradicts the header.
     """
     above = [line for line in block.above if line.text.strip()]
-    plain = [line for line in above if not is_comment(line.text)]
+    plain = [line for line in above if not is_comment(line.text) and not _RULE.fullmatch(line.text)]
     comments = [line for line in above if is_comment(line.text)]
     names, units = _plain_header(file, plain, block)
     in_comment, comment_units = _commented_header(comments, block)
@@ -45,6 +49,7 @@ def find_header(file: str, block: Block) -> Header:
     if in_comment is not None and (names is None or in_comment[0] > names[0]):
         names, units, reason = in_comment, comment_units, "a comment line whose cells name the columns"
     if names is None:
+        _refuse_uneven_header(file, plain, block)
         blank = tuple(Meaning(text="") for _ in range(block.width))
         return Header(line=None, meanings=blank, decisions=())
     decisions = [Decision(topic="header", choice=f"line {names[0]}", reason=reason)]
@@ -81,6 +86,22 @@ def _refuse_numbers(file: str, line: Line, block: Block, *, nearest: bool) -> No
             f"{file}, line {line.number}: a row of numbers apart from the {block.width} columns below it; "
             "complete the row or remove it"
         )
+
+
+def _refuse_uneven_header(file: str, plain: Sequence[Line], block: Block) -> None:
+    """Refuse a line above the numbers that is a header but for its number of cells."""
+    if not plain:
+        return
+    line = plain[-1]
+    if line.text.count('"') % 2:
+        raise SweepError(f"{file}, line {line.number}: a quote is not closed on this line; close it or remove it")
+    cells = [cell for cell in split_cells(line.text, block.separator) if cell]
+    if len(cells) < 2 or Quantity.FREQUENCY not in {meaning_of(cell).quantity for cell in cells}:
+        return
+    remedy = "give each column one name"
+    if block.separator is Separator.COMMA and block.width == 2 * len(cells):
+        remedy = "the comma seems to be decimal mark as well as separator: export with semicolons or decimal points"
+    raise SweepError(f"{file}, line {line.number}: {len(cells)} names for the {block.width} columns below; {remedy}")
 
 
 def _commented_header(comments: Sequence[Line], block: Block) -> tuple[_Cells | None, _Cells | None]:

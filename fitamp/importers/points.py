@@ -41,10 +41,9 @@ def finish(points: Points, *, origin: Origin, decisions: tuple[Decision, ...], m
         )
     step = np.diff(freq_hz)
     if may_fall and len(step) and (step < 0).sum() > (step > 0).sum():
-        freq_hz, gain, lines, step = freq_hz[::-1], gain[::-1], lines[::-1], -step[::-1]
+        freq_hz, gain, lines = freq_hz[::-1], gain[::-1], lines[::-1]
         reason = f"the file starts at {freq_hz[-1]:g} Hz and falls to {freq_hz[0]:g} Hz"
         decisions = (*decisions, Decision(topic="order", choice="reversed", reason=reason))
-        step = np.diff(freq_hz)
     _refuse_disorder(file, lines, freq_hz)
     left_out = tuple(
         LeftOut(f_hz=0.0, gain=complex(t), reason=_AT_ZERO) for f, t in zip(freq_hz, gain, strict=True) if f == 0
@@ -70,6 +69,6 @@ def _refuse_disorder(file: str, lines: tuple[int, ...], freq_hz: FloatArray) -> 
     if falls.any():
         row = int(np.argmax(falls)) + 1
         raise SweepError(
-            f"{file}, line {lines[row]}: frequency must rise, but {freq_hz[row]:g} Hz stands beside "
-            f"{freq_hz[row - 1]:g} Hz of line {lines[row - 1]}; sort the rows or export one sweep per file"
+            f"{file}, line {lines[row]}: frequency must rise or fall throughout, but {freq_hz[row]:g} Hz stands "
+            f"next to {freq_hz[row - 1]:g} Hz of line {lines[row - 1]}; sort the rows or export one sweep per file"
         )

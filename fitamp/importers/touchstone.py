@@ -16,7 +16,8 @@ from fitamp.errors import SweepError, UsageError
 from fitamp.importers.points import Points, finish
 from fitamp.importers.source import Source
 from fitamp.importers.text import decode
-from fitamp.importers.touchstone_scan import Scan, scan
+from fitamp.importers.touchstone_file import Scan
+from fitamp.importers.touchstone_scan import scan
 from fitamp.sweep import Decision, Origin, Sweep
 
 __all__ = ["read_touchstone"]
