@@ -25,9 +25,18 @@ __all__ = ["settle_sign"]
 # The slope is fitted over this many decades to either side of a point: wide against point noise at ten points a
 # decade, narrow against the two or three decades between the poles of a compensated amplifier.
 _HALF_WINDOW_DECADES = 0.3
-_MIN_WINDOW_POINTS = 5
+_MIN_WINDOW_POINTS = 3
 # Within 60° of one answer and hence 120° or more from the other: decided. In between: ask.
 _DECIDED_COSINE = 0.5
+# Scatter of ln |T| about its local line, beyond which receiver noise leaves nothing of the phase; the bend of the
+# magnitude at a pole makes less than 0.1 of it.
+_MAX_SCATTER = 0.35
+_LEAST_ASKED = 3
+_HANDFUL = 5
+# This share of the points has to be steady.
+_STEADY_SHARE = 0.25
+# And this share of those asked has to lie on the side of their median.
+_AGREED_SHARE = 0.9
 # A median needs no more points than this.
 _MOST_ASKED = 200
 _ASK = "give --sign as-read or --sign inverted"
@@ -79,21 +88,24 @@ def _recognise(sweep: Sweep) -> tuple[Sign, str]:
     """The sign that the band shows, and what was seen."""
     size = np.abs(sweep.gain)
     usable = size > 0
-    if usable.sum() < 3:
-        return Sign.UNKNOWN, "it has fewer than three points"
-    log_f, log_size = np.log(sweep.freq_hz[usable]), np.log(size[usable])
-    phase = np.angle(sweep.gain[usable])
-    low = _lower_half_above_unity(log_f, log_size)
-    if low is None:
-        return (
-            Sign.UNKNOWN,
-            "its magnitude is above 1 at fewer than three points, and below a delay or zero may look like an inversion",
-        )
-    asked = low[np.unique(np.linspace(0, len(low) - 1, _MOST_ASKED).astype(int))]
-    deviation = phase[asked] - np.pi / 2 * _local_slope(log_f, log_size, asked)
-    agreement = float(np.median(np.cos(deviation)))
+    log_f, log_size, phase = np.log(sweep.freq_hz[usable]), np.log(size[usable]), np.angle(sweep.gain[usable])
+    above = np.flatnonzero(log_size > 0)
+    if len(above) < _LEAST_ASKED:
+        few = "its magnitude exceeds 1 at fewer than three points; below, a zero or delay may look like an inversion"
+        return Sign.UNKNOWN, few
+    above = above[np.unique(np.linspace(0, len(above) - 1, _MOST_ASKED).astype(int))]
+    slope, scatter = _local_line(log_f, log_size, above)
+    steady = scatter < _MAX_SCATTER
+    if steady.sum() < max(_LEAST_ASKED, _STEADY_SHARE * len(above)):
+        return Sign.UNKNOWN, "its magnitude scatters too much"
+    low = _lower_half(log_f[above[steady]])
+    asked, slope = above[steady][:low], slope[steady][:low]
+    cosine = np.cos(phase[asked] - np.pi / 2 * slope)
+    agreement = float(np.median(cosine))
+    if np.mean(np.sign(cosine) == np.sign(agreement)) < _AGREED_SHARE:
+        return Sign.UNKNOWN, "its phase scatters too much"
     apart_deg = float(np.degrees(np.arccos(np.clip(agreement, -1, 1))))
-    band = f"from {si(float(np.exp(log_f[low][0])), 'Hz')} to {si(float(np.exp(log_f[low][-1])), 'Hz')}"
+    band = f"from {si(float(np.exp(log_f[asked[0]])), 'Hz')} to {si(float(np.exp(log_f[asked[-1]])), 'Hz')}"
     seen = f"{band} the phase is {apart_deg:.0f}° away from what the slope of the magnitude asks for (median)"
     if agreement >= _DECIDED_COSINE:
         return Sign.AS_READ, seen
@@ -102,24 +114,21 @@ def _recognise(sweep: Sweep) -> tuple[Sign, str]:
     return Sign.UNKNOWN, seen
 
 
-def _lower_half_above_unity(log_f: FloatArray, log_size: FloatArray) -> NDArray[np.intp] | None:
-    """Indices of the points to ask, or None where there are too few with |T| > 1."""
-    above = np.flatnonzero(log_size > 0)
-    if len(above) < 3:
-        return None
-    middle = (log_f[above[0]] + log_f[above[-1]]) / 2
-    low = above[log_f[above] <= middle]
-    return low if len(low) >= 3 else above[:3]
+def _lower_half(log_f: FloatArray) -> int:
+    """How many points lie in the lower half of their band, but a handful where there are as many."""
+    return max(int((log_f <= (log_f[0] + log_f[-1]) / 2).sum()), _HANDFUL)
 
 
-def _local_slope(log_f: FloatArray, log_size: FloatArray, at: NDArray[np.intp]) -> FloatArray:
-    """Slope of ln |T| against ln f around the points `at`, by a straight line through their neighbours."""
+def _local_line(log_f: FloatArray, log_size: FloatArray, at: NDArray[np.intp]) -> tuple[FloatArray, FloatArray]:
+    """Slope of ln |T| against ln f around the points `at`, and the scatter about that line (both dimensionless)."""
     half = _HALF_WINDOW_DECADES * np.log(10)
-    slopes = []
+    slopes, scatters = [], []
     for index in at.tolist():
         first, last = np.searchsorted(log_f, [log_f[index] - half, log_f[index] + half]).tolist()
         first = min(first, max(index - _MIN_WINDOW_POINTS // 2, 0))
         last = max(last, min(index + _MIN_WINDOW_POINTS // 2 + 1, len(log_f)))
         x = log_f[first:last] - log_f[first:last].mean()
-        slopes.append(float(x @ log_size[first:last] / (x @ x)))
-    return np.array(slopes)
+        y = log_size[first:last] - log_size[first:last].mean()
+        slopes.append(float(x @ y / (x @ x)))
+        scatters.append(float(np.sqrt(np.sum((y - slopes[-1] * x) ** 2) / max(len(x) - 2, 1))))
+    return np.array(slopes), np.array(scatters)
