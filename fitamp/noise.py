@@ -17,7 +17,8 @@ __all__ = ["estimate_noise", "simulate_bench"]
 CONTRAST = np.array([1.0, -2.0, 1.0]) / np.sqrt(6.0)
 # A sweep without any scatter (a simulator's export) still gets a floor: the digits of a double and a little more.
 FLOOR = 1e-13
-ROUNDS = 50
+# Variance components are sought within a factor exp(60) of the mean scatter, far beyond any receiver's range.
+LOG_REACH = 60.0
 
 
 def estimate_noise(sweep: Sweep, model_gain: ComplexArray) -> NoiseLevels:
@@ -38,8 +39,7 @@ def estimate_noise(sweep: Sweep, model_gain: ComplexArray) -> NoiseLevels:
     Notes
     -----
     Each |second difference|² is exponential with mean Σ_j x_kj θ_j, θ = (n_r², n_e², rel²) ≥ 0: a Gamma generalised
-    linear model with identity link (P. McCullagh and J. A. Nelder, Generalized Linear Models, ch. 8), solved by
-    iteratively reweighted non-negative least squares.
+    linear model with identity link (P. McCullagh and J. A. Nelder, Generalized Linear Models, ch. 8).
     """
     model = np.abs(model_gain) ** 2
     size = 1 / (1 + model)
@@ -60,22 +60,25 @@ def estimate_noise(sweep: Sweep, model_gain: ComplexArray) -> NoiseLevels:
 
 
 def _gamma_regression(observed: FloatArray, design: FloatArray) -> FloatArray:
-    from scipy.optimize import nnls
+    """Coefficients ≥ 0 of exponential means `design` @ θ, by their logarithms: no step can leave the region."""
+    from scipy.optimize import minimize
 
     scale = design.max(axis=0)
-    columns = design / scale
-    level = observed.mean()
+    level = float(observed.mean())
     if not level > 0:
         return np.zeros(design.shape[1])
-    mean = columns.mean(axis=1) / columns.mean() * level + 1e-3 * level
-    coefficients = np.zeros(design.shape[1])
-    for _ in range(ROUNDS):
-        previous = coefficients
-        coefficients, _ = nnls(columns / mean[:, np.newaxis], observed / mean)
-        mean = np.maximum(columns @ coefficients, 1e-12 * level)
-        if np.allclose(coefficients, previous, rtol=1e-4, atol=1e-10 * level):
-            break
-    return np.asarray(coefficients / scale, dtype=float)
+    columns, target = design / scale, observed / level
+
+    def deviance(logs: FloatArray) -> tuple[float, FloatArray]:
+        shares = np.exp(logs)
+        mean = columns @ shares
+        slopes = (columns * ((1 - target / mean) / mean)[:, np.newaxis]).sum(axis=0) * shares
+        return float((target / mean + np.log(mean)).sum()), slopes
+
+    # Each component explains what is largest in its own stretch of the band, to begin with.
+    start = np.log([np.average(target, weights=column**2) for column in columns.T / columns.max(axis=1)])
+    answer = minimize(deviance, start, jac=True, method="L-BFGS-B", bounds=[(-LOG_REACH, LOG_REACH)] * len(start))
+    return np.asarray(np.exp(answer.x) * level / scale, dtype=float)
 
 
 def simulate_bench(gain: ComplexArray, noise: NoiseLevels, rng: np.random.Generator) -> ComplexArray:

@@ -241,7 +241,7 @@ class Sweep:
             ("file", self.origin.file),
             ("points", f"{len(self)} used, {len(self.left_out)} left out"),
             ("band", f"{si(self.f_min_hz, 'Hz')} to {si(self.f_max_hz, 'Hz')}"),
-            ("loop gain", f"{self.magnitude_db[0]:.1f} dB at the low end, {self.magnitude_db[-1]:.1f} dB at the high end"),
+            ("loop gain", f"{self.magnitude_db[0]:.1f} dB to {self.magnitude_db[-1]:.1f} dB, low end to high end"),
             ("sign", self.sign.value),
         ]
         rows += [(decision.topic, f"{decision.choice} ({decision.reason})") for decision in self.decisions]

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 import math
+from collections.abc import Mapping
 from typing import Any
 
 from fitamp.comparison import Comparison
@@ -14,7 +15,7 @@ from fitamp.sweep import Sweep
 __all__ = ["comparison_as_dict", "dumps", "fit_as_dict", "sweep_as_dict"]
 
 
-def dumps(record: dict[str, Any]) -> str:
+def dumps(record: Mapping[str, Any]) -> str:
     """One JSON object as text; ValueError for a NaN or infinity that slipped in."""
     return json.dumps(record, indent=2, ensure_ascii=False, allow_nan=False)
 

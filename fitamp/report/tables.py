@@ -11,10 +11,11 @@ from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
 from fitamp.comparison import Comparison, Row
+from fitamp.estimate import Estimate
 from fitamp.fitting import LoopFit
 from fitamp.fitting.result import text_of, unit_of
 from fitamp.sweep import Sweep
-from fitamp.units import si, si_with_error
+from fitamp.units import si, si_with_error, to_db
 
 if TYPE_CHECKING:
     from rich.console import Console
@@ -102,8 +103,8 @@ def comparison_text(comparison: Comparison) -> str:
             "(1 puts the zero at infinity; with gm2 and Cc as designed)",
         )
     title = f"{printable(comparison.fit.sweep.origin.file)} against {printable(comparison.design.file)}"
-    headings = ("quantity", "designed", "seen as\nmeasured", "measured", "deviation", "σ", "limits", "inside")
-    _print_table(console, title, headings, [_comparison_row(row) for row in comparison.rows], numbers=True)
+    headings = ("quantity", "designed", "seen as\nmeasured", "measured ± 1 σ", "deviation", "in σ", "limits", "within")
+    _print_table(console, title, headings, _comparison_rows(comparison.rows), numbers=True)
     _margins(console, comparison.fit, rows=("overshoot", "settling_s"))
     _say(
         console,
@@ -142,39 +143,91 @@ def noise_sentence(fit: LoopFit) -> str:
     )
 
 
+def _comparison_rows(rows: Sequence[Row]) -> list[tuple[str, ...]]:
+    cells = []
+    for row in rows:
+        cells.append(_comparison_row(row))
+        if row.quantity == "zero_time_s":
+            cells.append(_zero_row(row))
+    return cells
+
+
 def _comparison_row(row: Row) -> tuple[str, ...]:
     unit = unit_of(row.quantity)
     deviation = "–"
     if row.deviation is not None:
         deviation = f"{row.deviation:+.2f} {unit}" if unit in {"°", "dB"} else f"{100 * row.deviation:+.2f} %"
+    if row.quantity == "dc_gain":
+        # A gain is read in dB at the bench; scripts get V/V.
+        numbers = [_decibels(value) for value in (row.designed, row.designed_as_measured)]
+        measured, limits = _gain_text(row.measured), _limits(_as_db(row.low), _as_db(row.high), "dB")
+    else:
+        numbers = [si(value, unit) for value in (row.designed, row.designed_as_measured)]
+        measured, limits = text_of(row.quantity, row.measured), _limits(row.low, row.high, unit)
+        if row.quantity == "gain_margin_db" and row.measured.value is None:
+            measured = "unlimited"
     return (
         LABELS[row.quantity],
-        _short(row.designed, unit),
-        _short(row.designed_as_measured, unit),
-        text_of(row.quantity, row.measured),
+        *numbers,
+        measured,
         deviation.replace("-", "−"),
         "–" if row.sigma is None else _sigma(row.sigma),
-        _limits(row.low, row.high, unit),
+        limits,
         {True: "yes", False: "NO", None: "–" if row.low is None and row.high is None else "?"}[row.inside],
     )
+
+
+def _zero_row(row: Row) -> tuple[str, ...]:
+    """The zero time once more, as a frequency with its half plane."""
+    places = [_zero_place(value) for value in (row.designed, row.designed_as_measured, row.measured.value)]
+    return ("as a zero at", *places, "", "", "", "")
+
+
+def _zero_place(zero_time_s: float | None) -> str:
+    if zero_time_s is None:
+        return "–"
+    if zero_time_s == 0:
+        return "infinity"
+    side = "L" if zero_time_s > 0 else "R"
+    return f"{si(1 / (2 * math.pi * abs(zero_time_s)), 'Hz', digits=3)} {side}"
+
+
+def _as_db(ratio: float | None) -> float | None:
+    return None if ratio is None else to_db(ratio)
+
+
+def _decibels(ratio: float | None) -> str:
+    return si(_as_db(ratio), "dB")
+
+
+def _gain_text(gain: Estimate) -> str:
+    """A gain estimate in dB, or its bound."""
+    if gain.value is not None and gain.stderr is not None:
+        return si_with_error(to_db(gain.value), 20 / math.log(10) * gain.stderr / gain.value, "dB")
+    low, high = gain.ci95
+    in_db = Estimate(value=None, stderr=None, ci95=(_as_db(low), _as_db(high)), known=gain.known)
+    return text_of("gain_margin_db", in_db)
 
 
 def _sigma(sigma: float) -> str:
     return (f"{sigma:+.1f}" if abs(sigma) < 100 else f"{sigma:+.0f}").replace("-", "−")
 
 
-def _short(value: float | None, unit: str) -> str:
-    return si(value, unit)
-
-
 def _limits(low: float | None, high: float | None, unit: str) -> str:
     if low is not None and high is not None and math.isfinite(low) and math.isfinite(high):
-        return f"{si(low, unit, digits=3)} … {si(high, unit, digits=3)}"
+        return _span(low, high, unit)
     if low is not None and math.isfinite(low):
         return f"≥ {si(low, unit, digits=3)}"
     if high is not None and math.isfinite(high):
         return f"≤ {si(high, unit, digits=3)}"
     return "–"
+
+
+def _span(low: float, high: float, unit: str) -> str:
+    """Both ends under the larger one's prefix where that keeps them readable: "80 … 160 MHz"."""
+    start, end = si(low, unit, digits=3), si(high, unit, digits=3)
+    number, _, suffix = end.rpartition(" ")
+    return f"{start.rpartition(' ')[0]} … {number} {suffix}" if start.endswith(f" {suffix}") else f"{start} … {end}"
 
 
 def _interval(name: str, ci95: tuple[float | None, float | None]) -> str:
@@ -226,7 +279,14 @@ def _print_table(
     from rich.table import Table
     from rich.text import Text
 
-    table = Table(title=Text(title), title_justify="left", box=box.SIMPLE_HEAD, pad_edge=False, padding=(0, 1, 0, 0))
+    table = Table(
+        title=Text(title),
+        title_justify="left",
+        box=box.SIMPLE_HEAD,
+        pad_edge=False,
+        padding=(0, 1, 0, 0),
+        show_edge=False,
+    )
     for index, heading in enumerate(headings):
         table.add_column(Text(heading), justify="right" if numbers and index else "left")
     for row in rows:

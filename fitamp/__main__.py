@@ -1,0 +1,5 @@
+"""`python -m fitamp`."""
+
+from fitamp.cli import run
+
+run()

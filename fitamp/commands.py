@@ -1,0 +1,165 @@
+"""What each command does, once parsed. Errors travel as FitampError to `fitamp.cli`."""
+
+from __future__ import annotations
+
+import argparse
+import csv
+import io
+import sys
+from collections.abc import Mapping
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+from fitamp.comparison import Comparison
+from fitamp.comparison import compare as compare_sweep
+from fitamp.design import read_design
+from fitamp.errors import UsageError
+from fitamp.fitting import fit_sweep
+from fitamp.importers import read_sweep
+from fitamp.report.as_json import comparison_as_dict, dumps, fit_as_dict, sweep_as_dict
+from fitamp.report.files import refuse_existing, staged_directory, write_text
+from fitamp.report.tables import comparison_text, fit_text, sweep_text
+from fitamp.sweep import Sign, Sweep
+
+if TYPE_CHECKING:
+    from matplotlib.figure import Figure
+
+__all__ = ["compare", "demo", "fit", "read"]
+
+STDOUT = "-"
+
+
+def read(args: argparse.Namespace) -> int:
+    """`fitamp read FILE…`."""
+    sweeps = [_sweep(args, file) for file in args.files]
+    record = {"schema": "fitamp/read/1", "sweeps": [sweep_as_dict(sweep) for sweep in sweeps]}
+    _deliver(args, record, "\n".join(sweep_text(sweep) for sweep in sweeps))
+    return 0
+
+
+def fit(args: argparse.Namespace) -> int:
+    """`fitamp fit FILE`."""
+    _refuse_early(args)
+    result = fit_sweep(_sweep(args, args.file))
+    record, text = fit_as_dict(result), fit_text(result)
+    if args.out:
+        from fitamp.plots import fit_figures
+
+        _write_folder(Path(args.out), "fit", record, text, fit_figures(result), force=args.force)
+    _deliver(args, record, text)
+    return 0
+
+
+def compare(args: argparse.Namespace) -> int:
+    """`fitamp compare FILE --design D.toml`."""
+    _refuse_early(args)
+    design = read_design(args.design)
+    result = compare_sweep(_sweep(args, args.file), design)
+    record, text = comparison_as_dict(result), comparison_text(result)
+    if args.out:
+        _write_comparison(result, record, text, Path(args.out), force=args.force)
+    _deliver(args, record, text)
+    return 0
+
+
+def demo(args: argparse.Namespace) -> int:
+    """`fitamp demo`: the main job on every example part, with its pictures."""
+    examples = _examples(args.examples)
+    out = Path(args.out)
+    design = read_design(examples / "line_buffer.toml")
+    parts = sorted(path for path in examples.iterdir() if path.name.startswith("part_"))
+    for part in parts:
+        refuse_existing(out / part.stem, force=args.force)
+    print("Invented parts of an invented chip, each held against its design file.\n")
+    for part in parts:
+        result = compare_sweep(read_sweep(part), design)
+        record, text = comparison_as_dict(result), comparison_text(result)
+        _write_comparison(result, record, text, out / part.stem, force=args.force)
+        print(f"{part.name}\n  {result.verdict.nulling.value}: {result.verdict.reason}")
+        print(f"  what to do: {result.advice.sentence}\n")
+    print(f"Pictures and numbers of each part are in {out.resolve()}")
+    for part in parts:
+        print(f"  {Path(out.name) / part.stem / 'loop.png'}")
+    return 0
+
+
+def _examples(given: str | None) -> Path:
+    here = Path(__file__).resolve().parent.parent / "data_examples"
+    folder = Path(given) if given else next((f for f in (Path("data_examples"), here) if f.is_dir()), here)
+    if not (folder / "line_buffer.toml").is_file():
+        raise UsageError(
+            f"{folder}: no example files here; name their folder with --examples (data_examples of a checkout)"
+        )
+    return folder
+
+
+def _sweep(args: argparse.Namespace, file: str) -> Sweep:
+    sign = Sign(args.sign) if args.sign else None
+    return read_sweep(file, columns=args.columns, trace=args.trace, sign=sign)
+
+
+def _refuse_early(args: argparse.Namespace) -> None:
+    """Say that output exists before the work is done, not after."""
+    if args.out:
+        refuse_existing(Path(args.out), force=args.force)
+    if args.json and args.json != STDOUT:
+        refuse_existing(Path(args.json), force=args.force)
+
+
+def _deliver(args: argparse.Namespace, record: Mapping[str, Any], text: str) -> None:
+    if args.json == STDOUT:
+        print(dumps(record))
+        return
+    if args.json:
+        write_text(Path(args.json), dumps(record) + "\n", force=getattr(args, "force", False))
+    sys.stdout.write(text)
+    if getattr(args, "out", None):
+        print(f"pictures and numbers: {args.out}")
+
+
+def _write_comparison(result: Comparison, record: Mapping[str, Any], text: str, folder: Path, *, force: bool) -> None:
+    from fitamp.plots import comparison_figures
+
+    _write_folder(folder, "comparison", record, text, comparison_figures(result), force=force, table=_table(record))
+
+
+def _write_folder(
+    folder: Path,
+    name: str,
+    record: Mapping[str, Any],
+    text: str,
+    figures: Mapping[str, Figure],
+    *,
+    force: bool,
+    table: str | None = None,
+) -> None:
+    from fitamp.plots import save_figures
+
+    with staged_directory(folder, force=force) as staging:
+        write_text(staging / f"{name}.json", dumps(record) + "\n", force=False)
+        write_text(staging / f"{name}.txt", text, force=False)
+        if table is not None:
+            write_text(staging / f"{name}.csv", table, force=False)
+        save_figures(figures, staging)
+
+
+def _table(record: Mapping[str, Any]) -> str:
+    """The comparison rows as CSV; an unknown cell is empty."""
+    columns = (
+        "quantity",
+        "designed",
+        "designed_as_measured",
+        "measured",
+        "stderr",
+        "deviation",
+        "sigma",
+        "low",
+        "high",
+    )
+    stream = io.StringIO()
+    writer = csv.writer(stream, lineterminator="\n")
+    writer.writerow((*columns, "inside"))
+    for row in record["comparison"]:
+        inside = {True: "yes", False: "no", None: ""}[row["inside"]]
+        writer.writerow([*("" if row[name] is None else row[name] for name in columns), inside])
+    return stream.getvalue()
