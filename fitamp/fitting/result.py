@@ -39,6 +39,7 @@ class WarningCode(StrEnum):
     POLE2_ABOVE_BAND = "pole2-above-band"
     ZERO_UNDETERMINED = "zero-undetermined"
     LAG_AMBIGUITY = "lag-ambiguity"
+    LAG_FITTED = "lag-fitted"
     CROSSOVER_OUTSIDE_BAND = "crossover-outside-band"
     NO_CROSSOVER = "no-crossover"
 

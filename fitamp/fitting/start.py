@@ -20,19 +20,19 @@ __all__ = ["Start", "starts"]
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Start:
-    """A guess of the loop: g = T(0)/a1 (1/s), q = 1/a1 (1/s), b = a2/a1 (s) and the zero time (s)."""
+    """A guess of the loop: g = T(0)/a1 (1/s), q = 1/a1 (1/s), b = a2/a1 (s), zero time (s), far-pole time a3/a2 (s)."""
 
     g: float
     q: float
     b: float
     zero_time_s: float
+    far_pole_s: float = 0.0
 
 
 def starts(sweep: Sweep) -> tuple[Start, ...]:
     """Candidate starting values, the likelier first; whoever fits keeps the best end."""
-    found = [guess for count in (2, 3) if (guess := _from_vector_fit(sweep, count)) is not None]
-    line = _from_straight_lines(sweep)
-    return (*found, line)
+    found = [guess for count in (2, 3) for guess in _from_vector_fit(sweep, count)]
+    return (*found, _from_straight_lines(sweep))
 
 
 def _from_straight_lines(sweep: Sweep) -> Start:
@@ -45,29 +45,35 @@ def _from_straight_lines(sweep: Sweep) -> Start:
     return Start(g=float(g), q=float(q), b=float(0.3 / g), zero_time_s=0.0)
 
 
-def _from_vector_fit(sweep: Sweep, poles: int) -> Start | None:
-    """The two lowest poles and the nearest zero of a pair fit with `poles` poles, or None where it gives no such."""
+def _from_vector_fit(sweep: Sweep, poles: int) -> tuple[Start, ...]:
+    """Guesses from a pair fit with `poles` poles: its two lowest poles, and its three lowest where there are three."""
     model = _fit_pair(sweep, poles)
     if model is None:
-        return None
+        return ()
     pole_matrix, residues, constant = model
-    zeros_of = [_zeros(pole_matrix, residues[i], constant[i]) for i in range(2)]
-    loop_zeros, loop_poles = zeros_of
+    loop_zeros, loop_poles = (_zeros(pole_matrix, residues[i], constant[i]) for i in range(2))
     loop_poles = loop_poles[np.argsort(np.abs(loop_poles))]
-    if len(loop_poles) < 2:
-        return None
-    first, second = loop_poles[:2]
-    total, product = (first + second).real, (first * second).real
-    # Denominator 1 + a1 s + a2 s²: signs that the two-pole model cannot hold are mirrored; it is only a start.
-    a1, a2 = abs(total / product), abs(1 / product)
     dc = _dc_gain(pole_matrix, residues, constant)
-    if not (np.isfinite(a1) and a1 > 0 and np.isfinite(dc) and dc > 0):
-        return None
+    if len(loop_poles) < 2 or not (np.isfinite(dc) and dc > 0):
+        return ()
     zero_time_s = 0.0
     if len(loop_zeros):
         nearest = loop_zeros[np.argmin(np.abs(loop_zeros))]
         zero_time_s = float(-(1 / nearest).real)
-    return Start(g=float(dc / a1), q=float(1 / a1), b=float(a2 / a1), zero_time_s=zero_time_s)
+    guesses = [_guess(dc, loop_poles[:count], zero_time_s) for count in (2, 3) if count <= len(loop_poles)]
+    return tuple(guess for guess in guesses if guess is not None)
+
+
+def _guess(dc_gain: float, poles: ComplexArray, zero_time_s: float) -> Start | None:
+    """Denominator 1 + a1 s + a2 s² (+ a3 s³); signs that the model cannot hold are mirrored: it is only a start."""
+    coefficients = np.abs(np.poly(1 / poles).real[1:])
+    if not (np.isfinite(coefficients).all() and (coefficients > 0).all()):
+        return None
+    a1, a2 = coefficients[:2]
+    far_pole_s = float(coefficients[2] / a2) if len(coefficients) > 2 else 0.0
+    return Start(
+        g=float(dc_gain / a1), q=float(1 / a1), b=float(a2 / a1), zero_time_s=zero_time_s, far_pole_s=far_pole_s
+    )
 
 
 def _fit_pair(sweep: Sweep, poles: int) -> tuple[ComplexArray, ComplexArray, FloatArray] | None:

@@ -23,23 +23,20 @@ __all__ = ["place_of_zero", "warnings_of"]
 SMALL_AGAINST_POLE2 = 0.1
 
 
-def place_of_zero(parameters: FittedParameters, with_any_lag: Estimate | None) -> ZeroSeen:
+def place_of_zero(parameters: FittedParameters, strict: Estimate, adequacy: Adequacy) -> ZeroSeen:
     """State the half plane only where the whole 95 % interval agrees.
 
     Parameters
     ----------
-    with_any_lag
-        Zero time with third pole and delay free; None where priors for them are already in `parameters`. A forgotten
-        lag can only make a zero look farther right, so "left" holds without it while "right" and "infinity" do not.
+    strict
+        Zero time with third pole and delay free, or under priors. A forgotten lag can only make a zero look farther
+        right, so with an adequate model "left" holds without it, while "right" and "infinity" do not.
     """
     plain = parameters.zero_time_s
-    strict = with_any_lag or plain
     small_s = _small_s(parameters)
-    if plain.known is Known.UNDETERMINED:
-        place = ZeroPlace.UNDECIDED
-    elif strict.is_within(-small_s, small_s):
+    if strict.is_within(-small_s, small_s):
         place = ZeroPlace.INFINITY
-    elif plain.is_within(0.0, math.inf):
+    elif (adequacy.adequate and plain.is_within(0.0, math.inf)) or strict.is_within(0.0, math.inf):
         place = ZeroPlace.LEFT
     elif strict.is_within(-math.inf, 0.0):
         place = ZeroPlace.RIGHT
@@ -104,6 +101,18 @@ def warnings_of(
         )
     if parameters.zero_time_s.known is Known.UNDETERMINED:
         warn(WarningCode.ZERO_UNDETERMINED, "the zero time is not determined by this band and noise")
+    if with_any_lag is not None:
+        lags = [
+            f"a {name} of {si(lag.value, 's', digits=3)}"
+            for name, lag in (("path delay", parameters.delay_s), ("third pole's time", parameters.far_pole_s))
+            if lag.stderr is not None
+        ]
+        if lags:
+            warn(
+                WarningCode.LAG_FITTED,
+                f"the sweep needed {' and '.join(lags)} beside two poles and a zero; a design file says which lag to "
+                "expect",
+            )
     if with_any_lag is not None and _lag_matters(parameters.zero_time_s, with_any_lag):
         warn(
             WarningCode.LAG_AMBIGUITY,

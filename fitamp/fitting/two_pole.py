@@ -69,11 +69,14 @@ class TwoPole:
         delay_s = by_name["delay"] * self.time_s if "delay" in by_name else self.delay.mean_s
         return float(g), float(q), float(b), float(values[3] * self.time_s), float(far_pole_s), float(delay_s)
 
-    def vector(self, *, g: float, q: float, b: float, zero_time_s: float) -> FloatArray:
-        """Parameter vector of SI values; τ3 and τd, where free, start from their priors."""
+    def vector(
+        self, *, g: float, q: float, b: float, zero_time_s: float, far_pole_s: float | None = None
+    ) -> FloatArray:
+        """Parameter vector of SI values; τ3 (unless given) and τd, where free, start from their priors."""
         values = [np.log(g), np.log(q), np.log(b), zero_time_s / self.time_s]
         if self.far_pole.sd_s:
-            values.append(max(self.far_pole.intercept_s + self.far_pole.slope * zero_time_s, 0.0) / self.time_s)
+            expected = max(self.far_pole.intercept_s + self.far_pole.slope * zero_time_s, 0.0)
+            values.append((expected if far_pole_s is None else far_pole_s) / self.time_s)
         if self.delay.sd_s:
             values.append(self.delay.mean_s / self.time_s)
         return np.array(values)
