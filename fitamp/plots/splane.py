@@ -1,0 +1,233 @@
+"""Poles and zero in the s-plane: designed above measured on one real axis, or in the plane where there is a pair."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from matplotlib.axes import Axes
+from matplotlib.figure import Figure
+
+from fitamp.comparison import Comparison
+from fitamp.fitting import LoopFit
+from fitamp.plots.axes import signed_decades
+from fitamp.plots.header import figure_with_head
+from fitamp.plots.roots import Mark, designed_marks, deviation_words, measured_marks
+from fitamp.plots.splane_frame import linear_hz, name_half_planes, reach_hz
+from fitamp.plots.splane_pairs import draw_pairs
+from fitamp.plots.style import COLOURS, SIZE_PT, SMALL_PT, WIDTH_IN, drawing_style, place_axes, text_width_in
+
+__all__ = ["splane_figure"]
+
+LEFT_IN, RIGHT_IN, BOTTOM_IN, TOP_IN = 0.95, 0.25, 0.6, 0.3
+LEVEL_IN, FIRST_LEVEL_IN, LANE_GAP_IN = 0.21, 0.3, 0.75
+BAR_IN = 0.24
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class _Label:
+    """A label beside its leader: x of the leader, extent and level; all in inches but the level."""
+
+    at: float
+    start: float
+    end: float
+    level: int
+    words: str
+
+
+def splane_figure(fit: LoopFit, comparison: Comparison | None = None) -> Figure:
+    """Draw poles (×) and zero (○) in the s-plane over 2π, in hertz, with their 95 % regions.
+
+    Both half planes are drawn in decades, linear around 0. With all roots real, the designed ones stand in a lane above
+    the measured ones. A region that passes through infinity reaches both edges.
+    """
+    with drawing_style():
+        measured = measured_marks(fit)
+        designed = designed_marks(comparison.design) if comparison is not None else ()
+        if any(mark.is_pair for mark in (*measured, *designed)):
+            return draw_pairs(fit, comparison, measured, designed)
+        return _draw_lanes(fit, comparison, measured, designed)
+
+
+def _draw_lanes(
+    fit: LoopFit, comparison: Comparison | None, measured: tuple[Mark, ...], designed: tuple[Mark, ...]
+) -> Figure:
+    reach, linear = reach_hz(fit, (*measured, *designed)), linear_hz((*measured, *designed))
+    width_in = WIDTH_IN - LEFT_IN - RIGHT_IN
+    below = _levels(measured, linear, reach, width_in, comparison)
+    above = _levels(designed, linear, reach, width_in, None)
+    measured_y = _room(below)
+    designed_y = measured_y + LANE_GAP_IN
+    top = designed_y + _room(above) if designed else measured_y + FIRST_LEVEL_IN
+    figure = figure_with_head(fit, comparison, body_in=BOTTOM_IN + top + TOP_IN)
+    axes = place_axes(figure, left=LEFT_IN, bottom=BOTTOM_IN, width=width_in, height=top)
+    signed_decades(axes.xaxis, linear, reach)
+    axes.set_xlim(-reach, reach)
+    axes.set_ylim(0, top)
+    rows = {"measured": measured_y} | ({"designed": designed_y} if designed else {})
+    axes.set_yticks(list(rows.values()), list(rows), size=SIZE_PT)
+    axes.tick_params(axis="y", length=0)
+    axes.set_xlabel("s-plane over 2π: real axis (decades on both sides, linear around 0)")
+    axes.grid(True, axis="x")
+    name_half_planes(axes)
+    for y in rows.values():
+        axes.axhline(y, color="#AAAAAA", linewidth=0.8, zorder=1)
+    _draw_regions(axes, measured, measured_y, reach)
+    if designed:
+        _draw_moves(axes, measured, designed, (measured_y, designed_y), reach)
+    _draw_marks(axes, measured, measured_y, "measured")
+    _draw_marks(axes, designed, designed_y, "designed")
+    _draw_labels(axes, below, measured_y, -1, width_in)
+    _draw_labels(axes, above, designed_y, +1, width_in)
+    return figure
+
+
+def _position_in(value_hz: float, linear: float, reach: float, width_in: float) -> float:
+    """Where a value falls along the axis, in inches from its left end."""
+    from matplotlib.scale import SymmetricalLogTransform
+
+    transform = SymmetricalLogTransform(10, linear, 0.5)
+    at, end = transform.transform([value_hz, reach])
+    return float((at / end + 1) / 2 * width_in)
+
+
+def _levels(
+    marks: tuple[Mark, ...], linear: float, reach: float, width_in: float, comparison: Comparison | None
+) -> list[_Label]:
+    """Stairs of labels: from the origin outwards each starts at its own leader, one level up where it would overlap."""
+    placed: list[_Label] = []
+    for mark in sorted(marks, key=lambda m: abs(_anchor_hz(m, reach))):
+        anchor_hz = _anchor_hz(mark, reach)
+        at = _position_in(anchor_hz, linear, reach, width_in)
+        words = f"{mark.label} {mark.words}{deviation_words(comparison, mark)}"
+        extent = text_width_in(words) + 0.12
+        start, end = (at, at + extent) if anchor_hz < 0 else (at - extent, at)
+        if start < 0:
+            start, end = 0.0, extent
+        if end > width_in:
+            start, end = width_in - extent, width_in
+        level = 0
+        while any(label.level == level and label.start < end and start < label.end for label in placed):
+            level += 1
+        placed.append(_Label(at=at, start=start, end=end, level=level, words=words))
+    return placed
+
+
+def _anchor_hz(mark: Mark, reach: float) -> float:
+    """Where a mark's label points: at the root, at the middle of its only region, or at the edge for infinity."""
+    if mark.value_hz is not None:
+        return max(-reach, min(reach, mark.value_hz.real))
+    if len(mark.regions_hz) == 1:
+        start, end = (max(-reach, min(reach, edge)) for edge in mark.regions_hz[0])
+        return start if abs(start) > abs(end) else end
+    return -reach
+
+
+def _room(labels: list[_Label]) -> float:
+    return FIRST_LEVEL_IN + LEVEL_IN * (1 + max((label.level for label in labels), default=0))
+
+
+def _draw_labels(axes: Axes, labels: list[_Label], y: float, direction: int, width_in: float) -> None:
+    for label in labels:
+        height = y + direction * (FIRST_LEVEL_IN + LEVEL_IN * label.level)
+        to_axes = axes.get_yaxis_transform()
+        axes.plot([label.at / width_in] * 2, [y, height], color="#777777", linewidth=0.8, transform=to_axes, zorder=1.8)
+        axes.text(
+            (label.start + 0.06) / width_in,
+            height,
+            label.words,
+            size=SMALL_PT,
+            ha="left",
+            va="center",
+            transform=to_axes,
+            zorder=5,
+        )
+
+
+def _draw_regions(axes: Axes, marks: tuple[Mark, ...], y: float, reach: float) -> None:
+    for mark in marks:
+        for start, end in mark.regions_hz:
+            low, high = max(start, -reach), min(end, reach)
+            is_open = start < -reach or end > reach
+            axes.barh(
+                y,
+                high - low,
+                left=low,
+                height=BAR_IN,
+                facecolor="#9DC3E6" if not is_open else "white",
+                edgecolor=COLOURS["fitted"],
+                hatch="////" if is_open else None,
+                linewidth=0.8,
+                zorder=2,
+                gid=f"region {mark.name}",
+            )
+            for edge, is_out, marker in ((-reach, start < -reach, "<"), (reach, end > reach, ">")):
+                if is_out:
+                    axes.plot(
+                        [edge], [y], marker, color=COLOURS["fitted"], markersize=11, clip_on=False, gid="to infinity"
+                    )
+
+
+def _draw_marks(axes: Axes, marks: tuple[Mark, ...], y: float, row: str) -> None:
+    colour = COLOURS["fitted" if row == "measured" else "designed"]
+    for mark in marks:
+        if mark.value_hz is not None:
+            axes.plot(
+                [mark.value_hz.real],
+                [y],
+                "o" if mark.is_zero else "x",
+                color=colour,
+                markerfacecolor=colour if row == "measured" else "white",
+                markersize=10,
+                markeredgewidth=2.4,
+                gid=f"{row} {mark.name}",
+                zorder=4,
+            )
+
+
+def _draw_moves(
+    axes: Axes, measured: tuple[Mark, ...], designed: tuple[Mark, ...], lanes: tuple[float, float], reach: float
+) -> None:
+    """An arrow from each designed root to the measured one; between half planes it goes through infinity."""
+    measured_y, designed_y = lanes
+    found = {mark.name: mark for mark in measured}
+    for mark in designed:
+        other = found.get(mark.name)
+        if other is None or mark.value_hz is None:
+            continue
+        start, side = mark.value_hz.real, -1 if mark.value_hz.real < 0 else 1
+        if mark.is_zero and (other.reaches_infinity or (other.value_hz and other.value_hz.real * side < 0)):
+            middle = (measured_y + designed_y) / 2
+            _arrow(axes, (start, designed_y), (side * reach, middle), words="to ∞")
+            if not other.reaches_infinity and other.value_hz is not None:
+                _arrow(axes, (-side * reach, middle), (other.value_hz.real, measured_y), words="from ∞")
+        elif other.value_hz is not None:
+            _arrow(axes, (start, designed_y), (other.value_hz.real, measured_y))
+
+
+def _arrow(axes: Axes, start: tuple[float, float], end: tuple[float, float], words: str = "") -> None:
+    colour = COLOURS["bad"] if words else "#777777"
+    axes.annotate(
+        "",
+        xy=end,
+        xytext=start,
+        arrowprops={
+            "arrowstyle": "-|>",
+            "color": colour,
+            "linewidth": 1.8 if words else 1.2,
+            "shrinkA": 8,
+            "shrinkB": 8,
+        },
+        zorder=3,
+    )
+    if words:
+        at_edge = end if words.startswith("to") else start
+        axes.annotate(
+            words,
+            xy=at_edge,
+            xytext=(5 if at_edge[0] < 0 else -5, 4),
+            textcoords="offset points",
+            ha="left" if at_edge[0] < 0 else "right",
+            va="bottom",
+            size=SMALL_PT,
+            color=colour,
+        )

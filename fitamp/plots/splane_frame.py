@@ -1,0 +1,57 @@
+"""The frame of both s-plane pictures: how far they reach, where the scale is linear, and the names of the half planes."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterable
+
+from matplotlib.axes import Axes
+
+from fitamp.fitting import LoopFit
+from fitamp.plots.roots import Mark
+from fitamp.plots.style import SMALL_PT
+
+__all__ = ["distances_hz", "linear_hz", "name_half_planes", "reach_hz"]
+
+# A root this many times beyond the sweep is as good as at infinity for the picture.
+FARTHEST = 300.0
+
+
+def reach_hz(fit: LoopFit, marks: Iterable[Mark]) -> float:
+    """Half the width of the plane: beyond the farthest root or end of a region that the sweep can tell from infinity."""
+    limit = FARTHEST * fit.sweep.f_max_hz
+    return 2.5 * max([d for d in distances_hz(marks) if d <= limit], default=fit.sweep.f_max_hz)
+
+
+def linear_hz(marks: Iterable[Mark]) -> float:
+    """Below this distance the scale is linear: the decade of the root nearest the origin."""
+    nearest = min((d for d in distances_hz(marks) if d > 0), default=1.0)
+    return float(10.0 ** math.floor(math.log10(nearest)))
+
+
+def distances_hz(marks: Iterable[Mark]) -> list[float]:
+    """Distances from the origin of all roots and of all finite ends of their regions."""
+    shown = list(marks)
+    ends = [abs(end) for mark in shown for region in mark.regions_hz for end in region]
+    return [end for end in ends if math.isfinite(end)] + [abs(m.value_hz) for m in shown if m.value_hz is not None]
+
+
+def name_half_planes(axes: Axes) -> None:
+    """Tint the right half plane and name both above the axes."""
+    low, high = axes.get_xlim()
+    axes.axvspan(0, high, facecolor="#F3EEE6", linewidth=0, zorder=0)
+    axes.axvline(0, color="#444444", linewidth=1.2, zorder=1.5)
+    for x, align, words in (
+        (low, "left", "◀ left half plane: a zero here adds lead"),
+        (high, "right", "right half plane: a zero here adds lag ▶"),
+    ):
+        axes.annotate(
+            words,
+            xy=(x, 1),
+            xycoords=axes.get_xaxis_transform(),
+            xytext=(0, 5),
+            textcoords="offset points",
+            ha=align,
+            va="bottom",
+            size=SMALL_PT,
+        )
