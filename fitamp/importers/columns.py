@@ -70,12 +70,11 @@ def told_columns(file: str, header: Header, complex_columns: Sequence[int]) -> C
     """
     meanings = [_with_content(m, index in complex_columns) for index, m in enumerate(header.meanings)]
     remedy = f"say which columns to use, as in {example_choice(meanings)}"
-    unnamed = any(meaning.quantity is None for meaning in meanings)
     if header.line is None:
         raise SweepError(f"{file}: no header names the {len(meanings)} columns; {remedy}")
     place = f"{file}, line {header.line}"
     frequency = _the_one(place, Quantity.FREQUENCY, meanings, remedy)
-    form = _form(place, meanings, remedy if unnamed else "export what is missing")
+    form = _form(place, meanings, remedy)
     gain = tuple(_the_one(place, quantity, meanings, remedy) for quantity in form)
     check: tuple[Column, ...] = ()
     if form == FORMS[0] and _is_determined(meanings, FORMS[1]):
@@ -102,6 +101,7 @@ def _form(place: str, meanings: Sequence[Meaning], remedy: str) -> tuple[Quantit
             Quantity.REAL: "a real part but no imaginary part",
             Quantity.IMAGINARY: "an imaginary part but no real part",
         }
+        remedy = remedy if any(meaning.quantity is None for meaning in meanings) else "export what is missing"
         found = next((text for quantity, text in lacking.items() if quantity in present), "no loop gain")
         raise SweepError(
             f"{place}: the header names {found}; a complex loop gain needs real and imaginary part, magnitude and "

@@ -183,10 +183,15 @@ def _find_start(lines: Sequence[Line], separator: Separator) -> int:
     width = Counter(len(row) for row, is_row in zip(rows, like, strict=True) if is_row).most_common(1)[0][0]
     fits = [is_row and len(row) == width for row, is_row in zip(rows, like, strict=True)]
     start = next((i for i, fit in enumerate(fits) if fit and all(fits[i : i + 2])), fits.index(True))
-    # A row just above that has a number in it, and words where numbers should be, is a row with a fault, not a header.
-    while start > 0 and len(rows[start - 1]) == width and _count_numbers(rows[start - 1]):
+    while start > 0 and len(rows[start - 1]) == width and _is_faulty_row(lines, rows, start - 1):
         start -= 1
     return start
+
+
+def _is_faulty_row(lines: Sequence[Line], rows: Sequence[Sequence[str]], index: int) -> bool:
+    """Whether the line above the first good row is a row with words where numbers should be, and not a preamble."""
+    adjoining = lines[index].number == lines[index + 1].number - 1
+    return is_number_like(rows[index][0]) or (adjoining and _count_numbers(rows[index]) > 0)
 
 
 def _lenient_cells(line: Line, separator: Separator) -> tuple[str, ...]:

@@ -46,7 +46,9 @@ def find_header(file: str, block: Block) -> Header:
     names, units = _plain_header(file, plain, block)
     in_comment, comment_units = _commented_header(comments, block)
     reason = "the line above the numbers"
-    if in_comment is not None and (names is None or in_comment[0] > names[0]):
+    if names and in_comment and units is None and in_comment[0] > names[0] and _is_units_row(in_comment[1]):
+        units = in_comment
+    elif in_comment is not None and (names is None or in_comment[0] > names[0]):
         names, units, reason = in_comment, comment_units, "a comment line whose cells name the columns"
     if names is None:
         _refuse_uneven_header(file, plain, block)

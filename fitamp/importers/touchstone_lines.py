@@ -66,7 +66,10 @@ class Sorter:
                 number, f"keyword [{match[1]}] needs [Version] 2.0 as the first keyword; complete the file"
             )
         if self.references_left:
-            raise self.found.refuse(number, f"[Reference] lacks {self.references_left} values; complete it")
+            raise self.found.refuse(
+                number,
+                f"[Reference] lacks {self.references_left} value{'s' if self.references_left > 1 else ''}; complete it",
+            )
         if name not in _KEYWORDS:
             raise self.found.refuse(number, f"keyword [{match[1]}] cannot be used here; export plain S-parameters")
         _KEYWORDS[name](self, number, value)

@@ -94,8 +94,8 @@ def _check_rows(found: Scan, network: Sequence[Data]) -> None:
 def _incomplete(found: Scan, have: int) -> SweepError:
     return found.refuse(
         found.row_lines[-1],
-        f"{have} numbers for this frequency, expected {found.numbers_per_row} for {_ports_text(found.ports)}; "
-        "complete the row or check the number of ports in the file name",
+        f"{have} number{'s' if have > 1 else ''} for this frequency, expected {found.numbers_per_row} for "
+        f"{_ports_text(found.ports)}; complete the row or check the number of ports in the file name",
     )
 
 

@@ -1,0 +1,78 @@
+"""The written choice of columns: what it means, and what is refused with an example."""
+
+from __future__ import annotations
+
+import pytest
+
+from fitamp.errors import UsageError
+from fitamp.importers.choice import ColumnChoice, ColumnRef, example_choice
+from fitamp.importers.quantity import Quantity, Unit, meaning_of
+
+
+@pytest.mark.parametrize(
+    ("text", "expected"),
+    [
+        ("f=1:Hz mag=2:dB phase=3:deg", [(1, Unit.HZ), (2, Unit.DB), (3, Unit.DEGREE)]),
+        ("f='Frequency':MHz mag='my gain':linear phase=\"it's\":rad", [
+            ("Frequency", Unit.MHZ), ("my gain", Unit.LINEAR), ("it's", Unit.RADIAN)
+        ]),
+        ("  F=Freq  mag=Gain   phase=4 ", [("Freq", None), ("Gain", None), (4, None)]),
+    ],
+)  # fmt: skip
+def test_magnitude_and_phase(text: str, expected: list[tuple[int | str, Unit | None]]) -> None:
+    columns = ColumnChoice.parse(text).columns
+    keys = (Quantity.FREQUENCY, Quantity.MAGNITUDE, Quantity.PHASE)
+    assert [(columns[key].column, columns[key].unit) for key in keys] == expected
+
+
+def test_real_and_imaginary_and_complex() -> None:
+    assert set(ColumnChoice.parse("re=2 im=3 f=1:rad/s").columns) == {"re", "im", "f"}
+    assert ColumnChoice.parse("f='1':Hz complex='T (x)'").columns[Quantity.FREQUENCY].column == "1"
+
+
+@pytest.mark.parametrize(
+    ("text", "message"),
+    [
+        ("", "names nothing; expected f with re and im, f with mag and phase, or f with complex, as in --columns"),
+        ("f=1:Hz mag=2:dB", "names f mag; expected f with re and im"),
+        ("f=1 re=2 im=3 phase=4", "names f im phase re; expected"),
+        ("f=1 f=2", "names f twice; name each quantity once"),
+        ("freq=1", "key 'freq' is not known; expected one of f, mag, phase, re, im, complex"),
+        ("f=1:dB", "gives f the unit 'dB'; expected one of Hz, kHz, MHz, GHz, rad/s"),
+        ("f=1:mHz", "gives f the unit 'mHz'; expected one of"),
+        ("f=1:Hz re=2:dB", "gives re the unit 'dB'; re is V/V and takes no unit"),
+        ("f=0:Hz complex=2", "gives f column 0; columns count from 1"),
+        ("f=1:Hz complex", "cannot read 'complex'; expected key=column:unit, as in --columns"),
+        ("1,2,3", "cannot read '1,2,3'; expected key=column:unit"),
+        ("f='a", 'cannot read "f=\'a"'),
+    ],
+)
+def test_malformed_choice_is_refused(text: str, message: str) -> None:
+    with pytest.raises(UsageError, match=message):
+        ColumnChoice.parse(text)
+
+
+def test_choice_built_by_hand_is_checked_as_well() -> None:
+    with pytest.raises(UsageError, match="gives f the unit dB; expected one of Hz"):
+        ColumnChoice(
+            columns={
+                Quantity.FREQUENCY: ColumnRef(column=1, unit=Unit.DB),
+                Quantity.COMPLEX: ColumnRef(column=2),
+            }
+        )
+
+
+@pytest.mark.parametrize(
+    ("header", "expected"),
+    [
+        (["Frequency", "Gain", "Phase"], "f='Frequency':Hz mag='Gain':dB phase='Phase':deg"),
+        (["", "", ""], "f=1:Hz mag=2:dB phase=3:deg"),
+        (["a", "b"], "f='a':Hz complex='b'"),
+        (["f (kHz)", "x", "Re", "Im"], "f='f (kHz)':kHz re='Re' im='Im'"),
+        (["it's f", "gain", "gain", "phase_rad"], "f=1:Hz mag=2:dB phase='phase_rad':rad"),
+    ],
+)
+def test_example_uses_the_file_s_columns_and_can_be_parsed(header: list[str], expected: str) -> None:
+    example = example_choice([meaning_of(text) for text in header])
+    assert example == f'--columns "{expected}"'
+    assert ColumnChoice.parse(expected).columns
