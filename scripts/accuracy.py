@@ -3,9 +3,9 @@
 
     python scripts/accuracy.py [--runs 100] [--seed 1]
 
-The standard scenario is invented: 281 points from 10 Hz to 100 MHz, 82 dB, poles at 1.2 kHz and 58 MHz, a left-half-plane
-zero at 110 MHz; receiver floors of 2e-5 for a drive of 1 and a gain error of 0.1 %, neither told to the fit. The bound is
-computed here by differences from the true response, not by the package's own derivatives.
+The standard scenario is invented: 281 points from 10 Hz to 100 MHz, 82 dB, poles at 1.2 kHz and 58 MHz, a zero at
+110 MHz in the left half plane; receiver floors of 2e-5 for a drive of 1 and a gain error of 0.1 %, neither told to the
+fit. The bound is computed here by differences from the true response, not by the package's own derivatives.
 """
 
 from __future__ import annotations
