@@ -102,16 +102,14 @@ def _recognise(sweep: Sweep) -> tuple[Sign, str]:
     asked, slope = above[steady][:low], slope[steady][:low]
     cosine = np.cos(phase[asked] - np.pi / 2 * slope)
     agreement = float(np.median(cosine))
-    if np.mean(np.sign(cosine) == np.sign(agreement)) < _AGREED_SHARE:
-        return Sign.UNKNOWN, "its phase scatters too much"
     apart_deg = float(np.degrees(np.arccos(np.clip(agreement, -1, 1))))
     band = f"from {si(float(np.exp(log_f[asked[0]])), 'Hz')} to {si(float(np.exp(log_f[asked[-1]])), 'Hz')}"
     seen = f"{band} the phase is {apart_deg:.0f}° away from what the slope of the magnitude asks for (median)"
-    if agreement >= _DECIDED_COSINE:
-        return Sign.AS_READ, seen
-    if agreement <= -_DECIDED_COSINE:
-        return Sign.INVERTED, seen
-    return Sign.UNKNOWN, seen
+    if abs(agreement) < _DECIDED_COSINE:
+        return Sign.UNKNOWN, seen
+    if np.mean(np.sign(cosine) == np.sign(agreement)) < _AGREED_SHARE:
+        return Sign.UNKNOWN, "its phase scatters too much"
+    return (Sign.AS_READ if agreement > 0 else Sign.INVERTED), seen
 
 
 def _lower_half(log_f: FloatArray) -> int:
