@@ -20,7 +20,9 @@ from fitamp.fitting import LoopFit, ZeroPlace
 from fitamp.fitting.result import Root, text_of
 from fitamp.units import si, si_with_error
 
-__all__ = ["Mark", "designed_marks", "measured_marks", "zero_regions_hz"]
+__all__ = ["Mark", "designed_marks", "deviation_words", "measured_marks", "zero_regions_hz"]
+
+AT_INFINITY = "at infinity"
 
 Regions = tuple[tuple[float, float], ...]
 
@@ -51,16 +53,24 @@ class Mark:
         return self.value_hz is not None and self.value_hz.imag != 0
 
     @property
+    def is_at_infinity(self) -> bool:
+        """Whether this is an exact zero at infinity."""
+        return self.words == AT_INFINITY
+
+    @property
     def reaches_infinity(self) -> bool:
-        """Whether the region, or the root itself, lies at infinity."""
-        return any(math.isinf(end) for region in self.regions_hz for end in region) or (
-            self.value_hz is None and not self.regions_hz
-        )
+        """Whether the region reaches to infinity, or the root lies there."""
+        return self.is_at_infinity or any(math.isinf(end) for region in self.regions_hz for end in region)
 
     @property
     def label(self) -> str:
         """Name and, for a zero, half plane: "zero (left)"."""
         return f"{self.name} ({self.side})" if self.side else self.name
+
+    @property
+    def sentence(self) -> str:
+        """Label and value: "zero (left): 131 MHz"."""
+        return f"{self.label}: {self.words}"
 
 
 def zero_regions_hz(zero_time_s: Estimate) -> Regions:
@@ -112,7 +122,7 @@ def designed_marks(design: Design) -> tuple[Mark, ...]:
             marks.append(Mark(name=f"pole {index + 1}", is_zero=False, value_hz=pole, words=si(abs(pole), "Hz")))
     zero_time_s = designed_values(design)["zero_time_s"]
     if not zero_time_s:
-        return (*marks, Mark(name="zero", is_zero=True, value_hz=None, words="at infinity"))
+        return (*marks, Mark(name="zero", is_zero=True, value_hz=None, words=AT_INFINITY))
     zero_hz = _zero_hz(zero_time_s)
     side = "left" if zero_hz < 0 else "right"
     zero = Mark(name="zero", is_zero=True, value_hz=complex(zero_hz), side=side, words=si(abs(zero_hz), "Hz"))
@@ -143,7 +153,7 @@ def _far_pole(name: str, root: Root, quantile: float) -> Mark:
         return Mark(name=name, is_zero=False, value_hz=root.value_hz, words=f"about {si(abs(value), 'Hz', digits=2)}")
     stderr = float(np.sqrt(root.covariance[0, 0]))
     region = (value - quantile * stderr, min(value + quantile * stderr, 0.0))
-    words = si_with_error(abs(value), stderr, "Hz")
+    words = f"{si_with_error(abs(value), stderr, 'Hz')}, with the design's prior"
     return Mark(name=name, is_zero=False, value_hz=root.value_hz, regions_hz=(region,), words=words)
 
 
@@ -179,8 +189,14 @@ def _measured_zero(fit: LoopFit) -> Mark:
     elif value is not None and zero_time.value is not None and zero_time.stderr is not None:
         words = si_with_error(abs(value), abs(value) * zero_time.stderr / abs(zero_time.value), "Hz")
     elif regions:
-        near, far = sorted(abs(end) for end in regions[0])
-        words = f"beyond {si(near, 'Hz', digits=3)}" if math.isinf(far) else f"within {si(far, 'Hz', digits=3)}"
+        words = _between(regions[0])
     else:
         words = "not determined"
     return Mark(name="zero", is_zero=True, value_hz=value, regions_hz=regions, side=side, words=words)
+
+
+def _between(region: tuple[float, float]) -> str:
+    near, far = sorted(abs(end) for end in region)
+    if math.isinf(far):
+        return f"beyond {si(near, 'Hz', digits=3)}"
+    return f"{si(near, 'Hz', digits=3)} to {si(far, 'Hz', digits=3)}" if near else f"within {si(far, 'Hz', digits=3)}"

@@ -6,13 +6,14 @@ from dataclasses import dataclass
 
 from matplotlib.axes import Axes
 from matplotlib.figure import Figure
+from matplotlib.scale import SymmetricalLogTransform
 
 from fitamp.comparison import Comparison
 from fitamp.fitting import LoopFit
-from fitamp.plots.axes import signed_decades
+from fitamp.plots.axes import LINEAR_SHARE, signed_decades
 from fitamp.plots.header import figure_with_head
 from fitamp.plots.roots import Mark, designed_marks, deviation_words, measured_marks
-from fitamp.plots.splane_frame import linear_hz, name_half_planes, reach_hz
+from fitamp.plots.splane_frame import linear_hz, name_half_planes, point_to_infinity, reach_hz
 from fitamp.plots.splane_pairs import draw_pairs
 from fitamp.plots.style import COLOURS, SIZE_PT, SMALL_PT, WIDTH_IN, drawing_style, place_axes, text_width_in
 
@@ -83,9 +84,7 @@ def _draw_lanes(
 
 def _position_in(value_hz: float, linear: float, reach: float, width_in: float) -> float:
     """Where a value falls along the axis, in inches from its left end."""
-    from matplotlib.scale import SymmetricalLogTransform
-
-    transform = SymmetricalLogTransform(10, linear, 0.5)
+    transform = SymmetricalLogTransform(10, linear, LINEAR_SHARE)
     at, end = transform.transform([value_hz, reach])
     return float((at / end + 1) / 2 * width_in)
 
@@ -95,21 +94,38 @@ def _levels(
 ) -> list[_Label]:
     """Stairs of labels: from the origin outwards each starts at its own leader, one level up where it would overlap."""
     placed: list[_Label] = []
-    for mark in sorted(marks, key=lambda m: abs(_anchor_hz(m, reach))):
-        anchor_hz = _anchor_hz(mark, reach)
-        at = _position_in(anchor_hz, linear, reach, width_in)
-        words = f"{mark.label} {mark.words}{deviation_words(comparison, mark)}"
-        extent = text_width_in(words) + 0.12
-        start, end = (at, at + extent) if anchor_hz < 0 else (at - extent, at)
-        if start < 0:
-            start, end = 0.0, extent
-        if end > width_in:
-            start, end = width_in - extent, width_in
-        level = 0
-        while any(label.level == level and label.start < end and start < label.end for label in placed):
-            level += 1
-        placed.append(_Label(at=at, start=start, end=end, level=level, words=words))
+    anchors = {mark.name: _anchor_hz(mark, reach) for mark in marks}
+    positions = {name: _position_in(anchor, linear, reach, width_in) for name, anchor in anchors.items()}
+    for mark in sorted(marks, key=lambda m: abs(anchors[m.name])):
+        at = positions[mark.name]
+        words = mark.sentence + deviation_words(comparison, mark)
+        placed.append(_free_place(placed, at, words, list(positions.values()), width_in))
     return placed
+
+
+def _free_place(placed: list[_Label], at: float, words: str, positions: list[float], width_in: float) -> _Label:
+    """The lowest level where a label overlaps no other and its leader crosses none, in its own half plane if it can."""
+    extent = text_width_in(words) + 0.12
+    to_right, to_left = (at, at + extent), (at - extent, at)
+    is_left = at < width_in / 2
+    own_half = (0.0, width_in / 2) if is_left else (width_in / 2, width_in)
+    inwards, outwards = (to_right, to_left) if is_left else (to_left, to_right)
+    # Outwards only where no other leader would have to pass.
+    candidates = [inwards] if any(outwards[0] < x < outwards[1] for x in positions) else [inwards, outwards]
+    fitting = [c for c in candidates if own_half[0] <= c[0] and c[1] <= own_half[1]]
+    if not fitting:
+        start = min(max(0.0, candidates[0][0]), width_in - extent)
+        fitting = [(start, start + extent)]
+    for level in range(len(placed) + 1):
+        for start, end in fitting:
+            is_free = all(
+                not (other.level == level and other.start < end and start < other.end)
+                and not (other.level < level and other.start < at < other.end)
+                for other in placed
+            )
+            if is_free:
+                return _Label(at=at, start=start, end=end, level=level, words=words)
+    return _Label(at=at, start=fitting[0][0], end=fitting[0][1], level=len(placed), words=words)
 
 
 def _anchor_hz(mark: Mark, reach: float) -> float:
@@ -160,20 +176,18 @@ def _draw_regions(axes: Axes, marks: tuple[Mark, ...], y: float, reach: float) -
                 zorder=2,
                 gid=f"region {mark.name}",
             )
-            for edge, is_out, marker in ((-reach, start < -reach, "<"), (reach, end > reach, ">")):
-                if is_out:
-                    axes.plot(
-                        [edge], [y], marker, color=COLOURS["fitted"], markersize=11, clip_on=False, gid="to infinity"
-                    )
+            point_to_infinity(axes, y, (start, end), reach)
 
 
 def _draw_marks(axes: Axes, marks: tuple[Mark, ...], y: float, row: str) -> None:
     colour = COLOURS["fitted" if row == "measured" else "designed"]
     for mark in marks:
-        if mark.value_hz is not None:
+        if mark.value_hz is not None or mark.is_at_infinity:
+            # Infinity is one place, met at both edges.
+            at_edges = mark.value_hz is None
             axes.plot(
-                [mark.value_hz.real],
-                [y],
+                [0.012, 0.988] if mark.value_hz is None else [mark.value_hz.real],
+                [y, y] if at_edges else [y],
                 "o" if mark.is_zero else "x",
                 color=colour,
                 markerfacecolor=colour if row == "measured" else "white",
@@ -181,6 +195,7 @@ def _draw_marks(axes: Axes, marks: tuple[Mark, ...], y: float, row: str) -> None
                 markeredgewidth=2.4,
                 gid=f"{row} {mark.name}",
                 zorder=4,
+                transform=axes.get_yaxis_transform() if at_edges else axes.transData,
             )
 
 
@@ -220,14 +235,15 @@ def _arrow(axes: Axes, start: tuple[float, float], end: tuple[float, float], wor
         zorder=3,
     )
     if words:
-        at_edge = end if words.startswith("to") else start
+        is_end = words.startswith("to")
+        x, y = end if is_end else start
         axes.annotate(
             words,
-            xy=at_edge,
-            xytext=(5 if at_edge[0] < 0 else -5, 4),
+            xy=(x, y),
+            xytext=(6 if x < 0 else -6, -6 if is_end else 4),
             textcoords="offset points",
-            ha="left" if at_edge[0] < 0 else "right",
-            va="bottom",
+            ha="left" if x < 0 else "right",
+            va="top" if is_end else "bottom",
             size=SMALL_PT,
             color=colour,
         )

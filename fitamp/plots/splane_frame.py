@@ -1,4 +1,4 @@
-"""The frame of both s-plane pictures: how far they reach, where the scale is linear, and the names of the half planes."""
+"""The frame of both s-plane pictures: reach, linear part of the scale, names of the half planes, marks of infinity."""
 
 from __future__ import annotations
 
@@ -9,18 +9,20 @@ from matplotlib.axes import Axes
 
 from fitamp.fitting import LoopFit
 from fitamp.plots.roots import Mark
-from fitamp.plots.style import SMALL_PT
+from fitamp.plots.style import COLOURS, SMALL_PT
 
-__all__ = ["distances_hz", "linear_hz", "name_half_planes", "reach_hz"]
+__all__ = ["distances_hz", "linear_hz", "name_half_planes", "point_to_infinity", "reach_hz"]
 
 # A root this many times beyond the sweep is as good as at infinity for the picture.
 FARTHEST = 300.0
 
 
 def reach_hz(fit: LoopFit, marks: Iterable[Mark]) -> float:
-    """Half the width of the plane: beyond the farthest root or end of a region that the sweep can tell from infinity."""
+    """Half the width of the plane: beyond the farthest root or region that the sweep can tell from infinity."""
+    shown = list(marks)
     limit = FARTHEST * fit.sweep.f_max_hz
-    return 2.5 * max([d for d in distances_hz(marks) if d <= limit], default=fit.sweep.f_max_hz)
+    room = 8.0 if any(mark.reaches_infinity for mark in shown) else 2.5
+    return room * max([d for d in distances_hz(shown) if d <= limit], default=fit.sweep.f_max_hz)
 
 
 def linear_hz(marks: Iterable[Mark]) -> float:
@@ -55,3 +57,19 @@ def name_half_planes(axes: Axes) -> None:
             va="bottom",
             size=SMALL_PT,
         )
+
+
+def point_to_infinity(axes: Axes, y: float, region: tuple[float, float], reach: float) -> None:
+    """Arrow heads at the edges that a region crosses."""
+    for x, is_crossed, marker in ((0.012, region[0] < -reach, "<"), (0.988, region[1] > reach, ">")):
+        if is_crossed:
+            axes.plot(
+                [x],
+                [y],
+                marker,
+                color=COLOURS["fitted"],
+                markersize=11,
+                transform=axes.get_yaxis_transform(),
+                gid="to infinity",
+                zorder=3.5,
+            )

@@ -9,6 +9,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Mapping
 from contextlib import contextmanager
 from functools import lru_cache
+from typing import Any
 
 import matplotlib as mpl
 from matplotlib.axes import Axes
@@ -55,7 +56,8 @@ COLOURS: Mapping[str, str] = {
     "ink": "#222222",
 }
 
-_STYLE = {
+# Any: matplotlib's stubs list its settings by name, and the list differs from version to version.
+_STYLE: Any = {
     "font.family": FAMILY,
     "font.size": SMALL_PT,
     "axes.labelsize": SIZE_PT,
@@ -94,13 +96,11 @@ def new_figure(height_in: float = 1.0) -> Figure:
     return figure
 
 
-def place_axes(
-    figure: Figure, *, left: float, bottom: float, width: float, height: float, sharex: Axes | None = None
-) -> Axes:
+def place_axes(figure: Figure, *, left: float, bottom: float, width: float, height: float) -> Axes:
     """Axes at a place given in inches from the figure's lower left corner."""
     total_width, total_height = figure.get_size_inches()
     box = (left / total_width, bottom / total_height, width / total_width, height / total_height)
-    return figure.add_axes(box, sharex=sharex)
+    return figure.add_axes(box)
 
 
 def inert(text: str) -> str:
@@ -114,8 +114,9 @@ def _has_glyph(character: str) -> bool:
 
 
 @lru_cache(maxsize=1)
-def _renderer() -> RendererAgg:
-    return RendererAgg(10, 10, 72)  # at 72 dpi a pixel is a point
+def _renderer() -> Any:
+    renderer: Any = RendererAgg
+    return renderer(10, 10, DPI)  # letters are hinted, so their width depends on the resolution
 
 
 @lru_cache(maxsize=4096)
@@ -123,7 +124,7 @@ def text_width_in(text: str, size_pt: float = SMALL_PT, weight: str = "normal") 
     """Width of one line of text in inches."""
     font = FontProperties(family=FAMILY, size=size_pt, weight=weight)
     width, _, _ = _renderer().get_text_width_height_descent(text, font, False)
-    return float(width) / 72
+    return float(width) / DPI
 
 
 def shortened(text: str, width_in: float, size_pt: float = SMALL_PT, weight: str = "normal") -> str:

@@ -6,6 +6,7 @@ import math
 from dataclasses import dataclass
 
 from matplotlib.axes import Axes
+from matplotlib.axis import Axis
 from matplotlib.figure import Figure
 from matplotlib.ticker import FuncFormatter
 
@@ -21,6 +22,7 @@ __all__ = ["zero_path_figure"]
 LEFT_IN, BOTTOM_IN, WIDTH_PATH_IN, HEIGHT_IN, STRIP_IN, TOP_IN = 0.95, 0.6, 5.6, 4.0, 1.15, 0.3
 NAME_SPACING_IN = 0.19
 TICK_SPACING_IN = 0.21
+_PREFIXES = ((1e6, "M"), (1e3, "k"), (1.0, ""), (1e-3, "m"), (1e-6, "µ"), (1e-9, "n"), (1e-12, "p"))
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -51,7 +53,7 @@ def zero_path_figure(comparison: Comparison) -> Figure | None:
             zero_time_s=comparison.design.zero_time_s,
         )
         measured = _measured(comparison, elements)
-        _set_limits(path, strip, elements, designed, measured)
+        _set_limits(path, strip, comparison, designed=designed, measured=measured)
         _draw_regions(path, strip, comparison)
         _draw_line(path, elements)
         _draw_places(path, designed, measured)
@@ -83,29 +85,43 @@ def _measured(comparison: Comparison, elements: Elements) -> _Place | None:
     )
 
 
-def _set_limits(path: Axes, strip: Axes, elements: Elements, designed: _Place, measured: _Place | None) -> None:
-    """Room for both places, for the line from Rz = 0, and for infinity."""
+def _set_limits(path: Axes, strip: Axes, comparison: Comparison, *, designed: _Place, measured: _Place | None) -> None:
+    """Room for both places and their words, for the line from Rz = 0, and for infinity."""
+    elements = comparison.design.elements
+    assert elements is not None
     places = [designed] if measured is None else [designed, measured]
-    resistors = [0.0, 2 / elements.gm2, *(place.resistor_ohm for place in places)]
-    times = [_zero_time_s(elements, r) for r in resistors]
-    for place in places:
-        resistors += [place.resistor_ohm - place.reach_ohm, place.resistor_ohm + place.reach_ohm]
-        times += place.ends_s or ()
-    width, height = max(resistors) - min(resistors), max(times) - min(times)
-    path.set_xlim(min(resistors) - 0.06 * width, max(resistors) + 0.06 * width)
+    points = [0.0, 2 / elements.gm2, *(place.resistor_ohm for place in places)]
+    times = [_zero_time_s(elements, resistor) for resistor in points]
+    # The window's ends, where they are not so far that the places would shrink to a corner.
+    window, farthest = comparison.verdict.window, 2 * max(abs(time) for time in times)
+    times += [end for end in (window.low_s, window.high_s) if abs(end) <= farthest]
+    times += [end for place in places for end in place.ends_s or ()]
+    low = min(*points, *(place.resistor_ohm - place.reach_ohm for place in places))
+    high = max(*points, *(place.resistor_ohm + place.reach_ohm for place in places))
+    # Words stand right of the measured place and left of the designed one.
+    high = max(high, low + (max(points) - low) / 0.74)
+    low = min(low, designed.resistor_ohm - 0.2 * (high - low))
+    path.set_xlim(low - 0.05 * (high - low), high + 0.05 * (high - low))
+    height = max(times) - min(times)
     for axes in (path, strip):
-        axes.set_ylim(min(times) - 0.1 * height, max(times) + 0.1 * height)
-    path.xaxis.set_major_formatter(FuncFormatter(lambda value, _: si(value, "Ω", digits=3) if value else "0"))
-    path.yaxis.set_major_formatter(FuncFormatter(lambda value, _: si(value, "s", digits=3) if value else "0"))
-    path.set_xlabel("nulling resistor Rz, with gm2 and Cc as designed")
-    path.set_ylabel("zero time τz")
+        axes.set_ylim(min(times) - 0.2 * height, max(times) + 0.2 * height)
+    _in_unit(path.xaxis, "Ω", "nulling resistor Rz, with gm2 and Cc as designed")
+    _in_unit(path.yaxis, "s", "zero time τz")
+
+
+def _in_unit(axis: Axis, unit: str, label: str) -> None:
+    """Ticks as plain numbers in one multiple of the unit, which the label names."""
+    largest = max(abs(end) for end in axis.get_view_interval())
+    factor, prefix = next((f, p) for f, p in _PREFIXES if f <= largest or f == _PREFIXES[-1][0])
+    axis.set_major_formatter(FuncFormatter(lambda value, _: f"{value / factor:.6g}".replace("-", "−")))
+    axis.set_label_text(f"{label} ({prefix}{unit})")
 
 
 def _draw_regions(path: Axes, strip: Axes, comparison: Comparison) -> None:
     """A band a region across both axes, and their names in the strip, moved apart where bands are thin."""
     low, high = strip.get_ylim()
     named: list[tuple[float, Nulling]] = []
-    for verdict, start, end in regions_of(comparison.design, comparison.verdict.window):
+    for verdict, start, end in sorted(regions_of(comparison.design, comparison.verdict.window), key=lambda t: t[1]):
         bottom, top = max(start, low), min(end, high)
         if bottom >= top:
             continue
@@ -157,15 +173,6 @@ def _draw_line(path: Axes, elements: Elements) -> None:
     ends = [max(0.0, low), high]
     path.plot(ends, [_zero_time_s(elements, r) for r in ends], color="#444444", linewidth=1.4, gid="path", zorder=2)
     path.axhline(0, color="#444444", linewidth=1.0, linestyle="--", zorder=1)
-    path.annotate(
-        "zero at infinity",
-        xy=(high, 0),
-        xytext=(-4, 3),
-        textcoords="offset points",
-        ha="right",
-        va="bottom",
-        size=SMALL_PT,
-    )
 
 
 def _draw_places(path: Axes, designed: _Place, measured: _Place | None) -> None:
@@ -180,8 +187,11 @@ def _draw_places(path: Axes, designed: _Place, measured: _Place | None) -> None:
         gid="designed",
         zorder=4,
     )
+    _name(path, designed, f"designed\n{si(designed.resistor_ohm, 'Ω', digits=3)}", above=True)
     if measured is None or measured.ends_s is None:
         return
+    equivalent = si_with_error(measured.resistor_ohm, measured.reach_ohm / WINDOW_QUANTILE, "Ω")
+    _name(path, measured, f"measured: as if Rz\nwere {equivalent}", above=False)
     low, high = measured.ends_s
     path.errorbar(
         [measured.resistor_ohm],
@@ -195,6 +205,19 @@ def _draw_places(path: Axes, designed: _Place, measured: _Place | None) -> None:
         linewidth=1.4,
         gid="measured",
         zorder=5,
+    )
+
+
+def _name(path: Axes, place: _Place, words: str, *, above: bool) -> None:
+    """Words left above a place or right below it, where the rising line does not pass."""
+    path.annotate(
+        words,
+        xy=(place.resistor_ohm, place.zero_time_s),
+        xytext=(-8, 8) if above else (8, -8),
+        textcoords="offset points",
+        ha="right" if above else "left",
+        va="bottom" if above else "top",
+        size=SMALL_PT,
     )
 
 
@@ -239,7 +262,7 @@ def _label_frequencies(strip: Axes) -> None:
     """The same axis as zero frequency and half plane, on the right; ticks too close to another are left out."""
     low, high = strip.get_ylim()
     spacing = TICK_SPACING_IN / HEIGHT_IN * (high - low)
-    ticks: list[tuple[float, str]] = [(0.0, "∞")] if low < 0 < high else []
+    ticks: list[tuple[float, str]] = [(0.0, "at infinity")] if low < 0 < high else []
     for frequency_hz in _round_frequencies(max(abs(low), abs(high)), spacing):
         for side, name in ((1, "left"), (-1, "right")):
             zero_time_s = side / (2 * math.pi * frequency_hz)
