@@ -16,7 +16,7 @@ from fitamp.sweep import Decision
 __all__ = ["Header", "find_header"]
 
 # Cells of a units row that say "no unit".
-_NO_UNIT = frozenset({"", "-", "–", "1", "[-]", "[1]", "(-)", "[]", "()", "v/v", "[v/v]", "(v/v)"})
+_NO_UNIT = frozenset({"", "-", "–", "[-]", "[1]", "(-)", "[]", "()", "v/v", "[v/v]", "(v/v)"})
 
 
 # A drawn line under a header.

@@ -43,7 +43,6 @@ def scan(file: str, lines: Sequence[Line], ports: int | None) -> Scan:
     _check_rising(found)
     _check_count(found)
     found.noise_rows = len(noise)
-    found.kept += [data.text for data in network]
     return found
 
 
@@ -77,9 +76,11 @@ def _check_rows(found: Scan, network: Sequence[Data]) -> None:
                 )
             found.row_lines.append(data.line)
             found.row_freq.append(data.numbers[0])
+            found.kept.append("")  # one line per frequency: scikit-rf misreads a frequency that stands alone
             have = 0
         elif starts:
             raise _incomplete(found, have)
+        found.kept[-1] = f"{found.kept[-1]} {data.text}"
         have += len(data.numbers)
         if have > wanted:
             raise found.refuse(

@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import hashlib
+import subprocess
+import sys
 from pathlib import Path
 
 import numpy as np
@@ -22,6 +24,12 @@ def test_public_names_change_only_on_purpose() -> None:
     assert sorted(fitamp.importers.__all__) == [
         "ColumnChoice", "ColumnRef", "Quantity", "Unit", "read_sweep", "write_sweep",
     ]  # fmt: skip
+
+
+def test_door_opens_without_the_heavy_libraries() -> None:
+    code = "import sys, fitamp.importers; print(sorted({'pandas', 'skrf', 'scipy', 'matplotlib'} & set(sys.modules)))"
+    done = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
+    assert done.stdout.strip() == "[]"
 
 
 def test_suffix_decides_in_any_case_and_origin_tells(tmp_path: Path) -> None:

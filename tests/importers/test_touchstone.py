@@ -82,6 +82,11 @@ def test_rows_over_several_lines_comments_crlf_and_byte_order_mark(tmp_path: Pat
     assert_same(read_sweep(latin), "S21")
 
 
+def test_frequency_may_stand_on_a_line_of_its_own(tmp_path: Path) -> None:
+    body = "\n".join(rows("RI", "Hz", "one")).replace(" ", "\n  ", 1)
+    assert_same(read_sweep(file_of(tmp_path, f"# Hz S RI R 50\n{body}\n", "a.s1p")), "S11")
+
+
 def test_lower_matrix_of_version_2_is_completed_by_symmetry(tmp_path: Path) -> None:
     text = version_2("RI", "Hz", "12_21", rows("RI", "Hz", "lower"), matrix="Lower")
     path = file_of(tmp_path, text, "a.s2p")
