@@ -14,7 +14,7 @@ from pathlib import PurePath
 from fitamp.conditioning.sign import settle_sign
 from fitamp.errors import SweepError, UsageError
 from fitamp.importers.choice import ColumnChoice, ColumnRef
-from fitamp.importers.csv import read_csv
+from fitamp.importers.csv_table import read_csv
 from fitamp.importers.quantity import Quantity, Unit
 from fitamp.importers.source import Source, load_source
 from fitamp.importers.touchstone import read_touchstone
