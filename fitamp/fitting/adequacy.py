@@ -14,6 +14,8 @@ __all__ = ["Adequacy", "judge"]
 # Both statistics are about standard normal for a right model; 4.5 keeps false alarms below one in a few thousand
 # sweeps, the noise having been estimated from the same points.
 ALARM = 4.5
+# Residuals below this share of the drive are arithmetic, and arithmetic has patterns of its own.
+ROUNDING = 1e-12
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -63,6 +65,9 @@ def judge(solution: Solution) -> Adequacy:
     lags = max(count // 12, 1)
     correlations = _correlations(residuals, lags)
     structure = float(correlations.sum() * np.sqrt(2 * count / lags))
+    noise = solution.noise
+    if np.sqrt(chi) * max(noise.error_channel, noise.return_channel, noise.relative) < ROUNDING:
+        structure = 0.0
     inflation = 1.0
     if level >= ALARM or structure >= ALARM:
         inflation = max(chi, 1.0) * max(1 + 2 * float(_correlations(residuals, count // 4).clip(0).sum()), 1.0)
