@@ -68,7 +68,8 @@ def _from_roots(design: Design) -> Expectation:
     return Expectation(
         far_pole=far_pole,
         delay=DelayPrior(mean_s=design.bench.delay_s, sd_s=design.bench.delay_spread_s),
-        known=None,
+        # The loop's own delay is the chip's, and so part of its margins; the bench's is not.
+        known=Transfer(dc_gain=1.0, poles_hz=(), delay_s=roots.delay_s) if roots.delay_s else None,
     )
 
 

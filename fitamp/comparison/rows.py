@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 from fitamp.comparison.result import Row, Window
 from fitamp.design import Design
 from fitamp.estimate import Estimate, Known
 from fitamp.fitting import LoopFit
 from fitamp.margins import margins
-from fitamp.transfer import Transfer
 
 __all__ = ["comparison_rows", "designed_values"]
 
@@ -27,8 +28,9 @@ BY_DIFFERENCE = frozenset({"phase_margin_deg", "gain_margin_db"})
 
 def designed_values(design: Design) -> dict[str, float | None]:
     """The exact designed value of every quantity, from all roots of the design (with the bench's load)."""
-    response: Transfer = design.on_bench()
-    seen = margins(Transfer(dc_gain=response.dc_gain, poles_hz=response.poles_hz, zeros_hz=response.zeros_hz))
+    response = design.on_bench()
+    # The loop's own delay costs phase margin on the chip; the cable's does not.
+    seen = margins(replace(response, delay_s=design.transfer().delay_s))
     # A mirror pole is no pole of the compensation, however low it lies.
     mirror_hz = design.elements.mirror_pole_hz if design.elements is not None else None
     poles = sorted(abs(pole) for pole in response.poles_hz if mirror_hz is None or pole != -mirror_hz)
