@@ -48,9 +48,10 @@ def window_of(design: Design) -> Window:
     if design.half_plane is HalfPlane.INFINITY:
         reach = max(reach, small)
         return Window(low_s=-reach, high_s=reach, source=source)
-    low, high = centre - reach, centre + reach
-    # The designed half plane is part of what was designed.
-    return Window(low_s=max(low, 0.0) if side > 0 else low, high_s=high if side > 0 else min(high, 0.0), source=source)
+    # The designed half plane is part of what was designed; a half plane can be stated for a zero that is itself small.
+    if side > 0:
+        return Window(low_s=max(centre - reach, 0.0), high_s=max(centre + reach, small), source=source)
+    return Window(low_s=min(centre - reach, -small), high_s=min(centre + reach, 0.0), source=source)
 
 
 def regions_of(design: Design, window: Window) -> Regions:
