@@ -16,8 +16,9 @@ __all__ = ["comparison_as_dict", "dumps", "fit_as_dict", "sweep_as_dict"]
 
 
 def dumps(record: Mapping[str, Any]) -> str:
-    """One JSON object as text; ValueError for a NaN or infinity that slipped in."""
-    return json.dumps(record, indent=2, ensure_ascii=False, allow_nan=False)
+    """One JSON object as ASCII text; ValueError for a NaN or infinity that slipped in."""
+    # Escaped, a µ survives every code page, and no file name can steer a terminal or fail to be encoded.
+    return json.dumps(record, indent=2, ensure_ascii=True, allow_nan=False)
 
 
 def sweep_as_dict(sweep: Sweep) -> dict[str, Any]:

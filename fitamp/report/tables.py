@@ -260,7 +260,16 @@ def _warnings(console: Console, fit: LoopFit) -> None:
 def _console() -> Console:
     from rich.console import Console
 
-    return Console(file=io.StringIO(), width=WIDTH, markup=False, highlight=False, emoji=False, no_color=True)
+    # Not a terminal whatever the environment says (FORCE_COLOR …): the text also goes into files.
+    return Console(
+        file=io.StringIO(),
+        width=WIDTH,
+        markup=False,
+        highlight=False,
+        emoji=False,
+        no_color=True,
+        force_terminal=False,
+    )
 
 
 def _say(console: Console, text: str, style: str | None = None) -> None:
