@@ -58,7 +58,7 @@ def loop_figure(fit: LoopFit, comparison: Comparison | None = None) -> Figure:
             shade_beyond(panel, fit)
         draw_residuals(residuals, fit, PANEL_IN)
         draw_lane(lane, (magnitude, phase), measured, designed, comparison, width_in=PANEL_IN)
-        draw_crossover(magnitude, phase, fit)
+        draw_crossover(magnitude, phase, fit, PANEL_IN)
         draw_phase_margin(phase, fit)
         if comparison is not None:
             draw_limits(magnitude, phase, comparison, fit)

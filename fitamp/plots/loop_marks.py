@@ -2,19 +2,23 @@
 
 from __future__ import annotations
 
+import math
+
 from matplotlib.axes import Axes
 
 from fitamp.comparison import Comparison
 from fitamp.fitting import LoopFit
 from fitamp.fitting.result import text_of
-from fitamp.plots.style import COLOURS, SMALL_PT
+from fitamp.plots.style import COLOURS, SMALL_PT, text_width_in
 
-__all__ = ["draw_crossover", "draw_limits", "draw_phase_margin"]
+__all__ = ["NARROW_DEG", "draw_crossover", "draw_limits", "draw_phase_margin"]
 
+# Below this phase margin its arrow is too short to write beside.
+NARROW_DEG = 30.0
 HALO = {"boxstyle": "square,pad=0.15", "facecolor": "white", "edgecolor": "none", "alpha": 0.85}
 
 
-def draw_crossover(magnitude: Axes, phase: Axes, fit: LoopFit) -> None:
+def draw_crossover(magnitude: Axes, phase: Axes, fit: LoopFit, width_in: float) -> None:
     """A vertical line where the fitted magnitude is 0 dB, with its frequency; words alone where that is out of view."""
     crossover = fit.margins.crossover_hz
     if crossover.value is None:
@@ -36,15 +40,18 @@ def draw_crossover(magnitude: Axes, phase: Axes, fit: LoopFit) -> None:
         return
     for axes in (magnitude, phase):
         axes.axvline(crossover.value, color=COLOURS["ink"], linestyle=":", linewidth=1.2, gid="crossover")
-    align, offset = _beside(magnitude, crossover.value)
+    at_right = (1 - _share(magnitude, crossover.value)) * width_in > text_width_in(words) + 0.2
+    # Right of the crossover the curve is below 0 dB and left of it above, so one corner is free.
+    bottom, top = magnitude.get_ylim()
+    at_top = at_right or -bottom < 0.15 * (top - bottom)
     magnitude.annotate(
         words,
-        xy=(crossover.value, 1),
+        xy=(crossover.value, 1 if at_top else 0),
         xycoords=magnitude.get_xaxis_transform(),
-        xytext=(offset, -6),
+        xytext=(8 if at_right else -8, -6 if at_top else 6),
         textcoords="offset points",
-        ha=align,
-        va="top",
+        ha="left" if at_right else "right",
+        va="top" if at_top else "bottom",
         size=SMALL_PT,
         bbox=HALO,
     )
@@ -66,23 +73,31 @@ def draw_phase_margin(phase: Axes, fit: LoopFit) -> None:
     words = f"phase margin {text_of('phase_margin_deg', margin)}"
     if fit.parameters.delay_s.value:  # the curve has the bench's delay, the margin does not
         words += ", without the path delay"
-    align, offset = _beside(phase, crossover.value)
+    # Beside the arrow where that is long enough; else clear of the curve, which falls through −180° here.
+    place: tuple[float, int, str]
+    if margin.value > NARROW_DEG:
+        place = (-180 + 0.45 * margin.value, 0, "center")
+    elif margin.value > 0:
+        place = (-180.0, -5, "top")
+    else:
+        place = (-180.0, 5, "bottom")
+    on_right = margin.value < 0 or _share(phase, crossover.value) < 0.5
     phase.annotate(
         words,
-        xy=(crossover.value, -180 + 0.45 * margin.value),
-        xytext=(offset, 0),
+        xy=(crossover.value, place[0]),
+        xytext=(8 if on_right else -8, place[1]),
         textcoords="offset points",
-        ha=align,
-        va="center",
+        ha="left" if on_right else "right",
+        va=place[2],
         size=SMALL_PT,
         bbox=HALO,
     )
 
 
-def _beside(axes: Axes, freq_hz: float) -> tuple[str, int]:
-    """Alignment and offset in points of words beside a frequency: on the side with more room."""
+def _share(axes: Axes, freq_hz: float) -> float:
+    """Where a frequency stands along the axis, from 0 to 1."""
     low, high = axes.get_xlim()
-    return ("right", -8) if freq_hz**2 > low * high else ("left", 8)
+    return math.log(freq_hz / low) / math.log(high / low)
 
 
 def draw_limits(magnitude: Axes, phase: Axes, comparison: Comparison, fit: LoopFit) -> None:

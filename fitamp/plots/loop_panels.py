@@ -10,6 +10,7 @@ from matplotlib.axes import Axes
 from fitamp.arrays import ComplexArray, FloatArray
 from fitamp.comparison import Comparison
 from fitamp.fitting import LoopFit
+from fitamp.plots.loop_marks import NARROW_DEG
 from fitamp.plots.style import COLOURS, SMALL_PT, shortened
 from fitamp.sweep import LeftOut
 
@@ -103,6 +104,9 @@ def draw_phase(axes: Axes, fit: LoopFit, curves: Curves) -> None:
         freq_hz = np.array([p.f_hz for p in left])
         phases = np.clip(beside_fit(freq_hz, np.array([p.gain for p in left])), low, high)
         _draw_left_out(axes, list(freq_hz), phases)
+    margin = fit.margins.phase_margin_deg.value
+    if margin is not None and 0 < margin < NARROW_DEG:
+        low = min(low, -200.0)  # room for the margin's words below −180°
     axes.set_ylim(low - 12, high + 12)
     axes.set_yticks(np.arange(45 * np.ceil((low - 12) / 45), high + 12, 45 if high - low < 400 else 90))
     axes.set_ylabel("phase (°)")

@@ -106,7 +106,7 @@ def measured_marks(fit: LoopFit) -> tuple[Mark, ...]:
             estimate = getattr(fit.parameters, quantity)
             marks.append(_pole(f"pole {index + 1}", estimate, text_of(quantity, estimate)))
         else:
-            marks.append(_far_pole(f"pole {index + 1}", root, fit.quantile))
+            marks.append(_far_pole(f"pole {index + 1}", root, fit))
     return (*marks, _measured_zero(fit))
 
 
@@ -147,13 +147,15 @@ def _pole(name: str, estimate: Estimate, words: str) -> Mark:
     return Mark(name=name, is_zero=False, value_hz=value, regions_hz=regions, words=words)
 
 
-def _far_pole(name: str, root: Root, quantile: float) -> Mark:
+def _far_pole(name: str, root: Root, fit: LoopFit) -> Mark:
     value = root.value_hz.real
     if root.covariance is None:
         return Mark(name=name, is_zero=False, value_hz=root.value_hz, words=f"about {si(abs(value), 'Hz', digits=2)}")
     stderr = float(np.sqrt(root.covariance[0, 0]))
-    region = (value - quantile * stderr, min(value + quantile * stderr, 0.0))
-    words = f"{si_with_error(abs(value), stderr, 'Hz')}, with the design's prior"
+    region = (value - fit.quantile * stderr, min(value + fit.quantile * stderr, 0.0))
+    words = si_with_error(abs(value), stderr, "Hz")
+    if 0 < fit.solution.model.far_pole.sd_s < math.inf:
+        words += ", with the design's prior"
     return Mark(name=name, is_zero=False, value_hz=root.value_hz, regions_hz=(region,), words=words)
 
 

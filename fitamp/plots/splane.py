@@ -6,6 +6,7 @@ from dataclasses import dataclass
 
 from matplotlib.axes import Axes
 from matplotlib.figure import Figure
+from matplotlib.patheffects import withStroke
 from matplotlib.scale import SymmetricalLogTransform
 
 from fitamp.comparison import Comparison
@@ -104,7 +105,7 @@ def _levels(
 
 
 def _free_place(placed: list[_Label], at: float, words: str, positions: list[float], width_in: float) -> _Label:
-    """The lowest level where a label overlaps no other and its leader crosses none, in its own half plane if it can."""
+    """The lowest level where labels do not overlap and no leader crosses one, in the own half plane if possible."""
     extent = text_width_in(words) + 0.12
     to_right, to_left = (at, at + extent), (at - extent, at)
     is_left = at < width_in / 2
@@ -121,6 +122,7 @@ def _free_place(placed: list[_Label], at: float, words: str, positions: list[flo
             is_free = all(
                 not (other.level == level and other.start < end and start < other.end)
                 and not (other.level < level and other.start < at < other.end)
+                and not (other.level > level and start < other.at < end)
                 for other in placed
             )
             if is_free:
@@ -194,8 +196,10 @@ def _draw_marks(axes: Axes, marks: tuple[Mark, ...], y: float, row: str) -> None
                 markersize=10,
                 markeredgewidth=2.4,
                 gid=f"{row} {mark.name}",
-                zorder=4,
+                zorder=4 if mark.is_zero else 4.5,
                 transform=axes.get_yaxis_transform() if at_edges else axes.transData,
+                # A pole on a zero stays visible: the pair all but cancels, which is worth seeing.
+                path_effects=[] if mark.is_zero else [withStroke(linewidth=5, foreground="white")],
             )
 
 

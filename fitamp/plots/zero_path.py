@@ -255,6 +255,7 @@ def _draw_advice(path: Axes, comparison: Comparison, elements: Elements, measure
         va="top",
         size=SMALL_PT + 1,
         weight="bold",
+        bbox={"boxstyle": "square,pad=0.2", "facecolor": "white", "edgecolor": "none", "alpha": 0.75},
     )
 
 
