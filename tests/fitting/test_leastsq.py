@@ -184,6 +184,14 @@ def test_a_residual_that_is_not_finite_is_no_convergence() -> None:
     assert optimum.covariance[0, 0] == 1e30
 
 
+def test_a_fit_that_never_ends_is_given_up() -> None:
+    # Gauss-Newton steps of 1 down exp(-b) from 1e150 to the smallest float are 1088.
+    optimum = minimise(
+        lambda b: 1e150 * np.exp(-b), [0.0], names=["b"], jacobian=lambda b: -1e150 * np.exp(-b)[:, np.newaxis]
+    )
+    assert not optimum.converged
+
+
 def test_as_many_names_as_values() -> None:
     with pytest.raises(ValueError, match="zip"):
         minimise(lambda b: b, [1.0, 2.0], names=["b1"])
