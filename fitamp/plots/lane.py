@@ -20,9 +20,9 @@ GAP_IN = 0.1
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class _Spot:
-    """A mark at a frequency, or pointing over an edge ("<" or ">"), with its name."""
+    """A mark at a frequency with its name, or all marks beyond one edge ("<" or ">") with theirs."""
 
-    mark: Mark
+    marks: tuple[Mark, ...]
     at_hz: float
     edge: str
     words: str
@@ -76,26 +76,32 @@ def draw_lane(
 
 def _spots(marks: tuple[Mark, ...], low_hz: float, high_hz: float) -> list[_Spot]:
     """Pole 1, pole 2 (or the pair) and the zero, lowest first. A third pole is not what the sweep is about."""
-    spots = []
-    for mark in marks:
-        if mark.name == "pole 3":
-            continue
-        at_hz = _distance_hz(mark)
-        edge = "<" if at_hz < low_hz else ">" if at_hz > high_hz else ""
-        words = mark.label
-        if edge:
-            words = f"{mark.name} at infinity" if mark.reaches_infinity and mark.is_zero else mark.sentence
-        spots.append(_Spot(mark=mark, at_hz=at_hz, edge=edge, words=words))
-    return sorted(spots, key=lambda spot: spot.at_hz)
+    shown = sorted((mark for mark in marks if mark.name != "pole 3"), key=_distance_hz)
+    inside = [
+        _Spot(marks=(mark,), at_hz=_distance_hz(mark), edge="", words=mark.label)
+        for mark in shown
+        if low_hz <= _distance_hz(mark) <= high_hz
+    ]
+    below = tuple(mark for mark in shown if _distance_hz(mark) < low_hz)
+    above = tuple(mark for mark in shown if _distance_hz(mark) > high_hz)
+    return [
+        *([_Spot(marks=below, at_hz=0.0, edge="<", words=_far_words(below))] if below else []),
+        *inside,
+        *([_Spot(marks=above, at_hz=math.inf, edge=">", words=_far_words(above))] if above else []),
+    ]
+
+
+def _far_words(marks: tuple[Mark, ...]) -> str:
+    return "; ".join(
+        f"{mark.name} at infinity" if mark.reaches_infinity and mark.is_zero else mark.sentence for mark in marks
+    )
 
 
 def _distance_hz(mark: Mark) -> float:
-    """Distance from the origin; infinite or 0 where only a bound is known."""
+    """Distance from the origin. Without a value pole 1 is below the band, and all else above it."""
     if mark.value_hz is not None:
         return abs(mark.value_hz)
-    if mark.reaches_infinity:
-        return math.inf
-    return 0.0
+    return 0.0 if mark.name == "pole 1" else math.inf
 
 
 def _draw_window(lane: Axes, comparison: Comparison) -> None:
@@ -115,9 +121,11 @@ def _draw_row(lane: Axes, y: float, row: str, marks: tuple[Mark, ...], width_in:
     colour = COLOURS["fitted" if row == "measured" else "designed"]
     free_to = width_in  # everything right of this is taken
     for spot in reversed(_spots(marks, low, high)):
-        for start, end in spot.mark.regions_hz:
+        for start, end in (region for mark in spot.marks for region in mark.regions_hz):
             near, far = sorted((abs(start), abs(end)))
-            lane.plot([max(near, low), min(far, high)], [y, y], color=colour, linewidth=4, alpha=0.4, gid="region")
+            if near < high and far > low:
+                ends = [max(near, low), min(far, high)]
+                lane.plot(ends, [y, y], color=colour, linewidth=4, alpha=0.4, gid="region")
         at_in = {"<": 0.1, ">": width_in - 0.1}.get(spot.edge, scale * math.log10(max(spot.at_hz, low) / low))
         extent = OFFSET_IN + text_width_in(spot.words)
         on_right = spot.edge != ">" and at_in + extent <= free_to
@@ -126,12 +134,12 @@ def _draw_row(lane: Axes, y: float, row: str, marks: tuple[Mark, ...], width_in:
         lane.plot(
             [x],
             [y],
-            spot.edge or ("o" if spot.mark.is_zero else "x"),
+            spot.edge or ("o" if spot.marks[0].is_zero else "x"),
             color=colour,
             markerfacecolor=colour if row == "measured" else "white",
             markersize=8,
             markeredgewidth=2,
-            gid=f"{row} {spot.mark.name}",
+            gid=f"{row} {', '.join(mark.name for mark in spot.marks)}",
             zorder=4,
         )
         lane.annotate(

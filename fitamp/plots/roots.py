@@ -94,20 +94,23 @@ def _zero_hz(zero_time_s: float) -> float:
 
 
 def measured_marks(fit: LoopFit) -> tuple[Mark, ...]:
-    """The fitted poles, nearest the origin first, then the zero."""
-    marks = []
-    for index, root in enumerate(fit.poles):
-        if root.value_hz.imag < 0:
-            continue
-        if root.value_hz.imag > 0:
-            marks.append(_pair(root))
-        elif index < 2:
-            quantity = f"pole{index + 1}_hz"
-            estimate = getattr(fit.parameters, quantity)
-            marks.append(_pole(f"pole {index + 1}", estimate, text_of(quantity, estimate)))
-        else:
-            marks.append(_far_pole(f"pole {index + 1}", root, fit))
-    return (*marks, _measured_zero(fit))
+    """The fitted poles, nearest the origin first, then the zero; pole 1 and 2 also where only a bound is known."""
+    pairs = [root for root in fit.poles if root.value_hz.imag > 0]
+    if pairs:
+        poles = [_pair(pairs[0])]
+    else:
+        poles = [
+            _pole(name, estimate, text_of(quantity, estimate))
+            for name, quantity, estimate in (
+                ("pole 1", "pole1_hz", fit.parameters.pole1_hz),
+                ("pole 2", "pole2_hz", fit.parameters.pole2_hz),
+            )
+        ]
+    # Beside a pair any real pole is the far one.
+    poles += [_far_pole(root, fit) for root in fit.poles[2:] if root.value_hz.imag == 0]
+    if pairs:
+        poles += [_far_pole(root, fit) for root in fit.poles[:2] if root.value_hz.imag == 0]
+    return (*poles, _measured_zero(fit))
 
 
 def designed_marks(design: Design) -> tuple[Mark, ...]:
@@ -147,7 +150,8 @@ def _pole(name: str, estimate: Estimate, words: str) -> Mark:
     return Mark(name=name, is_zero=False, value_hz=value, regions_hz=regions, words=words)
 
 
-def _far_pole(name: str, root: Root, fit: LoopFit) -> Mark:
+def _far_pole(root: Root, fit: LoopFit) -> Mark:
+    name = "pole 3"
     value = root.value_hz.real
     if root.covariance is None:
         return Mark(name=name, is_zero=False, value_hz=root.value_hz, words=f"about {si(abs(value), 'Hz', digits=2)}")

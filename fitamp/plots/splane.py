@@ -53,7 +53,7 @@ def splane_figure(fit: LoopFit, comparison: Comparison | None = None) -> Figure:
 def _draw_lanes(
     fit: LoopFit, comparison: Comparison | None, measured: tuple[Mark, ...], designed: tuple[Mark, ...]
 ) -> Figure:
-    reach, linear = reach_hz(fit, (*measured, *designed)), linear_hz((*measured, *designed))
+    reach, linear = reach_hz(fit, measured, designed), linear_hz((*measured, *designed))
     width_in = WIDTH_IN - LEFT_IN - RIGHT_IN
     below = _levels(measured, linear, reach, width_in, comparison)
     above = _levels(designed, linear, reach, width_in, None)
@@ -183,24 +183,30 @@ def _draw_regions(axes: Axes, marks: tuple[Mark, ...], y: float, reach: float) -
 
 def _draw_marks(axes: Axes, marks: tuple[Mark, ...], y: float, row: str) -> None:
     colour = COLOURS["fitted" if row == "measured" else "designed"]
+    to_axes = axes.get_yaxis_transform()
     for mark in marks:
-        if mark.value_hz is not None or mark.is_at_infinity:
-            # Infinity is one place, met at both edges.
-            at_edges = mark.value_hz is None
-            axes.plot(
-                [0.012, 0.988] if mark.value_hz is None else [mark.value_hz.real],
-                [y, y] if at_edges else [y],
-                "o" if mark.is_zero else "x",
-                color=colour,
-                markerfacecolor=colour if row == "measured" else "white",
-                markersize=10,
-                markeredgewidth=2.4,
-                gid=f"{row} {mark.name}",
-                zorder=4 if mark.is_zero else 4.5,
-                transform=axes.get_yaxis_transform() if at_edges else axes.transData,
-                # A pole on a zero stays visible: the pair all but cancels, which is worth seeing.
-                path_effects=[] if mark.is_zero else [withStroke(linewidth=5, foreground="white")],
-            )
+        if mark.is_at_infinity:  # one place, met at both edges
+            x, transform = [0.012, 0.988], to_axes
+        elif mark.value_hz is None:
+            continue
+        elif abs(mark.value_hz) > axes.get_xlim()[1]:  # there, but farther out than the picture
+            x, transform = [0.012 if mark.value_hz.real < 0 else 0.988], to_axes
+        else:
+            x, transform = [mark.value_hz.real], axes.transData
+        axes.plot(
+            x,
+            [y] * len(x),
+            "o" if mark.is_zero else "x",
+            color=colour,
+            markerfacecolor=colour if row == "measured" else "white",
+            markersize=10,
+            markeredgewidth=2.4,
+            gid=f"{row} {mark.name}",
+            zorder=4 if mark.is_zero else 4.5,
+            transform=transform,
+            # A pole on a zero stays visible: the pair all but cancels, which is worth seeing.
+            path_effects=[] if mark.is_zero else [withStroke(linewidth=5, foreground="white")],
+        )
 
 
 def _draw_moves(

@@ -17,12 +17,13 @@ __all__ = ["distances_hz", "linear_hz", "name_half_planes", "point_to_infinity",
 FARTHEST = 300.0
 
 
-def reach_hz(fit: LoopFit, marks: Iterable[Mark]) -> float:
-    """Half the width of the plane: beyond the farthest root or region that the sweep can tell from infinity."""
-    shown = list(marks)
+def reach_hz(fit: LoopFit, measured: Iterable[Mark], designed: Iterable[Mark]) -> float:
+    """Half the plane's width: beyond every designed root, and every measured one that can be told from infinity."""
+    found, wanted = list(measured), list(designed)
     limit = FARTHEST * fit.sweep.f_max_hz
-    room = 8.0 if any(mark.reaches_infinity for mark in shown) else 2.5
-    return room * max([d for d in distances_hz(shown) if d <= limit], default=fit.sweep.f_max_hz)
+    room = 8.0 if any(mark.reaches_infinity for mark in (*found, *wanted)) else 2.5
+    distances = [d for d in distances_hz(found) if d <= limit] + distances_hz(wanted)
+    return room * max(distances, default=fit.sweep.f_max_hz)
 
 
 def linear_hz(marks: Iterable[Mark]) -> float:

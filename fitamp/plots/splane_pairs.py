@@ -35,7 +35,7 @@ def draw_pairs(
     body_in = BOTTOM_IN + HEIGHT_IN + TOP_IN + legend_in
     figure = figure_with_head(fit, comparison, body_in=body_in)
     axes = place_axes(figure, left=LEFT_IN, bottom=BOTTOM_IN, width=WIDTH_IN - LEFT_IN - RIGHT_IN, height=HEIGHT_IN)
-    reach = _set_scales(axes, fit, (*measured, *designed))
+    reach = _set_scales(axes, fit, measured, designed)
     axes.axhline(0, color="#AAAAAA", linewidth=0.8, zorder=1)
     name_half_planes(axes)
     axes.grid(True)
@@ -80,9 +80,10 @@ def _draw_legend(figure: Figure, group: str, marks: tuple[Mark, ...], left_in: f
     legend.get_title().set_fontweight("bold")
 
 
-def _set_scales(axes: Axes, fit: LoopFit, marks: tuple[Mark, ...]) -> float:
+def _set_scales(axes: Axes, fit: LoopFit, measured: tuple[Mark, ...], designed: tuple[Mark, ...]) -> float:
     """Scale both axes alike; the half width of the plane in hertz."""
-    reach = reach_hz(fit, marks)
+    marks = (*measured, *designed)
+    reach = reach_hz(fit, measured, designed)
     height = 2.5 * max(abs(mark.value_hz.imag) for mark in marks if mark.value_hz is not None)
     if reach <= 2.5 * LINEAR_RATIO * min(d for d in distances_hz(marks) if d > 0):
         reach, height = reach / 2, height / 2
@@ -102,7 +103,7 @@ def _draw_mark(axes: Axes, mark: Mark, group: str, reach: float) -> None:
         low, high = max(start, -reach), min(end, reach)
         axes.plot([low, high], [0, 0], color=COLOURS["fitted"], linewidth=6, alpha=0.35, gid=f"region {mark.name}")
         point_to_infinity(axes, 0.0, (start, end), reach)
-    if mark.value_hz is None:
+    if mark.value_hz is None or abs(mark.value_hz) > reach:
         return
     places = [mark.value_hz, mark.value_hz.conjugate()] if mark.is_pair else [mark.value_hz]
     if mark.covariance is not None:
