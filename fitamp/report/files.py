@@ -6,8 +6,8 @@ and nothing that was there before is lost.
 
 from __future__ import annotations
 
-import os
 import tempfile
+import uuid
 from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
@@ -36,12 +36,13 @@ def write_text(path: Path, text: str, *, force: bool) -> None:
         raise UsageError(f"{path}: is a folder; name a file")
     try:
         path.parent.mkdir(parents=True, exist_ok=True)
-        handle, name = tempfile.mkstemp(prefix=".fitamp-", dir=path.parent)
+        # Not by tempfile, whose files only their owner may read: results are for colleagues too.
+        temporary = path.parent / f".fitamp-{uuid.uuid4().hex}"
+        stream = temporary.open("x", encoding="utf-8", newline="\n")
     except OSError as error:
         raise UsageError(f"{path}: cannot be written ({error.strerror or error}); choose another place") from error
-    temporary = Path(name)
     try:
-        with os.fdopen(handle, "w", encoding="utf-8", newline="\n") as stream:
+        with stream:
             stream.write(text)
         temporary.replace(path)
     except BaseException:
