@@ -13,6 +13,7 @@ from fitamp.comparison.result import Advice, Nulling, Verdict, Window
 from fitamp.design import Design, HalfPlane
 from fitamp.estimate import NOT_KNOWN, Estimate, Known
 from fitamp.fitting import LoopFit
+from fitamp.fitting.result import text_of
 from fitamp.units import si, si_with_error
 
 __all__ = ["advise", "judge_nulling", "window_of"]
@@ -98,13 +99,13 @@ def judge_nulling(fit: LoopFit, design: Design) -> Verdict:
 def _reason(
     nulling: Nulling, zero_time: Estimate, window: Window, *, touched: list[Nulling], design: Design, fit: LoopFit
 ) -> str:
-    seen = f"zero time {si_with_error(zero_time.value, zero_time.stderr, 's')} ({place_of(zero_time.value)})"
+    place = "" if zero_time.value is None else f" ({place_of(zero_time.value)})"
+    seen = f"zero time {text_of('zero_time_s', zero_time)}{place}"
     allowed = f"{span_of(window.low_s, window.high_s)}, from {window.source}"
     small = si(design.small_zero_time_s, "s")
     if nulling is Nulling.UNDECIDED:
-        reach = f"{si(zero_time.ci95[0], 's')} to {si(zero_time.ci95[1], 's')}"
         names = " and ".join(verdict.value for verdict in touched)
-        return f"the 95 % interval of the zero time, {reach}, reaches into {names}; {_what_settles(fit)}"
+        return f"the 95 % interval of the zero time, {_ends(zero_time)}, reaches into {names}; {_what_settles(fit)}"
     sentences = {
         Nulling.AS_DESIGNED: f"{seen} lies in the window {allowed}",
         Nulling.TOO_LITTLE: f"{seen} gives less lead than the window {allowed}",
@@ -118,10 +119,15 @@ def _reason(
     return sentences[nulling]
 
 
-def place_of(zero_time_s: float | None) -> str:
+def _ends(zero_time: Estimate) -> str:
+    low, high = zero_time.ci95
+    if low is None:
+        return "open" if high is None else f"anything up to {si(high, 's')}"
+    return f"{si(low, 's')} and up" if high is None else f"{si(low, 's')} to {si(high, 's')}"
+
+
+def place_of(zero_time_s: float) -> str:
     """A zero time as a place: "left half plane, 110 MHz"."""
-    if zero_time_s is None:
-        return "nowhere known"
     if zero_time_s == 0:
         return "at infinity"
     side = "left" if zero_time_s > 0 else "right"
