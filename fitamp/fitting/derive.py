@@ -159,7 +159,8 @@ def _root(
     value = roots(model, values)[index]
     jacobian = gradient(parts, values)
     spread = jacobian @ covariance @ jacobian.T
-    # Also true where a difference did not exist (NaN): then the root is there, its error is not.
-    if not np.sqrt(np.trace(spread)) < abs(value):
+    # Also true where a difference did not exist (NaN), or where rounding of a huge variance left a negative one: then
+    # the root is there, its error is not.
+    if not 0 <= np.trace(spread) < abs(value) ** 2:
         return Root(value_hz=value, covariance=None)
     return Root(value_hz=value, covariance=frozen_float(spread))
