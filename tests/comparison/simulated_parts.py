@@ -19,7 +19,7 @@ FREQ_HZ: FloatArray = np.geomspace(10.0, 200e6, 141)
 # A usual bench: receivers 94 dB below the drive, gain errors of 0.1 %.
 NOISE = NoiseLevels(error_channel=2e-5, return_channel=2e-5, relative=1e-3)
 NOMINAL = Elements(gm1=150e-6, R1=1e6, C1=200e-15, gm2=1.6e-3, R2=50e3, CL=4e-12, Cc=1.8e-12, Rz=1300.0)
-SPREADS: Mapping[str, float] = {
+SPREADS: dict[str, float] = {
     "gm1": 0.08,
     "R1": 0.15,
     "C1": 0.10,

@@ -142,9 +142,7 @@ def test_built_as_designed_deviates_by_nothing() -> None:
         ({"Rz": 0.0}, "phase_margin_deg", -1),
     ],
 )
-def test_deviation_and_sigma_carry_the_sign_of_the_change(
-    change: dict[str, float], quantity: str, sign: int
-) -> None:
+def test_deviation_and_sigma_carry_the_sign_of_the_change(change: dict[str, float], quantity: str, sign: int) -> None:
     part = NOMINAL.with_changes(**change)
     row = compare(noise_free(part), DESIGN).row(quantity)
     assert row.deviation is not None
