@@ -44,10 +44,10 @@ class Adequacy:
             return "residuals look like the noise"
         seen = []
         if self.structure >= ALARM:
-            seen.append("the residuals follow a pattern along frequency")
+            seen.append("follow a pattern along frequency")
         if self.level >= ALARM:
-            seen.append(f"they are {np.sqrt(self.reduced_chi_square):.2g} times as large as the scatter allows")
-        return " and ".join(seen)
+            seen.append(f"are {np.sqrt(self.reduced_chi_square):.2g} times as large as the scatter allows")
+        return f"the residuals {' and '.join(seen)}"
 
 
 def judge(solution: Solution) -> Adequacy:

@@ -75,6 +75,10 @@ def fit_text(fit: LoopFit) -> str:
         if name not in {"delay_s", "far_pole_s"} or estimate.stderr is not None
     ]
     _print_table(console, printable(fit.sweep.origin.file), ("quantity", "value ± 1 σ", "95 % interval", "known"), rows)
+    for root in fit.poles:
+        if root.value_hz.imag > 0:
+            real, imaginary = si(root.value_hz.real, "Hz"), si(root.value_hz.imag, "Hz")
+            _say(console, f"poles: a complex pair at {real} ± j {imaginary}")
     _say(console, f"zero: {zero_sentence(fit)}")
     _margins(console, fit)
     _say(
@@ -231,11 +235,15 @@ def _span(low: float, high: float, unit: str) -> str:
 
 
 def _interval(name: str, ci95: tuple[float | None, float | None]) -> str:
+    """Both ends, with digits enough to tell them apart."""
     low, high = ci95
     unit = unit_of(name)
     if low is None and high is None:
         return "–"
-    return f"{'…' if low is None else si(low, unit)} to {'…' if high is None else si(high, unit)}"
+    digits = 4
+    if low is not None and high is not None and high > low:
+        digits = min(max(digits, 2 + math.ceil(-math.log10((high - low) / max(abs(low), abs(high))))), 12)
+    return f"{'…' if low is None else si(low, unit, digits)} to {'…' if high is None else si(high, unit, digits)}"
 
 
 def _margins(console: Console, fit: LoopFit, rows: Sequence[str] | None = None) -> None:
