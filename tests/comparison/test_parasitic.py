@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 from simulated_parts import BENCH, DESIGN, FREQ_HZ, NOMINAL, SPREADS, drawn, measured, noise_free
@@ -10,7 +12,7 @@ from fitamp.comparison import Parasitic, compare
 from fitamp.comparison.expectation import fit_with_design
 from fitamp.comparison.parasitic import parasitics
 from fitamp.design import Bench, Design, HalfPlane, Roots
-from fitamp.estimate import Known
+from fitamp.estimate import Estimate, Known
 from fitamp.sweep import Sweep
 
 
@@ -115,7 +117,10 @@ def test_first_stage_parasitic_is_undetermined_where_the_band_ends_early(resisto
 
 
 def test_without_pole_2_there_is_no_load_to_tell() -> None:
-    found = parasitic_of(measured(NOMINAL, 54, freq_hz=np.geomspace(10, 1e6, 101)))
+    fit = fit_with_design(measured(NOMINAL, 54), DESIGN)
+    bound = Estimate(value=None, stderr=None, ci95=(5e6, None), known=Known.LOWER_BOUND)
+    found = parasitics(replace(fit, parameters=replace(fit.parameters, pole2_hz=bound)), DESIGN)
+    assert found is not None
     assert found.load_f.known is found.load_total_f.known is Known.UNDETERMINED
     assert found.sentence == "the load capacitance cannot be told, because pole 2 is not determined by this band"
 
