@@ -41,20 +41,20 @@ def build_parser() -> argparse.ArgumentParser:
     read = commands.add_parser("read", help="show what is understood of sweep files")
     read.add_argument("files", nargs="+", metavar="FILE", help="CSV or Touchstone sweep")
     _reading_options(read)
-    _json_option(read)
+    _output_options(read, folder=False)
     read.set_defaults(action="read")
 
     fit = commands.add_parser("fit", help="fit two poles and one zero to a sweep")
     fit.add_argument("file", metavar="FILE", help="CSV or Touchstone sweep of the loop gain")
     _reading_options(fit)
-    _output_options(fit)
+    _output_options(fit, folder=True)
     fit.set_defaults(action="fit")
 
     compare = commands.add_parser("compare", help="hold a sweep against its design: verdict, numbers, pictures")
     compare.add_argument("file", metavar="FILE", help="CSV or Touchstone sweep of the loop gain")
     compare.add_argument("--design", required=True, metavar="D.toml", help="design file")
     _reading_options(compare)
-    _output_options(compare)
+    _output_options(compare, folder=True)
     compare.set_defaults(action="compare")
 
     demo = commands.add_parser("demo", help="run the main job on the invented example parts")
@@ -74,14 +74,11 @@ def _reading_options(parser: argparse.ArgumentParser) -> None:
     group.add_argument("--sign", choices=("as-read", "inverted"), help="sign of the read-out, where it is not plain")
 
 
-def _json_option(parser: argparse.ArgumentParser) -> None:
-    parser.add_argument("--json", metavar="FILE", help="write the result as JSON; - prints it, and nothing else")
-
-
-def _output_options(parser: argparse.ArgumentParser) -> None:
+def _output_options(parser: argparse.ArgumentParser, *, folder: bool) -> None:
     group = parser.add_argument_group("output")
-    _json_option(parser)
-    group.add_argument("--out", metavar="DIR", help="folder for pictures (PNG, SVG), JSON and table")
+    group.add_argument("--json", metavar="FILE", help="write the result as JSON; - prints it, and nothing else")
+    if folder:
+        group.add_argument("--out", metavar="DIR", help="folder for pictures (PNG, SVG), JSON and table")
     group.add_argument("--force", action="store_true", help="write over existing output")
 
 

@@ -31,6 +31,7 @@ STDOUT = "-"
 
 def read(args: argparse.Namespace) -> int:
     """`fitamp read FILE…`."""
+    _refuse_early(args)
     sweeps = [_sweep(args, file) for file in args.files]
     record = {"schema": "fitamp/read/1", "sweeps": [sweep_as_dict(sweep) for sweep in sweeps]}
     _deliver(args, record, "\n".join(sweep_text(sweep) for sweep in sweeps))
@@ -100,7 +101,7 @@ def _sweep(args: argparse.Namespace, file: str) -> Sweep:
 
 def _refuse_early(args: argparse.Namespace) -> None:
     """Say that output exists before the work is done, not after."""
-    if args.out:
+    if getattr(args, "out", None):
         refuse_existing(Path(args.out), force=args.force)
     if args.json and args.json != STDOUT:
         refuse_existing(Path(args.json), force=args.force)
@@ -111,7 +112,7 @@ def _deliver(args: argparse.Namespace, record: Mapping[str, Any], text: str) -> 
         print(dumps(record))
         return
     if args.json:
-        write_text(Path(args.json), dumps(record) + "\n", force=getattr(args, "force", False))
+        write_text(Path(args.json), dumps(record) + "\n", force=args.force)
     sys.stdout.write(text)
     if getattr(args, "out", None):
         print(f"pictures and numbers: {args.out}")
