@@ -10,6 +10,7 @@ from matplotlib.axes import Axes
 from fitamp.comparison import Comparison
 from fitamp.plots.roots import Mark
 from fitamp.plots.style import COLOURS, SMALL_PT, text_width_in
+from fitamp.units import si
 
 __all__ = ["draw_lane", "widened"]
 
@@ -92,9 +93,15 @@ def _spots(marks: tuple[Mark, ...], low_hz: float, high_hz: float) -> list[_Spot
 
 
 def _far_words(marks: tuple[Mark, ...]) -> str:
-    return "; ".join(
-        f"{mark.name} at infinity" if mark.reaches_infinity and mark.is_zero else mark.sentence for mark in marks
-    )
+    return "; ".join(_far_word(mark) for mark in marks)
+
+
+def _far_word(mark: Mark) -> str:
+    """Name and value; of a region through infinity its nearer end, whichever half plane that is in."""
+    if mark.is_zero and len(mark.regions_hz) == 2:
+        nearest = min(abs(end) for region in mark.regions_hz for end in region)
+        return f"{mark.name} beyond {si(nearest, 'Hz', digits=3)}"
+    return mark.sentence
 
 
 def _distance_hz(mark: Mark) -> float:

@@ -99,7 +99,11 @@ def test_a_root_beyond_the_band_becomes_an_arrow_at_the_edge() -> None:
     figure = loop_figure(fit)
     (zero,) = drawn_lines(figure, "measured zero")
     assert zero.get_marker() == ">"
-    assert "zero at infinity" in words_in(figure)
+    low, high = fit.parameters.zero_time_s.ci95
+    assert low is not None
+    assert high is not None
+    nearest_ghz = 1e-9 / (2 * np.pi * max(-low, high))
+    assert f"zero beyond {nearest_ghz:.2f} GHz" in words_in(figure)
 
 
 def test_points_left_out_are_shown_with_their_reason() -> None:
