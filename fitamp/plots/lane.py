@@ -100,7 +100,7 @@ def _far_word(mark: Mark) -> str:
     """Name and value; of a region through infinity its nearer end, whichever half plane that is in."""
     if mark.is_zero and len(mark.regions_hz) == 2:
         nearest = min(abs(end) for region in mark.regions_hz for end in region)
-        return f"{mark.name} beyond {si(nearest, 'Hz', digits=3)}"
+        return f"{mark.name} > {si(nearest, 'Hz', digits=3)}"
     return mark.sentence
 
 

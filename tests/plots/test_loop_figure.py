@@ -103,7 +103,7 @@ def test_a_root_beyond_the_band_becomes_an_arrow_at_the_edge() -> None:
     assert low is not None
     assert high is not None
     nearest_ghz = 1e-9 / (2 * np.pi * max(-low, high))
-    assert f"zero beyond {nearest_ghz:.2f} GHz" in words_in(figure)
+    assert f"zero > {nearest_ghz:.2f} GHz" in words_in(figure)
 
 
 def test_points_left_out_are_shown_with_their_reason() -> None:
