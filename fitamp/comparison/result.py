@@ -30,6 +30,7 @@ class Row:
 
     designed : exact, from the design alone; designed_as_measured : through the sweep's band, weights and model
     deviation : (measured − designed as measured)/|designed as measured|; for margins in degrees or dB the difference
+        None where that is not known, and for a zero time designed so small that it counts as none
     sigma : that difference in standard errors of the measurement
     low, high : limits (None where open); inside : True or False only if the whole 95 % interval agrees
     """

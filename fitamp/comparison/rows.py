@@ -61,6 +61,8 @@ def comparison_rows(fit: LoopFit, designed_fit: LoopFit | None, design: Design, 
         low, high = _limits(quantity, design, window)
         estimate = measured[quantity]
         deviation, sigma = _deviation(quantity, estimate, reference)
+        if quantity == "zero_time_s" and abs(reference or 0.0) <= design.small_zero_time_s:
+            deviation = None  # percents of next to nothing say nothing
         rows.append(
             Row(
                 quantity=quantity,

@@ -47,7 +47,8 @@ def window_of(design: Design) -> Window:
     else:
         reach, source = ROOTS_WINDOW * abs(centre), "10 % around the designed zero"
     if design.half_plane is HalfPlane.INFINITY:
-        reach = max(reach, small)
+        if reach < small:
+            reach, source = small, "what counts as no zero"
         return Window(low_s=-reach, high_s=reach, source=source)
     # The designed half plane is part of what was designed; a half plane can be stated for a zero that is itself small.
     if side > 0:

@@ -166,6 +166,14 @@ def test_a_right_half_plane_zero_that_moved_out_deviates_upwards() -> None:
     assert row.deviation == pytest.approx(NOMINAL.gm2 * 200, rel=1e-3)
 
 
+def test_a_zero_designed_at_infinity_has_no_percents() -> None:
+    nulled = Design.from_elements(NOMINAL.with_changes(Rz=1.01 / NOMINAL.gm2), spreads=SPREADS, bench=BENCH)
+    row = compare(noise_free(NOMINAL), nulled).row("zero_time_s")
+    assert row.deviation is None
+    assert row.sigma is not None
+    assert row.sigma > 100
+
+
 def row_inside(fit: LoopFit, estimate: Estimate, limit: Limit) -> bool | None:
     """What the table says of pole 2 when it is measured as `estimate` and limited by `limit`."""
     design = replace(DESIGN, limits={"pole2_hz": limit})

@@ -105,6 +105,7 @@ def test_a_zero_designed_at_infinity_may_be_small_on_either_side() -> None:
     window = window_of(Design.from_elements(NOMINAL.with_changes(Rz=1 / NOMINAL.gm2), spreads=tight))
     assert window.low_s == pytest.approx(-SMALL_S)
     assert window.high_s == pytest.approx(SMALL_S)
+    assert window.source == "what counts as no zero"
 
 
 # Regions
