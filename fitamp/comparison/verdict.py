@@ -190,16 +190,34 @@ def advise(verdict: Verdict, design: Design, designed_zero_s: float) -> Advice:
         )
     if zero_time.value is None or zero_time.stderr is None:
         return Advice(rz_change_ohm=NOT_KNOWN, sentence=f"no change of Rz can be advised; {verdict.reason}")
-    change = (designed_zero_s - zero_time.value) / elements.Cc
-    stderr = math.hypot(zero_time.stderr / elements.Cc, change * design.spreads["Cc"])
-    estimate = Estimate.gaussian(change, stderr, quantile=WINDOW_QUANTILE)
+    spread = design.spreads["Cc"]
+
+    def change_to(zero_time_s: float) -> float:
+        return (designed_zero_s - zero_time_s) / elements.Cc
+
+    change = change_to(zero_time.value)
+    stderr = math.hypot(zero_time.stderr / elements.Cc, change * spread)
+    # A profiled interval need not be symmetric: its own ends are carried over, the spread of Cc added to each.
+    own_spread = WINDOW_QUANTILE * abs(change) * spread
+    low, high = zero_time.ci95
+    ends = (
+        None if high is None else change - math.hypot(change - change_to(high), own_spread),
+        None if low is None else change + math.hypot(change_to(low) - change, own_spread),
+    )
+    return Advice(
+        rz_change_ohm=Estimate(value=change, stderr=stderr, ci95=ends),
+        sentence=_advice_sentence(verdict.nulling, change, stderr, ends),
+    )
+
+
+def _advice_sentence(nulling: Nulling, change: float, stderr: float, ends: tuple[float | None, float | None]) -> str:
     amount = si_with_error(abs(change), stderr, "Ω")
     direction = "raise" if change > 0 else "lower"
-    if verdict.nulling is Nulling.AS_DESIGNED:
-        way = "more" if change > 0 else "less"
-        sentence = f"nothing has to change; the exact nominal place would take {amount} {way} Rz"
-    elif verdict.nulling is Nulling.UNDECIDED:
-        sentence = f"settle the verdict first; as it stands, {direction} Rz by {amount}"
-    else:
-        sentence = f"{direction} Rz by {amount} to put the zero at the designed place"
-    return Advice(rz_change_ohm=estimate, sentence=sentence)
+    if nulling is Nulling.AS_DESIGNED:
+        return (
+            f"nothing has to change; the exact nominal place would take {amount} {'more' if change > 0 else 'less'} Rz"
+        )
+    if nulling is Nulling.UNDECIDED:
+        low, high = ("unknown" if end is None else si(end, "Ω", digits=3) for end in ends)
+        return f"settle the verdict first; the change of Rz that the sweep allows reaches from {low} to {high}"
+    return f"{direction} Rz by {amount} to put the zero at the designed place"
