@@ -20,11 +20,14 @@ if TYPE_CHECKING:
     from fitamp.estimate import Estimate, Known
     from fitamp.fitting import DelayPrior, FarPolePrior, LoopFit, ZeroPlace, fit_sweep
     from fitamp.importers import read_sweep, write_sweep
-    from fitamp.margins import closed_loop_step, margins
+    from fitamp.margins import closed_loop_step
+    from fitamp.margins import margins as loop_margins
     from fitamp.noise import estimate_noise, simulate_bench
     from fitamp.sweep import NoiseLevels, Sign, Sweep
     from fitamp.transfer import Transfer
 
+# Module, and after a colon the name there: a public name that is also a module's would become that module as soon as
+# anything imports it.
 _HOME = {
     "Comparison": "comparison",
     "DelayPrior": "fitting",
@@ -51,7 +54,7 @@ _HOME = {
     "compare": "comparison",
     "estimate_noise": "noise",
     "fit_sweep": "fitting",
-    "margins": "margins",
+    "loop_margins": "margins:margins",
     "read_design": "design",
     "read_sweep": "importers",
     "simulate_bench": "noise",
@@ -86,7 +89,7 @@ __all__ = [
     "compare",
     "estimate_noise",
     "fit_sweep",
-    "margins",
+    "loop_margins",
     "read_design",
     "read_sweep",
     "simulate_bench",
@@ -98,7 +101,8 @@ __all__ = [
 def __getattr__(name: str) -> object:
     if name not in _HOME:
         raise AttributeError(f"module 'fitamp' has no attribute {name!r}")
-    return getattr(import_module(f"fitamp.{_HOME[name]}"), name)
+    module, _, own_name = _HOME[name].partition(":")
+    return getattr(import_module(f"fitamp.{module}"), own_name or name)
 
 
 def __dir__() -> list[str]:
