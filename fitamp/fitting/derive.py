@@ -42,9 +42,9 @@ def fitted_parameters(solution: Solution, sweep: Sweep, adequacy: Adequacy, quan
     def profiled(index: int) -> Profile:
         return profile(solution, sweep, index, inflation=adequacy.inflation)
 
-    def dc_gain(values: FloatArray) -> float:
+    def dc_gain(values: FloatArray) -> float | None:
         g, q, *_ = model.physical(values)
-        return g / q
+        return g / q if q else None
 
     if deviations[LN_Q] > QUADRATIC_LN:
         edges = profiled(LN_Q)
@@ -129,20 +129,27 @@ def _extra(solution: Solution, covariance: FloatArray, name: str, held: float, q
 
 
 def _sorted_poles(model: TwoPole, values: FloatArray) -> tuple[complex, ...]:
-    return tuple(sorted(model.response(values).poles_hz, key=lambda pole: (abs(pole), pole.imag)))
+    try:
+        response = model.response(values)
+    except (ValueError, ZeroDivisionError):
+        # Far out on a profile a coefficient can leave the range of floats: no response is left there.
+        return ()
+    return tuple(sorted(response.poles_hz, key=lambda pole: (abs(pole), pole.imag)))
 
 
 def _zeros(model: TwoPole, values: FloatArray) -> tuple[complex, ...]:
     return model.response(values).zeros_hz
 
 
-def _pole_distance(model: TwoPole, values: FloatArray, index: int) -> float:
-    return abs(_sorted_poles(model, values)[index])
+def _pole_distance(model: TwoPole, values: FloatArray, index: int) -> float | None:
+    poles = _sorted_poles(model, values)
+    return abs(poles[index]) if index < len(poles) else None
 
 
-def _gain_bandwidth_hz(model: TwoPole, values: FloatArray) -> float:
+def _gain_bandwidth_hz(model: TwoPole, values: FloatArray) -> float | None:
     g, q, *_ = model.physical(values)
-    return g / q * _pole_distance(model, values, 0)
+    pole1_hz = _pole_distance(model, values, 0)
+    return None if pole1_hz is None else g / q * pole1_hz
 
 
 def _root(

@@ -60,45 +60,68 @@ def fit_sweep(
         raise FitError(
             f"{sweep.origin.file}: {len(sweep)} usable points, a fit needs {MIN_POINTS}; take a denser or wider sweep"
         )
+    _check_points(sweep)
     noise = noise or sweep.noise
-    search = Search(sweep=sweep, noise=noise, known=known)
+    lag_is_known = far_pole is not None or delay is not None
     any_lag = None
-    if far_pole is None and delay is None:
-        solution, any_lag = search.plain_or_with_lag()
-    else:
-        solution = search.best(far_pole or FarPolePrior(), delay or DelayPrior())
+    # A start that overflows loses by its chi-square; that is no news.
+    with np.errstate(over="ignore", invalid="ignore", divide="ignore"):
+        search = Search(sweep=sweep, noise=noise, known=known)
+        if lag_is_known:
+            solution = search.best(far_pole or FarPolePrior(), delay or DelayPrior())
+        else:
+            solution, any_lag = search.plain_or_with_lag()
     _check_likeness(sweep, solution)
     adequacy = judge(solution)
     # The noise comes from about as many second differences as there are points.
     quantile = two_sided_95(1e9 if noise else len(sweep) - 5)
     parameters = fitted_parameters(solution, sweep, adequacy, quantile)
+    if not (parameters.gain_bandwidth_hz.is_measured or parameters.pole1_hz.is_measured):
+        raise FitError(
+            f"{sweep.origin.file}: the sweep shows neither pole 1 nor a gain-bandwidth product; check that the columns "
+            "hold loop gain, and sweep to where it falls"
+        )
     covariance = solution.covariance * adequacy.inflation
     poles, zeros = fitted_roots(solution, covariance)
     margins = fitted_margins(solution, covariance, quantile, known)
     # With priors the lag is in the estimate already; without, what may be said must hold for any.
-    strict = parameters.zero_time_s if any_lag is None else _zero_time(any_lag, quantile)
+    strict = parameters.zero_time_s if lag_is_known else _zero_time(any_lag, quantile)
     return LoopFit(
         sweep=sweep,
         response=solution.model.response(solution.values),
         parameters=parameters,
-        zero=place_of_zero(parameters, strict, adequacy),
+        zero=place_of_zero(parameters, margins, strict, adequacy),
         poles=poles,
         zeros=zeros,
         margins=margins,
         adequacy=adequacy,
-        warnings=warnings_of(sweep, parameters, margins, adequacy, None if any_lag is None else strict),
+        warnings=warnings_of(sweep, parameters, margins, adequacy, None if lag_is_known else strict),
         solution=solution,
         quantile=quantile,
     )
 
 
-def _zero_time(solution: Solution, quantile: float) -> Estimate:
-    """Zero time of a solution by curvature; undetermined where the model is not adequate or did not converge."""
+def _zero_time(solution: Solution | None, quantile: float) -> Estimate:
+    """Zero time of a solution by curvature; undetermined where there is none or the model is not adequate."""
+    if solution is None:
+        return NOT_KNOWN
     model = solution.model
     spread_s = float(np.sqrt(solution.covariance[3, 3])) * model.time_s
     if not (solution.optimum.converged and judge(solution).adequate and np.isfinite(spread_s)):
         return NOT_KNOWN
     return Estimate.gaussian(model.physical(solution.values)[3], spread_s, quantile=quantile)
+
+
+def _check_points(sweep: Sweep) -> None:
+    """Refuse a loop gain that is nothing, or exactly −1 somewhere, for which no closed loop exists."""
+    if not sweep.gain.any():
+        raise FitError(f"{sweep.origin.file}: the loop gain is 0 throughout; check that the columns hold loop gain")
+    singular = sweep.gain == -1
+    if singular.any():
+        raise FitError(
+            f"{sweep.origin.file}: loop gain is exactly -1 at {sweep.freq_hz[np.argmax(singular)]:g} Hz, where the "
+            "closed loop has no value; leave the point out"
+        )
 
 
 def _check_likeness(sweep: Sweep, solution: Solution) -> None:

@@ -15,7 +15,7 @@ import numpy as np
 
 from fitamp.arrays import ComplexArray, FloatArray, frozen_float
 
-__all__ = ["Optimum", "interleaved", "minimise"]
+__all__ = ["Optimum", "covariance_of", "interleaved", "minimise"]
 
 Residual = Callable[[FloatArray], FloatArray]
 Jacobian = Callable[[FloatArray], FloatArray]
@@ -104,7 +104,7 @@ def minimise(
     values = values_of(result.params)
     residuals = residual(values)
     if jacobian is not None:
-        covariance = _covariance(jacobian(values))
+        covariance = covariance_of(jacobian(values))
     elif result.covar is not None:
         covariance = np.asarray(result.covar, dtype=float)
     else:
@@ -121,7 +121,7 @@ def minimise(
     )
 
 
-def _covariance(jacobian: FloatArray) -> FloatArray:
+def covariance_of(jacobian: FloatArray) -> FloatArray:
     """Inverse of J'J by singular values, columns scaled first; empty directions get a huge variance."""
     if not np.isfinite(jacobian).all():
         return np.asarray(np.diag(np.full(jacobian.shape[1], UNDETERMINED_VARIANCE)))

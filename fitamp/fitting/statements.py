@@ -19,24 +19,30 @@ from fitamp.units import si
 
 __all__ = ["place_of_zero", "warnings_of"]
 
-# Without a design, a zero farther out than ten times pole 2 counts as gone.
-SMALL_AGAINST_POLE2 = 0.1
+# Without a design, a zero ten times farther out than both pole 2 and crossover counts as gone.
+SMALL_AGAINST_REST = 0.1
+# An unknown lag is worth a word when it makes the zero time this many times less certain.
+LAG_MATTERS = 3.0
 
 
-def place_of_zero(parameters: FittedParameters, strict: Estimate, adequacy: Adequacy) -> ZeroSeen:
+def place_of_zero(
+    parameters: FittedParameters, margins: FittedMargins, strict: Estimate, adequacy: Adequacy
+) -> ZeroSeen:
     """State the half plane only where the whole 95 % interval agrees.
 
     Parameters
     ----------
     strict
         Zero time with third pole and delay free, or under priors. A forgotten lag can only make a zero look farther
-        right, so with an adequate model "left" holds without it, while "right" and "infinity" do not.
+        right, so with an adequate model "left" holds without it, while "right" and "infinity" do not. Where the fit
+        had to take up one lag, it may have taken too much of it, and "left" needs the strict estimate too.
     """
     plain = parameters.zero_time_s
-    small_s = _small_s(parameters)
+    lag_free = parameters.delay_s.stderr is None and parameters.far_pole_s.stderr is None
+    small_s = _small_s(parameters, margins)
     if strict.is_within(-small_s, small_s):
         place = ZeroPlace.INFINITY
-    elif (adequacy.adequate and plain.is_within(0.0, math.inf)) or strict.is_within(0.0, math.inf):
+    elif (adequacy.adequate and lag_free and plain.is_within(0.0, math.inf)) or strict.is_within(0.0, math.inf):
         place = ZeroPlace.LEFT
     elif strict.is_within(-math.inf, 0.0):
         place = ZeroPlace.RIGHT
@@ -49,9 +55,9 @@ def place_of_zero(parameters: FittedParameters, strict: Estimate, adequacy: Adeq
     )
 
 
-def _small_s(parameters: FittedParameters) -> float:
-    pole2_hz = parameters.pole2_hz.value
-    return SMALL_AGAINST_POLE2 / (2 * math.pi * pole2_hz) if pole2_hz else 0.0
+def _small_s(parameters: FittedParameters, margins: FittedMargins) -> float:
+    farthest_hz = max(parameters.pole2_hz.value or 0.0, margins.crossover_hz.value or 0.0)
+    return SMALL_AGAINST_REST / (2 * math.pi * farthest_hz) if parameters.pole2_hz.value else 0.0
 
 
 def _frequency(time_s: float | None) -> float | None:
@@ -116,8 +122,8 @@ def warnings_of(
     if with_any_lag is not None and _lag_matters(parameters.zero_time_s, with_any_lag):
         warn(
             WarningCode.LAG_AMBIGUITY,
-            "a third pole or path delay passes for a right-half-plane zero: without a design file or a known delay, "
-            "what is determined is τz − 1/pole 3 − delay",
+            "zero time and pole 2 hold only if third pole and path delay are as taken here; more of them passes for "
+            "a zero farther right: without a design file only τz − 1/pole 3 − delay is determined",
         )
     crossover_hz = margins.crossover_hz.value
     if crossover_hz is None:
@@ -131,7 +137,7 @@ def warnings_of(
 
 
 def _lag_matters(plain: Estimate, with_any_lag: Estimate) -> bool:
-    """Whether freeing the lag changes what could be said: always, unless the zero is seen left beyond doubt."""
-    if plain.is_within(0.0, math.inf):
-        return False
-    return with_any_lag.touches(0.0, math.inf)
+    """Whether an unknown lag leaves the zero time much less certain than the fit without it says."""
+    if with_any_lag.stderr is None or plain.stderr is None:
+        return True
+    return with_any_lag.stderr > LAG_MATTERS * plain.stderr

@@ -14,12 +14,12 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from fitamp.arrays import ComplexArray, FloatArray
-from fitamp.fitting.leastsq import Optimum, interleaved, minimise
+from fitamp.arrays import ComplexArray, FloatArray, frozen_float
+from fitamp.fitting.leastsq import Optimum, covariance_of, interleaved, minimise
 from fitamp.sweep import NoiseLevels, Sweep
 from fitamp.transfer import Transfer
 
-__all__ = ["DelayPrior", "FarPolePrior", "Solution", "TwoPole", "solve"]
+__all__ = ["DelayPrior", "FarPolePrior", "Solution", "TwoPole", "loop_equation", "solution_at", "solve"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -63,7 +63,8 @@ class TwoPole:
 
     def physical(self, values: FloatArray) -> tuple[float, float, float, float, float, float]:
         """(g, q, b, τz, τ3, τd) in SI units of a parameter vector."""
-        g, q, b = np.exp(values[:3])
+        with np.errstate(over="ignore", under="ignore"):
+            g, q, b = np.exp(values[:3])
         by_name = dict(zip(self.names, values, strict=True))
         far_pole_s = by_name["far_pole"] * self.time_s if "far_pole" in by_name else self.far_pole.intercept_s
         delay_s = by_name["delay"] * self.time_s if "delay" in by_name else self.delay.mean_s
@@ -223,6 +224,22 @@ def solve(
     return Solution(
         model=model, optimum=_completed(optimum, model, full(optimum.values), free), noise=noise, points=len(sweep)
     )
+
+
+def solution_at(model: TwoPole, sweep: Sweep, noise: NoiseLevels, values: FloatArray) -> Solution:
+    """These very values as a solution, with the covariance that the curvature there gives."""
+    rows, slopes = loop_equation(model, values, sweep, noise)
+    priors, prior_slopes = model.prior_rows(values)
+    residuals = np.concatenate([interleaved(rows), priors])
+    optimum = Optimum(
+        names=model.names,
+        values=frozen_float(values),
+        covariance=frozen_float(covariance_of(np.vstack([interleaved(slopes), prior_slopes]))),
+        chi_square=float(residuals @ residuals),
+        residuals=frozen_float(residuals),
+        converged=bool(np.isfinite(residuals).all()),
+    )
+    return Solution(model=model, optimum=optimum, noise=noise, points=len(sweep))
 
 
 def _completed(optimum: Optimum, model: TwoPole, values: FloatArray, free: list[int]) -> Optimum:
