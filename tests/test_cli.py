@@ -1,0 +1,344 @@
+"""The command line: exit codes, one line of error, one object of JSON, output whole or not at all."""
+
+from __future__ import annotations
+
+import json
+import os
+import shutil
+import subprocess
+import sys
+from collections.abc import Sequence
+from pathlib import Path
+from typing import Any
+
+import pytest
+
+from fitamp import __version__
+from fitamp.cli import main, run
+
+ROOT = Path(__file__).resolve().parent.parent
+DESIGN = ROOT / "data_examples" / "line_buffer.toml"
+PART_A = ROOT / "data_examples" / "part_a_healthy.csv"
+PART_B = ROOT / "data_examples" / "part_b_resistor_missing.csv"
+PICTURES = {"loop.png", "loop.svg", "s-plane.png", "s-plane.svg"}
+FIT_OUTPUT = PICTURES | {"fit.json", "fit.txt"}
+COMPARE_OUTPUT = PICTURES | {
+    "zero-path.png",
+    "zero-path.svg",
+    "comparison.json",
+    "comparison.txt",
+    "comparison.csv",
+}
+
+Captured = pytest.CaptureFixture[str]
+
+
+def called(capsys: Captured, *arguments: str | Path) -> tuple[int, str, str]:
+    """Exit code, standard output and standard error of a command."""
+    code = main([str(argument) for argument in arguments])
+    captured = capsys.readouterr()
+    return code, captured.out, captured.err
+
+
+def refused(capsys: Captured, code: int, *arguments: str | Path) -> str:
+    """The one line of a command that fails with `code` and prints nothing else."""
+    found, out, err = called(capsys, *arguments)
+    assert found == code
+    assert out == ""
+    assert err.startswith("fitamp: ")
+    assert err.endswith("\n")
+    assert err.count("\n") == 1
+    return err
+
+
+def names_in(folder: Path) -> set[str]:
+    """Everything below a folder, hidden things included."""
+    return {path.relative_to(folder).as_posix() for path in folder.rglob("*")}
+
+
+# What the commands print
+
+
+def test_read_says_what_was_understood(capsys: Captured) -> None:
+    code, out, err = called(capsys, "read", PART_A, PART_B)
+    assert (code, err) == (0, "")
+    assert "241 used, 0 left out" in out
+    assert "10.00 Hz to 200.0 MHz" in out
+    assert "inverted" in out
+    assert out.index(PART_A.name) < out.index(PART_B.name)
+
+
+def test_fit_prints_parameters_and_margins(capsys: Captured) -> None:
+    code, out, err = called(capsys, "fit", PART_A)
+    assert (code, err) == (0, "")
+    for words in ("gain-bandwidth", "pole 1", "pole 2", "zero time τz", "phase margin", "noise: "):
+        assert words in out
+
+
+def test_compare_prints_the_verdict_first(capsys: Captured) -> None:
+    code, out, err = called(capsys, "compare", PART_B, "--design", DESIGN)
+    assert (code, err) == (0, "")
+    assert out.startswith("WRONG-SIDE: ")
+    assert "what to do: raise Rz by" in out
+
+
+@pytest.mark.parametrize(
+    ("arguments", "schema"),
+    [
+        (["read", PART_A], "fitamp/read/1"),
+        (["fit", PART_A], "fitamp/fit/1"),
+        (["compare", PART_A, "--design", DESIGN], "fitamp/compare/1"),
+    ],
+)
+def test_json_on_stdout_is_one_object_and_nothing_else(
+    capsys: Captured, arguments: Sequence[str | Path], schema: str
+) -> None:
+    code, out, err = called(capsys, *arguments, "--json", "-")
+    assert (code, err) == (0, "")
+    record: dict[str, Any] = json.loads(out)
+    assert record["schema"] == schema
+
+
+def test_json_to_a_file_is_the_same_object(capsys: Captured, tmp_path: Path) -> None:
+    path = tmp_path / "new folder" / "a.json"
+    code, out, _ = called(capsys, "fit", PART_A, "--json", path)
+    assert code == 0
+    assert "zero time" in out
+    _, printed, _ = called(capsys, "fit", PART_A, "--json", "-")
+    assert json.loads(path.read_text(encoding="utf-8")) == json.loads(printed)
+    assert names_in(tmp_path) == {"new folder", "new folder/a.json"}
+
+
+def test_columns_trace_and_sign_reach_the_reader(capsys: Captured) -> None:
+    _, out, _ = called(capsys, "read", PART_A, "--columns", "f=1:Hz mag=2:dB phase=3:deg", "--sign", "inverted")
+    assert "inverted" in out
+    part_d = PART_A.with_name("part_d_too_much.s2p")
+    _, out, _ = called(capsys, "read", part_d, "--trace", "S11", "--sign", "as-read")
+    assert "-42.100" in out
+
+
+@pytest.mark.parametrize("arguments", [["--help"], ["compare", "--help"], ["--version"]])
+def test_help_and_version_end_well(capsys: Captured, arguments: list[str]) -> None:
+    with pytest.raises(SystemExit, match="^0$"):
+        main(arguments)
+    out = capsys.readouterr().out
+    assert __version__ in out if arguments == ["--version"] else "usage: fitamp" in out
+
+
+# Exit codes
+
+
+@pytest.mark.parametrize(
+    ("arguments", "words"),
+    [
+        ([], "COMMAND"),
+        (["mend"], "invalid choice: 'mend'"),
+        (["fit"], "FILE"),
+        (["fit", str(PART_A), "--colour"], "unrecognized arguments: --colour"),
+        (["fit", str(PART_A), "--sign", "sideways"], "invalid choice: 'sideways'"),
+        (["compare", str(PART_A)], "--design"),
+        (["fit", str(PART_A), "--columns", "nonsense"], "columns"),
+    ],
+)
+def test_a_command_put_together_wrongly_is_usage(capsys: Captured, arguments: list[str], words: str) -> None:
+    assert words in refused(capsys, 2, *arguments)
+
+
+def test_existing_output_is_refused_before_any_work(capsys: Captured, tmp_path: Path) -> None:
+    (tmp_path / "mine.txt").write_text("mine", encoding="utf-8")
+    there = tmp_path / "mine.txt"
+    # The file to read does not even exist: what is there is looked at first.
+    for command in (["fit", "missing.csv"], ["compare", "missing.csv", "--design", "missing.toml"]):
+        assert "exists already; choose another name or give --force" in refused(capsys, 2, *command, "--out", tmp_path)
+        assert "exists already" in refused(capsys, 2, *command, "--json", there)
+    assert "exists already" in refused(capsys, 2, "read", "missing.csv", "--json", there)
+    assert there.read_text(encoding="utf-8") == "mine"
+    assert names_in(tmp_path) == {"mine.txt"}
+
+
+def test_the_force_that_a_refusal_advises_is_there(capsys: Captured, tmp_path: Path) -> None:
+    path = tmp_path / "a.json"
+    path.write_text("old", encoding="utf-8")
+    for command in (["read", PART_A], ["fit", PART_A], ["compare", PART_A, "--design", DESIGN]):
+        code, _, err = called(capsys, *command, "--json", path, "--force")
+        assert (code, err) == (0, "")
+    assert json.loads(path.read_text(encoding="utf-8"))["schema"] == "fitamp/compare/1"
+
+
+def test_a_missing_file_is_unusable_input(capsys: Captured, tmp_path: Path) -> None:
+    for command in (["read"], ["fit"]):
+        assert "missing.csv" in refused(capsys, 3, *command, tmp_path / "missing.csv")
+    assert "missing.toml" in refused(capsys, 3, "compare", PART_A, "--design", tmp_path / "missing.toml")
+
+
+@pytest.mark.parametrize(
+    ("name", "content"),
+    [
+        ("empty.csv", b""),
+        ("words.csv", b"f (Hz),|T| (dB),phase (deg)\n10,eighty,0\n"),
+        ("binary.csv", bytes(range(256)) * 4),
+        ("broken.s1p", b"# Hz S RI R 50\n1 2\n"),
+        ("picture.png", b"\x89PNG\r\n\x1a\n"),
+    ],
+)
+def test_a_broken_file_is_unusable_input(capsys: Captured, tmp_path: Path, name: str, content: bytes) -> None:
+    path = tmp_path / name
+    path.write_bytes(content)
+    for command in (["read", path], ["fit", path], ["compare", path, "--design", DESIGN]):
+        assert name in refused(capsys, 3, *command)
+
+
+@pytest.mark.parametrize(
+    "content",
+    ["", "[elements]\n", "gm2 = 1.6 mS", '[elements]\ngm2 = "1,6 mS"\n', "[[elements]]\n", "\x00"],
+)
+def test_a_broken_design_is_unusable_input(capsys: Captured, tmp_path: Path, content: str) -> None:
+    path = tmp_path / "broken.toml"
+    path.write_text(content, encoding="utf-8")
+    assert "broken.toml" in refused(capsys, 3, "compare", PART_A, "--design", path)
+
+
+def test_too_few_points_give_no_trustworthy_result(capsys: Captured, tmp_path: Path) -> None:
+    path = tmp_path / "few.csv"
+    path.write_text("".join(PART_A.read_text(encoding="utf-8").splitlines(keepends=True)[:9]), encoding="utf-8")
+    err = refused(capsys, 4, "fit", path, "--out", tmp_path / "out")
+    assert "6 usable points, a fit needs 12" in err
+    refused(capsys, 4, "compare", path, "--design", DESIGN, "--out", tmp_path / "out")
+    assert names_in(tmp_path) == {"few.csv"}
+
+
+def test_a_hostile_file_name_stays_one_inert_line(capsys: Captured, tmp_path: Path) -> None:
+    err = refused(capsys, 3, "fit", tmp_path / "a\x1b[31m\nb[red].csv")
+    assert r"a\x1b[31m\nb[red].csv" in err
+
+
+# Output folders
+
+
+def test_fit_leaves_its_files_and_nothing_else(capsys: Captured, tmp_path: Path) -> None:
+    code, out, err = called(capsys, "fit", PART_A, "--out", tmp_path / "out")
+    assert (code, err) == (0, "")
+    assert names_in(tmp_path) == {"out"} | {f"out/{name}" for name in FIT_OUTPUT}
+    assert "pictures and numbers: " in out
+    record = json.loads((tmp_path / "out" / "fit.json").read_text(encoding="utf-8"))
+    assert record["schema"] == "fitamp/fit/1"
+    assert out.startswith((tmp_path / "out" / "fit.txt").read_text(encoding="utf-8"))
+
+
+def test_compare_leaves_its_files_and_nothing_else(capsys: Captured, tmp_path: Path) -> None:
+    out = tmp_path / "out"
+    code, printed, err = called(capsys, "compare", PART_B, "--design", DESIGN, "--out", out, "--json", "-")
+    assert (code, err) == (0, "")
+    assert names_in(tmp_path) == {"out"} | {f"out/{name}" for name in COMPARE_OUTPUT}
+    record = json.loads((out / "comparison.json").read_text(encoding="utf-8"))
+    assert record == json.loads(printed)
+    lines = (out / "comparison.csv").read_text(encoding="utf-8").splitlines()
+    assert lines[0] == "quantity,designed,designed_as_measured,measured,stderr,deviation,sigma,low,high,inside"
+    assert [line.split(",")[0] for line in lines[1:]] == [row["quantity"] for row in record["comparison"]]
+    zero = dict(zip(lines[0].split(","), lines[5].split(","), strict=True))
+    assert zero["quantity"] == "zero_time_s"
+    assert float(zero["measured"]) == record["verdict"]["zero_time_s"]["value"]
+    assert zero["inside"] == "no"
+    assert (out / "loop.png").read_bytes().startswith(b"\x89PNG")
+    assert b"<svg" in (out / "zero-path.svg").read_bytes()
+
+
+def test_demo_runs_on_every_part(capsys: Captured, tmp_path: Path) -> None:
+    # Two of the parts, so that the test stays short.
+    folder = tmp_path / "examples"
+    folder.mkdir()
+    for path in (DESIGN, PART_A, PART_B):
+        shutil.copy(path, folder)
+    out = tmp_path / "out"
+    code, printed, err = called(capsys, "demo", "--examples", folder, "--out", out)
+    assert (code, err) == (0, "")
+    assert "as-designed: " in printed
+    assert "wrong-side: " in printed
+    parts = {PART_A.stem, PART_B.stem}
+    assert names_in(out) == parts | {f"{part}/{name}" for part in parts for name in COMPARE_OUTPUT}
+    assert "exists already" in refused(capsys, 2, "demo", "--examples", folder, "--out", out)
+
+
+def test_demo_without_examples_says_where_they_are(capsys: Captured, tmp_path: Path) -> None:
+    assert "name their folder with --examples" in refused(capsys, 2, "demo", "--examples", tmp_path)
+
+
+# Faults of our own
+
+
+@pytest.mark.parametrize("fault", [ZeroDivisionError("by\nnothing"), MemoryError("no room")])
+def test_a_fault_of_ours_is_one_line_and_leaves_nothing(
+    capsys: Captured, tmp_path: Path, monkeypatch: pytest.MonkeyPatch, fault: Exception
+) -> None:
+    def broken(*_: object, **__: object) -> None:
+        raise fault
+
+    monkeypatch.setattr("fitamp.plots.save_figures", broken)
+    monkeypatch.setattr(sys, "argv", ["fitamp", "fit", str(PART_A), "--out", str(tmp_path / "out")])
+    with pytest.raises(SystemExit, match="^1$"):
+        run()
+    captured = capsys.readouterr()
+    assert captured.out == ""
+    assert captured.err.startswith(f"fitamp: internal fault: {type(fault).__name__}: ")
+    assert captured.err.count("\n") == 1
+    assert names_in(tmp_path) == set()
+
+
+def test_an_interruption_leaves_nothing(capsys: Captured, tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    def interrupted(*_: object, **__: object) -> None:
+        raise KeyboardInterrupt
+
+    monkeypatch.setattr("fitamp.plots.save_figures", interrupted)
+    code, out, err = called(capsys, "compare", PART_A, "--design", DESIGN, "--out", tmp_path / "out")
+    assert code == 130
+    assert out == ""
+    assert err == "fitamp: interrupted; nothing half-written is left\n"
+    assert names_in(tmp_path) == set()
+
+
+# The real process
+
+
+def process(*arguments: str | Path, **environment: str) -> subprocess.CompletedProcess[bytes]:
+    """`python -m fitamp` with these arguments, in the checkout."""
+    return subprocess.run(
+        [sys.executable, "-m", "fitamp", *(str(argument) for argument in arguments)],
+        capture_output=True,
+        check=False,
+        cwd=ROOT,
+        env=os.environ | environment,
+    )
+
+
+def test_the_process_helps() -> None:
+    done = process("--help", PYTHONIOENCODING="utf-8")
+    assert done.returncode == 0
+    assert done.stderr == b""
+    for command in ("read", "fit", "compare", "demo"):
+        assert command in done.stdout.decode("utf-8")
+
+
+def test_the_process_compares_in_a_legacy_code_page() -> None:
+    # cp1252 has µ and ±, but neither Ω nor τ: they may be lost, the result may not.
+    done = process("compare", PART_B, "--design", DESIGN, PYTHONIOENCODING="cp1252")
+    assert done.returncode == 0
+    assert done.stderr == b""
+    text = done.stdout.decode("cp1252")
+    assert text.startswith("WRONG-SIDE: ")
+    assert "± " in text
+
+
+def test_the_process_prints_whole_json_in_a_legacy_code_page() -> None:
+    done = process("compare", PART_B, "--design", DESIGN, "--json", "-", PYTHONIOENCODING="cp1252")
+    assert done.returncode == 0
+    assert done.stderr == b""
+    assert "kΩ" in json.loads(done.stdout)["advice"]["sentence"]
+
+
+def test_the_process_fails_in_one_line(tmp_path: Path) -> None:
+    done = process("fit", tmp_path / "missing.csv", PYTHONIOENCODING="utf-8")
+    assert done.returncode == 3
+    assert done.stdout == b""
+    lines = done.stderr.decode("utf-8").splitlines()
+    assert len(lines) == 1
+    assert lines[0].startswith("fitamp: ")
