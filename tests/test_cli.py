@@ -119,7 +119,7 @@ def test_columns_trace_and_sign_reach_the_reader(capsys: Captured) -> None:
 
 @pytest.mark.parametrize("arguments", [["--help"], ["compare", "--help"], ["--version"]])
 def test_help_and_version_end_well(capsys: Captured, arguments: list[str]) -> None:
-    with pytest.raises(SystemExit, match="^0$"):
+    with pytest.raises(SystemExit, match=r"^0$"):
         main(arguments)
     out = capsys.readouterr().out
     assert __version__ in out if arguments == ["--version"] else "usage: fitamp" in out
@@ -159,7 +159,8 @@ def test_existing_output_is_refused_before_any_work(capsys: Captured, tmp_path: 
 def test_the_force_that_a_refusal_advises_is_there(capsys: Captured, tmp_path: Path) -> None:
     path = tmp_path / "a.json"
     path.write_text("old", encoding="utf-8")
-    for command in (["read", PART_A], ["fit", PART_A], ["compare", PART_A, "--design", DESIGN]):
+    commands: list[list[str | Path]] = [["read", PART_A], ["fit", PART_A], ["compare", PART_A, "--design", DESIGN]]
+    for command in commands:
         code, _, err = called(capsys, *command, "--json", path, "--force")
         assert (code, err) == (0, "")
     assert json.loads(path.read_text(encoding="utf-8"))["schema"] == "fitamp/compare/1"
@@ -184,7 +185,8 @@ def test_a_missing_file_is_unusable_input(capsys: Captured, tmp_path: Path) -> N
 def test_a_broken_file_is_unusable_input(capsys: Captured, tmp_path: Path, name: str, content: bytes) -> None:
     path = tmp_path / name
     path.write_bytes(content)
-    for command in (["read", path], ["fit", path], ["compare", path, "--design", DESIGN]):
+    commands: list[list[str | Path]] = [["read", path], ["fit", path], ["compare", path, "--design", DESIGN]]
+    for command in commands:
         assert name in refused(capsys, 3, *command)
 
 
@@ -275,7 +277,7 @@ def test_a_fault_of_ours_is_one_line_and_leaves_nothing(
 
     monkeypatch.setattr("fitamp.plots.save_figures", broken)
     monkeypatch.setattr(sys, "argv", ["fitamp", "fit", str(PART_A), "--out", str(tmp_path / "out")])
-    with pytest.raises(SystemExit, match="^1$"):
+    with pytest.raises(SystemExit, match=r"^1$"):
         run()
     captured = capsys.readouterr()
     assert captured.out == ""
