@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable
 
 import numpy as np
@@ -42,6 +43,9 @@ def fitted_parameters(solution: Solution, sweep: Sweep, adequacy: Adequacy, quan
     def profiled(index: int) -> Profile:
         return profile(solution, sweep, index, inflation=adequacy.inflation)
 
+    def extra(name: str, held_s: float) -> Estimate:
+        return _extra(name, held_s, solution=solution, deviations=deviations, quantile=quantile, profiled=profiled)
+
     def dc_gain(values: FloatArray) -> float | None:
         g, q, *_ = model.physical(values)
         return g / q if q else None
@@ -55,9 +59,13 @@ def fitted_parameters(solution: Solution, sweep: Sweep, adequacy: Adequacy, quan
         first = curved(lambda v: _pole_distance(model, v, 0), positive=True)
     if deviations[LN_B] > QUADRATIC_LN:
         second = estimate_by_profile(lambda v: _pole_distance(model, v, 1), solution, profiled(LN_B), rising=False)
-        zero = estimate_by_profile(lambda v: model.physical(v)[3], solution, profiled(ZERO), rising=True)
     else:
         second = curved(lambda v: _pole_distance(model, v, 1), positive=True)
+    # A delay and a far-out zero act alike to first order: with a lag that nothing else holds, curvature is no guide.
+    unbounded_lag = math.inf in {model.delay.sd_s, model.far_pole.sd_s}
+    if deviations[LN_B] > QUADRATIC_LN or unbounded_lag:
+        zero = estimate_by_profile(lambda v: model.physical(v)[3], solution, profiled(ZERO), rising=True)
+    else:
         zero = curved(lambda v: model.physical(v)[3], positive=False)
     return FittedParameters(
         dc_gain=gain,
@@ -65,8 +73,8 @@ def fitted_parameters(solution: Solution, sweep: Sweep, adequacy: Adequacy, quan
         pole1_hz=first,
         pole2_hz=second,
         zero_time_s=zero,
-        delay_s=_extra(solution, covariance, "delay", model.delay.mean_s, quantile),
-        far_pole_s=_extra(solution, covariance, "far_pole", model.far_pole.intercept_s, quantile),
+        delay_s=extra("delay", model.delay.mean_s),
+        far_pole_s=extra("far_pole", model.far_pole.intercept_s),
         zero_pole2_split_s=curved(lambda v: model.physical(v)[3] - model.physical(v)[2], positive=False),
     )
 
@@ -115,15 +123,26 @@ def _not_negative(estimate: Estimate) -> Estimate:
     return Estimate(value=estimate.value, stderr=estimate.stderr, ci95=(max(low, 0.0), high), known=estimate.known)
 
 
-def _extra(solution: Solution, covariance: FloatArray, name: str, held: float, quantile: float) -> Estimate:
-    """A nuisance parameter: held at its value, or estimated."""
+def _extra(
+    name: str,
+    held_s: float,
+    *,
+    solution: Solution,
+    deviations: FloatArray,
+    quantile: float,
+    profiled: Callable[[int], Profile],
+) -> Estimate:
+    """A nuisance parameter: held at its value, estimated under its prior, or, without one, by its profile."""
     model = solution.model
     if name not in model.names:
-        return Estimate(value=held, stderr=None, ci95=(None, None))
+        return Estimate(value=held_s, stderr=None, ci95=(None, None))
     index = model.names.index(name)
+    prior_s = model.delay.sd_s if name == "delay" else model.far_pole.sd_s
+    if prior_s == math.inf:
+        return estimate_by_profile(lambda v: float(v[index]) * model.time_s, solution, profiled(index), rising=True)
     return Estimate.gaussian(
         float(solution.values[index] * model.time_s),
-        float(np.sqrt(covariance[index, index]) * model.time_s),
+        float(deviations[index] * model.time_s),
         quantile=quantile,
     )
 

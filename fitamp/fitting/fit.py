@@ -4,10 +4,12 @@ from __future__ import annotations
 
 import numpy as np
 
+from fitamp.arrays import FloatArray
 from fitamp.errors import FitError
 from fitamp.estimate import NOT_KNOWN, Estimate, two_sided_95
 from fitamp.fitting.adequacy import judge
-from fitamp.fitting.derive import fitted_margins, fitted_parameters, fitted_roots
+from fitamp.fitting.derive import ZERO, fitted_margins, fitted_parameters, fitted_roots
+from fitamp.fitting.intervals import estimate_by_curvature, estimate_by_profile, profile
 from fitamp.fitting.result import LoopFit
 from fitamp.fitting.search import Search
 from fitamp.fitting.statements import place_of_zero, warnings_of
@@ -21,6 +23,9 @@ __all__ = ["MIN_POINTS", "fit_sweep"]
 MIN_POINTS = 12
 # A fit whose residuals are this large against the response does not describe the sweep at all.
 UNLIKE_LOOP = 0.3
+# So many standard errors from 0 the misfit at 0 is large too, though a quartic valley makes it a quarter of what the
+# curvature promises.
+CURVED_SIGMA = 10.0
 
 
 def fit_sweep(
@@ -85,7 +90,7 @@ def fit_sweep(
     poles, zeros = fitted_roots(solution, covariance)
     margins = fitted_margins(solution, covariance, quantile, known)
     # With priors the lag is in the estimate already; without, what may be said must hold for any.
-    strict = parameters.zero_time_s if lag_is_known else _zero_time(any_lag, quantile)
+    strict = parameters.zero_time_s if lag_is_known else _zero_time(any_lag, sweep, quantile)
     return LoopFit(
         sweep=sweep,
         response=solution.model.response(solution.values),
@@ -101,15 +106,22 @@ def fit_sweep(
     )
 
 
-def _zero_time(solution: Solution | None, quantile: float) -> Estimate:
-    """Zero time of a solution by curvature; undetermined where there is none or the model is not adequate."""
-    if solution is None:
+def _zero_time(solution: Solution | None, sweep: Sweep, quantile: float) -> Estimate:
+    """Zero time of a solution with any lag; undetermined where there is none or the model is not adequate.
+
+    A zero far out and a delay act alike to first order: near there the curvature says nothing, and a profile has to.
+    """
+    if solution is None or not (solution.optimum.converged and judge(solution).adequate):
         return NOT_KNOWN
     model = solution.model
-    spread_s = float(np.sqrt(solution.covariance[3, 3])) * model.time_s
-    if not (solution.optimum.converged and judge(solution).adequate and np.isfinite(spread_s)):
-        return NOT_KNOWN
-    return Estimate.gaussian(model.physical(solution.values)[3], spread_s, quantile=quantile)
+
+    def zero_time(values: FloatArray) -> float:
+        return model.physical(values)[3]
+
+    curved = estimate_by_curvature(zero_time, solution.values, solution.covariance, quantile=quantile, positive=False)
+    if curved.value is not None and curved.stderr is not None and abs(curved.value) > CURVED_SIGMA * curved.stderr:
+        return curved
+    return estimate_by_profile(zero_time, solution, profile(solution, sweep, ZERO), rising=True)
 
 
 def _check_points(sweep: Sweep) -> None:

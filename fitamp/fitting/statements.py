@@ -38,7 +38,7 @@ def place_of_zero(
         had to take up one lag, it may have taken too much of it, and "left" needs the strict estimate too.
     """
     plain = parameters.zero_time_s
-    lag_free = parameters.delay_s.stderr is None and parameters.far_pole_s.stderr is None
+    lag_free = not (_is_fitted(parameters.delay_s) or _is_fitted(parameters.far_pole_s))
     small_s = _small_s(parameters, margins)
     if strict.is_within(-small_s, small_s):
         place = ZeroPlace.INFINITY
@@ -53,6 +53,11 @@ def place_of_zero(
         frequency_hz=_frequency(plain.value),
         ci95_hz=_frequency_interval(plain),
     )
+
+
+def _is_fitted(lag: Estimate) -> bool:
+    """Whether a lag was fitted; one that is held has a value and no error."""
+    return lag.value is None or lag.stderr is not None
 
 
 def _small_s(parameters: FittedParameters, margins: FittedMargins) -> float:
@@ -109,9 +114,9 @@ def warnings_of(
         warn(WarningCode.ZERO_UNDETERMINED, "the zero time is not determined by this band and noise")
     if with_any_lag is not None:
         lags = [
-            f"a {name} of {si(lag.value, 's', digits=3)}"
+            f"a {name}" if lag.value is None else f"a {name} of {si(lag.value, 's', digits=3)}"
             for name, lag in (("path delay", parameters.delay_s), ("third pole's time", parameters.far_pole_s))
-            if lag.stderr is not None
+            if _is_fitted(lag)
         ]
         if lags:
             warn(
