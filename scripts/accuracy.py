@@ -5,51 +5,29 @@
 
 The standard scenario is invented: 281 points from 10 Hz to 100 MHz, 82 dB, poles at 1.2 kHz and 58 MHz, a zero at
 110 MHz in the left half plane; receiver floors of 2e-5 for a drive of 1 and a gain error of 0.1 %, neither told to the
-fit. The bound is computed here by differences from the true response, not by the package's own derivatives.
+fit. The bound is computed by differences of the true response (benchmarking/bound.py), not by the package's own
+derivatives.
 """
 
 from __future__ import annotations
 
 import argparse
+from operator import itemgetter
 
 import numpy as np
+from benchmarking.bound import CORE, cramer_rao, loop_gain
 
 import fitamp
 
 NOISE = fitamp.NoiseLevels(error_channel=2e-5, return_channel=2e-5, relative=1e-3)
 FREQ_HZ = np.geomspace(10.0, 100e6, 281)
 ZERO_HZ = {"left zero": -110e6, "right zero": 110e6, "n = 1": None}
-QUANTITIES = ("dc_gain", "pole1_hz", "pole2_hz", "zero_time_s")
 
 
-def truth(zero_hz: float | None) -> np.ndarray:
-    """(T(0), pole 1, pole 2, zero time) in SI units."""
+def truth(zero_hz: float | None) -> dict[str, float]:
+    """T(0), pole 1, pole 2 and zero time in SI units."""
     zero_time_s = 0.0 if zero_hz is None else -1 / (2 * np.pi * zero_hz)
-    return np.array([10 ** (82 / 20), 1.2e3, 58e6, zero_time_s])
-
-
-def gain(quantities: np.ndarray) -> np.ndarray:
-    """Loop gain of (T(0), pole 1, pole 2, zero time), written out independently of the package."""
-    dc_gain, pole1_hz, pole2_hz, zero_time_s = quantities
-    s = 2j * np.pi * FREQ_HZ
-    return dc_gain * (1 + s * zero_time_s) / ((1 + 1j * FREQ_HZ / pole1_hz) * (1 + 1j * FREQ_HZ / pole2_hz))
-
-
-def cramer_rao(quantities: np.ndarray) -> np.ndarray:
-    """Lower bound of the standard deviation of each quantity for this noise (inverse Fisher information)."""
-    loop = gain(quantities)
-    variance = NOISE.return_channel**2 + np.abs(loop * NOISE.error_channel) ** 2
-    variance += NOISE.relative**2 * np.abs(loop / (1 + loop)) ** 2
-    steps = 1e-6 * np.array([*quantities[:3], 1e-9])
-    slopes = []
-    for index, step in enumerate(steps):
-        shift = np.zeros(4)
-        shift[index] = step
-        slopes.append((gain(quantities + shift) - gain(quantities - shift)) / (2 * step) / (1 + loop))
-    weighted = np.array(slopes) / np.sqrt(variance / 2)
-    scale = np.sqrt((np.abs(weighted) ** 2).sum(axis=1))
-    scaled = weighted / scale[:, np.newaxis]
-    return np.sqrt(np.diag(np.linalg.inv((scaled @ scaled.conj().T).real))) / scale
+    return dict(zip(CORE, (10 ** (82 / 20), 1.2e3, 58e6, zero_time_s), strict=True))
 
 
 def main() -> None:
@@ -62,19 +40,20 @@ def main() -> None:
     print(f"{'scenario':<12} {'quantity':<13} {'RMSE/bound':>10} {'bias/bound':>10} {'coverage':>9}")
     for name, zero_hz in ZERO_HZ.items():
         rng = np.random.default_rng(args.seed)
-        true = truth(zero_hz)
-        bound = cramer_rao(true)
+        values = truth(zero_hz)
+        gain, true = loop_gain(FREQ_HZ, values), np.array(list(values.values()))
+        bound = cramer_rao(FREQ_HZ, values, NOISE, [itemgetter(name) for name in CORE])
         errors, covered, inadequate = [], [], 0
         for _ in range(args.runs):
-            sweep = fitamp.Sweep(freq_hz=FREQ_HZ, gain=fitamp.simulate_bench(gain(true), NOISE, rng))
+            sweep = fitamp.Sweep(freq_hz=FREQ_HZ, gain=fitamp.simulate_bench(gain, NOISE, rng))
             fit = fitamp.fit_sweep(sweep)
             inadequate += not fit.adequacy.adequate
-            estimates = [getattr(fit.parameters, quantity) for quantity in QUANTITIES]
+            estimates = [getattr(fit.parameters, quantity) for quantity in CORE]
             errors.append([estimate.value - value for estimate, value in zip(estimates, true, strict=True)])
             covered.append([e.ci95[0] <= value <= e.ci95[1] for e, value in zip(estimates, true, strict=True)])
         ratio = np.sqrt((np.array(errors) ** 2).mean(axis=0)) / bound
         bias = np.array(errors).mean(axis=0) / bound
-        for index, quantity in enumerate(QUANTITIES):
+        for index, quantity in enumerate(CORE):
             share = np.mean(covered, axis=0)[index]
             print(f"{name:<12} {quantity:<13} {ratio[index]:>10.2f} {bias[index]:>+10.2f} {share:>8.0%}")
         print(f"{name:<12} called inadequate in {inadequate} of {args.runs}")

@@ -1,0 +1,1 @@
+"""What the scripts that measure accuracy share: the true response and its bound, scenarios, methods, tables."""
