@@ -12,6 +12,7 @@ from dataclasses import dataclass, fields, replace
 import numpy as np
 
 from fitamp.amplifier import Elements, coefficients
+from fitamp.comparison.mirror import mirror_moved, widened_by_mirror
 from fitamp.design import Design, Roots
 from fitamp.errors import FitError
 from fitamp.fitting import DelayPrior, FarPolePrior, LoopFit, fit_sweep
@@ -121,13 +122,23 @@ def fit_with_design(sweep: Sweep, design: Design, *, noise: NoiseLevels | None =
     """Fit a sweep with the design's far pole, delay and known factor as priors.
 
     The far pole's line is laid at the zero time that the fit finds, so that a part without its resistor is not judged
-    with the far pole of one that has it.
+    with the far pole of one that has it. Errors hold what an uncertain mirror pole adds.
 
     Raises
     ------
     FitError
         As `fit_sweep`.
     """
+    fit = _fit_at_its_zero(sweep, design, noise)
+    moved = mirror_moved(design)
+    if moved is None:
+        return fit
+    # With one noise for all, or a change of weights would pass for an effect of the mirror.
+    higher, lower = (_fit_at_its_zero(sweep, other, fit.noise) for other in moved)
+    return widened_by_mirror(fit, higher, lower)
+
+
+def _fit_at_its_zero(sweep: Sweep, design: Design, noise: NoiseLevels | None) -> LoopFit:
     zero_time_s = design.zero_time_s
     fit: LoopFit | None = None
     for _ in range(ROUNDS):

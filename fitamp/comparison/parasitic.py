@@ -16,6 +16,7 @@ from fitamp.amplifier import Elements, coefficients
 from fitamp.arrays import FloatArray
 from fitamp.comparison.expectation import NO_PRIOR_SPREAD, resistor_for
 from fitamp.comparison.result import Parasitic
+from fitamp.comparison.rows import pole2_may_be_hidden
 from fitamp.design import Design
 from fitamp.estimate import NOT_KNOWN, Estimate, Known
 from fitamp.fitting import LoopFit
@@ -36,7 +37,7 @@ def parasitics(fit: LoopFit, design: Design) -> Parasitic | None:
     """Total load, load parasitic and first-stage parasitic; None for a design without elements."""
     if design.elements is None:
         return None
-    if fit.parameters.pole2_hz.known is not Known.MEASURED:
+    if fit.parameters.pole2_hz.known is not Known.MEASURED or pole2_may_be_hidden(fit, design):
         return Parasitic(
             load_total_f=NOT_KNOWN,
             load_f=NOT_KNOWN,

@@ -10,7 +10,7 @@ from fitamp.estimate import Estimate, Known
 from fitamp.fitting import LoopFit
 from fitamp.margins import margins
 
-__all__ = ["comparison_rows", "designed_values"]
+__all__ = ["comparison_rows", "designed_poles_hz", "designed_values", "pole2_may_be_hidden"]
 
 QUANTITIES = (
     "dc_gain",
@@ -24,6 +24,21 @@ QUANTITIES = (
 )
 # Already relative or logarithmic: their deviation is a difference, not a ratio.
 BY_DIFFERENCE = frozenset({"phase_margin_deg", "gain_margin_db"})
+# No spread of elements and no forgotten probe moves pole 2 so far; a zero on pole 2 seems to.
+HIDDEN_POLE_RATIO = 4.0
+
+
+def designed_poles_hz(design: Design) -> tuple[float, ...]:
+    """Distances of the designed poles on the bench, the nearest first."""
+    # A mirror pole is no pole of the compensation, however low it lies.
+    mirror_hz = design.elements.mirror_pole_hz if design.elements is not None else None
+    return tuple(sorted(abs(pole) for pole in design.on_bench().poles_hz if mirror_hz is None or pole != -mirror_hz))
+
+
+def pole2_may_be_hidden(fit: LoopFit, design: Design) -> bool:
+    """Whether what was found as pole 2 may be the third pole, with the zero on the true pole 2."""
+    pole2_hz = fit.parameters.pole2_hz.value
+    return pole2_hz is not None and pole2_hz > HIDDEN_POLE_RATIO * designed_poles_hz(design)[1]
 
 
 def designed_values(design: Design) -> dict[str, float | None]:
@@ -31,9 +46,7 @@ def designed_values(design: Design) -> dict[str, float | None]:
     response = design.on_bench()
     # The loop's own delay costs phase margin on the chip; the cable's does not.
     seen = margins(replace(response, delay_s=design.transfer().delay_s))
-    # A mirror pole is no pole of the compensation, however low it lies.
-    mirror_hz = design.elements.mirror_pole_hz if design.elements is not None else None
-    poles = sorted(abs(pole) for pole in response.poles_hz if mirror_hz is None or pole != -mirror_hz)
+    poles = designed_poles_hz(design)
     return {
         "dc_gain": response.dc_gain,
         "gain_bandwidth_hz": response.gain_bandwidth_hz,

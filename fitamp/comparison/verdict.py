@@ -9,7 +9,9 @@ import math
 
 import numpy as np
 
+from fitamp.comparison.mirror import mirror_moved
 from fitamp.comparison.result import Advice, Nulling, Verdict, Window
+from fitamp.comparison.rows import designed_poles_hz, pole2_may_be_hidden
 from fitamp.design import Design, HalfPlane
 from fitamp.estimate import NOT_KNOWN, Estimate, Known
 from fitamp.fitting import LoopFit
@@ -86,7 +88,9 @@ def judge_nulling(fit: LoopFit, design: Design) -> Verdict:
     zero_time = fit.parameters.zero_time_s
     tiles = regions_of(design, window)
     if zero_time.known is Known.UNDETERMINED:
-        nulling, reason = Nulling.UNDECIDED, f"the sweep does not determine the zero; {_what_settles(fit)}"
+        nulling, reason = Nulling.UNDECIDED, f"the sweep does not determine the zero; {_what_settles(fit, design)}"
+    elif pole2_may_be_hidden(fit, design):
+        nulling, reason, zero_time = Nulling.UNDECIDED, _hidden_pole(fit, design), NOT_KNOWN
     else:
         whole = [verdict for verdict, start, to in tiles if zero_time.is_within(start, to)]
         touched = [verdict for verdict, start, to in tiles if zero_time.touches(start, to)]
@@ -106,7 +110,8 @@ def _reason(
     small = si(design.small_zero_time_s, "s")
     if nulling is Nulling.UNDECIDED:
         names = " and ".join(verdict.value for verdict in touched)
-        return f"the 95 % interval of the zero time, {_ends(zero_time)}, reaches into {names}; {_what_settles(fit)}"
+        reach = f"the 95 % interval of the zero time, {_ends(zero_time)}, reaches into {names}"
+        return f"{reach}; {_what_settles(fit, design)}"
     sentences = {
         Nulling.AS_DESIGNED: f"{seen} lies in the window {allowed}",
         Nulling.TOO_LITTLE: f"{seen} gives less lead than the window {allowed}",
@@ -156,9 +161,21 @@ def _nulling_product(zero_time: Estimate, design: Design) -> Estimate:
     )
 
 
-def _what_settles(fit: LoopFit) -> str:
+def _hidden_pole(fit: LoopFit, design: Design) -> str:
+    found, designed = si(fit.parameters.pole2_hz.value, "Hz"), si(designed_poles_hz(design)[1], "Hz")
+    return (
+        f"pole 2 shows at {found}, designed was {designed}: it moved that far, or the zero lies on it and hides it, "
+        "and what shows is the third pole; repeat the sweep with a known extra load, which parts pole 2 from the zero"
+    )
+
+
+def _what_settles(fit: LoopFit, design: Design) -> str:
     """The measurement that would shrink the larger part of the zero time's variance."""
-    names = fit.solution.model.names
+    model, zero_time = fit.solution.model, fit.parameters.zero_time_s
+    without_mirror = float(fit.covariance[3, 3]) * model.time_s**2
+    if mirror_moved(design) and zero_time.stderr is not None and zero_time.stderr**2 > 2 * without_mirror:
+        return "the mirror pole decides: state a tighter spread for mirror_pole, or end the sweep farther below it"
+    names = model.names
     information = np.linalg.pinv(fit.covariance)
     total = float(fit.covariance[3, 3])
 
