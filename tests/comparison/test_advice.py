@@ -27,9 +27,9 @@ def test_the_advised_change_puts_the_zero_at_the_designed_place(resistor_ohm: fl
 
 @pytest.fixture(scope="module")
 def dies() -> list[tuple[Elements, Comparison]]:
-    """20 dies with every element off by its spread and resistors far off, each compared."""
+    """16 dies with every element off by its spread and resistors far off, each compared."""
     rng = np.random.default_rng(42)
-    made = [drawn(rng, SPREADS).with_changes(Rz=float(rng.choice([0.0, 625.0, 1300.0, 2200.0]))) for _ in range(20)]
+    made = [drawn(rng, SPREADS).with_changes(Rz=float(rng.choice([0.0, 625.0, 1300.0, 2200.0]))) for _ in range(16)]
     return [(die, compare(measured(die, seed), DESIGN)) for seed, die in enumerate(made)]
 
 
@@ -86,8 +86,8 @@ def test_gm2_rz_covers_the_dies_own_product(dies: list[tuple[Elements, Compariso
         assert high is not None
         covered += low <= die.nulling_product <= high
         pulls.append((product.value - die.nulling_product) / product.stderr)
-    # 20 intervals of 95 %: 17 or more cover in 98 of 100 such tests, by the binomial distribution.
-    assert covered >= 17
+    # 16 intervals of 95 %: 14 or more cover in 96 of 100 such draws, by the binomial distribution.
+    assert covered >= 14
     assert np.std(pulls) > 0.5
 
 

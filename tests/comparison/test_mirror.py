@@ -30,11 +30,11 @@ def test_only_an_uncertain_mirror_is_moved() -> None:
     assert [design.elements.mirror_pole_hz for design in moved if design.elements] == [375e6, 240e6]
 
 
-@pytest.mark.parametrize("resistor_ohm", [0.0, 625.0, 1300.0, 3500.0])
+@pytest.mark.parametrize("resistor_ohm", [0.0, 625.0, 1300.0])
 def test_zero_time_is_covered_with_the_mirror_off_its_place(resistor_ohm: float) -> None:
     # Within the stated spread of 10 %; taken as exact, the mirror alone has cost up to eleven standard errors.
     design = design_with(0.1)
-    for seed, factor in enumerate([0.9, 0.95, 1.05, 1.1]):
+    for seed, factor in enumerate([0.9, 1.1]):
         part = MIRRORED.with_changes(Rz=resistor_ohm, mirror_pole_hz=300e6 * factor)
         zero_time = fit_with_design(measured(part, seed), design).parameters.zero_time_s
         assert zero_time.value is not None
@@ -47,7 +47,7 @@ def test_no_wrong_side_and_no_lead_from_a_misplaced_mirror() -> None:
     # gm2·Rz = 1, the mirror anywhere within two deviations.
     design = design_with(0.2)
     rng = np.random.default_rng(71)
-    for seed in range(5):
+    for seed in range(4):
         factor = 1 + 0.2 * float(np.clip(rng.standard_normal(), -2, 2))
         part = MIRRORED.with_changes(Rz=1 / NOMINAL.gm2, mirror_pole_hz=300e6 * factor)
         fit = fit_with_design(measured(part, seed), design)
