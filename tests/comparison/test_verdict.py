@@ -136,7 +136,7 @@ def root_designs(draw: st.DrawFn) -> Design:
 @st.composite
 def element_designs(draw: st.DrawFn) -> Design:
     """Designs by elements, the half plane stated where the elements leave a choice."""
-    nulling = draw(st.one_of(st.floats(0, 5), st.floats(0.91, 1.09)))
+    nulling = draw(st.one_of(st.just(0.0), st.floats(0.01, 5), st.floats(0.91, 1.09)))
     elements = NOMINAL.with_changes(Rz=nulling / NOMINAL.gm2)
     spreads = dict.fromkeys(SPREADS, draw(st.floats(1e-3, 0.5)))
     design = Design.from_elements(elements, spreads=spreads)
@@ -151,6 +151,7 @@ NEARLY_NULLED = Design.from_elements(
 )
 
 
+@settings(derandomize=True)
 @given(design=designs)
 @example(design=NEARLY_NULLED)
 def test_regions_tile_the_line(design: Design) -> None:
@@ -164,7 +165,7 @@ def test_regions_tile_the_line(design: Design) -> None:
     assert len({verdict for verdict, _, _ in tiles}) == len(tiles)
 
 
-@settings(max_examples=60)
+@settings(max_examples=60, derandomize=True)
 @given(design=designs, ends=st.tuples(times, times))
 @example(design=NEARLY_NULLED, ends=(-2e-11, -1e-11))
 def test_any_interval_is_in_one_region_or_undecided(
@@ -177,7 +178,7 @@ def test_any_interval_is_in_one_region_or_undecided(
     assert [verdict.nulling] == (holding or [Nulling.UNDECIDED])
 
 
-@settings(max_examples=60)
+@settings(max_examples=60, derandomize=True)
 @given(
     zero_hz=frequencies,
     limit=limits,
@@ -202,6 +203,7 @@ def test_a_mirrored_part_of_a_mirrored_design_gets_the_same_answer(
     )
 
 
+@settings(derandomize=True)
 @given(ends=st.tuples(times, times))
 def test_at_infinity_the_mirror_swaps_too_little_and_too_much(healthy: LoopFit, ends: tuple[float, float]) -> None:
     design = Design.from_roots(replace(LEFT_ROOTS, zero_hz=None, half_plane=HalfPlane.INFINITY))
