@@ -82,4 +82,7 @@ def _at_least(text: str, least: int) -> int:
 
 
 if __name__ == "__main__":
+    for stream in (sys.stdout, sys.stderr):
+        # A console in a legacy code page must not stop a table over a τ.
+        stream.reconfigure(errors="replace")
     sys.exit(main(sys.argv[1:]))
