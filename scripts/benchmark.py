@@ -36,7 +36,9 @@ def _run(arguments: Sequence[str]) -> int:
     args = _parser(tuple(SCENARIOS), tuple(Method)).parse_args(arguments)
     chosen = [scenario for name, scenario in SCENARIOS.items() if args.scenario in (None, name)]
     methods = [method for method in Method if method in args.methods]
-    print(f"{args.runs} noisy sweeps a scenario, seed {args.seed}", end="\n\n", flush=True)
+    # Of n normal errors of standard deviation 1, the root mean square is known to 1/√(2n) and the mean to 1/√n.
+    chance = f"±{(2 * args.runs) ** -0.5:.0%} in RMSE/bound, ±{args.runs**-0.5:.2f} in bias/bound"
+    print(f"{args.runs} noisy sweeps a scenario, seed {args.seed}; chance leaves {chance}", end="\n\n", flush=True)
     if args.markdown:
         print(markdown_head(), flush=True)
     errors = Console(stderr=True)

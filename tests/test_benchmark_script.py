@@ -142,7 +142,8 @@ def without_times(lines: list[str]) -> list[list[str]]:
 
 def test_one_scenario_prints_a_row_for_every_method(benchmark: ModuleType, capsys: pytest.CaptureFixture[str]) -> None:
     lines = printed(benchmark, capsys, "--runs", "2", "--scenario", "right-zero")
-    assert lines[0] == "2 noisy sweeps a scenario, seed 1"
+    # 1/√4 and 1/√2.
+    assert lines[0] == "2 noisy sweeps a scenario, seed 1; chance leaves ±50% in RMSE/bound, ±0.71 in bias/bound"
     assert lines[2] == "right-zero: zero at 2 × pole 2, right half plane"
     assert lines[4].split() == ["T0", "p1", "p2", "τz"] * 3 + ["failed", "ms", "cost"]
     starts = ["fitamp", "lmfit dB, °", "lmfit log", "vector fit", "AAA"]
