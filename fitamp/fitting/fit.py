@@ -9,11 +9,11 @@ from fitamp.errors import FitError
 from fitamp.estimate import NOT_KNOWN, Estimate, two_sided_95
 from fitamp.fitting.adequacy import judge
 from fitamp.fitting.derive import ZERO, fitted_margins, fitted_parameters, fitted_roots
-from fitamp.fitting.intervals import estimate_by_curvature, estimate_by_profile, profile
+from fitamp.fitting.intervals import RISE_95, estimate_by_curvature, estimate_by_profile, hull, profile
 from fitamp.fitting.result import LoopFit
-from fitamp.fitting.search import Search
+from fitamp.fitting.search import Search, lifted
 from fitamp.fitting.statements import place_of_zero, warnings_of
-from fitamp.fitting.two_pole import DelayPrior, FarPolePrior, Solution
+from fitamp.fitting.two_pole import DelayPrior, FarPolePrior, Solution, solution_at
 from fitamp.sweep import NoiseLevels, Sweep
 from fitamp.transfer import Transfer
 
@@ -90,7 +90,9 @@ def fit_sweep(
     poles, zeros = fitted_roots(solution, covariance)
     margins = fitted_margins(solution, covariance, quantile, known)
     # With priors the lag is in the estimate already; without, what may be said must hold for any.
-    strict = parameters.zero_time_s if lag_is_known else _zero_time(any_lag, sweep, quantile)
+    strict = parameters.zero_time_s
+    if not lag_is_known:
+        strict = _whatever_the_lag(any_lag, solution, parameters.zero_time_s, sweep, quantile)
     return LoopFit(
         sweep=sweep,
         response=solution.model.response(solution.values),
@@ -106,22 +108,27 @@ def fit_sweep(
     )
 
 
-def _zero_time(solution: Solution | None, sweep: Sweep, quantile: float) -> Estimate:
-    """Zero time of a solution with any lag; undetermined where there is none or the model is not adequate.
+def _whatever_the_lag(
+    any_lag: Solution | None, solution: Solution, zero_time: Estimate, sweep: Sweep, quantile: float
+) -> Estimate:
+    """Zero time with third pole and delay free; undetermined where that has no solution or an inadequate one.
 
     A zero far out and a delay act alike to first order: near there the curvature says nothing, and a profile has to.
+    That valley has branches; the one in which `solution` lies belongs to the interval if it is as good.
     """
-    if solution is None or not (solution.optimum.converged and judge(solution).adequate):
+    if any_lag is None or not (any_lag.optimum.converged and judge(any_lag).adequate):
         return NOT_KNOWN
-    model = solution.model
+    model = any_lag.model
 
-    def zero_time(values: FloatArray) -> float:
+    def quantity(values: FloatArray) -> float:
         return model.physical(values)[3]
 
-    curved = estimate_by_curvature(zero_time, solution.values, solution.covariance, quantile=quantile, positive=False)
-    if curved.value is not None and curved.stderr is not None and abs(curved.value) > CURVED_SIGMA * curved.stderr:
-        return curved
-    return estimate_by_profile(zero_time, solution, profile(solution, sweep, ZERO), rising=True)
+    strict = estimate_by_curvature(quantity, any_lag.values, any_lag.covariance, quantile=quantile, positive=False)
+    if strict.value is None or strict.stderr is None or abs(strict.value) < CURVED_SIGMA * strict.stderr:
+        strict = estimate_by_profile(quantity, any_lag, profile(any_lag, sweep, ZERO), rising=True)
+    without = solution_at(model, sweep, any_lag.noise, lifted(solution, model))
+    as_good = without.optimum.chi_square < any_lag.optimum.chi_square + RISE_95
+    return hull(strict, zero_time) if as_good else strict
 
 
 def _check_points(sweep: Sweep) -> None:

@@ -17,7 +17,16 @@ from fitamp.estimate import NOT_KNOWN, Estimate, Known
 from fitamp.fitting.two_pole import Solution, solve
 from fitamp.sweep import Sweep
 
-__all__ = ["Profile", "estimate_by_curvature", "estimate_by_profile", "estimates_by_curvature", "gradient", "profile"]
+__all__ = [
+    "RISE_95",
+    "Profile",
+    "estimate_by_curvature",
+    "estimate_by_profile",
+    "estimates_by_curvature",
+    "gradient",
+    "hull",
+    "profile",
+]
 
 Quantity = Callable[[FloatArray], float | None]
 Quantities = Callable[[FloatArray], Sequence[float | None]]
@@ -27,6 +36,8 @@ RISE_95 = 3.841
 DIFFERENCE_STEP = 1e-5
 # How far a profile is followed: a factor exp(14), more than a million, or as many scaled units.
 REACH = 14.0
+# Where a refit on a profile may stop: chi-square of some hundred is then right to the fourth decimal.
+REFIT_TOLERANCE = 1e-7
 
 
 def gradient(quantities: Quantities, values: FloatArray) -> FloatArray:
@@ -116,6 +127,17 @@ def estimate_by_profile(quantity: Quantity, solution: Solution, edges: Profile, 
     return Estimate(value=value, stderr=float(stderr), ci95=(low, high))
 
 
+def hull(one: Estimate, other: Estimate) -> Estimate:
+    """`one` with an interval that holds both, its error widened as the interval is."""
+    (low, high), (other_low, other_high) = one.ci95, other.ci95
+    low = None if low is None or other_low is None else min(low, other_low)
+    high = None if high is None or other_high is None else max(high, other_high)
+    stderr = one.stderr
+    if low is not None and high is not None and stderr is not None:
+        stderr = max(stderr, (high - low) / (2 * np.sqrt(RISE_95)))
+    return Estimate(value=one.value, stderr=stderr, ci95=(low, high), known=one.known)
+
+
 def _edge(solution: Solution, sweep: Sweep, index: int, side: int, rise: float) -> FloatArray | None:
     best = solution.optimum.chi_square
     centre = float(solution.values[index])
@@ -123,7 +145,14 @@ def _edge(solution: Solution, sweep: Sweep, index: int, side: int, rise: float) 
     start = solution.values
 
     def refit(offset: float) -> tuple[float, FloatArray]:
-        held = solve(solution.model, sweep, solution.noise, start, hold=(index, centre + side * offset))
+        held = solve(
+            solution.model,
+            sweep,
+            solution.noise,
+            start,
+            hold=(index, centre + side * offset),
+            tolerance=REFIT_TOLERANCE,
+        )
         return held.optimum.chi_square - best - rise, held.values
 
     inner, step = 0.0, min(max(1.5 * stderr, 1e-6), 1.0)

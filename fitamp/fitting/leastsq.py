@@ -61,7 +61,13 @@ def interleaved(values: ComplexArray) -> FloatArray:
 
 
 def minimise(
-    residual: Residual, start: Sequence[float] | FloatArray, *, names: Sequence[str], jacobian: Jacobian | None = None
+    residual: Residual,
+    start: Sequence[float] | FloatArray,
+    *,
+    names: Sequence[str],
+    jacobian: Jacobian | None = None,
+    tolerance: float = TOLERANCE,
+    max_steps: int = MAX_STEPS,
 ) -> Optimum:
     """Minimise the sum of squared residuals from `start` with lmfit's Levenberg–Marquardt (MINPACK).
 
@@ -73,6 +79,10 @@ def minimise(
         All parameters are unbounded: whoever needs a bound transforms.
     jacobian
         Values to derivatives of shape (m, p); differences where None.
+    tolerance
+        Relative, on chi-square and on parameters, at which to stop.
+    max_steps
+        Evaluations (times p + 1 where the derivatives are differences) after which to give up.
 
     Returns
     -------
@@ -89,11 +99,11 @@ def minimise(
     def values_of(current: Any) -> FloatArray:
         return np.array([current[name].value for name in names])
 
-    options: dict[str, Any] = {"ftol": TOLERANCE, "xtol": TOLERANCE, "gtol": 0.0}
+    options: dict[str, Any] = {"ftol": tolerance, "xtol": tolerance, "gtol": 0.0}
     if jacobian is None:
-        options |= {"epsfcn": TOLERANCE, "max_nfev": MAX_STEPS * (len(names) + 1)}
+        options |= {"epsfcn": TOLERANCE, "max_nfev": max_steps * (len(names) + 1)}
     else:
-        options["max_nfev"] = MAX_STEPS
+        options["max_nfev"] = max_steps
         options["Dfun"] = lambda current: jacobian(values_of(current))
     # lmfit leaves numpy's error state changed when a residual raises; the context puts it back.
     with np.errstate():

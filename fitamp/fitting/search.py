@@ -15,14 +15,18 @@ from fitamp.noise import estimate_noise
 from fitamp.sweep import NoiseLevels, Sweep
 from fitamp.transfer import Transfer
 
-__all__ = ["Search"]
+__all__ = ["Search", "lifted"]
 
 NOISE_ROUNDS = 3
+# To tell which start ends lowest, chi-square to seven digits is enough, and who is still far off after so many steps
+# does not win.
+RACE_TOLERANCE = 1e-7
+RACE_STEPS = 100
 # A lag below zero by no more than this many standard errors is a lag of about zero.
 NEGATIVE_LAG_SIGMA = 3.0
-# A logarithm known no better than this is one that the sweep does not see; bringing it nearer may cost no more
-# chi-square than this.
+# A logarithm known no better than this is one that the sweep does not see.
 UNSEEN_LN = 10.0
+# Difference in chi-square that says nothing.
 FREE_OF_CHARGE = 0.1
 # Loop gain, or its inverse, that no loop has.
 HUGE_GAIN = 1e20
@@ -43,8 +47,10 @@ class Search:
     def __post_init__(self) -> None:
         object.__setattr__(self, "guesses", starts(self.sweep))
 
-    def best(self, far_pole: FarPolePrior, delay: DelayPrior, *, also: Solution | None = None) -> Solution:
-        """The solution of least chi-square from all starts, and from the solution `also`.
+    def best(
+        self, far_pole: FarPolePrior, delay: DelayPrior, *, also: Solution | None = None, elsewhere: bool = True
+    ) -> Solution:
+        """The solution of least chi-square from all starts (unless not `elsewhere`) and from the solution `also`.
 
         Raises
         ------
@@ -56,26 +62,29 @@ class Search:
             model.vector(g=guess.g, q=guess.q, b=guess.b, zero_time_s=guess.zero_time_s, far_pole_s=guess.far_pole_s)
             for guess in self.guesses
             # A third pole in the start is of use only where the model has room for it.
-            if not guess.far_pole_s or far_pole.sd_s
+            if elsewhere and (not guess.far_pole_s or far_pole.sd_s)
         ]
         if also is not None:
-            # Four numbers in common; by their logarithms, for a q or b that the sweep does not know may be anything.
-            lifted = model.vector(g=1.0, q=1.0, b=1.0, zero_time_s=float(also.values[3]) * model.time_s)
-            lifted[:4] = also.values[:4]
-            vectors.append(lifted)
+            vectors.insert(0, lifted(also, model))
         vectors = [vector for vector in vectors if self._is_sane(model, vector)]
         ends: list[Solution] = []
         if vectors:
             # One noise for all, or their chi-squares could not be compared.
             common = self.noise or estimate_noise(self.sweep, model.gain(vectors[0], self.sweep.freq_hz))
-            ends = [solve(model, self.sweep, common, vector) for vector in vectors]
-            ends = [end for end in ends if end.optimum.converged and self._is_sane(model, end.values)]
+            ends = [
+                solve(model, self.sweep, common, vector, tolerance=RACE_TOLERANCE, max_steps=RACE_STEPS)
+                for vector in vectors
+            ]
+            ends = [end for end in ends if np.isfinite(end.optimum.chi_square) and self._is_sane(model, end.values)]
         if not ends:
             raise FitError(
                 f"{self.sweep.origin.file}: no start converged to two poles and a zero; look at the sweep with "
                 "`fitamp read`"
             )
-        return _in_sight(self._settled(min(ends, key=lambda end: end.optimum.chi_square)), self.sweep)
+        least = min(end.optimum.chi_square for end in ends)
+        # Of ends that are as good as one another the first: with lags free a pole and a zero may cancel anywhere.
+        winner = next(end for end in ends if end.optimum.chi_square <= least + FREE_OF_CHARGE)
+        return _in_sight(self._settled(winner), self.sweep)
 
     def plain_or_with_lag(self) -> tuple[Solution, Solution | None]:
         """The solution without lag, or, where that is not adequate, with the simplest lag that makes it so.
@@ -84,9 +93,10 @@ class Search:
         None where the sweep does not determine them at all.
         """
         plain = self.best(NO_FAR_POLE, NO_DELAY)
-        any_lag = self._best_or_none(FREE_FAR_POLE, FREE_DELAY, also=plain)
         if judge(plain).adequate:
-            return plain, any_lag
+            # Only from there: elsewhere the two more parameters would find a doublet in the noise.
+            return plain, self._best_or_none(FREE_FAR_POLE, FREE_DELAY, also=plain, elsewhere=False)
+        any_lag = self._best_or_none(FREE_FAR_POLE, FREE_DELAY, also=plain)
         for far_pole, delay in ((NO_FAR_POLE, FREE_DELAY), (FREE_FAR_POLE, NO_DELAY)):
             with_lag = self._best_or_none(far_pole, delay, also=plain)
             if with_lag is not None and judge(with_lag).adequate and _is_lag(with_lag):
@@ -95,33 +105,51 @@ class Search:
             return any_lag, any_lag
         return plain, any_lag
 
-    def _best_or_none(self, far_pole: FarPolePrior, delay: DelayPrior, *, also: Solution) -> Solution | None:
+    def _best_or_none(
+        self, far_pole: FarPolePrior, delay: DelayPrior, *, also: Solution, elsewhere: bool = True
+    ) -> Solution | None:
         try:
-            return self.best(far_pole, delay, also=also)
+            return self.best(far_pole, delay, also=also, elsewhere=elsewhere)
         except FitError:
             return None
 
     def _settled(self, solution: Solution) -> Solution:
-        """Alternate noise and fit until both stand, or leave it where the noise is given."""
-        if self.noise is not None:
-            return solution
-        for _ in range(NOISE_ROUNDS - 1):
-            noise = estimate_noise(self.sweep, solution.model.gain(solution.values, self.sweep.freq_hz))
+        """Finish what won the race: alternate noise and fit until both stand, or fit once where the noise is given."""
+        for _ in range(1 if self.noise else NOISE_ROUNDS - 1):
+            noise = self.noise or estimate_noise(self.sweep, solution.model.gain(solution.values, self.sweep.freq_hz))
             again = solve(solution.model, self.sweep, noise, solution.values)
+            if not again.optimum.converged:
+                # Down an endless valley of a parameter that the sweep does not see, seven digits have to do.
+                again = solve(solution.model, self.sweep, noise, again.values, tolerance=RACE_TOLERANCE)
             if not (again.optimum.converged and self._is_sane(again.model, again.values)):
                 break
             solution = again
         return solution
 
     def _is_sane(self, model: TwoPole, values: FloatArray) -> bool:
-        """Whether the response is a loop gain: a runaway one makes its own variance huge, its misfit small."""
+        """Whether this can be a loop: in size, and without a far pole on the right nearer than pole 2.
+
+        A runaway gain makes its own variance huge and its misfit small; such a far pole only cancels a zero that is not
+        there. A third pole of positive time is never mistaken for one, and noise moves it below 0 by far less.
+        """
         size = np.abs(model.gain(values, self.sweep.freq_hz))
-        return bool(((size > 1 / HUGE_GAIN) & (size < HUGE_GAIN)).all())
+        _, _, b, _, far_pole_s, _ = model.physical(values)
+        return bool(((size > 1 / HUGE_GAIN) & (size < HUGE_GAIN)).all() and far_pole_s >= -b)
 
     def _time_s(self) -> float:
         """Time by which τz is scaled: 1/pole 2 of the first start, kept within sight of the band."""
         top = 1 / (2 * np.pi * self.sweep.f_max_hz)
         return float(np.clip(self.guesses[0].b, 0.01 * top, 1 / (2 * np.pi * self.sweep.f_min_hz)))
+
+
+def lifted(solution: Solution, model: TwoPole) -> FloatArray:
+    """The parameter vector of a solution for a model with more freedom and the same scale of time.
+
+    ln q and ln b are taken as they are: of what the sweep does not know, the exponential may be no number.
+    """
+    *_, far_pole_s, delay_s = solution.model.physical(solution.values)
+    lags = {"far_pole": far_pole_s / model.time_s, "delay": delay_s / model.time_s}
+    return np.array([*solution.values[:4], *(lags[name] for name in model.names[4:])])
 
 
 def _in_sight(solution: Solution, sweep: Sweep) -> Solution:
@@ -131,11 +159,12 @@ def _in_sight(solution: Solution, sweep: Sweep) -> Solution:
     would find back from there.
     """
     for index, edge in ((LN_Q, 2 * np.pi * sweep.f_min_hz), (LN_B, 1 / (2 * np.pi * sweep.f_max_hz))):
-        variance = solution.covariance[index, index]
-        if variance < UNSEEN_LN**2:
+        if solution.covariance[index, index] < UNSEEN_LN**2:
             continue
         for decades in range(4, 20):
             hold = (index, float(np.log(edge * 10.0**-decades)))
+            if hold[1] < solution.values[index]:
+                break
             held = solve(solution.model, sweep, solution.noise, solution.values, hold=hold)
             if held.optimum.converged and held.optimum.chi_square < solution.optimum.chi_square + FREE_OF_CHARGE:
                 solution = solution_at(solution.model, sweep, solution.noise, held.values)

@@ -15,7 +15,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from fitamp.arrays import ComplexArray, FloatArray, frozen_float
-from fitamp.fitting.leastsq import Optimum, covariance_of, interleaved, minimise
+from fitamp.fitting.leastsq import MAX_STEPS, TOLERANCE, Optimum, covariance_of, interleaved, minimise
 from fitamp.sweep import NoiseLevels, Sweep
 from fitamp.transfer import Transfer
 
@@ -197,6 +197,8 @@ def solve(
     start: FloatArray,
     *,
     hold: tuple[int, float] | None = None,
+    tolerance: float = TOLERANCE,
+    max_steps: int = MAX_STEPS,
 ) -> Solution:
     """Fit the model by weighted least squares from `start`; `hold` = (index, value) keeps one parameter there."""
     free = [i for i in range(len(start)) if hold is None or i != hold[0]]
@@ -220,7 +222,14 @@ def solve(
 
     # An iterate that overflows costs one step, not a warning: the residual is not finite there and MINPACK turns back.
     with np.errstate(over="ignore", invalid="ignore", divide="ignore"):
-        optimum = minimise(residual, template[free], names=[model.names[i] for i in free], jacobian=jacobian)
+        optimum = minimise(
+            residual,
+            template[free],
+            names=[model.names[i] for i in free],
+            jacobian=jacobian,
+            tolerance=tolerance,
+            max_steps=max_steps,
+        )
     return Solution(
         model=model, optimum=_completed(optimum, model, full(optimum.values), free), noise=noise, points=len(sweep)
     )
