@@ -36,8 +36,10 @@ RISE_95 = 3.841
 DIFFERENCE_STEP = 1e-5
 # How far a profile is followed: a factor exp(14), more than a million, or as many scaled units.
 REACH = 14.0
-# Where a refit on a profile may stop: chi-square of some hundred is then right to the fourth decimal.
+# Where a refit on a profile may stop: chi-square of some hundred is then right to the fourth decimal. One starts from
+# its neighbour and takes long only where it slides down a valley that leads nowhere.
 REFIT_TOLERANCE = 1e-7
+REFIT_STEPS = 200
 
 
 def gradient(quantities: Quantities, values: FloatArray) -> FloatArray:
@@ -152,6 +154,7 @@ def _edge(solution: Solution, sweep: Sweep, index: int, side: int, rise: float) 
             start,
             hold=(index, centre + side * offset),
             tolerance=REFIT_TOLERANCE,
+            max_steps=REFIT_STEPS,
         )
         return held.optimum.chi_square - best - rise, held.values
 
