@@ -14,6 +14,7 @@ import numpy as np
 
 from fitamp.arrays import FloatArray
 from fitamp.estimate import NOT_KNOWN, Estimate, Known
+from fitamp.fitting.leastsq import MAX_STEPS
 from fitamp.fitting.two_pole import Solution, solve
 from fitamp.sweep import Sweep
 
@@ -40,6 +41,8 @@ REACH = 14.0
 # its neighbour and takes long only where it slides down a valley that leads nowhere.
 REFIT_TOLERANCE = 1e-7
 REFIT_STEPS = 200
+# First step of a profile, in logarithms or scaled units, at the least.
+LEAST_STEP = 1e-12
 
 
 def gradient(quantities: Quantities, values: FloatArray) -> FloatArray:
@@ -123,6 +126,9 @@ def estimate_by_profile(quantity: Quantity, solution: Solution, edges: Profile, 
         known = Known.LOWER_BOUND if high is None else Known.UPPER_BOUND
         return Estimate(value=None, stderr=None, ci95=(low, high), known=known)
     value = quantity(solution.values)
+    # Where a quantity does not quite rise with the held parameter, its interval still holds its value.
+    everything = [low, high] if value is None else [low, high, value]
+    low, high = min(everything), max(everything)
     stderr = (high - low) / (2 * np.sqrt(RISE_95))
     if value is None or (low > 0 and stderr > abs(value)):
         return Estimate(value=None, stderr=None, ci95=(low, high), known=Known.UNDETERMINED)
@@ -146,23 +152,26 @@ def _edge(solution: Solution, sweep: Sweep, index: int, side: int, rise: float) 
     stderr = float(np.sqrt(solution.covariance[index, index]))
     start = solution.values
 
-    def refit(offset: float) -> tuple[float, FloatArray]:
-        held = solve(
-            solution.model,
-            sweep,
-            solution.noise,
-            start,
-            hold=(index, centre + side * offset),
-            tolerance=REFIT_TOLERANCE,
-            max_steps=REFIT_STEPS,
-        )
-        return held.optimum.chi_square - best - rise, held.values
+    def refit(offset: float) -> tuple[bool, FloatArray]:
+        """Whether the held value is excluded, and the rest fitted to it; what will not converge excludes nothing."""
+        values = start
+        for steps in (REFIT_STEPS, MAX_STEPS):
+            hold = (index, centre + side * offset)
+            held = solve(
+                solution.model, sweep, solution.noise, values, hold=hold, tolerance=REFIT_TOLERANCE, max_steps=steps
+            )
+            values = held.values
+            if held.optimum.chi_square < best + rise:
+                return False, values
+            if held.optimum.converged:
+                return True, values
+        return False, values
 
-    inner, step = 0.0, min(max(1.5 * stderr, 1e-6), 1.0)
+    inner, step = 0.0, min(max(1.5 * stderr, LEAST_STEP), 1.0)
     outer = step
     while True:
-        excess, values = refit(outer)
-        if excess >= 0 or not np.isfinite(excess):
+        excluded, values = refit(outer)
+        if excluded:
             break
         if outer > REACH:
             return None
@@ -171,9 +180,9 @@ def _edge(solution: Solution, sweep: Sweep, index: int, side: int, rise: float) 
     # Bisection to 2 % of the offset: an interval's end needs no more.
     while outer - inner > 0.02 * outer:
         middle = 0.5 * (inner + outer)
-        excess, middle_values = refit(middle)
-        if excess < 0:
-            inner, start = middle, middle_values
-        else:
+        excluded, middle_values = refit(middle)
+        if excluded:
             outer, values = middle, middle_values
+        else:
+            inner, start = middle, middle_values
     return values
