@@ -81,10 +81,10 @@ def fit_sweep(
     # The noise comes from about as many second differences as there are points.
     quantile = two_sided_95(1e9 if noise else len(sweep) - 5)
     parameters = fitted_parameters(solution, sweep, adequacy, quantile)
-    if not (parameters.gain_bandwidth_hz.is_measured or parameters.pole1_hz.is_measured):
+    if not parameters.gain_bandwidth_hz.is_measured:
         raise FitError(
-            f"{sweep.origin.file}: the sweep shows neither pole 1 nor a gain-bandwidth product; check that the columns "
-            "hold loop gain, and sweep to where it falls"
+            f"{sweep.origin.file}: the sweep does not show where the loop gain falls, not even a gain-bandwidth "
+            "product; check that the columns hold loop gain, or sweep higher"
         )
     covariance = solution.covariance * adequacy.inflation
     poles, zeros = fitted_roots(solution, covariance)

@@ -40,7 +40,9 @@ def place_of_zero(
     plain = parameters.zero_time_s
     lag_free = not (_is_fitted(parameters.delay_s) or _is_fitted(parameters.far_pole_s))
     small_s = _small_s(parameters, margins)
-    if strict.is_within(-small_s, small_s):
+    if plain.known is Known.UNDETERMINED:
+        place = ZeroPlace.UNDECIDED
+    elif strict.is_within(-small_s, small_s):
         place = ZeroPlace.INFINITY
     elif (adequacy.adequate and lag_free and plain.is_within(0.0, math.inf)) or strict.is_within(0.0, math.inf):
         place = ZeroPlace.LEFT
