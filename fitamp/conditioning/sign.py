@@ -4,21 +4,23 @@ T is the return ratio, positive real at DC for negative feedback. Many set-ups r
 DC. The magnitude decides which: for a minimum-phase response the phase is 90° times the slope of ln |T| against
 ln f where that slope is locally steady (H. W. Bode, *Network Analysis and Feedback Amplifier Design*, 1945, ch. XIV
 on relations between attenuation and phase; from memory). Flat: 0°, integrator: −90°, two poles: −180°. A read-out
-that is 180° away from this is inverted. Only the part with |T| above 1 is asked, and of that the lower half in
-log f, because a right-half-plane zero, a delay or receiver noise has the least say there.
+that is 180° away from this is inverted. Only the part with |T| above 1 is asked. Receiver noise may leave the low end
+of the band without meaning; so the longest stretch over which magnitude and phase are steady is taken, and of it the
+lower half in log f, because a right-half-plane zero or a delay has the least say there. A flat stretch that the
+falling part above it contradicts, as crosstalk into the error receiver makes one, decides nothing.
 """
 
 from __future__ import annotations
 
-from dataclasses import replace
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
-from fitamp.arrays import FloatArray
+from fitamp.arrays import ComplexArray, FloatArray
 from fitamp.errors import SweepError
 from fitamp.sweep import Sign, Sweep
-from fitamp.units import si
+from fitamp.units import si, to_db
 
 __all__ = ["settle_sign"]
 
@@ -28,8 +30,8 @@ _HALF_WINDOW_DECADES = 0.3
 _MIN_WINDOW_POINTS = 3
 # Within 60° of one answer and hence 120° or more from the other: decided. In between: ask.
 _DECIDED_COSINE = 0.5
-# Scatter of ln |T| about its local line, beyond which receiver noise leaves nothing of the phase; the bend of the
-# magnitude at a pole makes less than 0.1 of it.
+# Scatter of ln |T|, and of its phase in radians, about their local lines, beyond which receiver noise leaves nothing
+# of the phase; the bend at a pole makes less than 0.1 of it.
 _MAX_SCATTER = 0.35
 _LEAST_ASKED = 3
 _HANDFUL = 5
@@ -37,6 +39,13 @@ _HANDFUL = 5
 _STEADY_SHARE = 0.25
 # And this share of those asked has to lie on the side of their median.
 _AGREED_SHARE = 0.9
+# A stretch this long against the longest has to agree with it; a shorter one may be steady by chance.
+_RIVAL_SHARE = 0.5
+# |T| from which on a zero or a delay cannot yet turn the phase round, 20 dB.
+_FAR_ABOVE = 10.0
+# The magnitude falls: nearer to an integrator than to a flat part.
+_FALLING_SLOPE = -0.7
+_FIRST_FALLING_DECADES = 0.5
 # A median needs no more points than this.
 _MOST_ASKED = 200
 _ASK = "give --sign as-read or --sign inverted"
@@ -69,11 +78,22 @@ def settle_sign(sweep: Sweep, wanted: Sign | None = None) -> Sweep:
     if wanted is None:
         seen, text = _recognise(sweep)
         if seen is Sign.UNKNOWN:
-            raise SweepError(f"{sweep.origin.file}: cannot tell whether the sweep holds T or -T: {text}; {_ASK}")
+            raise _undecided(sweep, text)
         return _with_sign(sweep, seen, text)
     seen, text = _recognise(sweep) if sweep.sign is Sign.UNKNOWN else (Sign.UNKNOWN, "settled anew")
     remark = f"as given; the band by itself says {seen}: {text}" if seen not in (wanted, Sign.UNKNOWN) else "as given"
     return _with_sign(sweep, wanted, remark)
+
+
+def _undecided(sweep: Sweep, text: str) -> SweepError:
+    largest = float(np.abs(sweep.gain).max())
+    if 0 < largest <= 1:
+        trace = f" of {sweep.origin.trace}" if sweep.origin.trace else ""
+        return SweepError(
+            f"{sweep.origin.file}: the magnitude{trace} never exceeds 1 ({to_db(largest):.1f} dB at most), which loop "
+            f"gain does below crossover; is it loop gain? if so, {_ASK}; if not, choose another trace or column"
+        )
+    return SweepError(f"{sweep.origin.file}: cannot tell whether the sweep holds T or -T: {text}; {_ASK}")
 
 
 def _with_sign(sweep: Sweep, sign: Sign, reason: str) -> Sweep:
@@ -84,32 +104,89 @@ def _with_sign(sweep: Sweep, sign: Sign, reason: str) -> Sweep:
     return replace(sweep, sign=sign).with_decision("sign", sign.value, reason)
 
 
+@dataclass(frozen=True, slots=True, kw_only=True)
+class _Band:
+    """The points with |T| above 1 and what their surroundings say; all of shape (n,).
+
+    log_f, log_size, phase : ln f, ln |T|, arg T in rad
+    slope : of ln |T| against ln f
+    scatter, phase_scatter : of ln |T| and of the phase in rad about their local lines
+    width : of the surroundings, in ln f
+    """
+
+    log_f: FloatArray
+    log_size: FloatArray
+    phase: FloatArray
+    slope: FloatArray
+    scatter: FloatArray
+    phase_scatter: FloatArray
+    width: FloatArray
+
+    @property
+    def cosine(self) -> FloatArray:
+        """1 where the phase is what the slope asks for, −1 where it is 180° away."""
+        return np.asarray(np.cos(self.phase - np.pi / 2 * self.slope))
+
+
 def _recognise(sweep: Sweep) -> tuple[Sign, str]:
     """The sign that the band shows, and what was seen."""
     size = np.abs(sweep.gain)
-    usable = size > 0
-    log_f, log_size, phase = np.log(sweep.freq_hz[usable]), np.log(size[usable]), np.angle(sweep.gain[usable])
-    above = np.flatnonzero(log_size > 0)
-    if len(above) < _LEAST_ASKED:
+    if (size > 1).sum() < _LEAST_ASKED:
         few = "its magnitude exceeds 1 at fewer than three points; below, a zero or delay may look like an inversion"
         return Sign.UNKNOWN, few
-    above = above[np.unique(np.linspace(0, len(above) - 1, _MOST_ASKED).astype(int))]
-    slope, scatter = _local_line(log_f, log_size, above)
-    steady = scatter < _MAX_SCATTER
-    if steady.sum() < max(_LEAST_ASKED, _STEADY_SHARE * len(above)):
+    band = _band(sweep.freq_hz[size > 0], sweep.gain[size > 0])
+    steady = band.scatter < _MAX_SCATTER
+    least = max(_LEAST_ASKED, _STEADY_SHARE * len(steady))
+    if steady.sum() < least:
         return Sign.UNKNOWN, "its magnitude scatters too much"
-    low = _lower_half(log_f[above[steady]])
-    asked, slope = above[steady][:low], slope[steady][:low]
-    cosine = np.cos(phase[asked] - np.pi / 2 * slope)
-    agreement = float(np.median(cosine))
+    stretches = _stretches(band, steady & (band.phase_scatter < _MAX_SCATTER))
+    if sum(map(len, stretches)) < least:
+        return Sign.UNKNOWN, "its phase scatters too much"
+    lengths = [float(np.ptp(band.log_f[stretch])) for stretch in stretches]
+    lower = [stretch[: _lower_half(band.log_f[stretch])] for stretch in stretches]
+    asked = lower[int(np.argmax(lengths))]
+    agreement = float(np.median(band.cosine[asked]))
+    ends = [si(float(np.exp(band.log_f[index])), "Hz") for index in (asked[0], asked[-1])]
     apart_deg = float(np.degrees(np.arccos(np.clip(agreement, -1, 1))))
-    band = f"from {si(float(np.exp(log_f[asked[0]])), 'Hz')} to {si(float(np.exp(log_f[asked[-1]])), 'Hz')}"
-    seen = f"{band} the phase is {apart_deg:.0f}° away from what the slope of the magnitude asks for (median)"
+    seen = (
+        f"from {ends[0]} to {ends[1]} the phase is {apart_deg:.0f}° away from what the slope of the magnitude asks for "
+        "(median)"
+    )
     if abs(agreement) < _DECIDED_COSINE:
         return Sign.UNKNOWN, seen
-    if np.mean(np.sign(cosine) == np.sign(agreement)) < _AGREED_SHARE:
+    rivals = [low for low, length in zip(lower, lengths, strict=True) if length > _RIVAL_SHARE * max(lengths)]
+    if any(np.median(band.cosine[rival]) * agreement < 0 for rival in rivals):
+        return Sign.UNKNOWN, "its steady stretches contradict each other"
+    if np.mean(np.sign(band.cosine[asked]) == np.sign(agreement)) < _AGREED_SHARE:
         return Sign.UNKNOWN, "its phase scatters too much"
+    if _falling_cosine(band, int(asked[0])) * agreement < 0:
+        return Sign.UNKNOWN, f"{seen}, but where the magnitude begins to fall it is the other way round"
     return (Sign.AS_READ if agreement > 0 else Sign.INVERTED), seen
+
+
+def _stretches(band: _Band, steady: NDArray[np.bool_]) -> list[NDArray[np.intp]]:
+    """Runs of steady points that begin in the lower half of the band, or far enough above crossover."""
+    runs = np.split(np.arange(len(steady)), np.flatnonzero(np.diff(steady)) + 1)
+    middle = (band.log_f[0] + band.log_f[-1]) / 2
+    return [
+        run
+        for run in runs
+        if steady[run[0]]
+        and len(run) >= _LEAST_ASKED
+        and (band.log_f[run[0]] <= middle or band.log_size[run[0]] > np.log(_FAR_ABOVE))
+    ]
+
+
+def _falling_cosine(band: _Band, first: int) -> float:
+    """Median agreement where the magnitude begins to fall, at or after the point `first`; 0 where it does not fall."""
+    # Points far apart see a bend where there is no noise.
+    allowed = _MAX_SCATTER * np.maximum(1, band.width / (2 * _HALF_WINDOW_DECADES * np.log(10)))
+    falls = (band.slope < _FALLING_SLOPE) & (band.scatter < allowed) & (band.phase_scatter < _MAX_SCATTER)
+    falling = np.flatnonzero(falls[first:]) + first
+    if not len(falling):
+        return 0.0
+    near = band.log_f[falling] <= band.log_f[falling[0]] + _FIRST_FALLING_DECADES * np.log(10)
+    return float(np.median(band.cosine[falling[near]]))
 
 
 def _lower_half(log_f: FloatArray) -> int:
@@ -117,16 +194,34 @@ def _lower_half(log_f: FloatArray) -> int:
     return max(int((log_f <= (log_f[0] + log_f[-1]) / 2).sum()), _HANDFUL)
 
 
-def _local_line(log_f: FloatArray, log_size: FloatArray, at: NDArray[np.intp]) -> tuple[FloatArray, FloatArray]:
-    """Slope of ln |T| against ln f around the points `at`, and the scatter about that line (both dimensionless)."""
+def _band(freq_hz: FloatArray, gain: ComplexArray) -> _Band:
+    """The points with |T| above 1, thinned out, each with the lines through its surroundings."""
+    log_f, log_size, phase = np.log(freq_hz), np.log(np.abs(gain)), np.angle(gain)
+    above = np.flatnonzero(log_size > 0)
+    above = above[np.unique(np.linspace(0, len(above) - 1, _MOST_ASKED).astype(int))]
     half = _HALF_WINDOW_DECADES * np.log(10)
-    slopes, scatters = [], []
-    for index in at.tolist():
+    local = []
+    for index in above.tolist():
         first, last = np.searchsorted(log_f, [log_f[index] - half, log_f[index] + half]).tolist()
         first = min(first, max(index - _MIN_WINDOW_POINTS // 2, 0))
         last = max(last, min(index + _MIN_WINDOW_POINTS // 2 + 1, len(log_f)))
-        x = log_f[first:last] - log_f[first:last].mean()
-        y = log_size[first:last] - log_size[first:last].mean()
-        slopes.append(float(x @ y / (x @ x)))
-        scatters.append(float(np.sqrt(np.sum((y - slopes[-1] * x) ** 2) / max(len(x) - 2, 1))))
-    return np.array(slopes), np.array(scatters)
+        x = log_f[first:last]
+        slope, scatter = _line(x, log_size[first:last])
+        local.append((slope, scatter, _line(x, np.unwrap(phase[first:last]))[1], float(np.ptp(x))))
+    slopes, scatters, phase_scatters, widths = np.array(local).T
+    return _Band(
+        log_f=log_f[above],
+        log_size=log_size[above],
+        phase=phase[above],
+        slope=slopes,
+        scatter=scatters,
+        phase_scatter=phase_scatters,
+        width=widths,
+    )
+
+
+def _line(x: FloatArray, y: FloatArray) -> tuple[float, float]:
+    """Slope of a straight line through points, and the scatter about it."""
+    x, y = x - x.mean(), y - y.mean()
+    slope = float(x @ y / (x @ x))
+    return slope, float(np.sqrt(np.sum((y - slope * x) ** 2) / max(len(x) - 2, 1)))
