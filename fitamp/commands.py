@@ -13,12 +13,12 @@ from typing import TYPE_CHECKING, Any
 from fitamp.comparison import Comparison
 from fitamp.comparison import compare as compare_sweep
 from fitamp.design import read_design
-from fitamp.errors import UsageError
-from fitamp.fitting import fit_sweep
+from fitamp.errors import FitError, UsageError
+from fitamp.fitting import LoopFit, fit_sweep
 from fitamp.importers import read_sweep
 from fitamp.report.as_json import comparison_as_dict, dumps, fit_as_dict, sweep_as_dict
 from fitamp.report.files import refuse_existing, staged_directory, write_text
-from fitamp.report.tables import comparison_text, fit_text, sweep_text
+from fitamp.report.tables import comparison_text, fit_text, printable, sweep_text
 from fitamp.sweep import Sign, Sweep
 
 if TYPE_CHECKING:
@@ -48,7 +48,7 @@ def fit(args: argparse.Namespace) -> int:
 
         _write_folder(Path(args.out), "fit", record, text, fit_figures(result), force=args.force)
     _deliver(args, record, text)
-    return 0
+    return _trusted(result, args.file)
 
 
 def compare(args: argparse.Namespace) -> int:
@@ -60,7 +60,7 @@ def compare(args: argparse.Namespace) -> int:
     if args.out:
         _write_comparison(result, record, text, Path(args.out), force=args.force)
     _deliver(args, record, text)
-    return 0
+    return _trusted(result.fit, args.file)
 
 
 def demo(args: argparse.Namespace) -> int:
@@ -82,6 +82,18 @@ def demo(args: argparse.Namespace) -> int:
     for part in parts:
         print(f"  {Path(out.name) / part.stem / 'loop.png'}")
     return 0
+
+
+def _trusted(result: LoopFit, file: str) -> int:
+    """Exit code of a fit that was delivered: 4, and a line to say so, where the model does not describe the sweep."""
+    if result.adequacy.adequate:
+        return 0
+    print(
+        f"fitamp: {printable(file)}: not trustworthy, {result.adequacy.sentence}; look at the residuals for what the "
+        "model lacks, or bad points",
+        file=sys.stderr,
+    )
+    return FitError.exit_code
 
 
 def _examples(given: str | None) -> Path:

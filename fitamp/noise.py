@@ -1,4 +1,4 @@
-"""Bench noise as three numbers, estimated by maximum likelihood from one sweep.
+"""Bench noise as four numbers, estimated by maximum likelihood from one sweep.
 
 The estimate looks at local scatter only: second differences along the sweep of the loop-equation residual
 (T − M)/(1 + T). Whatever is smooth cancels there, so a model M that is wrong cannot hide its fault in the noise.
@@ -40,23 +40,23 @@ def estimate_noise(sweep: Sweep, model_gain: ComplexArray) -> NoiseLevels:
 
     Notes
     -----
-    Each |second difference|² is exponential with mean Σ_j x_kj θ_j, θ = (n_r², n_e², rel²) ≥ 0: a Gamma generalised
-    linear model with identity link (P. McCullagh and J. A. Nelder, Generalized Linear Models, ch. 8).
+    Each |second difference|² is exponential with mean Σ_j x_kj θ_j, θ = (n_r², n_e², rel², ratio²) ≥ 0: a Gamma
+    generalised linear model with identity link (P. McCullagh and J. A. Nelder, Generalized Linear Models, ch. 8).
     """
     model = np.abs(model_gain) ** 2
     size = 1 / (1 + model)
     scaled = (sweep.gain - model_gain) / (1 + sweep.gain) * np.sqrt(size)
     observed = np.abs(np.convolve(scaled, CONTRAST, mode="valid")) ** 2
-    parts = np.stack([size, model * size, np.abs(model_gain / (1 + model_gain)) ** 2 * size], axis=1)
+    through = np.abs(1 + model_gain) ** 2
+    parts = np.stack([size, model * size, model / through * size, size / through], axis=1)
     design = np.stack([np.convolve(part, CONTRAST**2, mode="valid") for part in parts.T], axis=1)
     variances = _gamma_regression(observed, design)
-    n_return, n_error, relative = np.sqrt(variances)
-    if max(n_return, n_error, relative) < FLOOR:
-        relative = FLOOR
+    n_return, n_error, relative, ratio = np.sqrt(variances)
     return NoiseLevels(
         error_channel=float(n_error),
         return_channel=float(n_return),
         relative=float(np.hypot(relative, FLOOR)),
+        ratio=float(ratio),
         source="estimated from the sweep",
     )
 
@@ -88,7 +88,7 @@ def _gamma_regression(observed: FloatArray, design: FloatArray) -> FloatArray:
 def simulate_bench(gain: ComplexArray, noise: NoiseLevels, rng: np.random.Generator) -> ComplexArray:
     """What a bench with this noise reads for a loop gain of shape (n,): receiver floors, then relative gain error.
 
-    error = 1/(1+T) + floor, return = T/(1+T) + floor, T_meas = return/error · (1 + relative error).
+    error = 1/(1+T) + floor, return = T/(1+T) + floor, T_meas = return/error · (1 + relative error) + ratio's floor.
     """
 
     def scatter(sd: float) -> ComplexArray:
@@ -97,4 +97,5 @@ def simulate_bench(gain: ComplexArray, noise: NoiseLevels, rng: np.random.Genera
 
     error = 1 / (1 + gain) + scatter(noise.error_channel)
     returned = gain / (1 + gain) + scatter(noise.return_channel)
-    return np.asarray(returned / error * (1 + scatter(noise.relative)))
+    measured = returned / error * (1 + scatter(noise.relative))
+    return np.asarray(measured + scatter(noise.ratio) if noise.ratio else measured)

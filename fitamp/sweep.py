@@ -63,20 +63,22 @@ class Origin:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class NoiseLevels:
-    """Bench noise as three numbers, all standard deviations for a drive of 1.
+    """Bench noise, all complex standard deviations for a drive of 1.
 
-    error_channel, return_channel : complex standard deviation of the additive floor of each receiver
-    relative : complex standard deviation of gain errors, relative
+    error_channel, return_channel : additive floor of each receiver
+    relative : gain errors, relative
+    ratio : additive floor of the loop gain itself, as from processing after the receivers; 0 with receivers alone
     source : where the numbers come from ("estimated from the sweep", "given", "repeats")
     """
 
     error_channel: float
     return_channel: float
     relative: float
+    ratio: float = 0.0
     source: str = "given"
 
     def __post_init__(self) -> None:
-        levels = (self.error_channel, self.return_channel, self.relative)
+        levels = (self.error_channel, self.return_channel, self.relative, self.ratio)
         if not all(np.isfinite(level) and level >= 0 for level in levels) or not any(levels):
             raise SweepError(f"noise levels must be finite, not negative and not all zero, but are {levels}")
 

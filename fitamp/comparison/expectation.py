@@ -8,14 +8,13 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass, fields, replace
-
-import numpy as np
+from typing import Any
 
 from fitamp.amplifier import Elements, coefficients
 from fitamp.comparison.mirror import mirror_moved, widened_by_mirror
 from fitamp.design import Design, Roots
 from fitamp.errors import FitError
-from fitamp.fitting import DelayPrior, FarPolePrior, LoopFit, fit_sweep
+from fitamp.fitting import DelayPrior, FarPolePrior, LoopFit, Pole2Prior, fit_sweep
 from fitamp.sweep import NoiseLevels, Origin, Sweep
 from fitamp.transfer import Transfer
 
@@ -27,6 +26,8 @@ FAR_POLE_ELEMENTS = ("gm2", "C1", "CL", "Cc", "R1", "R2")
 NO_PRIOR_SPREAD = 1.0
 # However small the stated spreads: element equations are not better than this share of C/gm2.
 FAR_POLE_FLOOR = 0.01
+# One standard deviation of ln pole 2 before the sweep is seen: a factor of two.
+POLE2_LN_SD = math.log(2)
 ROUNDS = 3
 
 
@@ -36,7 +37,12 @@ class Expectation:
 
     far_pole: FarPolePrior
     delay: DelayPrior
+    pole2: Pole2Prior
     known: Transfer | None
+
+    def as_arguments(self) -> dict[str, Any]:
+        """Keyword arguments of `fit_sweep`."""
+        return {"far_pole": self.far_pole, "delay": self.delay, "pole2": self.pole2, "known": self.known}
 
 
 def expectation(design: Design, zero_time_s: float) -> Expectation:
@@ -50,11 +56,24 @@ def expectation(design: Design, zero_time_s: float) -> Expectation:
         mirror_spread_s = design.spreads.get("mirror_pole_hz", 0.0) / (4 * math.pi * elements.mirror_pole_hz)
     return Expectation(
         far_pole=_far_pole_line(elements, design, zero_time_s),
-        delay=DelayPrior(
-            mean_s=design.bench.delay_s, sd_s=float(np.hypot(design.bench.delay_spread_s, mirror_spread_s))
-        ),
+        delay=_delay_prior(design, mirror_spread_s),
+        pole2=_pole2_prior(replace(elements, mirror_pole_hz=None, delay_s=0.0).transfer()),
         known=_known_factor(elements),
     )
+
+
+def _delay_prior(design: Design, further_sd_s: float) -> DelayPrior:
+    """The bench's delay as stated; free where it is not: unknown is not zero."""
+    bench = design.bench
+    if bench.delay_s is None:
+        return DelayPrior(sd_s=math.inf)
+    return DelayPrior(mean_s=bench.delay_s, sd_s=math.hypot(bench.delay_spread_s, further_sd_s))
+
+
+def _pole2_prior(core: Transfer) -> Pole2Prior:
+    """The design's a2/a1, known to a factor: neither spreads nor a forgotten probe move pole 2 much farther."""
+    denominator = core.polynomials()[1]
+    return Pole2Prior(time_s=float(denominator[2] / denominator[1]), ln_sd=POLE2_LN_SD)
 
 
 def _from_roots(design: Design) -> Expectation:
@@ -68,7 +87,8 @@ def _from_roots(design: Design) -> Expectation:
         )
     return Expectation(
         far_pole=far_pole,
-        delay=DelayPrior(mean_s=design.bench.delay_s, sd_s=design.bench.delay_spread_s),
+        delay=_delay_prior(design, 0.0),
+        pole2=_pole2_prior(roots.transfer()),
         # The loop's own delay is the chip's, and so part of its margins; the bench's is not.
         known=Transfer(dc_gain=1.0, poles_hz=(), delay_s=roots.delay_s) if roots.delay_s else None,
     )
@@ -143,7 +163,7 @@ def _fit_at_its_zero(sweep: Sweep, design: Design, noise: NoiseLevels | None) ->
     fit: LoopFit | None = None
     for _ in range(ROUNDS):
         expected = expectation(design, zero_time_s)
-        fit = fit_sweep(sweep, noise=noise, far_pole=expected.far_pole, delay=expected.delay, known=expected.known)
+        fit = fit_sweep(sweep, noise=noise, **expected.as_arguments())
         found = fit.solution.model.physical(fit.solution.values)[3]
         if abs(found - zero_time_s) <= 0.2 * design.small_zero_time_s:
             break
@@ -159,6 +179,6 @@ def designed_as_measured(design: Design, fit: LoopFit) -> LoopFit | None:
     expected = expectation(design, design.zero_time_s)
     sweep = Sweep(freq_hz=freq_hz, gain=gain, origin=Origin(file=f"{design.file} (designed)", form="computed"))
     try:
-        return fit_sweep(sweep, noise=fit.noise, far_pole=expected.far_pole, delay=expected.delay, known=expected.known)
+        return fit_sweep(sweep, noise=fit.noise, **expected.as_arguments())
     except FitError:
         return None

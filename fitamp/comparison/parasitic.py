@@ -17,6 +17,7 @@ from fitamp.arrays import FloatArray
 from fitamp.comparison.expectation import NO_PRIOR_SPREAD, resistor_for
 from fitamp.comparison.result import Parasitic
 from fitamp.comparison.rows import pole2_may_be_hidden
+from fitamp.comparison.verdict import nulling_product
 from fitamp.design import Design
 from fitamp.estimate import NOT_KNOWN, Estimate, Known
 from fitamp.fitting import LoopFit
@@ -28,6 +29,8 @@ ASSUMED_KNOWN = ("gm2", "Cc", "C1", "R1", "R2")
 # The third pole counts as seen by the sweep when the data shrink its prior's variance to less than this.
 SEEN_BY_DATA = 0.25
 QUANTILE = 1.96
+# So many standard errors below 0 a product that cannot be negative contradicts what it was computed with.
+CLEARLY = 3.0
 LN_B, ZERO = 2, 3
 
 Solver = Callable[[Elements, FloatArray], FloatArray]
@@ -38,13 +41,15 @@ def parasitics(fit: LoopFit, design: Design) -> Parasitic | None:
     if design.elements is None:
         return None
     if fit.parameters.pole2_hz.known is not Known.MEASURED or pole2_may_be_hidden(fit, design):
-        return Parasitic(
-            load_total_f=NOT_KNOWN,
-            load_f=NOT_KNOWN,
-            first_stage_f=NOT_KNOWN,
-            sentence="the load capacitance cannot be told, because pole 2 is not determined by this band",
-        )
+        return _untold("pole 2 is not determined by this band")
+    if not fit.adequacy.adequate:
+        return _untold("the model does not describe the sweep")
+    gm2_rz = nulling_product(fit.parameters.zero_time_s, design)
+    if gm2_rz.value is not None and gm2_rz.stderr is not None and gm2_rz.value < -CLEARLY * gm2_rz.stderr:
+        return _untold("gm2·Rz comes out negative, so that gm2 or Cc is not as designed")
     load = _propagate(_load_alone, fit, design, ASSUMED_KNOWN)[0]
+    if load.value is None or load.value <= 0:
+        return _untold("no load fits pole 2 with gm2, Cc and C1 anywhere near the design")
     bench = design.bench
     outside = design.elements.CL + bench.load_f
     bench_sd = bench.load_f * bench.load_spread
@@ -55,6 +60,15 @@ def parasitics(fit: LoopFit, design: Design) -> Parasitic | None:
         first_stage = _shifted(both[1], design.elements.C1, 0.0)
     return Parasitic(
         load_total_f=load, load_f=extra, first_stage_f=first_stage, sentence=_sentence(load, extra, first_stage, design)
+    )
+
+
+def _untold(why: str) -> Parasitic:
+    return Parasitic(
+        load_total_f=NOT_KNOWN,
+        load_f=NOT_KNOWN,
+        first_stage_f=NOT_KNOWN,
+        sentence=f"the load capacitance cannot be told: {why}",
     )
 
 

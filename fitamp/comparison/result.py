@@ -8,7 +8,7 @@ from enum import StrEnum
 
 from fitamp.design import Design
 from fitamp.estimate import Estimate
-from fitamp.fitting import LoopFit
+from fitamp.fitting import FitWarning, LoopFit
 
 __all__ = ["Advice", "Comparison", "Nulling", "Parasitic", "Row", "Verdict", "Window"]
 
@@ -90,7 +90,10 @@ class Parasitic:
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Comparison:
-    """A sweep fitted and held against its design."""
+    """A sweep fitted and held against its design.
+
+    notes : contradictions between sweep, design and bench, beside the fit's own warnings
+    """
 
     design: Design
     fit: LoopFit
@@ -99,6 +102,12 @@ class Comparison:
     verdict: Verdict
     advice: Advice
     parasitic: Parasitic | None
+    notes: tuple[FitWarning, ...]
+
+    @property
+    def broken_limits(self) -> tuple[str, ...]:
+        """Quantities other than the zero that are outside their limits beyond doubt."""
+        return tuple(row.quantity for row in self.rows if row.inside is False and row.quantity != "zero_time_s")
 
     def row(self, quantity: str) -> Row:
         """The row of a quantity.

@@ -6,24 +6,30 @@ On that line the zero passes through infinity at 0 without a jump, so every verd
 from __future__ import annotations
 
 import math
+from dataclasses import replace
 
 import numpy as np
 
 from fitamp.comparison.mirror import mirror_moved
-from fitamp.comparison.result import Advice, Nulling, Verdict, Window
+from fitamp.comparison.result import Advice, Nulling, Row, Verdict, Window
 from fitamp.comparison.rows import designed_poles_hz, pole2_may_be_hidden
 from fitamp.design import Design, HalfPlane
 from fitamp.estimate import NOT_KNOWN, Estimate, Known
 from fitamp.fitting import LoopFit
-from fitamp.fitting.result import text_of
+from fitamp.fitting.result import LABELS, text_of
 from fitamp.units import si, si_with_error
 
-__all__ = ["advise", "judge_nulling", "window_of"]
+__all__ = ["advise", "describes", "judge_nulling", "nulling_product", "window_of"]
 
 # Window of a design without limits: 95 % of parts built with the design's own spreads.
 WINDOW_QUANTILE = 1.96
 # A design given by roots has no element spreads; its zero may be this far off.
 ROOTS_WINDOW = 0.10
+
+# Without noise to hide it, a model's fault below this share of the loop gain, above a thirtieth of crossover, moves the
+# zero by no more than a few times as much.
+NEAR_ENOUGH = 1e-3
+DECIDING_BAND = 1 / 30
 
 Regions = tuple[tuple[Nulling, float, float], ...]
 
@@ -87,6 +93,15 @@ def judge_nulling(fit: LoopFit, design: Design) -> Verdict:
     window = window_of(design)
     zero_time = fit.parameters.zero_time_s
     tiles = regions_of(design, window)
+    if not describes(fit):
+        return Verdict(
+            nulling=Nulling.UNDECIDED,
+            reason="two poles, a zero, the designed third pole and the bench's delay do not describe this sweep: "
+            f"{fit.adequacy.sentence}; no verdict can be leaned on before that is explained",
+            zero_time_s=zero_time,
+            gm2_rz=nulling_product(zero_time, design),
+            window=window,
+        )
     if zero_time.known is Known.UNDETERMINED:
         nulling, reason = Nulling.UNDECIDED, f"the sweep does not determine the zero; {_what_settles(fit, design)}"
     elif pole2_may_be_hidden(fit, design):
@@ -97,8 +112,22 @@ def judge_nulling(fit: LoopFit, design: Design) -> Verdict:
         nulling = whole[0] if whole else Nulling.UNDECIDED
         reason = _reason(nulling, zero_time, window, touched=touched, design=design, fit=fit)
     return Verdict(
-        nulling=nulling, reason=reason, zero_time_s=zero_time, gm2_rz=_nulling_product(zero_time, design), window=window
+        nulling=nulling, reason=reason, zero_time_s=zero_time, gm2_rz=nulling_product(zero_time, design), window=window
     )
+
+
+def describes(fit: LoopFit) -> bool:
+    """Whether the model is near enough to the sweep for a verdict.
+
+    Adequate, or, where hardly any noise lets the smallest fault of a model stand out, within a thousandth.
+    """
+    if fit.adequacy.adequate:
+        return True
+    sweep = fit.sweep
+    fitted = fit.evaluate(sweep.freq_hz)
+    above = sweep.freq_hz > DECIDING_BAND * (fit.margins.crossover_hz.value or 0.0)
+    miss = np.abs(sweep.gain / fitted - 1)[above]
+    return bool(len(miss) and np.sqrt(np.mean(miss**2)) < NEAR_ENOUGH)
 
 
 def _reason(
@@ -109,8 +138,9 @@ def _reason(
     allowed = f"{span_of(window.low_s, window.high_s)}, from {window.source}"
     small = si(design.small_zero_time_s, "s")
     if nulling is Nulling.UNDECIDED:
-        names = " and ".join(verdict.value for verdict in touched)
-        reach = f"the 95 % interval of the zero time, {_ends(zero_time)}, reaches into {names}"
+        names = ", ".join(verdict.value for verdict in touched)
+        into = "every region" if len(touched) == len(regions_of(design, window)) else names
+        reach = f"the 95 % interval of the zero time, {_ends(zero_time)}, reaches into {into}"
         return f"{reach}; {_what_settles(fit, design)}"
     sentences = {
         Nulling.AS_DESIGNED: f"{seen} lies in the window {allowed}",
@@ -149,7 +179,7 @@ def span_of(low_s: float, high_s: float) -> str:
     return f"{si(low_s, 's', digits=3)} to {si(high_s, 's', digits=3)}"
 
 
-def _nulling_product(zero_time: Estimate, design: Design) -> Estimate:
+def nulling_product(zero_time: Estimate, design: Design) -> Estimate:
     """gm2·Rz = 1 + τz·gm2/Cc, uncertain by the fit and by the spreads of gm2 and Cc."""
     elements = design.elements
     if elements is None or zero_time.value is None or zero_time.stderr is None:
@@ -171,6 +201,9 @@ def _hidden_pole(fit: LoopFit, design: Design) -> str:
 
 def _what_settles(fit: LoopFit, design: Design) -> str:
     """The measurement that would shrink the larger part of the zero time's variance."""
+    if fit.parameters.pole2_hz.known is not Known.MEASURED:
+        wanted = si(3 * designed_poles_hz(design)[1], "Hz", digits=2)
+        return f"the band does not determine pole 2: sweep up to a few times pole 2, about {wanted}"
     model, zero_time = fit.solution.model, fit.parameters.zero_time_s
     without_mirror = float(fit.covariance[3, 3]) * model.time_s**2
     if mirror_moved(design) and zero_time.stderr is not None and zero_time.stderr**2 > 2 * without_mirror:
@@ -197,8 +230,25 @@ def _what_settles(fit: LoopFit, design: Design) -> str:
     )
 
 
-def advise(verdict: Verdict, design: Design, designed_zero_s: float) -> Advice:
-    """Change of Rz that would put the zero at the designed place: (τz_designed − τz)/Cc."""
+def advise(verdict: Verdict, design: Design, designed_zero_s: float, *, fit: LoopFit, rows: tuple[Row, ...]) -> Advice:
+    """Change of Rz that would put the zero at the designed place, (τz_designed − τz)/Cc; other broken limits."""
+    if not describes(fit):
+        return Advice(
+            rz_change_ohm=NOT_KNOWN,
+            sentence="change nothing yet; the residuals show where the sweep is not what the model says: look there "
+            "for a delay or pole that is not stated, a resonance, or bad points",
+        )
+    broken = [LABELS[row.quantity] for row in rows if row.inside is False and row.quantity != "zero_time_s"]
+    advice = _advise_on_resistor(verdict, design, designed_zero_s)
+    if not broken:
+        return advice
+    outside = f"{' and '.join(broken)} {'is' if len(broken) == 1 else 'are'} outside the limits"
+    if verdict.nulling is Nulling.AS_DESIGNED:
+        return replace(advice, sentence=f"Rz needs no change, but {outside}: look for what else moved")
+    return replace(advice, sentence=f"{advice.sentence}; {outside}")
+
+
+def _advise_on_resistor(verdict: Verdict, design: Design, designed_zero_s: float) -> Advice:
     zero_time, elements = verdict.zero_time_s, design.elements
     if elements is None:
         return Advice(
@@ -231,9 +281,10 @@ def _advice_sentence(nulling: Nulling, change: float, stderr: float, ends: tuple
     amount = si_with_error(abs(change), stderr, "Ω")
     direction = "raise" if change > 0 else "lower"
     if nulling is Nulling.AS_DESIGNED:
-        return (
-            f"nothing has to change; the exact nominal place would take {amount} {'more' if change > 0 else 'less'} Rz"
-        )
+        if abs(change) < WINDOW_QUANTILE * stderr:
+            return "nothing has to change"
+        way = "more" if change > 0 else "less"
+        return f"nothing has to change; the exact nominal place would take {amount} {way} Rz"
     if nulling is Nulling.UNDECIDED:
         low, high = ("unknown" if end is None else si(end, "Ω", digits=3) for end in ends)
         return f"settle the verdict first; the change of Rz that the sweep allows reaches from {low} to {high}"

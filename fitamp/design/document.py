@@ -47,6 +47,8 @@ class Faults:
 
 def file_bytes(file: str) -> bytes:
     """Return what is in the file; DesignError when it cannot be read or is too large for a design."""
+    if not file.strip():
+        raise DesignError("the name of the design file is empty; name one TOML file")
     try:
         if Path(file).is_dir():
             raise DesignError(f"{file}: is a directory; give the design file itself")

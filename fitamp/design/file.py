@@ -126,7 +126,8 @@ def _read_about(table: Table, faults: Faults, otherwise: str) -> dict[str, str]:
 
 
 def _read_bench(table: Table, faults: Faults) -> Bench:
-    load = delay = Entry(value=0.0)
+    load = Entry(value=0.0)
+    delay: Entry | None = None
     if "load" in table:
         with faults.at("bench", "load"):
             load = read_entry(table["load"], lambda raw: read_quantity(raw, "F", zero_allowed=True))
@@ -136,8 +137,8 @@ def _read_bench(table: Table, faults: Faults) -> Bench:
     return Bench(
         load_f=load.value,
         load_spread=load.spread or 0.0,
-        delay_s=delay.value,
-        delay_spread_s=delay.spread or 0.0,
+        delay_s=None if delay is None else delay.value,
+        delay_spread_s=(delay.spread if delay is not None else None) or 0.0,
     )
 
 

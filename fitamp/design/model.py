@@ -179,8 +179,8 @@ class Design:
         return self._given.transfer()
 
     def on_bench(self) -> Transfer:
-        """The designed loop gain with the bench's load across the output and its delay in the loop."""
-        delay_s = self._given.delay_s + self.bench.delay_s
+        """The designed loop gain with the bench's load across the output and its delay, where stated, in the loop."""
+        delay_s = self._given.delay_s + (self.bench.delay_s or 0.0)
         if self.elements is not None:
             loaded = self.elements.CL + self.bench.load_f
             return self.elements.with_changes(CL=loaded, delay_s=delay_s).transfer()

@@ -88,18 +88,19 @@ class Bench:
     """What the bench adds to the amplifier: probe, socket, cable.
 
     load_f, load_spread : capacitance added to CL in F, and its relative standard deviation
-    delay_s, delay_spread_s : delay added to the loop in s, and its standard deviation in s
+    delay_s, delay_spread_s : delay added to the loop in s, and its standard deviation in s; None where it is not
+        stated: then it is not known, which is not the same as 0
     """
 
     load_f: float = 0.0
     load_spread: float = 0.0
-    delay_s: float = 0.0
+    delay_s: float | None = None
     delay_spread_s: float = 0.0
 
     def __post_init__(self) -> None:
         for name in ("load_f", "load_spread", "delay_s", "delay_spread_s"):
             value = getattr(self, name)
-            if not (math.isfinite(value) and value >= 0):
+            if value is not None and not (math.isfinite(value) and value >= 0):
                 raise DesignError(f"the bench's {name} must be 0 or more, but is {value:g}")
 
 
@@ -174,9 +175,7 @@ class Roots:
         )
 
 
-def filled_spreads(
-    stated: Mapping[str, float], present: Iterable[str]
-) -> tuple[dict[str, float], tuple[str, ...]]:
+def filled_spreads(stated: Mapping[str, float], present: Iterable[str]) -> tuple[dict[str, float], tuple[str, ...]]:
     """The stated spreads with the default for the rest, and the names of the rest."""
     spreads = dict.fromkeys(present, DEFAULT_SPREAD) | dict(stated)
     return spreads, tuple(name for name in spreads if name not in stated)

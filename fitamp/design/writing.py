@@ -94,7 +94,7 @@ def _bench(design: Design) -> Iterator[str]:
     bench = design.bench
     if bench.load_f:
         yield _entry("load", bench.load_f, "F", bench.load_spread or None)
-    if bench.delay_s or bench.delay_spread_s:
+    if bench.delay_s is not None:
         spread = f', spread = "{si_exact(bench.delay_spread_s, "s")}"' if bench.delay_spread_s else ""
         yield f'delay = {{ value = "{si_exact(bench.delay_s, "s")}"{spread} }}'
 

@@ -11,7 +11,7 @@ from fitamp.fitting.result import (
     ZeroPlace,
     ZeroSeen,
 )
-from fitamp.fitting.two_pole import DelayPrior, FarPolePrior
+from fitamp.fitting.two_pole import DelayPrior, FarPolePrior, Pole2Prior
 
 __all__ = [
     "MIN_POINTS",
@@ -21,6 +21,7 @@ __all__ = [
     "FittedMargins",
     "FittedParameters",
     "LoopFit",
+    "Pole2Prior",
     "Root",
     "WarningCode",
     "ZeroPlace",

@@ -14,6 +14,8 @@ __all__ = ["Adequacy", "judge"]
 # Both statistics are about standard normal for a right model; 4.5 keeps false alarms below one in a few thousand
 # sweeps, the noise having been estimated from the same points.
 ALARM = 4.5
+# Relative scatter below which a sweep was computed, not measured.
+COMPUTED = 1e-9
 # Residuals below this share of the drive are arithmetic, and arithmetic has patterns of its own.
 ROUNDING = 1e-12
 
@@ -31,11 +33,12 @@ class Adequacy:
     level: float
     structure: float
     inflation: float
+    noise_too_large: bool
 
     @property
     def adequate(self) -> bool:
-        """Whether neither statistic raises the alarm."""
-        return self.level < ALARM and self.structure < ALARM
+        """Whether neither statistic raises the alarm; a level far too low means that the noise is overestimated."""
+        return self.level < ALARM and self.structure < ALARM and not self.noise_too_large
 
     @property
     def sentence(self) -> str:
@@ -47,6 +50,8 @@ class Adequacy:
             seen.append("follow a pattern along frequency")
         if self.level >= ALARM:
             seen.append(f"are {np.sqrt(self.reduced_chi_square):.2g} times as large as the scatter allows")
+        if self.noise_too_large:
+            seen.append("are far smaller than the scatter from point to point, as of a sweep too coarse for its shape")
         return f"the residuals {' and '.join(seen)}"
 
 
@@ -71,7 +76,14 @@ def judge(solution: Solution) -> Adequacy:
     inflation = 1.0
     if level >= ALARM or structure >= ALARM:
         inflation = max(chi, 1.0) * max(1 + 2 * float(_correlations(residuals, count // 4).clip(0).sum()), 1.0)
-    return Adequacy(reduced_chi_square=chi, level=float(level), structure=structure, inflation=inflation)
+    return Adequacy(
+        reduced_chi_square=chi,
+        level=float(level),
+        structure=structure,
+        inflation=inflation,
+        # Without noise there is only rounding, of which second differences make too much.
+        noise_too_large=level <= -ALARM and solution.noise.relative > COMPUTED,
+    )
 
 
 def _correlations(residuals: ComplexArray, lags: int) -> np.ndarray:

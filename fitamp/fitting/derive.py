@@ -8,7 +8,7 @@ from collections.abc import Callable
 import numpy as np
 
 from fitamp.arrays import FloatArray, frozen_float
-from fitamp.estimate import Estimate
+from fitamp.estimate import Estimate, Known
 from fitamp.fitting.adequacy import Adequacy
 from fitamp.fitting.intervals import (
     Profile,
@@ -29,6 +29,8 @@ __all__ = ["fitted_margins", "fitted_parameters", "fitted_roots"]
 # Above this standard deviation of a logarithm the likelihood is no longer near-quadratic and is profiled.
 QUADRATIC_LN = 0.15
 LN_Q, LN_B, ZERO = 1, 2, 3
+# An error no smaller than this share of the prior's is the prior, not a measurement.
+HANDED_BACK = 0.5
 
 
 def fitted_parameters(solution: Solution, sweep: Sweep, adequacy: Adequacy, quantile: float) -> FittedParameters:
@@ -61,6 +63,8 @@ def fitted_parameters(solution: Solution, sweep: Sweep, adequacy: Adequacy, quan
         second = estimate_by_profile(lambda v: _pole_distance(model, v, 1), solution, profiled(LN_B), rising=False)
     else:
         second = curved(lambda v: _pole_distance(model, v, 1), positive=True)
+    if model.pole2 is not None and deviations[LN_B] > HANDED_BACK * model.pole2.ln_sd:
+        second = Estimate(value=None, stderr=None, ci95=second.ci95, known=Known.UNDETERMINED)
     # A delay and a far-out zero act alike to first order: with a lag that nothing else holds, curvature is no guide.
     unbounded_lag = math.inf in {model.delay.sd_s, model.far_pole.sd_s}
     if deviations[LN_B] > QUADRATIC_LN or unbounded_lag:

@@ -13,7 +13,7 @@ from fitamp.fitting.intervals import RISE_95, estimate_by_curvature, estimate_by
 from fitamp.fitting.result import LoopFit
 from fitamp.fitting.search import Search, lifted
 from fitamp.fitting.statements import place_of_zero, warnings_of
-from fitamp.fitting.two_pole import DelayPrior, FarPolePrior, Solution, solution_at
+from fitamp.fitting.two_pole import DelayPrior, FarPolePrior, Pole2Prior, Solution, solution_at
 from fitamp.sweep import NoiseLevels, Sweep
 from fitamp.transfer import Transfer
 
@@ -23,6 +23,10 @@ __all__ = ["MIN_POINTS", "fit_sweep"]
 MIN_POINTS = 12
 # A fit whose residuals are this large against the response does not describe the sweep at all.
 UNLIKE_LOOP = 0.3
+# Relative scatter beyond which a sweep is too coarse or too noisy to hold a shape.
+HOPELESS_SCATTER = 0.5
+# A loop gain whose largest magnitude is so many times that at DC (a resonance is allowed) has no two poles and a zero.
+RISES = 1 / 30
 # So many standard errors from 0 the misfit at 0 is large too, though a quartic valley makes it a quarter of what the
 # curvature promises.
 CURVED_SIGMA = 10.0
@@ -34,6 +38,7 @@ def fit_sweep(
     noise: NoiseLevels | None = None,
     far_pole: FarPolePrior | None = None,
     delay: DelayPrior | None = None,
+    pole2: Pole2Prior | None = None,
     known: Transfer | None = None,
 ) -> LoopFit:
     """Fit two poles and one zero to a loop-gain sweep.
@@ -48,6 +53,9 @@ def fit_sweep(
         What is known of a third pole's time and of the path delay. Without them both are taken as 0 unless the sweep
         cannot be described so and can with one of them free; the half plane of the zero is stated only as far as it
         holds whatever they are.
+    pole2
+        Rough knowledge of pole 2. It chooses between a pole 2 and a doublet that only looks like one; what comes from
+        it alone is not called measured.
     known
         A factor of the chip's loop gain known beforehand (a mirror pole-zero pair, say); its DC gain must be 1. Margins
         include it, poles and zeros do not.
@@ -71,7 +79,7 @@ def fit_sweep(
     any_lag = None
     # A start that overflows loses by its chi-square; that is no news.
     with np.errstate(over="ignore", invalid="ignore", divide="ignore"):
-        search = Search(sweep=sweep, noise=noise, known=known)
+        search = Search(sweep=sweep, noise=noise, known=known, delay_s=delay.mean_s if delay else 0.0, pole2=pole2)
         if lag_is_known:
             solution = search.best(far_pole or FarPolePrior(), delay or DelayPrior())
         else:
@@ -102,7 +110,9 @@ def fit_sweep(
         zeros=zeros,
         margins=margins,
         adequacy=adequacy,
-        warnings=warnings_of(sweep, parameters, margins, adequacy, None if lag_is_known else strict),
+        warnings=warnings_of(
+            sweep, parameters, margins, adequacy, None if lag_is_known else strict, residuals=solution.residuals
+        ),
         solution=solution,
         quantile=quantile,
     )
@@ -148,6 +158,17 @@ def _check_likeness(sweep: Sweep, solution: Solution) -> None:
     fitted = solution.model.gain(solution.values, sweep.freq_hz)
     closed, closed_fit = sweep.gain / (1 + sweep.gain), fitted / (1 + fitted)
     miss = float(np.median(np.abs(closed - closed_fit) / np.maximum(np.abs(closed), 1e-12)))
+    g, q, *_ = solution.model.physical(solution.values)
+    if g < RISES * q * float(np.abs(sweep.gain).max()):
+        raise FitError(
+            f"{sweep.origin.file}: the magnitude rises from DC, as no loop gain of this kind does; check that the "
+            "columns hold loop gain"
+        )
+    if solution.noise.relative > HOPELESS_SCATTER:
+        raise FitError(
+            f"{sweep.origin.file}: from point to point the loop gain scatters by {solution.noise.relative:.0%}, "
+            "which is no noise to fit through; take a denser or quieter sweep, and check the columns"
+        )
     if not (solution.optimum.converged and miss < UNLIKE_LOOP):
         raise FitError(
             f"{sweep.origin.file}: two poles and a zero do not describe this sweep (typical miss {miss:.0%} of the "

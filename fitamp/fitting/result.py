@@ -42,6 +42,11 @@ class WarningCode(StrEnum):
     LAG_FITTED = "lag-fitted"
     CROSSOVER_OUTSIDE_BAND = "crossover-outside-band"
     NO_CROSSOVER = "no-crossover"
+    OUTLYING_POINTS = "outlying-points"
+    DELAY_NOT_STATED = "delay-not-stated"
+    DELAY_CONTRADICTED = "delay-contradicted"
+    FAR_FROM_DESIGN = "far-from-design"
+    PRODUCT_NEGATIVE = "product-negative"
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -173,6 +178,22 @@ class LoopFit:
         return rows
 
 
+# What each quantity is called.
+LABELS = {
+    "dc_gain": "T(0)",
+    "gain_bandwidth_hz": "gain-bandwidth",
+    "pole1_hz": "pole 1",
+    "pole2_hz": "pole 2",
+    "zero_time_s": "zero time τz",
+    "delay_s": "path delay",
+    "far_pole_s": "third pole time",
+    "zero_pole2_split_s": "τz − 1/pole 2",
+    "crossover_hz": "crossover",
+    "phase_margin_deg": "phase margin",
+    "gain_margin_db": "gain margin",
+    "overshoot": "overshoot",
+    "settling_s": "settling to 1 %",
+}
 # How each quantity is written: unit by the end of its name.
 _UNIT_BY_SUFFIX = {"_hz": "Hz", "_s": "s", "_deg": "°", "_db": "dB", "_f": "F", "_ohm": "Ω"}
 

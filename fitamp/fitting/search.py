@@ -9,8 +9,8 @@ import numpy as np
 from fitamp.arrays import FloatArray
 from fitamp.errors import FitError
 from fitamp.fitting.adequacy import judge
-from fitamp.fitting.start import Start, starts
-from fitamp.fitting.two_pole import DelayPrior, FarPolePrior, Solution, TwoPole, solution_at, solve
+from fitamp.fitting.start import Start, excess_delay, starts
+from fitamp.fitting.two_pole import DelayPrior, FarPolePrior, Pole2Prior, Solution, TwoPole, solution_at, solve
 from fitamp.noise import estimate_noise
 from fitamp.sweep import NoiseLevels, Sweep
 from fitamp.transfer import Transfer
@@ -28,6 +28,10 @@ NEGATIVE_LAG_SIGMA = 3.0
 UNSEEN_LN = 10.0
 # Difference in chi-square that says nothing.
 FREE_OF_CHARGE = 0.1
+# A delay that turns the top of the band by less than this part of a turn needs no start of its own; one so many
+# standard deviations from what is expected is not looked for.
+VISIBLE_TURN = 0.02
+REACH_OF_PRIOR = 5.0
 # Loop gain, or its inverse, that no loop has.
 HUGE_GAIN = 1e20
 LN_Q, LN_B = 1, 2
@@ -37,15 +41,38 @@ FREE_FAR_POLE, NO_FAR_POLE = FarPolePrior(sd_s=np.inf), FarPolePrior()
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Search:
-    """Searches solutions for one sweep; `noise` None means that it is estimated along the way."""
+    """Searches solutions for one sweep; `noise` None means that it is estimated along the way.
+
+    delay_s : path delay that is expected, by which the first starts are turned back
+    """
 
     sweep: Sweep
     noise: NoiseLevels | None
     known: Transfer | None
+    delay_s: float = 0.0
+    pole2: Pole2Prior | None = None
     guesses: tuple[Start, ...] = field(init=False)
 
     def __post_init__(self) -> None:
-        object.__setattr__(self, "guesses", starts(self.sweep))
+        object.__setattr__(self, "guesses", starts(self._bare(), self.delay_s))
+
+    def _bare(self) -> Sweep:
+        """The sweep without what is known."""
+        if self.known is None:
+            return self.sweep
+        gain = self.sweep.gain / self.known.evaluate(self.sweep.freq_hz)
+        return Sweep(freq_hz=self.sweep.freq_hz, gain=gain, origin=self.sweep.origin)
+
+    def _guesses_for(self, delay: DelayPrior) -> tuple[Start, ...]:
+        """The first starts, and where the delay is open also those with the delay that the phase shows."""
+        if not delay.sd_s:
+            return self.guesses
+        bare = self._bare()
+        seen_s = excess_delay(bare)
+        offset_s = abs(seen_s - self.delay_s)
+        if offset_s * self.sweep.f_max_hz < VISIBLE_TURN or offset_s > REACH_OF_PRIOR * delay.sd_s:
+            return self.guesses
+        return (*self.guesses, *starts(bare, seen_s), *starts(bare, (seen_s + self.delay_s) / 2))
 
     def best(
         self, far_pole: FarPolePrior, delay: DelayPrior, *, also: Solution | None = None, elsewhere: bool = True
@@ -57,12 +84,19 @@ class Search:
         FitError
             When no start converges.
         """
-        model = TwoPole(time_s=self._time_s(), known=self.known, far_pole=far_pole, delay=delay)
+        model = TwoPole(time_s=self._time_s(), known=self.known, far_pole=far_pole, delay=delay, pole2=self.pole2)
         vectors = [
-            model.vector(g=guess.g, q=guess.q, b=guess.b, zero_time_s=guess.zero_time_s, far_pole_s=guess.far_pole_s)
-            for guess in self.guesses
+            model.vector(
+                g=guess.g,
+                q=guess.q,
+                b=guess.b,
+                zero_time_s=guess.zero_time_s,
+                far_pole_s=guess.far_pole_s,
+                delay_s=guess.delay_s,
+            )
+            for guess in (self._guesses_for(delay) if elsewhere else ())
             # A third pole in the start is of use only where the model has room for it.
-            if elsewhere and (not guess.far_pole_s or far_pole.sd_s)
+            if not guess.far_pole_s or far_pole.sd_s
         ]
         if also is not None:
             vectors.insert(0, lifted(also, model))

@@ -8,31 +8,50 @@ poles of T. (Vector fitting: B. Gustavsen and A. Semlyen, IEEE Trans. Power Deli
 from __future__ import annotations
 
 import warnings
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from fitamp.arrays import ComplexArray, FloatArray
 from fitamp.sweep import Sweep
 
-__all__ = ["Start", "starts"]
+__all__ = ["Start", "excess_delay", "starts"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Start:
-    """A guess of the loop: g = T(0)/a1 (1/s), q = 1/a1 (1/s), b = a2/a1 (s), zero time (s), far-pole time a3/a2 (s)."""
+    """A guess of the loop: g = T(0)/a1, q = 1/a1 (1/s), b = a2/a1, zero time, far-pole time a3/a2, delay (s)."""
 
     g: float
     q: float
     b: float
     zero_time_s: float
     far_pole_s: float = 0.0
+    delay_s: float = 0.0
 
 
-def starts(sweep: Sweep) -> tuple[Start, ...]:
-    """Candidate starting values, the likelier first; whoever fits keeps the best end."""
+def starts(sweep: Sweep, delay_s: float = 0.0) -> tuple[Start, ...]:
+    """Candidate starting values with a path delay of `delay_s` taken off, the likelier first."""
+    if delay_s:
+        turned_back = sweep.gain * np.exp(2j * np.pi * sweep.freq_hz * delay_s)
+        sweep = Sweep(freq_hz=sweep.freq_hz, gain=turned_back, origin=sweep.origin)
     found = [guess for count in (2, 3) for guess in _from_vector_fit(sweep, count)]
-    return (*found, _from_straight_lines(sweep))
+    return tuple(replace(guess, delay_s=delay_s) for guess in (*found, _from_straight_lines(sweep)))
+
+
+def excess_delay(sweep: Sweep) -> float:
+    """Delay that the phase shows beyond what the magnitude asks for, in seconds, 0 or more; a rough guess.
+
+    A minimum-phase response turns by 90° for each decade per decade of its slope (H. W. Bode, Network Analysis and
+    Feedback Amplifier Design, 1945). What is left falls in proportion to frequency for a delay.
+    """
+    log_f = np.log(sweep.freq_hz)
+    slope = np.gradient(np.log(np.maximum(np.abs(sweep.gain), 1e-300)), log_f)
+    width = max(len(slope) // 12, 1)
+    smooth = np.convolve(np.pad(slope, width, mode="edge"), np.full(2 * width + 1, 1 / (2 * width + 1)), mode="valid")
+    excess = np.unwrap(np.angle(sweep.gain)) - np.pi / 2 * smooth
+    delay_s = -float(excess @ sweep.freq_hz) / (2 * np.pi * float(sweep.freq_hz @ sweep.freq_hz))
+    return max(delay_s, 0.0)
 
 
 def _from_straight_lines(sweep: Sweep) -> Start:

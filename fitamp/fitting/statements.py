@@ -4,6 +4,9 @@ from __future__ import annotations
 
 import math
 
+import numpy as np
+
+from fitamp.arrays import ComplexArray
 from fitamp.estimate import Estimate, Known
 from fitamp.fitting.adequacy import Adequacy
 from fitamp.fitting.result import (
@@ -23,6 +26,8 @@ __all__ = ["place_of_zero", "warnings_of"]
 SMALL_AGAINST_REST = 0.1
 # An unknown lag is worth a word when it makes the zero time this many times less certain.
 LAG_MATTERS = 3.0
+# Length of a complex residual in standard deviations per component: by chance once in 600 000 points.
+OUTLYING = 5.2
 
 
 def place_of_zero(
@@ -86,6 +91,8 @@ def warnings_of(
     margins: FittedMargins,
     adequacy: Adequacy,
     with_any_lag: Estimate | None,
+    *,
+    residuals: ComplexArray,
 ) -> tuple[FitWarning, ...]:
     """Everything a reader has to know before leaning on the numbers."""
     found: list[FitWarning] = []
@@ -99,6 +106,7 @@ def warnings_of(
             f"two poles and a zero are not the whole story: {adequacy.sentence}; intervals are widened "
             f"{math.sqrt(adequacy.inflation):.2g} times and may still be too narrow",
         )
+    found.extend(_outlying(sweep, residuals))
     if parameters.pole1_hz.known is not Known.MEASURED:
         warn(
             WarningCode.POLE1_BELOW_BAND,
@@ -141,6 +149,24 @@ def warnings_of(
             f"crossover at {si(crossover_hz, 'Hz')} lies outside the band; margins are extrapolated by the model",
         )
     return tuple(found)
+
+
+def _outlying(sweep: Sweep, residuals: ComplexArray) -> list[FitWarning]:
+    """Points too far from the fit to be noise, the worst named."""
+    size = np.abs(residuals)
+    bad = np.flatnonzero(size > OUTLYING)
+    if not 0 < len(bad) <= len(size) // 20:
+        return []
+    worst = bad[np.argsort(-size[bad])][:3]
+    named = ", ".join(f"{si(float(sweep.freq_hz[i]), 'Hz')} ({size[i]:.0f} σ)" for i in worst)
+    rest = f" and {len(bad) - len(worst)} more" if len(bad) > len(worst) else ""
+    return [
+        FitWarning(
+            code=WarningCode.OUTLYING_POINTS,
+            message=f"points far off the fit at {named}{rest}: they spoil noise estimate and fit; measure them again "
+            "or leave them out",
+        )
+    ]
 
 
 def _lag_matters(plain: Estimate, with_any_lag: Estimate) -> bool:

@@ -19,7 +19,7 @@ from fitamp.fitting.leastsq import MAX_STEPS, TOLERANCE, Optimum, covariance_of,
 from fitamp.sweep import NoiseLevels, Sweep
 from fitamp.transfer import Transfer
 
-__all__ = ["DelayPrior", "FarPolePrior", "Solution", "TwoPole", "loop_equation", "solution_at", "solve"]
+__all__ = ["DelayPrior", "FarPolePrior", "Pole2Prior", "Solution", "TwoPole", "loop_equation", "solution_at", "solve"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -44,6 +44,17 @@ class DelayPrior:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class Pole2Prior:
+    """Rough knowledge of pole 2, as a2/a1 in seconds with the standard deviation of its logarithm; None knows nothing.
+
+    A zero and a pole that cancel may lie anywhere; this keeps them from being taken for the circuit's own far away.
+    """
+
+    time_s: float
+    ln_sd: float
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class TwoPole:
     """The model's fixed side: what is known, what is free, and the time by which τz, τ3 and τd are scaled.
 
@@ -54,6 +65,7 @@ class TwoPole:
     known: Transfer | None = None
     far_pole: FarPolePrior = FarPolePrior()
     delay: DelayPrior = DelayPrior()
+    pole2: Pole2Prior | None = None
 
     @property
     def names(self) -> tuple[str, ...]:
@@ -71,15 +83,22 @@ class TwoPole:
         return float(g), float(q), float(b), float(values[3] * self.time_s), float(far_pole_s), float(delay_s)
 
     def vector(
-        self, *, g: float, q: float, b: float, zero_time_s: float, far_pole_s: float | None = None
+        self,
+        *,
+        g: float,
+        q: float,
+        b: float,
+        zero_time_s: float,
+        far_pole_s: float | None = None,
+        delay_s: float | None = None,
     ) -> FloatArray:
-        """Parameter vector of SI values; τ3 (unless given) and τd, where free, start from their priors."""
+        """Parameter vector of SI values; τ3 and τd, where free and not given, start from their priors."""
         values = [np.log(g), np.log(q), np.log(b), zero_time_s / self.time_s]
         if self.far_pole.sd_s:
             expected = max(self.far_pole.intercept_s + self.far_pole.slope * zero_time_s, 0.0)
             values.append((expected if far_pole_s is None else far_pole_s) / self.time_s)
         if self.delay.sd_s:
-            values.append(self.delay.mean_s / self.time_s)
+            values.append((self.delay.mean_s if delay_s is None else delay_s) / self.time_s)
         return np.array(values)
 
     def gain(self, values: FloatArray, freq_hz: FloatArray) -> ComplexArray:
@@ -121,6 +140,11 @@ class TwoPole:
             row = np.zeros(len(values))
             row[index], row[3] = self.time_s / sd, -slope * self.time_s / sd
             residuals.append(float(row @ values - mean / sd))
+            rows.append(row)
+        if self.pole2 is not None:
+            row = np.zeros(len(values))
+            row[2] = 1 / self.pole2.ln_sd
+            residuals.append(float((values[2] - np.log(self.pole2.time_s)) / self.pole2.ln_sd))
             rows.append(row)
         return np.array(residuals), np.array(rows).reshape(len(rows), len(values))
 
@@ -172,7 +196,8 @@ def loop_equation(
     """Residuals (n,) of the loop equation in standard deviations per component, and derivatives (n, p).
 
     With drive 1 the receivers see error = 1/(1+T) and return = T/(1+T), each with its own floor, so
-    (T_meas − M)/(1 + T_meas) has the variance n_r² + |M|² n_e² + rel² |T/(1+T)|². M stays in that variance and is
+    (T_meas − M)/(1 + T_meas) has the variance n_r² + |M|² n_e² + rel² |T/(1+T)|², and ratio²/|1+T|² where the loop gain
+    has a floor of its own. M stays in that variance and is
     differentiated with it; weights frozen at the data bias the low end (errors in variables: R. Pintelon and
     J. Schoukens, System Identification: A Frequency Domain Approach).
     """
@@ -182,8 +207,10 @@ def loop_equation(
         noise.return_channel**2
         + np.abs(gain) ** 2 * noise.error_channel**2
         + noise.relative**2 * np.abs(sweep.gain / through) ** 2
+        + noise.ratio**2 / np.abs(through) ** 2
     )
-    weight = np.sqrt(2 / variance) / np.abs(through)
+    # Divided by 1 + T with its phase: where the error channel drowns, that phase is noise, and would leave a pattern.
+    weight = np.sqrt(2 / variance) / through
     residual = (sweep.gain - gain) * weight
     variance_slopes = 2 * noise.error_channel**2 * (np.conj(gain)[:, np.newaxis] * slopes).real
     derivatives = -slopes * weight[:, np.newaxis] - 0.5 * (residual / variance)[:, np.newaxis] * variance_slopes

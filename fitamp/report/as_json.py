@@ -43,6 +43,7 @@ def fit_as_dict(fit: LoopFit) -> dict[str, Any]:
             "error_channel": fit.noise.error_channel,
             "return_channel": fit.noise.return_channel,
             "relative": fit.noise.relative,
+            "ratio": fit.noise.ratio,
             "source": fit.noise.source,
         },
         "parameters": {name: _estimate(estimate) for name, estimate in fit.parameters.items()},

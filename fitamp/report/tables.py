@@ -13,7 +13,7 @@ from typing import TYPE_CHECKING
 from fitamp.comparison import Comparison, Row
 from fitamp.estimate import Estimate
 from fitamp.fitting import LoopFit
-from fitamp.fitting.result import text_of, unit_of
+from fitamp.fitting.result import LABELS, text_of, unit_of
 from fitamp.sweep import Sweep
 from fitamp.units import si, si_with_error, to_db
 
@@ -23,21 +23,6 @@ if TYPE_CHECKING:
 __all__ = ["comparison_text", "fit_text", "printable", "sweep_text"]
 
 WIDTH = 100
-LABELS = {
-    "dc_gain": "T(0)",
-    "gain_bandwidth_hz": "gain-bandwidth",
-    "pole1_hz": "pole 1",
-    "pole2_hz": "pole 2",
-    "zero_time_s": "zero time τz",
-    "delay_s": "path delay",
-    "far_pole_s": "third pole time",
-    "zero_pole2_split_s": "τz − 1/pole 2",
-    "crossover_hz": "crossover",
-    "phase_margin_deg": "phase margin",
-    "gain_margin_db": "gain margin",
-    "overshoot": "overshoot",
-    "settling_s": "settling to 1 %",
-}
 
 
 def printable(text: str) -> str:

@@ -112,7 +112,7 @@ def test_a_pole_2_four_times_too_far_out_is_not_believed() -> None:
     assert "pole 2 shows at 335.0 MHz, designed was 39.90 MHz" in verdict.reason
     assert "repeat the sweep with a known extra load" in verdict.reason
     assert verdict.zero_time_s == verdict.gm2_rz == NOT_KNOWN
-    assert advise(verdict, DESIGN, DESIGN.zero_time_s).rz_change_ohm == NOT_KNOWN
+    assert advise(verdict, DESIGN, DESIGN.zero_time_s, fit=fit, rows=()).rz_change_ohm == NOT_KNOWN
     found = parasitics(fit, DESIGN)
     assert found is not None
     assert found.load_f == NOT_KNOWN
