@@ -100,23 +100,29 @@ class ColumnChoice:
 
 
 def example_choice(meanings: Sequence[Meaning]) -> str:
-    """A choice to paste and correct, made of the columns of a file; units that the header lacks are examples."""
+    """A choice to paste and complete, made of the columns of a file, with what is left to be chosen.
+
+    A unit that the header lacks is shown as all that it may be, ``mag=2:dB-or-linear``, which `ColumnChoice.parse`
+    refuses: a guess of ours must not be pasted unread.
+    """
     places = {meaning.quantity: index for index, meaning in reversed(list(enumerate(meanings)))}
     form = next((form for form in FORMS if all(q in places for q in form)), None)
     if form is None:
         form = FORMS[1] if len(meanings) > 2 else FORMS[2]
     taken: set[int] = {places[q] for q in (Quantity.FREQUENCY, *form) if q in places}
-    items = []
+    items, unsettled = [], []
     for quantity in (Quantity.FREQUENCY, *form):
         index = places.get(quantity)
         if index is None:
             index = next((i for i in range(len(meanings)) if i not in taken), len(meanings) - 1)
             taken.add(index)
-        unit = meanings[index].unit
-        if unit not in UNITS_OF[quantity]:
-            unit = next(iter(UNITS_OF[quantity]), None)
-        items.append(f"{quantity}={_reference(meanings, index)}" + (f":{unit}" if unit else ""))
-    return f'--columns "{" ".join(items)}"'
+        unit, units = meanings[index].unit, UNITS_OF[quantity]
+        if units and unit not in units:
+            unsettled.append(quantity)
+        text = unit if unit in units else "-or-".join(units)
+        items.append(f"{quantity}={_reference(meanings, index)}" + (f":{text}" if text else ""))
+    choose = f" (choose the unit of {', '.join(unsettled)})" if unsettled else ""
+    return f'--columns "{" ".join(items)}"{choose}'
 
 
 def _reference(meanings: Sequence[Meaning], index: int) -> str:

@@ -72,6 +72,10 @@ def told_columns(file: str, header: Header, complex_columns: Sequence[int]) -> C
     remedy = f"say which columns to use, as in {example_choice(meanings)}"
     if header.line is None:
         raise SweepError(f"{file}: no header names the {len(meanings)} columns; {remedy}")
+    if header.others:
+        *first, last = map(str, header.others)
+        others = f"lines {', '.join(first)} and {last} may be headers" if first else f"line {last} may be a header"
+        remedy = f"{others} as well: keep one header, or {remedy}"
     place = f"{file}, line {header.line}"
     frequency = _the_one(place, Quantity.FREQUENCY, meanings, remedy)
     form = _form(place, meanings, remedy)
@@ -132,7 +136,7 @@ def _the_one(place: str, quantity: Quantity, meanings: Sequence[Meaning], remedy
         wanted = " or ".join([", ".join(units[:-1]), units[-1]])
         raise SweepError(
             f"{place}, column {index + 1}: {show(meaning.text)} does not say whether the {_WORDS[quantity]} is in "
-            f"{wanted}; {remedy}"
+            f"{wanted}{f' ({meaning.doubt})' if meaning.doubt else ''}; {remedy}"
         )
     index, meaning = determined[0]
     return Column(index=index, name=meaning.text, quantity=quantity, unit=meaning.unit)

@@ -19,7 +19,7 @@ from fitamp.importers.cells import MINUS, complex_from, is_complex_like, number_
 from fitamp.importers.choice import ColumnChoice
 from fitamp.importers.columns import Column, Columns, chosen_columns, told_columns
 from fitamp.importers.dialect import Block, Separator, decimal_mark, find_block, protected
-from fitamp.importers.header import find_header
+from fitamp.importers.header import find_header, is_header_row
 from fitamp.importers.points import Points, finish
 from fitamp.importers.quantity import Quantity, Unit
 from fitamp.importers.source import Source
@@ -181,6 +181,9 @@ def _convert(
         try:
             numbers.append(read(text))
         except ValueError as error:
+            if is_header_row(row, block):
+                remedy = "one sweep per file: split the file there"
+                raise SweepError(f"{file}, line {row.number}: a second header among the rows; {remedy}") from None
             raise SweepError(f"{file}, line {row.number}, {column.label}: {error}") from None
     return numbers
 

@@ -13,7 +13,7 @@ from dataclasses import dataclass
 from enum import Enum
 
 from fitamp.errors import SweepError
-from fitamp.importers.cells import MINUS, is_complex_like, is_number_like
+from fitamp.importers.cells import MINUS, is_complex_like, is_number_like, show
 from fitamp.importers.text import Line
 
 __all__ = ["Block", "Separator", "decimal_mark", "find_block", "is_comment", "split_cells", "uncommented"]
@@ -220,6 +220,11 @@ def _common_width(file: str, rows: Sequence[Line], separator: Separator) -> int:
             raise SweepError(f"{file}, line {row.number}: {error}") from error
     usual = Counter(widths).most_common(1)[0][0]
     for row, width in zip(rows, widths, strict=True):
+        if width != usual and not _count_numbers(split_cells(row.text, separator)):
+            raise SweepError(
+                f"{file}, line {row.number}: {show(row.text.strip())} stands among the rows of numbers; remove the "
+                "line, and keep one sweep per file"
+            )
         if width != usual:
             raise SweepError(
                 f"{file}, line {row.number}: {width} cell{'s' if width > 1 else ''} where other rows have {usual} "

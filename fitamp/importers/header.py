@@ -9,11 +9,11 @@ from dataclasses import dataclass, replace
 from fitamp.errors import SweepError
 from fitamp.importers.cells import is_number_like, show
 from fitamp.importers.dialect import Block, Separator, is_comment, split_cells, uncommented
-from fitamp.importers.quantity import Meaning, Quantity, Unit, meaning_of, unit_of
+from fitamp.importers.quantity import UNITS_OF, Meaning, Quantity, Unit, doubt_of, meaning_of, unit_of
 from fitamp.importers.text import Line
 from fitamp.sweep import Decision
 
-__all__ = ["Header", "find_header"]
+__all__ = ["Header", "find_header", "is_header_row"]
 
 # Cells of a units row that say "no unit".
 _NO_UNIT = frozenset({"", "-", "–", "[-]", "[1]", "(-)", "[]", "()", "v/v", "[v/v]", "(v/v)"})
@@ -25,11 +25,15 @@ _RULE = re.compile(r"[\s|+]*(?:[-=_]{3,}[\s|+]*)+")
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Header:
-    """What the columns hold, one meaning for each; `line` is None where the file has no header."""
+    """What the columns hold, one meaning for each; `line` is None where the file has no header.
+
+    `others` are lines that may be headers as well, where none of them names the columns.
+    """
 
     line: int | None
     meanings: tuple[Meaning, ...]
     decisions: tuple[Decision, ...]
+    others: tuple[int, ...] = ()
 
 
 def find_header(file: str, block: Block) -> Header:
@@ -44,8 +48,14 @@ def find_header(file: str, block: Block) -> Header:
     plain = [line for line in above if not is_comment(line.text) and not _RULE.fullmatch(line.text)]
     comments = [line for line in above if is_comment(line.text)]
     names, units = _plain_header(file, plain, block)
-    in_comment, comment_units = _commented_header(comments, block)
+    others: tuple[int, ...] = ()
     reason = "the line above the numbers"
+    if names is not None and not _speaks(names):
+        better, others = _header_farther_up(file, plain, block)
+        if better is not None:
+            reason = f"the one line that names the columns; line {names[0]} under it names none"
+            names, units = better
+    in_comment, comment_units = _commented_header(comments, block)
     if names and in_comment and units is None and in_comment[0] > names[0] and _is_units_row(in_comment[1]):
         units = in_comment
     elif in_comment is not None and (names is None or in_comment[0] > names[0]):
@@ -60,7 +70,16 @@ def find_header(file: str, block: Block) -> Header:
         meanings = _with_units(file, meanings, units)
         under = "the line under the header has only units"
         decisions.append(Decision(topic="units row", choice=f"line {units[0]}", reason=under))
-    return Header(line=names[0], meanings=meanings, decisions=tuple(decisions))
+    return Header(line=names[0], meanings=meanings, decisions=tuple(decisions), others=others)
+
+
+def is_header_row(row: Line, block: Block) -> bool:
+    """Whether a line among the rows of numbers is a header: words only, one of which names a frequency."""
+    try:
+        cells = split_cells(row.text, block.separator)
+    except ValueError:
+        return False
+    return _is_header(cells) and Quantity.FREQUENCY in {meaning_of(cell).quantity for cell in cells}
 
 
 _Cells = tuple[int, tuple[str, ...]]
@@ -78,6 +97,41 @@ def _plain_header(file: str, plain: Sequence[Line], block: Block) -> tuple[_Cell
         if over is not None and _is_header(over):
             return (plain[-2].number, over), (plain[-1].number, last)
     return ((plain[-1].number, last), None) if _is_header(last) else (None, None)
+
+
+def _speaks(names: _Cells) -> bool:
+    """Whether any cell of a header names what its column holds."""
+    return any(meaning_of(cell).quantity is not None for cell in names[1])
+
+
+def _header_farther_up(
+    file: str, plain: Sequence[Line], block: Block
+) -> tuple[tuple[_Cells, _Cells | None] | None, tuple[int, ...]]:
+    """The one header with units above a line that names nothing, and, without such, the lines that may be headers.
+
+    Only one that names frequency and gain and their units without doubt is taken, because it might be a preamble.
+    """
+    complete, others = [], []
+    for end in range(1, len(plain)):
+        cells = _cells_of(plain[end - 1].text, block)
+        if cells is None or not _is_header(cells):
+            continue
+        others.append(plain[end - 1].number)
+        names, units = _plain_header(file, plain[:end], block)
+        if names is not None and _is_complete(file, names, units):
+            complete.append((names, units))
+    if len(complete) == 1:
+        return complete[0], ()
+    return None, tuple(others)
+
+
+def _is_complete(file: str, names: _Cells, units: _Cells | None) -> bool:
+    meanings = tuple(map(meaning_of, names[1]))
+    if units is not None:
+        meanings = _with_units(file, meanings, units)
+    known = {m.quantity for m in meanings if m.quantity and not m.weak and (m.unit or not UNITS_OF[m.quantity])}
+    pairs = ({Quantity.REAL, Quantity.IMAGINARY}, {Quantity.MAGNITUDE, Quantity.PHASE})
+    return Quantity.FREQUENCY in known and any(pair <= known for pair in pairs)
 
 
 def _refuse_numbers(file: str, line: Line, block: Block, *, nearest: bool) -> None:
@@ -129,7 +183,8 @@ def _is_header(cells: Sequence[str]) -> bool:
 def _is_units_row(cells: Sequence[str]) -> bool:
     known = [unit_of(cell) for cell in cells]
     return any(known) and all(
-        unit is not None or cell.strip().lower() in _NO_UNIT for unit, cell in zip(known, cells, strict=True)
+        unit is not None or cell.strip().lower() in _NO_UNIT or doubt_of(cell)
+        for unit, cell in zip(known, cells, strict=True)
     )
 
 
@@ -165,7 +220,7 @@ def _with_units(file: str, meanings: Sequence[Meaning], units: _Cells) -> tuple[
     for column, (meaning, cell) in enumerate(zip(meanings, units[1], strict=True), start=1):
         unit: Unit | None = unit_of(cell)
         if unit is None:
-            merged.append(meaning)
+            merged.append(replace(meaning, doubt=doubt_of(cell) or meaning.doubt))
             continue
         if meaning.unit is not None and meaning.unit is not unit:
             raise SweepError(

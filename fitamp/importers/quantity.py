@@ -11,7 +11,7 @@ import unicodedata
 from dataclasses import dataclass, replace
 from enum import StrEnum
 
-__all__ = ["UNITS_OF", "Meaning", "Quantity", "Unit", "meaning_of", "unit_of"]
+__all__ = ["UNITS_OF", "Meaning", "Quantity", "Unit", "doubt_of", "meaning_of", "unit_of"]
 
 
 class Quantity(StrEnum):
@@ -57,8 +57,10 @@ _SPELLINGS = {
     Unit.DB: "db db20 decibel decibels",
     Unit.LINEAR: "linear lin v/v ratio",
     Unit.DEGREE: "deg degs degree degrees °",
-    Unit.RADIAN: "rad rads radian radians",
+    Unit.RADIAN: "rad rads radian radians bogenmaß",
 }
+# Units that say one thing here and another there.
+_DOUBTFUL = frozenset({"grad", "grads"})
 
 
 def _word_set(words: str) -> frozenset[str]:
@@ -104,13 +106,15 @@ _SCALED = re.compile(r"[(\[]\s*(?!V/V\s*[)\]])(?:%|[mμunkp]?[VA](?:/[mμunkp]?[
 class Meaning:
     """One header cell: its text, what it names, its unit; None for what it does not say.
 
-    `weak` where only the unit speaks, under a name that is not understood ("RBW (Hz)").
+    `weak` where only the unit speaks, under a name that is not understood ("RBW (Hz)"); `doubt` says why a unit
+    that is there does not count.
     """
 
     text: str
     quantity: Quantity | None = None
     unit: Unit | None = None
     weak: bool = False
+    doubt: str = ""
 
     def with_unit(self, unit: Unit) -> Meaning:
         """Return this meaning with the unit from a row of its own; the unit may decide the quantity, too."""
@@ -131,9 +135,20 @@ def unit_of(text: str) -> Unit | None:
     return _UNIT_BY_SPELLING.get(cell.lower())
 
 
+def doubt_of(unit: str) -> str:
+    """Why a unit, bare or in brackets, is not taken though it is one; empty where there is nothing to say."""
+    word = unit.strip().strip("()[]{}<>").strip()
+    return f"{word} may be degrees or gradians, 400 to the turn" if word.lower() in _DOUBTFUL else ""
+
+
 def meaning_of(text: str) -> Meaning:
     """Read a header cell such as ``Frequency (Hz)``, ``f / kHz``, ``mag_db``, ``Re(T)``, ``phase [rad]``."""
-    cell = text.strip()
+    meaning = _meaning(text.strip())
+    doubt = doubt_of(re.split(r"[\s_/,:;=-]+", meaning.text)[-1]) if meaning.unit is None else ""
+    return replace(meaning, doubt=doubt) if doubt else meaning
+
+
+def _meaning(cell: str) -> Meaning:
     name, unit = _split_unit(_normalised(cell))
     words = _words(name)
     if any(word in _SIDE_WORDS for word in words):

@@ -45,10 +45,12 @@ def load_source(path: str | os.PathLike[str], *, max_bytes: int = MAX_BYTES) -> 
     Raises
     ------
     SweepError
-        For a path that is missing, no regular file, unreadable, empty, larger than `max_bytes`, or of a kind
-        that is known not to be text.
+        For a name that is empty, a path that is missing, no regular file, unreadable, empty, larger than `max_bytes`,
+        or of a kind that is known not to be text.
     """
     file = os.fspath(path)
+    if not file.strip():
+        raise SweepError("the name of the sweep file is empty; name one CSV or Touchstone file")
     try:
         data = _read(file, Path(file), max_bytes)
     except (OSError, ValueError) as error:

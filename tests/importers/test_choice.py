@@ -2,11 +2,15 @@
 
 from __future__ import annotations
 
+import re
+
 import pytest
 
 from fitamp.errors import UsageError
 from fitamp.importers.choice import ColumnChoice, ColumnRef, example_choice
 from fitamp.importers.quantity import Quantity, Unit, meaning_of
+
+ANY_F = "Hz-or-kHz-or-MHz-or-GHz-or-rad/s"
 
 
 @pytest.mark.parametrize(
@@ -65,14 +69,20 @@ def test_choice_built_by_hand_is_checked_as_well() -> None:
 @pytest.mark.parametrize(
     ("header", "expected"),
     [
-        (["Frequency", "Gain", "Phase"], "f='Frequency':Hz mag='Gain':dB phase='Phase':deg"),
-        (["", "", ""], "f=1:Hz mag=2:dB phase=3:deg"),
-        (["a", "b"], "f='a':Hz complex='b'"),
+        (["Frequency", "Gain", "Phase"], f"f='Frequency':{ANY_F} mag='Gain':dB-or-linear phase='Phase':deg-or-rad"),
+        (["", "", ""], f"f=1:{ANY_F} mag=2:dB-or-linear phase=3:deg-or-rad"),
+        (["a", "b"], f"f='a':{ANY_F} complex='b'"),
         (["f (kHz)", "x", "Re", "Im"], "f='f (kHz)':kHz re='Re' im='Im'"),
-        (["it's f", "gain", "gain", "phase_rad"], "f=1:Hz mag=2:dB phase='phase_rad':rad"),
+        (["it's f", "gain", "gain", "phase_rad"], f"f=1:{ANY_F} mag=2:dB-or-linear phase='phase_rad':rad"),
     ],
 )
-def test_example_uses_the_file_s_columns_and_can_be_parsed(header: list[str], expected: str) -> None:
+def test_example_uses_the_file_s_columns_and_leaves_no_guess_to_paste(header: list[str], expected: str) -> None:
     example = example_choice([meaning_of(text) for text in header])
-    assert example == f'--columns "{expected}"'
-    assert ColumnChoice.parse(expected).columns
+    open_units = [part.split("=")[0] for part in expected.split() if "-or-" in part]
+    hint = f" (choose the unit of {', '.join(open_units)})" if open_units else ""
+    assert example == f'--columns "{expected}"{hint}'
+    if open_units:
+        with pytest.raises(UsageError, match=r"-or-.*; expected one of "):
+            ColumnChoice.parse(expected)
+    settled = re.sub("-or-[^ ]*", "", expected)
+    assert ColumnChoice.parse(settled).columns

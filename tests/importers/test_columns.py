@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import pytest
 
 from fitamp.errors import SweepError
@@ -47,6 +49,24 @@ def test_complex_column_is_told_by_its_cells() -> None:
         told_columns("a.csv", header("freq_hz,complex gain"), [])
     with pytest.raises(SweepError, match="names a complex column and parts of a gain as well; say which"):
         told_columns("a.csv", header("freq_hz,T,re,im"), [1])
+
+
+def test_refusal_names_the_other_lines_that_may_be_headers() -> None:
+    words = Header(line=3, meanings=tuple(map(meaning_of, ["one", "two"])), decisions=(), others=(1, 2))
+    with pytest.raises(
+        SweepError, match=r"line 3: .*; lines 1 and 2 may be headers as well: keep one header, or say w"
+    ):
+        told_columns("a.csv", words, [])
+    with pytest.raises(SweepError, match="; line 1 may be a header as well: keep one header, or say which columns"):
+        told_columns("a.csv", replace(words, others=(1,)), [])
+
+
+def test_unit_that_is_in_doubt_is_refused_with_the_reason() -> None:
+    whole = (
+        r"'Phase \(Grad\)' does not say whether the phase is in deg or rad \(Grad may be degrees or gradians, 400 to"
+    )
+    with pytest.raises(SweepError, match=whole):
+        told_columns("a.csv", header("freq_hz,mag_db,Phase (Grad)"), [])
 
 
 def test_choice_is_looked_up_by_number_and_name() -> None:

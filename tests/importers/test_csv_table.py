@@ -10,7 +10,7 @@ import pytest
 from bench_tables import FREQ_HZ, FREQ_UNITS, GAIN, RTOL, cells, file_of, table
 from numpy.testing import assert_allclose
 
-from fitamp.errors import SweepError
+from fitamp.errors import SweepError, UsageError
 from fitamp.importers import read_sweep
 from fitamp.sweep import Sign, Sweep
 
@@ -183,7 +183,7 @@ def test_columns_option_decides_what_the_header_does_not(tmp_path: Path) -> None
     assert_same(read_sweep(bare, columns="f=1:Hz mag=2:dB phase=3:deg"))
 
 
-def test_example_in_a_refusal_can_be_pasted(tmp_path: Path) -> None:
+def test_example_in_a_refusal_can_be_pasted_once_the_units_are_chosen(tmp_path: Path) -> None:
     path = file_of(tmp_path, table(["Frequency", "Gain of loop", "Phase"], cells("dB deg"), separator=","))
     with pytest.raises(
         SweepError, match="does not say whether the frequency is in Hz, kHz, MHz, GHz or rad/s"
@@ -191,8 +191,13 @@ def test_example_in_a_refusal_can_be_pasted(tmp_path: Path) -> None:
         read_sweep(path)
     pasted = re.search(r'--columns "(.*)"', str(caught.value))
     assert pasted is not None
-    assert pasted[1] == "f='Frequency':Hz mag='Gain of loop':dB phase='Phase':deg"
-    assert_same(read_sweep(path, columns=pasted[1]))
+    with pytest.raises(
+        UsageError, match="gives f the unit 'Hz-or-kHz-or-MHz-or-GHz-or-rad/s'; expected one of Hz, kHz"
+    ):
+        read_sweep(path, columns=pasted[1])
+    chosen = re.sub("-or-[^ ]*", "", pasted[1])
+    assert chosen == "f='Frequency':Hz mag='Gain of loop':dB phase='Phase':deg"
+    assert_same(read_sweep(path, columns=chosen))
 
 
 GOOD = "freq_hz,mag_db,phase_deg\n10,60,-1\n20,60,-2\n40,59,-4\n"
@@ -211,8 +216,10 @@ BROKEN = {
     "short first row": (GOOD.replace("10,60,-1", "10,60"), "line 2: a row of numbers apart from the 3 columns below"),
     "short row": (GOOD + "80,1\n", "line 5: 2 cells where other rows have 3 (separator: comma); complete the row"),
     "long row": (GOOD + "80,1,2,3\n", "line 5: 4 cells where other rows have 3 (separator: comma)"),
-    "last line": (GOOD + "END\n", "line 5: 1 cell where other rows have 3"),
-    "second table": (GOOD + GOOD, "line 5, column 1 ('freq_hz'): 'freq_hz' is not a number"),
+    "last line": (GOOD + "END\n", "line 5: 'END' stands among the rows of numbers; remove the line, and keep one"),
+    "second table": (GOOD + GOOD, "line 5: a second header among the rows; one sweep per file: split the file there"),
+    "wider table": (GOOD + "f,re,im,n\n1,2,3,4\n", "line 5: 'f,re,im,n' stands among the rows of numbers; remove the"),
+    "words": (GOOD + "a,b,c\n", "line 5, column 1 ('freq_hz'): 'a' is not a number; measure the point again"),
     "open quote": (GOOD + '80,"50,-3\n', "line 5: a quote is not closed on this line; close it"),
     "open quote above": (GOOD.replace("10,60", '10,"60'), "line 2: a quote is not closed on this line; close it"),
     "repeated frequency": (GOOD + "40,58,-5\n", "line 5: frequency 40 Hz is there already on line 4; keep one"),

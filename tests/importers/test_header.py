@@ -46,6 +46,46 @@ def test_header_is_found(above: str, line: int) -> None:
     assert ("header", f"line {line}") in [(d.topic, d.choice) for d in header.decisions]
 
 
+TITLES = "f,Gain,Phase\nkHz,dB,deg\n"
+
+
+@pytest.mark.parametrize(
+    ("above", "line"),
+    [
+        (TITLES + "one,two,three\n", 1),
+        ("f (kHz),mag_db,phase_deg\none,two,three\n", 1),
+        ("Lab,x,y\n\n" + TITLES + "one,two,three\n", 3),
+    ],
+)
+def test_header_with_units_is_taken_over_a_line_that_names_nothing(above: str, line: int) -> None:
+    header = header_of(above + ROWS)
+    assert header.line == line
+    assert [(meaning.quantity, meaning.unit) for meaning in header.meanings] == NAMED
+    assert header.decisions[0].reason.startswith("the one line that names the columns; line ")
+
+
+@pytest.mark.parametrize(
+    ("above", "line", "others"),
+    [
+        ("f,Gain,Phase\none,two,three\n", 2, (1,)),  # no units: it may be a preamble
+        (TITLES + "f_hz,mag_db,phase_deg\none,two,three\n", 4, (1, 2, 3)),  # two that contradict each other
+        (TITLES + "f (kHz),x,y\n", 3, ()),  # the last line names something
+    ],
+)
+def test_header_in_doubt_stays_the_last_line_and_the_others_are_kept(
+    above: str, line: int, others: tuple[int, ...]
+) -> None:
+    header = header_of(above + ROWS)
+    assert (header.line, header.others) == (line, others)
+
+
+def test_unit_of_two_meanings_in_a_units_row_leaves_a_doubt() -> None:
+    header = header_of("Frequency;Gain;Phase\nkHz;dB;Grad\n" + ROWS.replace(",", ";"))
+    assert header.line == 1
+    assert [meaning.unit for meaning in header.meanings] == [Unit.KHZ, Unit.DB, None]
+    assert header.meanings[2].doubt == "Grad may be degrees or gradians, 400 to the turn"
+
+
 def test_table_without_header_has_none() -> None:
     for text in (ROWS, "some title\n" + ROWS, "# just a remark\n" + ROWS):
         header = header_of(text)

@@ -61,6 +61,8 @@ SPELLINGS: dict[str, tuple[Quantity | None, Unit | None]] = {
     "Loop gain phase (deg)": (PH, DEG),
     "Loop gain (deg)": (PH, DEG),
     "PhaseDeg": (PH, DEG),
+    "Phase (Bogenmaß)": (PH, RAD),
+    "Phase (Grad)": (PH, None),
     "phase (Hz)": (None, None),
     "re": (RE, None),
     "Real part": (RE, None),
@@ -94,9 +96,18 @@ def test_header_cell_means_what_it_says_and_no_more(text: str) -> None:
 
 
 def test_unit_under_an_unknown_name_speaks_weakly() -> None:
-    for text, quantity in (("RBW (Hz)", F), ("Flatness (dB)", MAG), ("Tilt (deg)", PH)):
+    for text, quantity in (("RBW (Hz)", F), ("Frequenz (Hz)", F), ("Flatness (dB)", MAG), ("Tilt (deg)", PH)):
         meaning = meaning_of(text)
         assert (meaning.quantity, meaning.weak) == (quantity, True)
+
+
+def test_grad_is_degrees_in_one_language_and_gradians_in_another() -> None:
+    for text, word in (("Phase (Grad)", "Grad"), ("phase_grad", "grad"), ("Phase [grads]", "grads")):
+        meaning = meaning_of(text)
+        assert (meaning.quantity, meaning.unit) == (PH, None)
+        assert meaning.doubt == f"{word} may be degrees or gradians, 400 to the turn"
+    assert meaning_of("Phase (deg)").doubt == ""
+    assert meaning_of("gradient").doubt == ""
 
 
 def test_milli_and_mega_are_not_mixed_up() -> None:

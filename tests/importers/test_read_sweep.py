@@ -83,7 +83,7 @@ def test_inverted_read_out_is_turned_and_stated(tmp_path: Path) -> None:
 
 
 def test_sign_that_the_band_does_not_show_is_asked_for(tmp_path: Path) -> None:
-    path = file_of(tmp_path, "freq_hz,re,im\n1,0.1,0\n2,0.1,0\n4,0.1,0\n")
+    path = file_of(tmp_path, "freq_hz,re,im\n1,10,0\n2,0.1,0\n4,0.1,0\n")
     with pytest.raises(SweepError, match=r"cannot tell whether the sweep holds T or -T: .* give --sign as-read or"):
         read_sweep(path)
 

@@ -32,6 +32,9 @@ def test_name_is_kept_as_given(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) 
 def test_directory_missing_and_empty_files_are_refused(tmp_path: Path) -> None:
     with pytest.raises(SweepError, match="this is a directory; name one file in it"):
         load_source(tmp_path)
+    for name in ("", " "):
+        with pytest.raises(SweepError, match=r"^the name of the sweep file is empty; name one CSV or Touchstone file$"):
+            load_source(name)
     with pytest.raises(SweepError, match="no such file; check the path"):
         load_source(tmp_path / "missing.csv")
     for content in (b"", b" \r\n\t\n"):
