@@ -44,7 +44,7 @@ def signed_decades(axis: Axis, linear_hz: float, reach_hz: float) -> None:
     set_scale = axis.axes.set_xscale if isinstance(axis, XAxis) else axis.axes.set_yscale
     set_scale("symlog", linthresh=linear_hz, linscale=LINEAR_SHARE)
     lowest, highest = round(math.log10(linear_hz)), math.floor(math.log10(reach_hz) + 1e-9)
-    step = 1 if highest - lowest <= 4 else 2
+    step = 1 if highest - lowest <= 4 else math.ceil((highest - lowest) / 4)
     exponents = range(highest, lowest - 1, -step)
     ticks = [-(10.0**e) for e in exponents] + [0.0] + [10.0**e for e in reversed(exponents)]
     axis.set_major_locator(FixedLocator(ticks))

@@ -1,4 +1,7 @@
-"""The head of a picture: verdict, reason and what to do in words, or the file's name where nothing was compared."""
+"""The head of a picture: verdict, reason and what to do in words, or the file's name where nothing was compared.
+
+What a verdict alone would hide is framed beside it: a limit that is broken, a model that does not fit.
+"""
 
 from __future__ import annotations
 
@@ -8,6 +11,7 @@ from matplotlib.figure import Figure
 
 from fitamp.comparison import Comparison, Nulling
 from fitamp.fitting import LoopFit
+from fitamp.fitting.result import LABELS
 from fitamp.plots.style import (
     COLOURS,
     SIZE_PT,
@@ -26,7 +30,11 @@ __all__ = ["VERDICT_COLOURS", "figure_with_head"]
 MARGIN_IN = 0.2
 LINE_IN = 0.18
 TITLE_IN = 0.36
-TITLE_PT = 13.0
+TITLE_PT, TAG_PT = 13.0, 10.0
+PADDING = 0.3  # of a frame, in letter sizes
+TAG_GAP_IN = 0.16
+# With less room than this beside the tags, the names of the files get a line of their own.
+NAMES_IN = 3.2
 
 VERDICT_COLOURS = {
     Nulling.AS_DESIGNED: COLOURS["good"],
@@ -39,56 +47,112 @@ VERDICT_COLOURS = {
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
-class _Line:
+class _Text:
+    """One line of the head, or a framed tag where there is a frame colour."""
+
     text: str
+    size_pt: float = SIZE_PT
     weight: str = "normal"
+    frame: str | None = None
+
+    @property
+    def width_in(self) -> float:
+        """Width, with the frame's padding."""
+        return text_width_in(self.text, self.size_pt, self.weight) + 2 * PADDING * self.size_pt / 72
+
+    @property
+    def height_in(self) -> float:
+        """Height of the line."""
+        return TITLE_IN if self.frame or self.size_pt == TITLE_PT else LINE_IN
 
 
 def figure_with_head(fit: LoopFit, comparison: Comparison | None, *, body_in: float) -> Figure:
     """A figure whose lower `body_in` inches are free, under a head as tall as its words need."""
-    title, colour, aside, lines = _words(fit, comparison)
-    head_in = 0.1 + TITLE_IN + LINE_IN * len(lines) + 0.08
+    width = WIDTH_IN - 2 * MARGIN_IN
+    rows, aside = _rows(fit, comparison, width)
+    head_in = 0.1 + sum(row[0].height_in for row in rows) + 0.08
     figure = new_figure(body_in + head_in)
-    top = body_in + head_in - 0.1 - TITLE_IN / 2
-    total = body_in + head_in
-    frame = None
-    if colour is not None:
-        frame = {"boxstyle": "square,pad=0.3", "facecolor": "white", "edgecolor": colour, "linewidth": 2.5}
-    figure.text(
-        (MARGIN_IN + (0.08 if frame else 0)) / WIDTH_IN,
-        top / total,
-        title,
-        size=TITLE_PT,
-        weight="bold",
-        va="center",
-        bbox=frame,
-    )
-    if aside:
-        figure.text(1 - MARGIN_IN / WIDTH_IN, top / total, aside, size=SMALL_PT, va="center", ha="right")
-    y = top - TITLE_IN / 2 - LINE_IN / 2
-    for line in lines:
-        figure.text(MARGIN_IN / WIDTH_IN, y / total, line.text, size=SIZE_PT, weight=line.weight, va="center")
-        y -= LINE_IN
+    top = body_in + head_in - 0.1
+    for row in rows:
+        y = (top - row[0].height_in / 2) / (body_in + head_in)
+        top -= row[0].height_in
+        x = MARGIN_IN
+        for text in row:
+            padding = PADDING * text.size_pt / 72 if text.frame else 0.0
+            box = {"boxstyle": f"square,pad={PADDING}", "facecolor": "white", "edgecolor": text.frame, "linewidth": 2.5}
+            figure.text(
+                (x + padding) / WIDTH_IN,
+                y,
+                text.text,
+                size=text.size_pt,
+                weight=text.weight,
+                va="center",
+                bbox=box if text.frame else None,
+            )
+            x += text.width_in + TAG_GAP_IN
+        if aside and row is rows[0]:
+            figure.text(1 - MARGIN_IN / WIDTH_IN, y, aside, size=SMALL_PT, va="center", ha="right")
     return figure
 
 
-def _words(fit: LoopFit, comparison: Comparison | None) -> tuple[str, str | None, str, list[_Line]]:
-    """Title, its frame's colour, what stands beside it, and the lines below."""
-    width = WIDTH_IN - 2 * MARGIN_IN
+def _rows(fit: LoopFit, comparison: Comparison | None, width_in: float) -> tuple[list[list[_Text]], str]:
+    """Rows of the head from the top, and what stands at the right of the first one."""
     file = inert(fit.sweep.origin.file)
+    tags = _flowed(_tags(fit, comparison), width_in)
     if comparison is None:
-        title = shortened(file, width, TITLE_PT, "bold")
-        return title, None, "", [_Line(text=text) for text in wrapped(_sentence(zero_sentence(fit), "Zero: "), width)]
-    verdict = comparison.verdict
-    title = verdict.nulling.value.upper()
-    room = width - text_width_in(title, TITLE_PT, "bold") - 0.5
-    against = " against "
-    half = (room - text_width_in(against)) / 2
-    aside = shortened(file, half) + against + shortened(inert(comparison.design.file), half)
-    lines = [_Line(text=text) for text in wrapped(inert(_sentence(verdict.reason)), width)]
+        title = _Text(text=shortened(file, width_in, TITLE_PT, "bold"), size_pt=TITLE_PT, weight="bold")
+        sentence = _sentence(zero_sentence(fit), "Zero: ")
+        return [[title], *tags, *([_Text(text=line)] for line in wrapped(sentence, width_in))], ""
+    design = inert(comparison.design.file)
+    rows = list(tags)
+    room = width_in - sum(tag.width_in + TAG_GAP_IN for tag in tags[0])
+    is_beside = room >= min(NAMES_IN, text_width_in(f"{file} against {design}"))
+    aside = _against(file, design, room if is_beside else width_in)
+    if not is_beside:
+        rows.append([_Text(text=aside, size_pt=SMALL_PT)])
+    reason = inert(_sentence(comparison.verdict.reason))
+    rows += [[_Text(text=line)] for line in wrapped(reason, width_in)]
     advice = inert(f"What to do: {comparison.advice.sentence}")
-    lines += [_Line(text=text, weight="bold") for text in wrapped(advice, width, weight="bold")]
-    return title, VERDICT_COLOURS[verdict.nulling], aside, lines
+    rows += [[_Text(text=line, weight="bold")] for line in wrapped(advice, width_in, weight="bold")]
+    return rows, aside if is_beside else ""
+
+
+def _tags(fit: LoopFit, comparison: Comparison | None) -> list[_Text]:
+    """The verdict, and warnings that belong beside it."""
+    tags: list[_Text] = []
+    if comparison is not None:
+        nulling = comparison.verdict.nulling
+        frame = VERDICT_COLOURS[nulling]
+        tags.append(_Text(text=nulling.value.upper(), size_pt=TITLE_PT, weight="bold", frame=frame))
+        broken = [LABELS[name] for name in comparison.broken_limits]
+        if broken:
+            words = f"LIMIT{'S' if len(broken) > 1 else ''} BROKEN: {', '.join(broken)}"
+            tags += [_warning(line) for line in wrapped(words, WIDTH_IN - 2 * MARGIN_IN - 0.2, TAG_PT, "bold")]
+    if not fit.adequacy.adequate:
+        tags.append(_warning("MODEL DOES NOT FIT"))
+    return tags
+
+
+def _warning(words: str) -> _Text:
+    return _Text(text=words, size_pt=TAG_PT, weight="bold", frame=COLOURS["bad"])
+
+
+def _flowed(tags: list[_Text], width_in: float) -> list[list[_Text]]:
+    """Tags in as many rows as they need."""
+    rows: list[list[_Text]] = []
+    for tag in tags:
+        if rows and sum(other.width_in + TAG_GAP_IN for other in rows[-1]) + tag.width_in <= width_in:
+            rows[-1].append(tag)
+        else:
+            rows.append([tag])
+    return rows
+
+
+def _against(file: str, design: str, width_in: float) -> str:
+    """Both names, shortened alike where they are too long."""
+    against = " against "
+    half = (width_in - text_width_in(against)) / 2
+    return shortened(file, half) + against + shortened(design, half)
 
 
 def _sentence(text: str, lead: str = "") -> str:

@@ -9,14 +9,17 @@ from matplotlib.axes import Axes
 
 from fitamp.comparison import Comparison
 from fitamp.plots.roots import Mark
-from fitamp.plots.style import COLOURS, SMALL_PT, text_width_in
+from fitamp.plots.style import COLOURS, SMALL_PT, shortened, text_width_in
 from fitamp.units import si
 
-__all__ = ["draw_lane", "widened"]
+__all__ = ["ROOT_GUIDE", "LaneRow", "draw_lane", "lane_rows"]
 
-# From a mark's centre to its name.
+ROOT_GUIDE = "root"
+# From a mark's centre to its name, and between words.
 OFFSET_IN = 0.13
 GAP_IN = 0.1
+EDGE_IN = 0.1
+ROW_IN, LEVEL_IN = 0.34, 0.17
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -29,67 +32,108 @@ class _Spot:
     words: str
 
 
-def widened(rows: tuple[tuple[Mark, ...], ...], low_hz: float, high_hz: float, width_in: float) -> float:
-    """The upper end of the axis that leaves room for the names right of the last mark in every row."""
-    highest = high_hz
-    for row in rows:
-        spots = _spots(row, low_hz, high_hz)
-        inside = [spot for spot in spots if not spot.edge]
-        if not inside:
-            continue
-        own = OFFSET_IN + text_width_in(inside[-1].words) + GAP_IN
-        outside = sum(OFFSET_IN + text_width_in(spot.words) + 2 * GAP_IN for spot in spots if spot.edge == ">")
-        low, at = math.log10(low_hz), math.log10(inside[-1].at_hz)
-        before = math.log10(inside[-2].at_hz) if len(inside) > 1 else low
-        scale = width_in / (math.log10(highest) - low)
-        is_left_free = (at - before) * scale > own + OFFSET_IN
-        need = OFFSET_IN + outside if is_left_free else own + outside
-        # Solved for the end of the axis: the share right of the mark, in inches, is `need`.
-        highest = max(highest, 10 ** ((width_in * at - need * low) / (width_in - need)))
-    return highest
+@dataclass(frozen=True, slots=True, kw_only=True)
+class _Named:
+    """A spot with the place of its words: left end in inches, and level, 0 beside the mark and others below."""
+
+    spot: _Spot
+    at_in: float
+    start_in: float
+    level: int
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class LaneRow:
+    """One row of the lane, laid out for a range of frequencies."""
+
+    name: str
+    named: tuple[_Named, ...]
+
+    @property
+    def height_in(self) -> float:
+        """Height with all levels of words."""
+        return ROW_IN + LEVEL_IN * max((named.level for named in self.named), default=0)
+
+
+def lane_rows(
+    measured: tuple[Mark, ...], designed: tuple[Mark, ...], low_hz: float, high_hz: float, width_in: float
+) -> tuple[LaneRow, ...]:
+    """Rows of the lane from the bottom: measured, and designed where there is a design."""
+    rows = [("measured", measured), *([("designed", designed)] if designed else [])]
+    return tuple(LaneRow(name=name, named=_named(_spots(marks, low_hz, high_hz), width_in)) for name, marks in rows)
+
+
+def _spots(marks: tuple[Mark, ...], low_hz: float, high_hz: float) -> list[tuple[_Spot, float]]:
+    """Pole 1, pole 2 (or the pair) and the zero, lowest first, each with its share of the axis.
+
+    A third pole is not what the sweep is about.
+    """
+    shown = sorted((mark for mark in marks if mark.name != "pole 3"), key=_distance_hz)
+    inside = [mark for mark in shown if low_hz <= _distance_hz(mark) <= high_hz]
+    below = tuple(mark for mark in shown if _distance_hz(mark) < low_hz)
+    above = tuple(mark for mark in shown if _distance_hz(mark) > high_hz)
+    spots: list[tuple[_Spot, float]] = []
+    if below:
+        spots.append((_Spot(marks=below, at_hz=0.0, edge="<", words=_far_words(below)), 0.0))
+    for mark in inside:
+        share = math.log(_distance_hz(mark) / low_hz) / math.log(high_hz / low_hz)
+        spots.append((_Spot(marks=(mark,), at_hz=_distance_hz(mark), edge="", words=mark.label), share))
+    if above:
+        spots.append((_Spot(marks=above, at_hz=math.inf, edge=">", words=_far_words(above)), 1.0))
+    return spots
+
+
+def _named(spots: list[tuple[_Spot, float]], width_in: float) -> tuple[_Named, ...]:
+    """Names right of their marks, else left of them, else on a level below where nothing else is."""
+    places = [
+        {"<": EDGE_IN, ">": width_in - EDGE_IN}.get(spot.edge, min(max(share, 0.0), 1.0) * width_in)
+        for spot, share in spots
+    ]
+    taken: dict[int, list[tuple[float, float]]] = {0: [(at - OFFSET_IN, at + OFFSET_IN) for at in places]}
+    named: list[_Named] = []
+    for (spot, _), at in reversed(list(zip(spots, places, strict=True))):
+        extent = text_width_in(spot.words)
+        for level in range(len(spots) + 1):
+            starts = [at + OFFSET_IN, at - OFFSET_IN - extent] if level == 0 else [at - extent / 2]
+            if level > 0:
+                starts = [min(max(starts[0], GAP_IN), width_in - extent - GAP_IN)]
+            free = [
+                start
+                for start in starts
+                if start >= GAP_IN / 2
+                and start + extent <= width_in - GAP_IN / 2
+                and all(end - 1e-6 <= start or start + extent <= begin + 1e-6 for begin, end in taken.get(level, []))
+            ]
+            if free or level == len(spots):
+                start = free[0] if free else starts[0]
+                taken.setdefault(level, []).append((start - GAP_IN, start + extent + GAP_IN))
+                named.append(_Named(spot=spot, at_in=at, start_in=start, level=level))
+                break
+    return tuple(reversed(named))
 
 
 def draw_lane(
-    lane: Axes,
-    panels: tuple[Axes, ...],
-    measured: tuple[Mark, ...],
-    designed: tuple[Mark, ...],
-    comparison: Comparison | None,
-    *,
-    width_in: float,
+    lane: Axes, panels: tuple[Axes, ...], rows: tuple[LaneRow, ...], comparison: Comparison | None, *, width_in: float
 ) -> None:
     """Draw the marks, measured below designed, the window of the designed zero, and guides into the panels above."""
-    rows = {"measured": 0.0} | ({"designed": 1.0} if designed else {})
-    lane.set_ylim(-0.5, len(rows) - 0.5)
-    lane.set_yticks(list(rows.values()), list(rows))
+    lane.set_ylim(0, sum(row.height_in for row in rows))
+    lines: list[float] = []
+    bottom = 0.0
+    for row in rows:
+        bottom += row.height_in
+        lines.append(bottom - ROW_IN / 2)
+        if row.name == "designed" and comparison is not None:
+            _draw_window(lane, comparison, (bottom - row.height_in, bottom))
+    lane.set_yticks(lines, [row.name for row in rows])
     lane.tick_params(axis="y", length=0)
-    if comparison is not None:
-        _draw_window(lane, comparison)
-    for row, marks in (("measured", measured), ("designed", designed)):
-        if row in rows:
-            _draw_row(lane, rows[row], row, marks, width_in)
-    low, high = lane.get_xlim()
-    for spot in _spots(measured, low, high):
-        if not spot.edge:
+    for row, y in zip(rows, lines, strict=True):
+        _draw_row(lane, y, row, width_in)
+    for named in rows[0].named:
+        if not named.spot.edge:
             for axes in panels:
-                axes.axvline(spot.at_hz, color="#888888", linestyle=(0, (1, 3)), linewidth=0.9, zorder=1)
-
-
-def _spots(marks: tuple[Mark, ...], low_hz: float, high_hz: float) -> list[_Spot]:
-    """Pole 1, pole 2 (or the pair) and the zero, lowest first. A third pole is not what the sweep is about."""
-    shown = sorted((mark for mark in marks if mark.name != "pole 3"), key=_distance_hz)
-    inside = [
-        _Spot(marks=(mark,), at_hz=_distance_hz(mark), edge="", words=mark.label)
-        for mark in shown
-        if low_hz <= _distance_hz(mark) <= high_hz
-    ]
-    below = tuple(mark for mark in shown if _distance_hz(mark) < low_hz)
-    above = tuple(mark for mark in shown if _distance_hz(mark) > high_hz)
-    return [
-        *([_Spot(marks=below, at_hz=0.0, edge="<", words=_far_words(below))] if below else []),
-        *inside,
-        *([_Spot(marks=above, at_hz=math.inf, edge=">", words=_far_words(above))] if above else []),
-    ]
+                axes.axvline(
+                    named.spot.at_hz, color="#888888", linestyle=(0, (1, 3)), linewidth=0.9, zorder=1, gid=ROOT_GUIDE
+                )
 
 
 def _far_words(marks: tuple[Mark, ...]) -> str:
@@ -101,6 +145,8 @@ def _far_word(mark: Mark) -> str:
     if mark.is_zero and len(mark.regions_hz) == 2:
         nearest = min(abs(end) for region in mark.regions_hz for end in region)
         return f"{mark.name} > {si(nearest, 'Hz', digits=3)}"
+    if mark.is_pair and mark.value_hz is not None:
+        return f"{mark.name}: {si(abs(mark.value_hz), 'Hz', digits=3)}"
     return mark.sentence
 
 
@@ -111,7 +157,7 @@ def _distance_hz(mark: Mark) -> float:
     return 0.0 if mark.name == "pole 1" else math.inf
 
 
-def _draw_window(lane: Axes, comparison: Comparison) -> None:
+def _draw_window(lane: Axes, comparison: Comparison, between: tuple[float, float]) -> None:
     """Distances at which the zero counts as designed, behind the designed row: the half plane counts as well."""
     window = comparison.verdict.window
     nearest = max(abs(window.low_s), abs(window.high_s))
@@ -119,42 +165,42 @@ def _draw_window(lane: Axes, comparison: Comparison) -> None:
     low, high = lane.get_xlim()
     start = low if math.isinf(nearest) else 1 / (2 * math.pi * nearest)
     end = 1 / (2 * math.pi * farthest) if farthest else high
-    lane.axvspan(start, end, 0.5, 1, facecolor=COLOURS["good"], alpha=0.35, linewidth=0, gid="zero window")
+    bottom, top = (y / lane.get_ylim()[1] for y in between)
+    lane.axvspan(start, end, bottom, top, facecolor=COLOURS["good"], alpha=0.35, linewidth=0, gid="zero window")
 
 
-def _draw_row(lane: Axes, y: float, row: str, marks: tuple[Mark, ...], width_in: float) -> None:
+def _draw_row(lane: Axes, y: float, row: LaneRow, width_in: float) -> None:
     low, high = lane.get_xlim()
     scale = width_in / math.log10(high / low)
-    colour = COLOURS["fitted" if row == "measured" else "designed"]
-    free_to = width_in  # everything right of this is taken
-    for spot in reversed(_spots(marks, low, high)):
+    colour = COLOURS["fitted" if row.name == "measured" else "designed"]
+    for named in row.named:
+        spot = named.spot
         for start, end in (region for mark in spot.marks for region in mark.regions_hz):
             near, far = sorted((abs(start), abs(end)))
             if near < high and far > low:
                 ends = [max(near, low), min(far, high)]
                 lane.plot(ends, [y, y], color=colour, linewidth=4, alpha=0.4, gid="region")
-        at_in = {"<": 0.1, ">": width_in - 0.1}.get(spot.edge, scale * math.log10(max(spot.at_hz, low) / low))
-        extent = OFFSET_IN + text_width_in(spot.words)
-        on_right = spot.edge != ">" and at_in + extent <= free_to
-        free_to = at_in - OFFSET_IN - GAP_IN if on_right else at_in - extent - GAP_IN
-        x = low * 10 ** (at_in / scale) if spot.edge else spot.at_hz
+        x = low * 10 ** (named.at_in / scale) if spot.edge else spot.at_hz
         lane.plot(
             [x],
             [y],
             spot.edge or ("o" if spot.marks[0].is_zero else "x"),
             color=colour,
-            markerfacecolor=colour if row == "measured" else "white",
+            markerfacecolor=colour if row.name == "measured" else "white",
             markersize=8,
             markeredgewidth=2,
-            gid=f"{row} {', '.join(mark.name for mark in spot.marks)}",
+            gid=f"{row.name} {', '.join(mark.name for mark in spot.marks)}",
             zorder=4,
         )
-        lane.annotate(
-            spot.words,
-            xy=(x, y),
-            xytext=(OFFSET_IN * 72 * (1 if on_right else -1), 0),
-            textcoords="offset points",
-            ha="left" if on_right else "right",
+        lane.text(
+            named.start_in / width_in,
+            y - (0.02 + LEVEL_IN * named.level if named.level else 0.0),
+            shortened(spot.words, width_in - 2 * GAP_IN),
+            transform=lane.get_yaxis_transform(),
+            ha="left",
             va="center",
             size=SMALL_PT,
+            # A region may pass behind.
+            bbox={"boxstyle": "square,pad=0.05", "facecolor": "white", "edgecolor": "none", "alpha": 0.75},
+            zorder=3.5,
         )

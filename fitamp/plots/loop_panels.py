@@ -1,31 +1,41 @@
-"""The panels of the loop-gain picture: magnitude, phase and residuals, with the curves they show."""
+"""The panels of the loop-gain picture: magnitude and phase, with the curves they show."""
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
 import numpy as np
 from matplotlib.axes import Axes
+from numpy.typing import NDArray
 
 from fitamp.arrays import ComplexArray, FloatArray
 from fitamp.comparison import Comparison
 from fitamp.fitting import LoopFit
-from fitamp.plots.loop_marks import NARROW_DEG
-from fitamp.plots.style import COLOURS, SMALL_PT, shortened
+from fitamp.plots.free_spot import Clutter
+from fitamp.plots.lane import ROOT_GUIDE
+from fitamp.plots.phases import continuous_deg, extra_delay_s, fitted_deg, measured_deg
+from fitamp.plots.style import COLOURS
 from fitamp.sweep import LeftOut
 
-__all__ = ["Curves", "curves_of", "draw_magnitude", "draw_phase", "draw_residuals", "drawable", "shade_beyond"]
+__all__ = ["NARROW_DEG", "Curves", "curves_of", "draw_magnitude", "draw_phase", "drawable", "shade_beyond"]
 
 POINTS = 500
 # Left-out points farther than this from everything else are drawn at the panel's edge.
 STRAY_DB = 20.0
+# The designed curve may widen an axis by this much; beyond, it leaves the picture.
+DESIGN_DB, DESIGN_DEG = 30.0, 60.0
+# Below this phase margin there is room kept for arrows from outside.
+NARROW_DEG = 30.0
+MAX_TICKS = 8
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Curves:
-    """Fitted and designed loop gain on one grid, phases counted continuously from DC."""
+    """Fitted and designed loop gain on one grid, phases counted continuously from DC; True in_band where measured."""
 
     freq_hz: FloatArray
+    in_band: NDArray[np.bool_]
     fitted: ComplexArray
     fitted_deg: FloatArray
     designed: ComplexArray | None
@@ -33,84 +43,112 @@ class Curves:
 
 
 def drawable(points: tuple[LeftOut, ...]) -> list[LeftOut]:
+    """Left-out points that have a place in a logarithmic picture."""
     return [p for p in points if np.isfinite(p.f_hz) and p.f_hz > 0 and np.isfinite(p.gain) and p.gain != 0]
 
 
 def curves_of(fit: LoopFit, comparison: Comparison | None, low_hz: float, high_hz: float) -> Curves:
+    """Evaluate both curves over the range of the picture."""
     freq_hz = np.geomspace(low_hz, high_hz, POINTS)
-    # The phase is counted from DC, so the count starts well below pole 1.
-    lead = np.geomspace(min(low_hz, abs(fit.response.poles_hz[0])) / 100, low_hz, POINTS, endpoint=False)
-    whole = np.concatenate([lead, freq_hz])
-    fitted = fit.evaluate(whole)
-    designed = comparison.design.on_bench().evaluate(whole) if comparison is not None else None
+    on_bench = comparison.design.on_bench() if comparison is not None else None
     return Curves(
         freq_hz=freq_hz,
-        fitted=fitted[POINTS:],
-        fitted_deg=_continuous_deg(fitted)[POINTS:],
-        designed=None if designed is None else designed[POINTS:],
-        designed_deg=None if designed is None else _continuous_deg(designed)[POINTS:],
+        in_band=(freq_hz >= fit.sweep.f_min_hz) & (freq_hz <= fit.sweep.f_max_hz),
+        fitted=fit.evaluate(freq_hz),
+        fitted_deg=fitted_deg(fit, freq_hz),
+        designed=None if on_bench is None else on_bench.evaluate(freq_hz),
+        designed_deg=None if on_bench is None else continuous_deg(on_bench, freq_hz),
     )
-
-
-def _continuous_deg(gain: ComplexArray) -> FloatArray:
-    return np.asarray(np.degrees(np.unwrap(np.angle(gain))), dtype=float)
 
 
 def _db(gain: ComplexArray) -> FloatArray:
     return np.asarray(20 * np.log10(np.maximum(np.abs(gain), 1e-30)), dtype=float)
 
 
-def draw_magnitude(axes: Axes, fit: LoopFit, curves: Curves) -> None:
+def draw_magnitude(axes: Axes, fit: LoopFit, curves: Curves) -> Clutter:
+    """Draw the magnitudes; what is drawn is returned, so that words can keep clear of it."""
     axes.axhline(0, color="#666666", linewidth=0.8)
-    _draw_data(axes, fit.sweep.freq_hz, _db(fit.sweep.gain))
-    everything = [_db(fit.sweep.gain), _db(curves.fitted)]
+    data, fitted = _db(fit.sweep.gain), _db(curves.fitted)
+    _draw_data(axes, fit.sweep.freq_hz, data)
+    low, high = _ends(data, fitted)
     if curves.designed is not None:
-        everything.append(_db(curves.designed))
-        _draw_designed(axes, curves.freq_hz, everything[-1])
-    _draw_fitted(axes, curves.freq_hz, everything[1])
+        designed = _db(curves.designed)
+        low, high = _stretched(low, high, designed[curves.in_band], DESIGN_DB)
+        _draw_designed(axes, curves.freq_hz, designed)
+    _draw_fitted(axes, curves.freq_hz, fitted)
     left = drawable(fit.sweep.left_out)
-    low, high = (
-        float(pick([part_end for part in everything for part_end in (part.min(), part.max())])) for pick in (min, max)
-    )
     if left:
         levels = np.clip(_db(np.array([p.gain for p in left])), low - STRAY_DB, high + STRAY_DB)
-        low, high = min(low, float(levels.min())), max(high, float(levels.max()))
+        low, high = _ends(levels, np.array([low, high]))
         _draw_left_out(axes, [p.f_hz for p in left], levels)
     room = 0.06 * (high - low)
     axes.set_ylim(low - room, high + room)
     axes.set_ylabel("magnitude (dB)")
     axes.grid(True)
+    return _clutter(axes)
 
 
-def draw_phase(axes: Axes, fit: LoopFit, curves: Curves) -> None:
-    def beside_fit(freq_hz: FloatArray, gain: ComplexArray) -> FloatArray:
-        """Phase on the fitted curve's branch: noise cannot make it slip by a turn."""
-        fitted_deg = np.interp(np.log(freq_hz), np.log(curves.freq_hz), curves.fitted_deg)
-        off = np.degrees(np.angle(gain)) - fitted_deg
-        return np.asarray(np.degrees(np.angle(gain)) - 360 * np.round(off / 360), dtype=float)
-
-    data = beside_fit(fit.sweep.freq_hz, fit.sweep.gain)
+def draw_phase(axes: Axes, fit: LoopFit, curves: Curves, limits_deg: tuple[float, ...] = ()) -> Clutter:
+    """Draw the phases over what data and fit need; `limits_deg` are phases to keep in view."""
+    delay_s = extra_delay_s(fit)
+    data = measured_deg(fit, fit.sweep.freq_hz, fit.sweep.gain, delay_s)
     axes.axhline(-180, color="#666666", linewidth=0.8)
     _draw_data(axes, fit.sweep.freq_hz, data)
-    parts = [curves.fitted_deg]
+    low, high = _ends(data, curves.fitted_deg[curves.in_band], np.array([-180.0, -90.0, *limits_deg]))
     if curves.designed_deg is not None:
-        parts.append(curves.designed_deg)
+        low, high = _stretched(low, high, curves.designed_deg[curves.in_band], DESIGN_DEG)
         _draw_designed(axes, curves.freq_hz, curves.designed_deg)
     _draw_fitted(axes, curves.freq_hz, curves.fitted_deg)
     left = drawable(fit.sweep.left_out)
-    low = min(-180.0, *(float(part.min()) for part in parts), float(data.min()))
-    high = max(0.0, *(float(part.max()) for part in parts), float(data.max()))
     if left:
         freq_hz = np.array([p.f_hz for p in left])
-        phases = np.clip(beside_fit(freq_hz, np.array([p.gain for p in left])), low, high)
-        _draw_left_out(axes, list(freq_hz), phases)
+        phases = measured_deg(fit, freq_hz, np.array([p.gain for p in left]), delay_s)
+        _draw_left_out(axes, list(freq_hz), np.clip(phases, low, high))
     margin = fit.margins.phase_margin_deg.value
-    if margin is not None and 0 < margin < NARROW_DEG:
-        low = min(low, -200.0)  # room for the margin's words below −180°
-    axes.set_ylim(low - 12, high + 12)
-    axes.set_yticks(np.arange(45 * np.ceil((low - 12) / 45), high + 12, 45 if high - low < 400 else 90))
+    if margin is not None and abs(margin) < NARROW_DEG:
+        low, high = min(low, -180 - 0.2 * (high - low)), max(high, -180 + 0.2 * (high - low))
+    room = 0.06 * (high - low)
+    axes.set_ylim(low - room, high + room)
+    step = _tick_step(high - low + 2 * room)
+    axes.set_yticks(np.arange(step * math.ceil((low - room) / step), high + room, step))
     axes.set_ylabel("phase (°)")
     axes.grid(True)
+    return _clutter(axes)
+
+
+def _ends(*parts: FloatArray) -> tuple[float, float]:
+    return min(float(part.min()) for part in parts), max(float(part.max()) for part in parts)
+
+
+def _stretched(low: float, high: float, curve: FloatArray, most: float) -> tuple[float, float]:
+    """Ends moved outwards to a curve's, but each by `most` at the farthest."""
+    start, end = _ends(curve)
+    return min(low, max(start, low - most)), max(high, min(end, high + most))
+
+
+def _tick_step(span_deg: float) -> float:
+    """45°, 90°, 180°, 360° … for at most `MAX_TICKS` ticks."""
+    step = 45.0
+    while span_deg / step > MAX_TICKS - 1:
+        step *= 2
+    return step
+
+
+def _clutter(axes: Axes) -> Clutter:
+    """Everything that has been drawn in axes whose limits are set, as words should see it."""
+    clutter = Clutter(axes)
+    for line in axes.get_lines():
+        name = line.get_gid()
+        x, y = np.asarray(line.get_xdata(orig=True), dtype=float), np.asarray(line.get_ydata(orig=True), dtype=float)
+        if name in {"measured", "left out"}:
+            clutter.add_points(x, y)
+        elif name in {"fitted", "designed"}:
+            clutter.add_line(x, y)
+        elif name == ROOT_GUIDE:
+            clutter.add_line([x[0], x[0]], axes.get_ylim(), soft_in=0.15)
+        else:  # the level line, which spans the axes
+            clutter.add_line(axes.get_xlim(), [y[0], y[0]], soft_in=0.6)
+    return clutter
 
 
 def shade_beyond(axes: Axes, fit: LoopFit) -> None:
@@ -136,34 +174,3 @@ def _draw_left_out(axes: Axes, freq_hz: list[float], values: FloatArray) -> None
     axes.plot(
         freq_hz, values, "x", color=COLOURS["left out"], markersize=7, markeredgewidth=1.6, gid="left out", zorder=4
     )
-
-
-def draw_residuals(axes: Axes, fit: LoopFit, width_in: float) -> None:
-    residuals = fit.residuals()
-    axes.axhspan(-2, 2, color="#E8E8E8", zorder=0, linewidth=0)
-    axes.axhline(0, color="#666666", linewidth=0.8)
-    for part, marker, face, name in (
-        (residuals.real, "o", "#000000", "real"),
-        (residuals.imag, "o", "none", "imaginary"),
-    ):
-        axes.plot(
-            fit.sweep.freq_hz,
-            part,
-            marker,
-            color=COLOURS["measured"] if name == "real" else COLOURS["fitted"],
-            markerfacecolor=face,
-            markersize=2.4 if name == "real" else 3.0,
-            markeredgewidth=0.6,
-            gid=f"residual {name}",
-        )
-    reach = max(4.0, 1.1 * float(np.max(np.abs(np.concatenate([residuals.real, residuals.imag])))))
-    axes.set_ylim(-reach, reach)
-    axes.set_ylabel("residual (σ)")
-    axes.set_xlabel("frequency")
-    axes.grid(True)
-    words = (
-        f"residuals: ● real, ○ imaginary part, band ±2 σ; {fit.adequacy.sentence} "
-        f"(reduced chi-square {fit.adequacy.reduced_chi_square:.3g})"
-    )
-    weight = "normal" if fit.adequacy.adequate else "bold"
-    axes.set_title(shortened(words, width_in, SMALL_PT, weight), loc="left", size=SMALL_PT, weight=weight, pad=4)

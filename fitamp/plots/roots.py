@@ -94,23 +94,32 @@ def _zero_hz(zero_time_s: float) -> float:
 
 
 def measured_marks(fit: LoopFit) -> tuple[Mark, ...]:
-    """The fitted poles, nearest the origin first, then the zero; pole 1 and 2 also where only a bound is known."""
-    pairs = [root for root in fit.poles if root.value_hz.imag > 0]
-    if pairs:
-        poles = [_pair(pairs[0])]
-    else:
-        poles = [
-            _pole(name, estimate, text_of(quantity, estimate))
-            for name, quantity, estimate in (
-                ("pole 1", "pole1_hz", fit.parameters.pole1_hz),
-                ("pole 2", "pole2_hz", fit.parameters.pole2_hz),
-            )
-        ]
-    # Beside a pair any real pole is the far one.
-    poles += [_far_pole(root, fit) for root in fit.poles[2:] if root.value_hz.imag == 0]
-    if pairs:
-        poles += [_far_pole(root, fit) for root in fit.poles[:2] if root.value_hz.imag == 0]
+    """The fitted poles, numbered from the origin outwards, then the zero.
+
+    Pole 1 and 2 are there also where only a bound is known. Other roots that lie beyond the sweep without an error of
+    their own are what the model needs for its shape, not what the sweep shows: they are left out.
+    """
+    poles: list[Mark] = []
+    estimates = (("pole1_hz", fit.parameters.pole1_hz), ("pole2_hz", fit.parameters.pole2_hz))
+    for index, root in enumerate(fit.poles):
+        is_seen = _is_seen(root, index, fit)
+        if root.value_hz.imag and is_seen:
+            poles += [_pair(root)] if root.value_hz.imag > 0 else []
+        elif index < len(estimates):
+            quantity, estimate = estimates[index]
+            poles.append(_pole(f"pole {index + 1}", estimate, text_of(quantity, estimate)))
+        elif is_seen:
+            poles.append(_far_pole(f"pole {index + 1}", root, fit))
     return (*poles, _measured_zero(fit))
+
+
+def _is_seen(root: Root, index: int, fit: LoopFit) -> bool:
+    """Whether the sweep shows this root: within the band, or beyond it with an error that keeps it from infinity."""
+    if abs(root.value_hz) <= fit.sweep.f_max_hz:
+        return True
+    if root.covariance is None or (root.value_hz.imag and index <= 2 and not fit.parameters.pole2_hz.is_measured):
+        return False
+    return not root.value_hz.imag or fit.quantile**2 * float(np.trace(root.covariance)) < abs(root.value_hz) ** 2
 
 
 def designed_marks(design: Design) -> tuple[Mark, ...]:
@@ -150,17 +159,28 @@ def _pole(name: str, estimate: Estimate, words: str) -> Mark:
     return Mark(name=name, is_zero=False, value_hz=value, regions_hz=regions, words=words)
 
 
-def _far_pole(root: Root, fit: LoopFit) -> Mark:
-    name = "pole 3"
-    value = root.value_hz.real
+def _far_pole(name: str, root: Root, fit: LoopFit) -> Mark:
+    """A third pole. Its time 1/(2π|pole|) is nearly normal; where that may be 0, the pole may be at infinity."""
     if root.covariance is None:
-        return Mark(name=name, is_zero=False, value_hz=root.value_hz, words=f"about {si(abs(value), 'Hz', digits=2)}")
-    stderr = float(np.sqrt(root.covariance[0, 0]))
-    region = (value - fit.quantile * stderr, min(value + fit.quantile * stderr, 0.0))
-    words = si_with_error(abs(value), stderr, "Hz")
+        words = f"about {si(abs(root.value_hz), 'Hz', digits=2)}"
+        return Mark(name=name, is_zero=False, value_hz=root.value_hz, words=words)
+    near, far = _far_pole_ends_hz(root, fit)
+    words = f"above {si(near, 'Hz', digits=3)}"
+    if math.isfinite(far):
+        words = si_with_error(abs(root.value_hz), float(np.sqrt(root.covariance[0, 0])), "Hz")
     if 0 < fit.solution.model.far_pole.sd_s < math.inf:
         words += ", with the design's prior"
-    return Mark(name=name, is_zero=False, value_hz=root.value_hz, regions_hz=(region,), words=words)
+    return Mark(name=name, is_zero=False, value_hz=root.value_hz, regions_hz=((-far, -near),), words=words)
+
+
+def _far_pole_ends_hz(root: Root, fit: LoopFit) -> tuple[float, float]:
+    """Nearest and farthest distance within 95 %; the farthest is infinite where the interval of the time includes 0."""
+    assert root.covariance is not None
+    distance = abs(root.value_hz)
+    share = fit.quantile * float(np.sqrt(root.covariance[0, 0])) / distance
+    lowest_s = fit.parameters.far_pole_s.ci95[0]
+    is_open = share >= 1 or (lowest_s is not None and lowest_s <= 0)
+    return distance / (1 + share), math.inf if is_open else distance / (1 - share)
 
 
 def _pair(root: Root) -> Mark:

@@ -9,7 +9,7 @@ from matplotlib.figure import Figure
 from matplotlib.patheffects import withStroke
 from matplotlib.scale import SymmetricalLogTransform
 
-from fitamp.comparison import Comparison
+from fitamp.comparison import Comparison, Nulling
 from fitamp.fitting import LoopFit
 from fitamp.plots.axes import LINEAR_SHARE, signed_decades
 from fitamp.plots.header import figure_with_head
@@ -20,7 +20,7 @@ from fitamp.plots.style import COLOURS, SIZE_PT, SMALL_PT, WIDTH_IN, drawing_sty
 
 __all__ = ["splane_figure"]
 
-LEFT_IN, RIGHT_IN, BOTTOM_IN, TOP_IN = 0.95, 0.25, 0.6, 0.3
+LEFT_IN, RIGHT_IN, BOTTOM_IN, TOP_IN = 0.95, 0.45, 0.6, 0.3
 LEVEL_IN, FIRST_LEVEL_IN, LANE_GAP_IN = 0.21, 0.3, 0.75
 BAR_IN = 0.24
 
@@ -75,7 +75,10 @@ def _draw_lanes(
         axes.axhline(y, color="#AAAAAA", linewidth=0.8, zorder=1)
     _draw_regions(axes, measured, measured_y, reach)
     if designed:
-        _draw_moves(axes, measured, designed, (measured_y, designed_y), reach)
+        is_open = comparison is not None and comparison.verdict.nulling is Nulling.UNDECIDED
+        # What is undecided has not moved anywhere yet.
+        moved = tuple(mark for mark in designed if not (mark.is_zero and is_open))
+        _draw_moves(axes, measured, moved, (measured_y, designed_y), reach)
     _draw_marks(axes, measured, measured_y, "measured")
     _draw_marks(axes, designed, designed_y, "designed")
     _draw_labels(axes, below, measured_y, -1, width_in)

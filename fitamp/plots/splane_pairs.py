@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import math
+
 import numpy as np
 from matplotlib.axes import Axes
 from matplotlib.figure import Figure
@@ -10,7 +12,7 @@ from matplotlib.lines import Line2D
 from fitamp.arrays import FloatArray
 from fitamp.comparison import Comparison
 from fitamp.fitting import LoopFit
-from fitamp.plots.axes import signed_decades, signed_decimal
+from fitamp.plots.axes import LINEAR_SHARE, signed_decades, signed_decimal
 from fitamp.plots.header import figure_with_head
 from fitamp.plots.roots import Mark
 from fitamp.plots.splane_frame import distances_hz, linear_hz, name_half_planes, point_to_infinity, reach_hz
@@ -18,11 +20,12 @@ from fitamp.plots.style import COLOURS, SMALL_PT, WIDTH_IN, place_axes, text_wid
 
 __all__ = ["draw_pairs"]
 
-LEFT_IN, RIGHT_IN, BOTTOM_IN, TOP_IN, HEIGHT_IN, ROW_IN = 1.05, 0.25, 0.6, 0.3, 4.2, 0.2
+LEFT_IN, RIGHT_IN, BOTTOM_IN, TOP_IN, HEIGHT_IN, ROW_IN = 1.05, 0.45, 0.6, 0.3, 4.2, 0.2
 # 95 % point of chi-square with two degrees of freedom: half axes of an ellipse in standard deviations, squared.
 CHI_SQUARE_95_2 = 5.991
 # Up to this ratio of farthest to nearest root a linear plane shows all of them, and ellipses keep their shape.
 LINEAR_RATIO = 8.0
+WORDS_SHARE = 0.31
 
 
 def draw_pairs(
@@ -91,6 +94,9 @@ def _set_scales(axes: Axes, fit: LoopFit, measured: tuple[Mark, ...], designed: 
         signed_decimal(axes.yaxis)
     else:
         linear = linear_hz(marks)
+        # Words above the farthest mark need a fixed share of the height, however many decades that has.
+        decades = math.log10(height / 2.5 / linear) + LINEAR_SHARE if height > 2.5 * linear else LINEAR_SHARE
+        height = max(height, height / 2.5 * 10 ** (WORDS_SHARE * decades))
         signed_decades(axes.xaxis, linear, reach)
         signed_decades(axes.yaxis, linear, height)
     axes.set_xlim(-reach, reach)

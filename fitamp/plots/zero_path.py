@@ -13,6 +13,7 @@ from matplotlib.ticker import FuncFormatter
 from fitamp.amplifier import Elements
 from fitamp.comparison import Comparison, Nulling
 from fitamp.comparison.verdict import WINDOW_QUANTILE, regions_of
+from fitamp.plots.free_spot import Clutter, words_at
 from fitamp.plots.header import VERDICT_COLOURS, figure_with_head
 from fitamp.plots.style import COLOURS, SMALL_PT, drawing_style, place_axes
 from fitamp.units import si, si_with_error
@@ -22,6 +23,7 @@ __all__ = ["zero_path_figure"]
 LEFT_IN, BOTTOM_IN, WIDTH_PATH_IN, HEIGHT_IN, STRIP_IN, TOP_IN = 0.95, 0.6, 5.6, 4.0, 1.15, 0.3
 NAME_SPACING_IN = 0.19
 TICK_SPACING_IN = 0.21
+DISC_IN = 0.12
 _PREFIXES = ((1e6, "M"), (1e3, "k"), (1.0, ""), (1e-3, "m"), (1e-6, "µ"), (1e-9, "n"), (1e-12, "p"))
 
 
@@ -57,8 +59,11 @@ def zero_path_figure(comparison: Comparison) -> Figure | None:
         _draw_regions(path, strip, comparison)
         _draw_line(path, elements)
         _draw_places(path, designed, measured)
-        if measured is not None and comparison.verdict.nulling is not Nulling.AS_DESIGNED:
-            _draw_advice(path, comparison, elements, measured)
+        clutter = _clutter(path, elements, designed, measured)
+        # Where the verdict is open, nothing is to be changed yet.
+        if measured is not None and comparison.verdict.nulling not in {Nulling.AS_DESIGNED, Nulling.UNDECIDED}:
+            _draw_advice(clutter, comparison, elements, measured)
+        _write_places(clutter, designed, measured)
         _label_frequencies(strip)
     return figure
 
@@ -98,7 +103,7 @@ def _set_limits(path: Axes, strip: Axes, comparison: Comparison, *, designed: _P
     times += [end for place in places for end in place.ends_s or ()]
     low = min(*points, *(place.resistor_ohm - place.reach_ohm for place in places))
     high = max(*points, *(place.resistor_ohm + place.reach_ohm for place in places))
-    # Words stand right of the measured place and left of the designed one.
+    # Room for words right of the last place and left of the designed one.
     high = max(high, low + (max(points) - low) / 0.74)
     low = min(low, designed.resistor_ohm - 0.2 * (high - low))
     path.set_xlim(low - 0.05 * (high - low), high + 0.05 * (high - low))
@@ -187,11 +192,8 @@ def _draw_places(path: Axes, designed: _Place, measured: _Place | None) -> None:
         gid="designed",
         zorder=4,
     )
-    _name(path, designed, f"designed\n{si(designed.resistor_ohm, 'Ω', digits=3)}", above=True)
     if measured is None or measured.ends_s is None:
         return
-    equivalent = si_with_error(measured.resistor_ohm, measured.reach_ohm / WINDOW_QUANTILE, "Ω")
-    _name(path, measured, f"measured: as if Rz\nwere {equivalent}", above=False)
     low, high = measured.ends_s
     path.errorbar(
         [measured.resistor_ohm],
@@ -208,20 +210,32 @@ def _draw_places(path: Axes, designed: _Place, measured: _Place | None) -> None:
     )
 
 
-def _name(path: Axes, place: _Place, words: str, *, above: bool) -> None:
-    """Words left above a place or right below it, where the rising line does not pass."""
-    path.annotate(
-        words,
-        xy=(place.resistor_ohm, place.zero_time_s),
-        xytext=(-8, 8) if above else (8, -8),
-        textcoords="offset points",
-        ha="right" if above else "left",
-        va="bottom" if above else "top",
-        size=SMALL_PT,
-    )
+def _clutter(path: Axes, elements: Elements, designed: _Place, measured: _Place | None) -> Clutter:
+    """What words have to keep clear of: the line, the places with their error bars, and the level of infinity."""
+    clutter = Clutter(path)
+    low, high = path.get_xlim()
+    ends = [max(0.0, low), high]
+    clutter.add_line(ends, [_zero_time_s(elements, r) for r in ends])
+    clutter.add_line([low, high], [0, 0])
+    clutter.add_disc(designed.resistor_ohm, designed.zero_time_s, DISC_IN)
+    if measured is not None and measured.ends_s is not None:
+        at, reach = measured.resistor_ohm, measured.reach_ohm
+        clutter.add_line([at - reach, at + reach], [measured.zero_time_s] * 2)
+        clutter.add_line([at, at], measured.ends_s)
+        clutter.add_disc(at, measured.zero_time_s, DISC_IN)
+    return clutter
 
 
-def _draw_advice(path: Axes, comparison: Comparison, elements: Elements, measured: _Place) -> None:
+def _write_places(clutter: Clutter, designed: _Place, measured: _Place | None) -> None:
+    at = (designed.resistor_ohm, designed.zero_time_s)
+    words_at(clutter, f"designed\n{si(designed.resistor_ohm, 'Ω', digits=3)}", at, gid="words")
+    if measured is not None:
+        equivalent = si_with_error(measured.resistor_ohm, measured.reach_ohm / WINDOW_QUANTILE, "Ω")
+        at = (measured.resistor_ohm, measured.zero_time_s)
+        words_at(clutter, f"measured: as if Rz\nwere {equivalent}", at, gid="words")
+
+
+def _draw_advice(clutter: Clutter, comparison: Comparison, elements: Elements, measured: _Place) -> None:
     """An arrow along the path over the advised change of Rz."""
     change = comparison.advice.rz_change_ohm
     if change.value is None:
@@ -229,8 +243,7 @@ def _draw_advice(path: Axes, comparison: Comparison, elements: Elements, measure
     start = (measured.resistor_ohm, measured.zero_time_s)
     end_ohm = measured.resistor_ohm + change.value
     end = (end_ohm, _zero_time_s(elements, end_ohm))
-    is_open = comparison.verdict.nulling is Nulling.UNDECIDED
-    path.annotate(
+    clutter.axes.annotate(
         "",
         xy=end,
         xytext=start,
@@ -238,25 +251,18 @@ def _draw_advice(path: Axes, comparison: Comparison, elements: Elements, measure
             "arrowstyle": "-|>",
             "mutation_scale": 18,
             "linewidth": 2.6,
-            "linestyle": "--" if is_open else "-",
             "color": COLOURS["ink"],
             "shrinkA": 7,
             "shrinkB": 8,
         },
         zorder=3,
+        gid="advice",
     )
+    clutter.add_line(*zip(start, end, strict=True))
     verb = "raise" if change.value > 0 else "lower"
-    path.annotate(
-        f"{verb} Rz by\n{si_with_error(abs(change.value), change.stderr, 'Ω')}",
-        xy=((start[0] + end[0]) / 2, (start[1] + end[1]) / 2),
-        xytext=(14, -10),
-        textcoords="offset points",
-        ha="left",
-        va="top",
-        size=SMALL_PT + 1,
-        weight="bold",
-        bbox={"boxstyle": "square,pad=0.2", "facecolor": "white", "edgecolor": "none", "alpha": 0.75},
-    )
+    words = f"{verb} Rz by\n{si_with_error(abs(change.value), change.stderr, 'Ω')}"
+    middle = ((start[0] + end[0]) / 2, (start[1] + end[1]) / 2)
+    words_at(clutter, words, middle, size_pt=SMALL_PT + 1, weight="bold", gid="words")
 
 
 def _label_frequencies(strip: Axes) -> None:
