@@ -49,7 +49,19 @@ _EXAMPLES = {
 }
 # One number and one word. The library that reads the prefixes also takes names ("gm = 1 mS"), remarks and
 # digit groups, none of which belongs here.
-_NUMBER_AND_UNIT = re.compile(r"[+-]?[0-9.]+(?:[eE][+-]?[0-9]+)?\s*[^\s0-9=:_-]*")
+_NUMBER_AND_UNIT = re.compile(r"([+-]?[0-9.]+(?:[eE][+-]?[0-9]+)?)\s*([^\s0-9=:_-]*)")
+# Spelled out, a prefix is not read, but recognised to say how it is written.
+_SPELLED_PREFIXES = {
+    "giga": "G", "mega": "M", "meg": "M", "kilo": "k", "kil": "k", "milli": "m", "micro": "u", "nano": "n", "pico": "p",
+    "femto": "f",
+}  # fmt: skip
+_SPELLED_UNITS = {
+    "Ω": ("ohm", "ohms"),
+    "S": ("siemens",),
+    "F": ("farad", "farads"),
+    "Hz": ("hertz", "hz"),
+    "s": ("second", "seconds"),
+}
 
 
 def parse_quantity(text: str, unit: str) -> float:
@@ -65,8 +77,9 @@ def parse_quantity(text: str, unit: str) -> float:
     if "," in text:
         raise ValueError(f"{text!r} has a comma; write the decimal mark as a point")
     plain = _plain_minus(text)
+    match = _NUMBER_AND_UNIT.fullmatch(plain)
     try:
-        if not _NUMBER_AND_UNIT.fullmatch(plain):
+        if match is None:
             raise InvalidNumber(plain)
         quantity = Quantity(plain)
     except InvalidNumber:
@@ -74,8 +87,8 @@ def parse_quantity(text: str, unit: str) -> float:
         raise ValueError(f"{text!r} is not a number with unit; expected something like {example!r}") from None
     spelled = str(quantity.units)
     if not _is_spelling_of(unit, spelled):
-        found = f"unit {spelled!r}" if spelled else "no unit"
-        raise ValueError(f"{text!r} has {found}; expected {unit}, as in {example_of(unit)!r}")
+        found, example = _as_typed(match[2], spelled), _example_for(match[1], match[2], unit)
+        raise ValueError(f"{text!r} has {found}; expected {unit}, as in {example!r}")
     return _finite(float(quantity), text)
 
 
@@ -212,6 +225,23 @@ def _minus(number: str) -> str:
 
 def _plain_minus(text: str) -> str:
     return text.strip().replace("\N{MINUS SIGN}", "-")
+
+
+def _as_typed(word: str, spelled: str) -> str:
+    """A unit that was refused: without its prefix where that is surely one, else as it was typed."""
+    if not spelled:
+        return "no unit"
+    is_known = any(_is_spelling_of(unit, spelled) for unit in _SAME_UNIT)
+    return f"unit {spelled if is_known else word!r}"
+
+
+def _example_for(number: str, word: str, unit: str) -> str:
+    """The quantity itself where its prefix is spelled out ("0.6 megohm"), else any in this unit."""
+    low = word.lower()
+    for spelled, prefix in _SPELLED_PREFIXES.items():
+        if low.startswith(spelled) and low.removeprefix(spelled) in _SPELLED_UNITS.get(unit, ()):
+            return f"{number} {prefix}{'Ohm' if unit == 'Ω' else unit}"
+    return example_of(unit)
 
 
 def _finite(value: float, text: str | float) -> float:

@@ -73,9 +73,7 @@ pole2 = "58 MHz"
 zero = "110 MHz"
 half_plane = "left"
 """
-ELEMENTS = Elements(
-    gm1=150e-6, R1=900e3, C1=200e-15, gm2=1.6e-3, R2=60e3, CL=4e-12, Cc=1.8e-12, Rz=1300.0
-)
+ELEMENTS = Elements(gm1=150e-6, R1=900e3, C1=200e-15, gm2=1.6e-3, R2=60e3, CL=4e-12, Cc=1.8e-12, Rz=1300.0)
 FREQ_HZ = np.geomspace(10.0, 1e10, 31)
 
 
@@ -369,7 +367,10 @@ def refusal(tmp_path: Path, text: str) -> str:
         ('Rz = { value = "1 kOhm", under_test = "yes" }', ", [elements] Rz: under_test is 'yes'; expected true or"),
         ('Rz = "1 Ohm"\nC1x = "1 pF"', ", [elements]: unknown key 'C1x'; did you mean C1? known are gm1, "),
         ('Rz = "1 Ohm"\nmirror_pole = "0 Hz"', ", [elements] mirror_pole: '0 Hz' is not above 0; expected"),
-        ("", ', [elements]: lacks Rz; write Rz = "0 Ohm" where there is no resistor'),
+        (
+            "",
+            ', [elements]: lacks Rz; add a line such as Rz = { value = "1.3 kOhm", spread = "12 %" }, or Rz = "0 Ohm"',
+        ),
     ],
 )
 def test_unusable_element_is_refused(tmp_path: Path, entry: str, message: str) -> None:
@@ -408,8 +409,16 @@ def test_element_that_cannot_be_zero_is_refused_at_zero(tmp_path: Path, zero: st
         ('[about]\nname = "a\\nb"\n', ", [about] name: 'a\\nb' has characters that cannot be printed"),
         ('[limits]\nzero_hz = "80 MHz"\n', ", [limits] zero_hz: '80 MHz' is not a list of two ends; expected"),
         ('[limits]\nzero_hz = ["80 MHz"]\n', ", [limits] zero_hz: ['80 MHz'] is not a list of two ends"),
-        ('[limits]\nzero_hz = ["80 MHz", "60 MHz"]\n', ", [limits] zero_hz: the first end, 8e+07, must be below"),
-        ('[limits]\nzero_hz = ["80 mV", "90 MHz"]\n', ", [limits] zero_hz: '80 mV' has unit 'V'; expected Hz"),
+        (
+            '[limits]\nzero_hz = ["80 MHz", "60 MHz"]\n',
+            ", [limits] zero_hz: the first end, '80 MHz', must be below the second, '60 MHz'",
+        ),
+        ('[limits]\nzero_hz = [80e6, "80 MHz"]\n', ", [limits] zero_hz: the first end, 80000000.0, must be below the"),
+        (
+            "[limits]\ndc_gain = [76, 88]\n",
+            ", [limits] dc_gain: a plain number is V/V, and the design has 12960 V/V; write",
+        ),
+        ('[limits]\nzero_hz = ["80 mV", "90 MHz"]\n', ", [limits] zero_hz: '80 mV' has unit 'mV'; expected Hz"),
         ("[limits]\nzero_hz = [-1, 5]\n", ", [limits] zero_hz: -1 is negative; expected 0 or more"),
         ("[limits]\nzero_hz = [inf, 5]\n", ", [limits] zero_hz: inf is no end on this side; an open end is"),
         ("[limits]\nzero_hz = [nan, 5]\n", ", [limits] zero_hz: nan is no end on this side"),
@@ -436,9 +445,9 @@ def test_unusable_entry_beside_the_elements_is_refused(tmp_path: Path, text: str
         ('"110 MHz"', '"none"', ", [designed]: no zero is given, but it shall lie in the left half plane"),
         ('"left"', '"infinity"', ", [designed]: the zero is at 1.1e+08 Hz and at infinity at once"),
         ('"left"', '"leftish"', ", [designed] half_plane: 'leftish' is no half plane"),
-        ('half_plane = "left"', "", ", [designed]: lacks half_plane"),
+        ('half_plane = "left"', "", ', [designed]: lacks half_plane; add a line such as half_plane = "left"'),
         ('zero = "110 MHz"', "", ", [designed]: lacks zero"),
-        ('pole2 = "58 MHz"', "", ", [designed]: lacks pole2"),
+        ('pole2 = "58 MHz"', "", ', [designed]: lacks pole2; add a line such as pole2 = { value = "45 MHz", spread = '),
         ('pole2 = "58 MHz"', 'pole_2 = "58 MHz"', ", [designed]: unknown key 'pole_2'; did you mean pole2?"),
         ('"left"\n', '"left"\n[loop]\nbeta = 0.5\n', ", [loop] beta: is part of dc_gain in [designed]; leave it out"),
         ('"left"\n', '"left"\n[bench]\nload = "1 pF"\n', ", [bench] load: cannot be added to [designed]; give the"),
@@ -462,7 +471,11 @@ def test_zero_at_infinity_cannot_keep_an_upper_limit(tmp_path: Path) -> None:
     ("text", "message"),
     [
         ("", ", neither [elements] nor [designed]; expected one of the two"),
-        ('gm2 = "1.6 mS"\n', ", unknown entry before the first table, 'gm2'; known are [about], "),
+        ('gm2 = "1.6 mS"\n', ", [elements] is missing above gm2; write that heading on a line of its own"),
+        (MINIMAL.removeprefix("[elements]\n"), ", [elements] is missing above gm1; write that heading on a line of"),
+        (ROOTS.removeprefix("[designed]\n"), ", [designed] is missing above dc_gain; write that heading on a line of"),
+        ('Rz = "1 Ohm"\n' + MINIMAL, ", Rz stands above the heading [elements]; move it below"),
+        ("beta = 1.0\n", ", unknown entry before the first table, 'beta'; known are [about], "),
         ("elements = 3\n", ", elements is not a table; expected one heading [elements] with entries below it"),
         ("[[elements]]\n", ", elements is not a table; expected one heading [elements]"),
         ("[elements]\nRz = 1.3 kOhm\n", ", line 2, column 10: not TOML: Expected newline or end of document"),
@@ -475,6 +488,20 @@ def test_zero_at_infinity_cannot_keep_an_upper_limit(tmp_path: Path) -> None:
 )
 def test_file_that_is_no_design_is_refused(tmp_path: Path, text: str, message: str) -> None:
     assert refusal(tmp_path, text).startswith(message)
+
+
+def test_missing_heading_is_one_fault(tmp_path: Path) -> None:
+    for text in (MINIMAL.removeprefix("[elements]\n"), ROOTS.removeprefix("[designed]\n")):
+        assert "more fault" not in refusal(tmp_path, text)
+    assert refusal(tmp_path, 'half_plane = "left"\n').endswith("(and 1 more fault in this file)")
+
+
+def test_missing_elements_come_with_an_example_line(tmp_path: Path) -> None:
+    one = MINIMAL.replace('Cc = "1.8 pF"\n', "")
+    example = '{ value = "1.8 pF", spread = "6 %" }'
+    assert refusal(tmp_path, one) == f", [elements]: lacks Cc; add a line such as Cc = {example}"
+    two = one.replace('Rz = "1.3 kOhm"\n', "")
+    assert refusal(tmp_path, two) == f", [elements]: lacks Cc, Rz; add a line for each, such as Cc = {example}"
 
 
 def test_several_faults_are_counted_behind_the_first(tmp_path: Path) -> None:

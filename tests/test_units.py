@@ -46,6 +46,13 @@ def test_quantity_is_read_in_its_spellings(text: str, unit: str, value: float) -
         ("1,000 Hz", "Hz", "has a comma"),
         ("1.8 pF", "Ω", "unit 'F'; expected Ω, as in '1.3 kOhm'"),
         ("1.3k", "Ω", "no unit; expected Ω"),
+        ("0.6 megohm", "Ω", "'0.6 megohm' has unit 'megohm'; expected Ω, as in '0.6 MOhm'"),
+        ("1.5 Kilohm", "Ω", "has unit 'Kilohm'; expected Ω, as in '1.5 kOhm'"),
+        ("2 picofarads", "F", "has unit 'picofarads'; expected F, as in '2 pF'"),
+        ("5 microns", "S", "has unit 'microns'; expected S, as in '1.6 mS'"),
+        ("10 xF", "F", "has unit 'xF'; expected F, as in '1.8 pF'"),
+        ("80 mV", "Hz", "has unit 'mV'; expected Hz, as in '1.2 kHz'"),
+        ("1.3 kF", "Ω", "has unit 'F'; expected Ω"),
         ("1.6 ms", "S", "unit 's'; expected S"),  # milliseconds are no conductance
         ("0.5 nS", "s", "unit 'S'; expected s"),
         ("1.3 k Ohm", "Ω", "not a number with unit; expected something like '1.3 kOhm'"),

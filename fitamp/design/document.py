@@ -12,7 +12,7 @@ from typing import Any
 from fitamp.design.entries import unknown_name
 from fitamp.errors import DesignError
 
-__all__ = ["Faults", "Table", "file_bytes", "known_tables", "parse_toml"]
+__all__ = ["Faults", "Table", "file_bytes", "home_of", "known_tables", "parse_toml"]
 
 # A design is a page of text; a file beyond this is something else, given by mistake.
 LARGEST_FILE_BYTES = 1_000_000
@@ -87,11 +87,32 @@ def parse_toml(file: str, data: bytes) -> Table:
         ) from error
 
 
+def home_of(name: str, document: Mapping[str, object], keys: Mapping[str, Sequence[str]]) -> str | None:
+    """The table that an entry without heading belongs to, where keys that only this table has say so."""
+    for table in ("elements", "designed"):
+        own = set(keys[table]).difference(*(keys[other] for other in keys if other != table))
+        if name in keys[table] and own & document.keys():
+            return table
+    return None
+
+
+def _headless(table: str, name: str, *, is_there: bool) -> str:
+    if is_there:
+        return f"{name} stands above the heading [{table}]; move it below"
+    return f"[{table}] is missing above {name}; write that heading on a line of its own"
+
+
 def known_tables(document: Table, keys: Mapping[str, Sequence[str]], faults: Faults) -> dict[str, Table]:
     """Return the tables named in `keys` with the entries named there; everything else is a fault."""
     tables: dict[str, Table] = {}
+    headless: set[str] = set()
     for name, table in document.items():
-        if name not in keys:
+        home = home_of(name, document, keys)
+        if home is not None:
+            if home not in headless:
+                faults.add(_headless(home, name, is_there=home in document))
+            headless.add(home)
+        elif name not in keys:
             kind = "table" if isinstance(table, dict) else "entry before the first table,"
             faults.add(unknown_name(kind, name, [f"[{known}]" for known in keys]))
         elif not isinstance(table, dict):

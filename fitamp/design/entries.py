@@ -130,6 +130,8 @@ def read_limit(raw: object, quantity: str) -> Limit:
         raise ValueError(f"{shown(raw)} is not a list of two ends; expected something like {example}")
     low = None if _word(raw[0]) in _OPEN_LOW else _read_end(raw[0], quantity)
     high = None if _word(raw[1]) in _OPEN_HIGH else _read_end(raw[1], quantity)
+    if low is not None and high is not None and low >= high:
+        raise ValueError(f"the first end, {shown(raw[0])}, must be below the second, {shown(raw[1])}; correct the two")
     return Limit(low=low, high=high)
 
 

@@ -17,7 +17,7 @@ from typing import Any
 import numpy as np
 
 from fitamp.amplifier import ELEMENT_NAMES, Elements
-from fitamp.design.document import Faults, Table, file_bytes, known_tables, parse_toml
+from fitamp.design.document import Faults, Table, file_bytes, home_of, known_tables, parse_toml
 from fitamp.design.entries import (
     Entry,
     read_beta,
@@ -30,44 +30,17 @@ from fitamp.design.entries import (
     read_spread,
     read_time_spread,
 )
-from fitamp.design.model import LIMITED_QUANTITIES, SMALL_ZERO_RATIO, Design
+from fitamp.design.keys import ELEMENT_KEYS, KEYS, ROOT_KEYS
+from fitamp.design.model import SMALL_ZERO_RATIO, Design
 from fitamp.design.parts import Bench, HalfPlane, Limit, Roots
+from fitamp.design.template import example_line
 from fitamp.design.writing import design_text
 from fitamp.errors import UsageError
-from fitamp.units import si
+from fitamp.units import si, to_db
 
 __all__ = ["read_design", "write_design"]
 
-# Keys of [elements]: field of `Elements`, and unit.
-_ELEMENTS = {
-    "gm1": ("gm1", "S"),
-    "R1": ("R1", "Ω"),
-    "C1": ("C1", "F"),
-    "gm2": ("gm2", "S"),
-    "R2": ("R2", "Ω"),
-    "CL": ("CL", "F"),
-    "Cc": ("Cc", "F"),
-    "Rz": ("Rz", "Ω"),
-    "Cgd": ("Cgd", "F"),
-    "mirror_pole": ("mirror_pole_hz", "Hz"),
-}
 _MAY_BE_ZERO = {"Rz", "Cgd"}
-# Keys of [designed] that hold a quantity: field of `Roots`.
-_ROOTS = {
-    "dc_gain": "dc_gain",
-    "pole1": "pole1_hz",
-    "pole2": "pole2_hz",
-    "pole3": "pole3_hz",
-    "zero": "zero_hz",
-}
-_KEYS: dict[str, tuple[str, ...]] = {
-    "about": ("name", "note"),
-    "elements": tuple(_ELEMENTS),
-    "designed": (*_ROOTS, "half_plane"),
-    "loop": ("beta", "delay"),
-    "limits": (*LIMITED_QUANTITIES, "half_plane", "small_zero"),
-    "bench": ("load", "delay"),
-}
 
 
 def read_design(path: str | PathLike[str]) -> Design:
@@ -82,7 +55,8 @@ def read_design(path: str | PathLike[str]) -> Design:
     file = os.fspath(path)
     data = file_bytes(file)
     faults = Faults()
-    tables = known_tables(parse_toml(file, data), _KEYS, faults)
+    document = parse_toml(file, data)
+    tables = known_tables(document, KEYS, faults)
     common: dict[str, Any] = {"file": file, "sha256": hashlib.sha256(data).hexdigest()}
     common |= _read_about(tables.get("about", {}), faults, Path(file).stem)
     common |= {"bench": _read_bench(tables.get("bench", {}), faults)}
@@ -91,7 +65,8 @@ def read_design(path: str | PathLike[str]) -> Design:
     loop = _read_loop(tables.get("loop", {}), faults)
     if ("elements" in tables) == ("designed" in tables):
         found = "both [elements] and [designed]" if "elements" in tables else "neither [elements] nor [designed]"
-        faults.add(f"{found}; expected one of the two")
+        if "elements" in tables or all(home_of(name, document, KEYS) is None for name in document):
+            faults.add(f"{found}; expected one of the two")
         raise faults.error(file)
     if "elements" in tables:
         design = _element_design(tables["elements"], loop, half_plane, common, faults)
@@ -178,14 +153,13 @@ def _element_design(
 ) -> Design | None:
     entries: dict[str, Entry] = {}
     for key, raw in table.items():
-        name, unit = _ELEMENTS[key]
+        name, unit = ELEMENT_KEYS[key]
         with faults.at("elements", key):
             read = partial(read_quantity, unit=unit, zero_allowed=key in _MAY_BE_ZERO)
             entries[name] = read_entry(raw, read, may_be_under_test=True)
     missing = [name for name in ELEMENT_NAMES if name not in table]
     if missing:
-        hint = '; write Rz = "0 Ohm" where there is no resistor' if "Rz" in missing else ""
-        faults.add(f"[elements]: lacks {', '.join(missing)}{hint}")
+        faults.add(_lacks("elements", missing))
     if faults.found:
         return None
     design = None
@@ -202,6 +176,12 @@ def _element_design(
     return _checked(design, "elements", faults)
 
 
+def _lacks(table: str, missing: list[str]) -> str:
+    each = "for each, " if len(missing) > 1 else ""
+    zero = ', or Rz = "0 Ohm" where there is no resistor' if missing == ["Rz"] else ""
+    return f"[{table}]: lacks {', '.join(missing)}; add a line {each}such as {example_line(table, missing[0])}{zero}"
+
+
 def _root_design(
     table: Table, loop: dict[str, float], half_plane: HalfPlane | None, common: Table, faults: Faults
 ) -> Design | None:
@@ -211,7 +191,7 @@ def _root_design(
             if key == "dc_gain":
                 entries["dc_gain"] = read_entry(raw, read_gain)
             elif key != "half_plane" and not (key == "zero" and raw == "none"):
-                entries[_ROOTS[key]] = read_entry(raw, partial(read_quantity, unit="Hz"))
+                entries[ROOT_KEYS[key]] = read_entry(raw, partial(read_quantity, unit="Hz"))
     place = half_plane
     if "half_plane" in table:
         with faults.at("designed", "half_plane"):
@@ -224,7 +204,7 @@ def _root_design(
     if "half_plane" not in table and half_plane is None:
         missing.append("half_plane")
     if missing:
-        faults.add(f"[designed]: lacks {', '.join(missing)}")
+        faults.add(_lacks("designed", missing))
     if "beta" in loop:
         faults.add("[loop] beta: is part of dc_gain in [designed]; leave it out")
     if common["bench"].load_f:
@@ -254,10 +234,17 @@ def _checked(design: Design | None, table: str, faults: Faults) -> Design | None
         return None
     try:
         with np.errstate(all="ignore"):
-            design.transfer()
+            gain = design.transfer().dc_gain
             design.on_bench()
     except (ValueError, ArithmeticError):
         faults.add(f"[{table}]: no loop gain can be computed from these values; check the prefixes of the units")
+        return None
+    gain_limit = design.limits.get("dc_gain")
+    if gain_limit is not None and not gain_limit.contains(gain) and gain_limit.contains(to_db(gain)):
+        faults.add(
+            f"[limits] dc_gain: a plain number is V/V, and the design has {si(gain, 'V/V')}; write decibels as text, "
+            f'such as "{to_db(gain):.0f} dB"'
+        )
     zero_limit = design.limits.get("zero_hz")
     if design.half_plane is HalfPlane.INFINITY and zero_limit is not None and zero_limit.high is not None:
         faults.add(
