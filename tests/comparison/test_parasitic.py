@@ -122,7 +122,7 @@ def test_without_pole_2_there_is_no_load_to_tell() -> None:
     found = parasitics(replace(fit, parameters=replace(fit.parameters, pole2_hz=bound)), DESIGN)
     assert found is not None
     assert found.load_f.known is found.load_total_f.known is Known.UNDETERMINED
-    assert found.sentence == "the load capacitance cannot be told, because pole 2 is not determined by this band"
+    assert found.sentence == "the load capacitance cannot be told: pole 2 is not determined by this band"
 
 
 def test_the_sentence_says_what_is_assumed_and_when_it_is_nothing() -> None:

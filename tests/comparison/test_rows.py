@@ -14,7 +14,7 @@ from fitamp.amplifier import Elements
 from fitamp.comparison import Window, compare
 from fitamp.comparison.expectation import designed_as_measured, fit_with_design
 from fitamp.comparison.rows import comparison_rows, designed_values
-from fitamp.design import Design, HalfPlane, Limit, Roots
+from fitamp.design import Bench, Design, HalfPlane, Limit, Roots
 from fitamp.estimate import Estimate, Known
 from fitamp.fitting import LoopFit
 from fitamp.sweep import Sweep
@@ -105,7 +105,7 @@ def test_pole_distances_are_positive_and_so_are_those_of_a_complex_pair() -> Non
         Design.from_elements(NOMINAL.with_changes(Rz=0), spreads=SPREADS, bench=BENCH),
         Design.from_roots(ROOTS),
         Design.from_roots(replace(ROOTS, half_plane=HalfPlane.RIGHT)),
-        Design.from_roots(replace(ROOTS, pole3_hz=None)),
+        Design.from_roots(replace(ROOTS, pole3_hz=None), bench=Bench(delay_s=0.0)),
     ],
     ids=["elements", "mirror and delay", "no resistor", "roots", "right-half-plane roots", "roots without pole 3"],
 )

@@ -14,7 +14,7 @@ from fitamp.comparison import Nulling, compare
 from fitamp.comparison.expectation import fit_with_design
 from fitamp.comparison.parasitic import parasitics
 from fitamp.comparison.verdict import advise, judge_nulling
-from fitamp.design import Design, HalfPlane, Limit, Roots
+from fitamp.design import Bench, Design, HalfPlane, Limit, Roots
 from fitamp.estimate import NOT_KNOWN, Estimate
 from fitamp.noise import simulate_bench
 from fitamp.sweep import Sweep
@@ -73,7 +73,8 @@ NO_ZERO = replace(LEFT_ROOTS, zero_hz=None, half_plane=HalfPlane.INFINITY)
 )
 def test_designs_given_by_roots(designed: Roots, built: Roots, nulling: Nulling) -> None:
     gain = simulate_bench(built.transfer().evaluate(FREQ_HZ), NOISE, np.random.default_rng(37))
-    assert compare(Sweep(freq_hz=FREQ_HZ, gain=gain), Design.from_roots(designed)).verdict.nulling is nulling
+    design = Design.from_roots(designed, bench=Bench(delay_s=0.0))
+    assert compare(Sweep(freq_hz=FREQ_HZ, gain=gain), design).verdict.nulling is nulling
 
 
 def test_a_far_third_pole_is_never_taken_for_the_wrong_side() -> None:
