@@ -1,12 +1,14 @@
 """The command line: parse, call the library, print, return an exit code.
 
 0 done · 1 internal fault · 2 usage · 3 unusable input · 4 no trustworthy result. Results go to stdout, errors as one
-line to stderr. Nothing heavy is imported before a command runs.
+line to stderr; with ``--json -`` an error without a result is an object on stdout, too (schema fitamp/error/1).
+Nothing heavy is imported before a command runs.
 """
 
 from __future__ import annotations
 
 import argparse
+import json
 import sys
 from collections.abc import Callable, Sequence
 from typing import NoReturn
@@ -18,6 +20,11 @@ __all__ = ["build_parser", "main", "run"]
 
 EXIT_INTERNAL = 1
 EXIT_INTERRUPTED = 130
+# Written out, because --help shall not import the readers; a test holds it against them.
+COLUMNS_HELP = (
+    'columns of a CSV as key=column:unit, a column by its number or quoted name, as in "f=1:Hz mag=2:dB phase=3:deg"; '
+    "keys and units: f Hz, kHz, MHz, GHz, rad/s; mag dB, linear; phase deg, rad; re, im and complex without unit"
+)
 
 
 class _Parser(argparse.ArgumentParser):
@@ -57,6 +64,11 @@ def build_parser() -> argparse.ArgumentParser:
     _output_options(compare, folder=True)
     compare.set_defaults(action="compare")
 
+    template = commands.add_parser("template", help="print a design file to fill in, with every table and key")
+    template.add_argument("--out", type=_name, metavar="FILE", help="write it to a file instead")
+    template.add_argument("--force", action="store_true", help="write over an existing file")
+    template.set_defaults(action="template")
+
     demo = commands.add_parser("demo", help="run the main job on the invented example parts")
     demo.add_argument("--examples", metavar="DIR", help="folder of the examples (default: data_examples)")
     demo.add_argument("--out", metavar="DIR", default="demo_output", help="folder for pictures and numbers")
@@ -67,32 +79,37 @@ def build_parser() -> argparse.ArgumentParser:
 
 def _reading_options(parser: argparse.ArgumentParser) -> None:
     group = parser.add_argument_group("reading")
-    group.add_argument(
-        "--columns", metavar="SPEC", help='columns and units of a CSV, as in "f=1:Hz mag=2:dB phase=3:deg"'
-    )
+    group.add_argument("--columns", metavar="SPEC", help=COLUMNS_HELP)
     group.add_argument("--trace", metavar="Sij", help="trace of a Touchstone file (default S11 of one port, else S21)")
     group.add_argument("--sign", choices=("as-read", "inverted"), help="sign of the read-out, where it is not plain")
 
 
 def _output_options(parser: argparse.ArgumentParser, *, folder: bool) -> None:
     group = parser.add_argument_group("output")
-    group.add_argument("--json", metavar="FILE", help="write the result as JSON; - prints it, and nothing else")
+    group.add_argument(
+        "--json", type=_name, metavar="FILE", help="write the result as JSON; - prints it, and nothing else"
+    )
     if folder:
-        group.add_argument("--out", metavar="DIR", help="folder for pictures (PNG, SVG), JSON and table")
+        group.add_argument("--out", type=_name, metavar="DIR", help="folder for pictures (PNG, SVG), JSON and table")
     group.add_argument("--force", action="store_true", help="write over existing output")
+
+
+def _name(text: str) -> str:
+    if not text.strip():
+        raise argparse.ArgumentTypeError("the name is empty")
+    return text
 
 
 def main(argv: Sequence[str] | None = None) -> int:
     """Run a command and return its exit code."""
+    words = sys.argv[1:] if argv is None else argv
     try:
-        args = build_parser().parse_args(argv)
+        args = build_parser().parse_args(words)
         return _action(args.action)(args)
     except FitampError as error:
-        print(f"fitamp: {_one_line(str(error))}", file=sys.stderr)
-        return error.exit_code
+        return _fail(str(error), error.exit_code, words)
     except KeyboardInterrupt:
-        print("fitamp: interrupted; nothing half-written is left", file=sys.stderr)
-        return EXIT_INTERRUPTED
+        return _fail("interrupted; nothing half-written is left", EXIT_INTERRUPTED, words)
 
 
 def run() -> NoReturn:
@@ -108,10 +125,29 @@ def run() -> NoReturn:
         sys.stderr.close()
         code = 0
     except Exception as error:  # the last net: a fault of ours is one line too
-        fault = _one_line(f"internal fault: {type(error).__name__}: {error}")
-        print(f"fitamp: {fault}; please report it with the file that caused it", file=sys.stderr)
-        code = EXIT_INTERNAL
+        fault = f"internal fault: {type(error).__name__}: {error}; please report it with the file that caused it"
+        code = _fail(fault, EXIT_INTERNAL, sys.argv[1:])
     sys.exit(code)
+
+
+def _fail(message: str, exit_code: int, words: Sequence[str]) -> int:
+    """Say what went wrong: one line on stderr, and with ``--json -`` an object on stdout."""
+    line = _one_line(message)
+    print(f"fitamp: {line}", file=sys.stderr)
+    if _wants_json_printed(words):
+        error = {"message": line, "exit_code": exit_code}
+        print(json.dumps({"schema": "fitamp/error/1", "error": error}, indent=2))
+    return exit_code
+
+
+def _wants_json_printed(words: Sequence[str]) -> bool:
+    """Whether ``--json -`` is there; read off the words, because those that cannot be parsed say it as well."""
+    for word, following in zip(words, [*words[1:], ""], strict=False):
+        option, equals, value = word.partition("=")
+        is_json = len(option) > 2 and "--json".startswith(option)  # argparse takes what is short and unmistakable
+        if is_json and (value if equals else following) == "-":
+            return True
+    return False
 
 
 def _one_line(text: str) -> str:
@@ -125,6 +161,7 @@ def _action(name: str) -> Callable[[argparse.Namespace], int]:
         "read": commands.read,
         "fit": commands.fit,
         "compare": commands.compare,
+        "template": commands.template,
         "demo": commands.demo,
     }
     return actions[name]

@@ -13,7 +13,7 @@ from typing import TYPE_CHECKING, Any
 from fitamp.comparison import Comparison
 from fitamp.comparison import compare as compare_sweep
 from fitamp.design import read_design
-from fitamp.errors import FitError, UsageError
+from fitamp.errors import FitError, InputError, UsageError
 from fitamp.fitting import LoopFit, fit_sweep
 from fitamp.importers import read_sweep
 from fitamp.report.as_json import comparison_as_dict, dumps, fit_as_dict, sweep_as_dict
@@ -24,18 +24,34 @@ from fitamp.sweep import Sign, Sweep
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
-__all__ = ["compare", "demo", "fit", "read"]
+__all__ = ["compare", "demo", "fit", "read", "template"]
 
 STDOUT = "-"
 
 
 def read(args: argparse.Namespace) -> int:
-    """`fitamp read FILE…`."""
+    """`fitamp read FILE…`: what can be shown of the good files, and one line of error for each of the others."""
     _refuse_early(args)
-    sweeps = [_sweep(args, file) for file in args.files]
-    record = {"schema": "fitamp/read/1", "sweeps": [sweep_as_dict(sweep) for sweep in sweeps]}
-    _deliver(args, record, "\n".join(sweep_text(sweep) for sweep in sweeps))
-    return 0
+    sweeps: list[Sweep] = []
+    errors: list[dict[str, str]] = []
+    for file in args.files:
+        try:
+            sweeps.append(_sweep(args, file))
+        except InputError as error:
+            if len(args.files) == 1:
+                raise
+            errors.append({"file": file, "message": printable(str(error))})
+    for bad in errors:
+        print(f"fitamp: {bad['message']}", file=sys.stderr)
+    code = InputError.exit_code if errors else 0
+    record: dict[str, Any] = {"schema": "fitamp/read/1"}
+    record |= {"sweeps": [sweep_as_dict(sweep) for sweep in sweeps], "errors": errors}
+    if sweeps:
+        _deliver(args, record, "\n".join(sweep_text(sweep) for sweep in sweeps))
+    elif args.json == STDOUT:
+        message = f"none of the {len(errors)} files can be read"
+        print(dumps(record | {"schema": "fitamp/error/1", "error": {"message": message, "exit_code": code}}))
+    return code
 
 
 def fit(args: argparse.Namespace) -> int:
@@ -61,6 +77,18 @@ def compare(args: argparse.Namespace) -> int:
         _write_comparison(result, record, text, Path(args.out), force=args.force)
     _deliver(args, record, text)
     return _trusted(result.fit, args.file)
+
+
+def template(args: argparse.Namespace) -> int:
+    """`fitamp template`: a design file to fill in."""
+    from fitamp.design.template import design_template
+
+    if not args.out:
+        sys.stdout.write(design_template())
+        return 0
+    write_text(Path(args.out), design_template(), force=args.force)
+    print(f"design file to fill in: {printable(args.out)}")
+    return 0
 
 
 def demo(args: argparse.Namespace) -> int:

@@ -14,7 +14,8 @@ from typing import Any
 import pytest
 
 from fitamp import __version__
-from fitamp.cli import main, run
+from fitamp.cli import COLUMNS_HELP, main, run
+from fitamp.importers.quantity import UNITS_OF
 
 ROOT = Path(__file__).resolve().parent.parent
 DESIGN = ROOT / "data_examples" / "line_buffer.toml"
@@ -124,6 +125,57 @@ def test_help_and_version_end_well(capsys: Captured, arguments: list[str]) -> No
     assert __version__ in out if arguments == ["--version"] else "usage: fitamp" in out
 
 
+def test_help_on_columns_lists_the_keys_and_units_that_the_reader_takes() -> None:
+    with_units = "; ".join(f"{quantity} {', '.join(units)}" for quantity, units in UNITS_OF.items() if units)
+    *first, last = (quantity for quantity, units in UNITS_OF.items() if not units)
+    assert COLUMNS_HELP.endswith(f": {with_units}; {', '.join(first)} and {last} without unit")
+
+
+def test_read_shows_the_good_files_and_a_line_for_each_bad_one(capsys: Captured, tmp_path: Path) -> None:
+    bad, missing = tmp_path / "bad.csv", tmp_path / "missing.csv"
+    bad.write_text("f (Hz),|T| (dB),phase (deg)\n10,80,0\n20,OVL,0\n", encoding="utf-8")
+    code, out, err = called(capsys, "read", PART_A, bad, missing, PART_B)
+    assert code == 3
+    assert out.index(PART_A.name) < out.index(PART_B.name)
+    lines = err.splitlines()
+    assert [str(path) in line for path, line in zip((bad, missing), lines, strict=True)] == [True, True]
+    assert lines[0].startswith("fitamp: ")
+
+    code, out, _ = called(capsys, "read", PART_A, bad, missing, "--json", "-")
+    record = json.loads(out)
+    assert (code, record["schema"]) == (3, "fitamp/read/1")
+    assert [sweep["sweep"]["file"] for sweep in record["sweeps"]] == [str(PART_A)]
+    assert [error["file"] for error in record["errors"]] == [str(bad), str(missing)]
+    assert [f"fitamp: {error['message']}" for error in record["errors"]] == lines
+    assert json.loads(called(capsys, "read", PART_A, "--json", "-")[1])["errors"] == []
+
+
+def test_read_of_bad_files_only_has_nothing_to_show(capsys: Captured, tmp_path: Path) -> None:
+    missing = [tmp_path / "a.csv", tmp_path / "b.csv"]
+    code, out, err = called(capsys, "read", *missing)
+    assert (code, out, err.count("\n")) == (3, "", 2)
+    code, out, err = called(capsys, "read", *missing, "--json", "-")
+    record = json.loads(out)
+    assert (code, err.count("\n")) == (3, 2)
+    assert (record["schema"], record["sweeps"], len(record["errors"])) == ("fitamp/error/1", [], 2)
+    assert record["error"] == {"message": "none of the 2 files can be read", "exit_code": 3}
+    path = tmp_path / "out.json"
+    assert called(capsys, "read", *missing, "--json", path)[0] == 3
+    assert not path.exists()
+
+
+def test_template_prints_or_writes_a_design_file(capsys: Captured, tmp_path: Path) -> None:
+    code, out, err = called(capsys, "template")
+    assert (code, err) == (0, "")
+    path = tmp_path / "chip.toml"
+    code, said, err = called(capsys, "template", "--out", path)
+    assert (code, said, err) == (0, f"design file to fill in: {path}\n", "")
+    assert path.read_text(encoding="utf-8") == out
+    assert "exists already" in refused(capsys, 2, "template", "--out", path)
+    assert called(capsys, "template", "--out", path, "--force")[0] == 0
+    assert called(capsys, "compare", PART_A, "--design", path)[0] == 0
+
+
 # Exit codes
 
 
@@ -208,6 +260,34 @@ def test_too_few_points_give_no_trustworthy_result(capsys: Captured, tmp_path: P
     assert names_in(tmp_path) == {"few.csv"}
 
 
+@pytest.mark.parametrize(
+    ("code", "arguments"),
+    [
+        (2, ["fit", "--json", "-"]),
+        (2, ["mend", "--json=-"]),
+        (2, ["fit", PART_A, "--json", "-", "--columns", "nonsense"]),
+        (3, ["read", "missing.csv", "--json", "-"]),
+        (3, ["fit", "missing.csv", "--js", "-"]),
+        (3, ["compare", PART_A, "--design", "missing.toml", "--json", "-"]),
+    ],
+)
+def test_an_error_is_one_object_of_json_as_well(capsys: Captured, code: int, arguments: Sequence[str | Path]) -> None:
+    found, out, err = called(capsys, *arguments)
+    assert found == code
+    assert err.count("\n") == 1
+    error = {"message": err.removeprefix("fitamp: ").rstrip("\n"), "exit_code": code}
+    assert json.loads(out) == {"schema": "fitamp/error/1", "error": error}
+
+
+def test_an_empty_name_is_called_empty(capsys: Captured) -> None:
+    assert refused(capsys, 3, "read", "") == (
+        "fitamp: the name of the sweep file is empty; name one CSV or Touchstone file\n"
+    )
+    assert "the name of the design file is empty" in refused(capsys, 3, "compare", PART_A, "--design", "")
+    for option in ("--json", "--out"):
+        assert f"argument {option}: the name is empty" in refused(capsys, 2, "fit", PART_A, option, "")
+
+
 def test_a_hostile_file_name_stays_one_inert_line(capsys: Captured, tmp_path: Path) -> None:
     err = refused(capsys, 3, "fit", tmp_path / "a\x1b[31m\nb[red].csv")
     assert r"a\x1b[31m\nb[red].csv" in err
@@ -275,11 +355,12 @@ def test_a_fault_of_ours_is_one_line_and_leaves_nothing(
         raise fault
 
     monkeypatch.setattr("fitamp.plots.save_figures", broken)
-    monkeypatch.setattr(sys, "argv", ["fitamp", "fit", str(PART_A), "--out", str(tmp_path / "out")])
+    arguments = ["fitamp", "fit", str(PART_A), "--out", str(tmp_path / "out"), "--json", "-"]
+    monkeypatch.setattr(sys, "argv", arguments)
     with pytest.raises(SystemExit, match=r"^1$"):
         run()
     captured = capsys.readouterr()
-    assert captured.out == ""
+    assert json.loads(captured.out)["error"]["exit_code"] == 1
     assert captured.err.startswith(f"fitamp: internal fault: {type(fault).__name__}: ")
     assert captured.err.count("\n") == 1
     assert names_in(tmp_path) == set()
@@ -315,7 +396,7 @@ def test_the_process_helps() -> None:
     done = process("--help", PYTHONIOENCODING="utf-8")
     assert done.returncode == 0
     assert done.stderr == b""
-    for command in ("read", "fit", "compare", "demo"):
+    for command in ("read", "fit", "compare", "template", "demo"):
         assert command in done.stdout.decode("utf-8")
 
 

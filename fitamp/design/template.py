@@ -60,7 +60,7 @@ _ENTRIES: dict[str, dict[str, tuple[str, str]]] = {
         "crossover_hz": ('["9 MHz", "18 MHz"]', ""),
         "phase_margin_deg": ("[65, 90]", "degrees"),
         "gain_margin_db": ("[12, inf]", "dB"),
-        "half_plane": (f'"{HalfPlane.LEFT}"', "where the zero is meant to lie; follows from the elements otherwise"),
+        "half_plane": (f'"{HalfPlane.LEFT}"', "place of the zero; else it follows from the elements"),
         "small_zero": (f"{SMALL_ZERO_RATIO}", "share of Cc/gm2 up to which a zero time counts as none"),
     },
     "bench": {
