@@ -7,7 +7,7 @@ from fitamp.comparison.notes import comparison_notes
 from fitamp.comparison.parasitic import parasitics
 from fitamp.comparison.result import Advice, Comparison, Nulling, Parasitic, Row, Verdict, Window
 from fitamp.comparison.rows import comparison_rows
-from fitamp.comparison.verdict import advise, judge_nulling
+from fitamp.comparison.verdict import advise, describes, judge_nulling
 from fitamp.design import Design
 from fitamp.errors import UsageError
 from fitamp.sweep import NoiseLevels, Sweep
@@ -42,7 +42,7 @@ def compare(sweep: Sweep, design: Design, *, noise: NoiseLevels | None = None) -
     designed_zero_s = design.zero_time_s
     if designed_fit is not None and designed_fit.parameters.zero_time_s.value is not None:
         designed_zero_s = designed_fit.parameters.zero_time_s.value
-    rows = comparison_rows(fit, designed_fit, design, verdict.window)
+    rows = comparison_rows(fit, designed_fit, design, verdict.window, trusted=describes(fit))
     return Comparison(
         design=design,
         fit=fit,

@@ -64,8 +64,10 @@ def measured_values(fit: LoopFit) -> dict[str, Estimate]:
     return dict((*fit.parameters.items(), *fit.margins.items()))
 
 
-def comparison_rows(fit: LoopFit, designed_fit: LoopFit | None, design: Design, window: Window) -> tuple[Row, ...]:
-    """One row a quantity, in a fixed order."""
+def comparison_rows(
+    fit: LoopFit, designed_fit: LoopFit | None, design: Design, window: Window, *, trusted: bool = True
+) -> tuple[Row, ...]:
+    """One row a quantity, in a fixed order; of a fit that is not trusted none is said to be inside or outside."""
     exact, measured = designed_values(design), measured_values(fit)
     as_measured = measured_values(designed_fit) if designed_fit else {}
     rows = []
@@ -86,7 +88,7 @@ def comparison_rows(fit: LoopFit, designed_fit: LoopFit | None, design: Design, 
                 sigma=sigma,
                 low=low,
                 high=high,
-                inside=_inside(estimate, low, high),
+                inside=_inside(estimate, low, high) if trusted else None,
             )
         )
     return tuple(rows)

@@ -98,6 +98,10 @@ def comparison_as_dict(comparison: Comparison) -> dict[str, Any]:
         "rz_change_ohm": _estimate(comparison.advice.rz_change_ohm),
         "sentence": comparison.advice.sentence,
     }
+    record["warnings"] = [
+        {"code": note.code.value, "message": note.message} for note in (*comparison.notes, *comparison.fit.warnings)
+    ]
+    record["broken_limits"] = list(comparison.broken_limits)
     record["parasitic"] = None
     if parasitic is not None:
         record["parasitic"] = {

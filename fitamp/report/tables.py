@@ -12,7 +12,7 @@ from typing import TYPE_CHECKING
 
 from fitamp.comparison import Comparison, Row
 from fitamp.estimate import Estimate
-from fitamp.fitting import LoopFit
+from fitamp.fitting import FitWarning, LoopFit
 from fitamp.fitting.result import LABELS, text_of, unit_of
 from fitamp.sweep import Sweep
 from fitamp.units import si, si_with_error, to_db
@@ -55,15 +55,12 @@ def fit_text(fit: LoopFit) -> str:
     """A fit: parameters, the zero in words, margins, what to know."""
     console = _console()
     rows = [
-        (LABELS[name], text_of(name, estimate), _interval(name, estimate.ci95), estimate.known.value)
+        (LABELS[name], _estimate_text(name, estimate), _interval(name, estimate.ci95), estimate.known.value)
         for name, estimate in fit.parameters.items()
         if name not in {"delay_s", "far_pole_s"} or estimate.stderr is not None
     ]
     _print_table(console, printable(fit.sweep.origin.file), ("quantity", "value ± 1 σ", "95 % interval", "known"), rows)
-    for root in fit.poles:
-        if root.value_hz.imag > 0:
-            real, imaginary = si(root.value_hz.real, "Hz"), si(root.value_hz.imag, "Hz")
-            _say(console, f"poles: a complex pair at {real} ± j {imaginary}")
+    _complex_pair(console, fit)
     _say(console, f"zero: {zero_sentence(fit)}")
     _margins(console, fit)
     _say(
@@ -72,7 +69,7 @@ def fit_text(fit: LoopFit) -> str:
         f"{fit.adequacy.reduced_chi_square:.3g})",
     )
     _say(console, noise_sentence(fit))
-    _warnings(console, fit)
+    _warnings(console, fit, ())
     return _text(console)
 
 
@@ -94,7 +91,10 @@ def comparison_text(comparison: Comparison) -> str:
     title = f"{printable(comparison.fit.sweep.origin.file)} against {printable(comparison.design.file)}"
     headings = ("quantity", "designed", "seen as\nmeasured", "measured ± 1 σ", "deviation", "in σ", "limits", "within")
     _print_table(console, title, headings, _comparison_rows(comparison.rows), numbers=True)
+    _limits_kept(console, comparison)
+    _complex_pair(console, comparison.fit)
     _margins(console, comparison.fit, rows=("overshoot", "settling_s"))
+    _say(console, f"lag: {lag_sentence(comparison.fit)}")
     _say(
         console,
         f"model: {comparison.fit.adequacy.sentence} (reduced chi-square "
@@ -106,8 +106,46 @@ def comparison_text(comparison: Comparison) -> str:
             f"assumed: a spread of 20 % for {', '.join(comparison.design.assumed_spreads)}, not stated in "
             "the design file",
         )
-    _warnings(console, comparison.fit)
+    _warnings(console, comparison.fit, comparison.notes)
     return _text(console)
+
+
+def _complex_pair(console: Console, fit: LoopFit) -> None:
+    for root in fit.poles:
+        if root.value_hz.imag > 0:
+            real, imaginary = si(root.value_hz.real, "Hz"), si(root.value_hz.imag, "Hz")
+            quality = abs(root.value_hz) / abs(2 * root.value_hz.real)
+            _say(console, f"poles: a complex pair at {real} ± j {imaginary} (Q = {quality:.3g}); pole 1 is pole 2")
+
+
+def _limits_kept(console: Console, comparison: Comparison) -> None:
+    """How many of the stated limits are kept, and which are not."""
+    stated = [row for row in comparison.rows if row.quantity != "zero_time_s" and (row.low, row.high) != (None, None)]
+    if not stated:
+        return
+    kept = sum(row.inside is True for row in stated)
+    parts = [f"{kept} of {len(stated)} kept beyond doubt"]
+    broken = [LABELS[name] for name in comparison.broken_limits]
+    if broken:
+        parts.append(f"BROKEN: {', '.join(broken)}")
+    open_rows = [LABELS[row.quantity] for row in stated if row.inside is None]
+    if open_rows:
+        parts.append(f"not decided: {', '.join(open_rows)}")
+    _say(console, f"limits beside the zero's: {'; '.join(parts)}")
+
+
+def lag_sentence(fit: LoopFit) -> str:
+    """Path delay and third pole as the fit took them, held against what was known of them."""
+    model, parameters = fit.solution.model, fit.parameters
+    delay, far_pole = text_of("delay_s", parameters.delay_s), text_of("far_pole_s", parameters.far_pole_s)
+    known = f"stated {si_with_error(model.delay.mean_s, model.delay.sd_s, 's')}"
+    if not math.isfinite(model.delay.sd_s):
+        known = "not stated"
+    expected_s = model.far_pole.intercept_s + model.far_pole.slope * (parameters.zero_time_s.value or 0.0)
+    beforehand = f"the design expects {si_with_error(max(expected_s, 0.0), model.far_pole.sd_s, 's')}"
+    if not math.isfinite(model.far_pole.sd_s):
+        beforehand = "nothing known beforehand"
+    return f"path delay {delay} ({known}), third pole time {far_pole} ({beforehand})"
 
 
 def zero_sentence(fit: LoopFit) -> str:
@@ -143,27 +181,34 @@ def _comparison_rows(rows: Sequence[Row]) -> list[tuple[str, ...]]:
 
 def _comparison_row(row: Row) -> tuple[str, ...]:
     unit = unit_of(row.quantity)
-    deviation = "–"
-    if row.deviation is not None:
-        deviation = f"{row.deviation:+.2f} {unit}" if unit in {"°", "dB"} else f"{100 * row.deviation:+.2f} %"
     if row.quantity == "dc_gain":
         # A gain is read in dB at the bench; scripts get V/V.
         numbers = [_decibels(value) for value in (row.designed, row.designed_as_measured)]
-        measured, limits = _gain_text(row.measured), _limits(_as_db(row.low), _as_db(row.high), "dB")
+        measured = _estimate_text(row.quantity, row.measured)
+        limits = _limits(_as_db(row.low), _as_db(row.high), "dB")
     else:
         numbers = [si(value, unit) for value in (row.designed, row.designed_as_measured)]
-        measured, limits = text_of(row.quantity, row.measured), _limits(row.low, row.high, unit)
+        measured, limits = _estimate_text(row.quantity, row.measured), _limits(row.low, row.high, unit)
         if row.quantity == "gain_margin_db" and row.measured.value is None:
             measured = "unlimited"
     return (
         LABELS[row.quantity],
         *numbers,
         measured,
-        deviation.replace("-", "−"),
+        _deviation(row.deviation, unit),
         "–" if row.sigma is None else _sigma(row.sigma),
         limits,
         {True: "yes", False: "NO", None: "–" if row.low is None and row.high is None else "?"}[row.inside],
     )
+
+
+def _deviation(deviation: float | None, unit: str) -> str:
+    if deviation is None:
+        return "–"
+    if unit in {"°", "dB"}:
+        return f"{deviation:+.2f} {unit}".replace("-", "−")
+    # Ten times as much is no longer a percentage.
+    return (f"{100 * deviation:+.2f} %" if abs(deviation) < 10 else f"× {1 + deviation:.3g}").replace("-", "−")
 
 
 def _zero_row(row: Row) -> tuple[str, ...]:
@@ -189,6 +234,10 @@ def _decibels(ratio: float | None) -> str:
     return si(_as_db(ratio), "dB")
 
 
+def _estimate_text(quantity: str, estimate: Estimate) -> str:
+    return _gain_text(estimate) if quantity == "dc_gain" else text_of(quantity, estimate)
+
+
 def _gain_text(gain: Estimate) -> str:
     """A gain estimate in dB, or its bound."""
     if gain.value is not None and gain.stderr is not None:
@@ -199,6 +248,8 @@ def _gain_text(gain: Estimate) -> str:
 
 
 def _sigma(sigma: float) -> str:
+    if abs(sigma) >= 1000:
+        return "> +999" if sigma > 0 else "< −999"
     return (f"{sigma:+.1f}" if abs(sigma) < 100 else f"{sigma:+.0f}").replace("-", "−")
 
 
@@ -223,6 +274,8 @@ def _interval(name: str, ci95: tuple[float | None, float | None]) -> str:
     """Both ends, with digits enough to tell them apart."""
     low, high = ci95
     unit = unit_of(name)
+    if name == "dc_gain":
+        low, high, unit = _as_db(low), _as_db(high), "dB"
     if low is None and high is None:
         return "–"
     digits = 4
@@ -245,8 +298,8 @@ def _margins(console: Console, fit: LoopFit, rows: Sequence[str] | None = None) 
     _say(console, f"closed loop: {', '.join(parts)}")
 
 
-def _warnings(console: Console, fit: LoopFit) -> None:
-    for warning in fit.warnings:
+def _warnings(console: Console, fit: LoopFit, notes: Sequence[FitWarning]) -> None:
+    for warning in (*notes, *fit.warnings):
         _say(console, f"note ({warning.code.value}): {warning.message}", style="yellow")
 
 
@@ -286,7 +339,7 @@ def _print_table(
         title_justify="left",
         box=box.SIMPLE_HEAD,
         pad_edge=False,
-        padding=(0, 1, 0, 0),
+        padding=(0, 0),
         show_edge=False,
     )
     for index, heading in enumerate(headings):
