@@ -16,6 +16,8 @@ __all__ = ["LINEAR_SHARE", "frequency_axis", "hertz", "signed_decades", "signed_
 NAMED_DECADES = 10
 # The linear part around 0 is as wide as this share of a decade on each side.
 LINEAR_SHARE = 0.8
+# No tick but 0 within this share of each half of the axis.
+FREE_SHARE = 0.08
 
 
 def hertz(value_hz: float) -> str:
@@ -45,7 +47,9 @@ def signed_decades(axis: Axis, linear_hz: float, reach_hz: float) -> None:
     set_scale("symlog", linthresh=linear_hz, linscale=LINEAR_SHARE)
     lowest, highest = round(math.log10(linear_hz)), math.floor(math.log10(reach_hz) + 1e-9)
     step = 1 if highest - lowest <= 4 else math.ceil((highest - lowest) / 4)
-    exponents = range(highest, lowest - 1, -step)
+    # The lowest ones would stand on the 0 where there are many decades.
+    nearest = lowest - LINEAR_SHARE + FREE_SHARE * (highest - lowest + LINEAR_SHARE)
+    exponents = [e for e in range(highest, lowest - 1, -step) if e >= nearest]
     ticks = [-(10.0**e) for e in exponents] + [0.0] + [10.0**e for e in reversed(exponents)]
     axis.set_major_locator(FixedLocator(ticks))
     axis.set_major_formatter(FixedFormatter([hertz(tick) for tick in ticks]))

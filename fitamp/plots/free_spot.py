@@ -7,7 +7,7 @@ from dataclasses import dataclass, field
 
 import numpy as np
 from matplotlib.axes import Axes
-from numpy.typing import ArrayLike
+from numpy.typing import ArrayLike, NDArray
 
 from fitamp.arrays import FloatArray
 from fitamp.plots.style import DPI, SMALL_PT, text_width_in
@@ -136,10 +136,10 @@ def _free_box(clutter: Clutter, size_in: tuple[float, float], anchor: FloatArray
     away_y = np.maximum(np.maximum(bottom - anchor[1], anchor[1] - top), 0)
     cost = np.hypot(away_x, away_y)
     edges = (left - PAD_IN, bottom - PAD_IN, right + PAD_IN, top + PAD_IN)
-    hard = _counts(clutter.hard, edges)
+    hard = _counts(clutter.hard, edges, clutter.size_in)
     cost = cost + np.where(hard > 0, 100 + HIT_COST_IN * hard, 0)
     for line, soft_in in clutter.soft:
-        cost = cost + np.where(_counts([line], edges) > 0, soft_in, 0)
+        cost = cost + np.where(_counts([line], edges, clutter.size_in) > 0, soft_in, 0)
     for box in clutter.boxes:
         covers = (edges[0] < box[2]) & (box[0] < edges[2]) & (edges[1] < box[3]) & (box[1] < edges[3])
         cost = cost + np.where(covers, 200.0, 0)
@@ -147,18 +147,25 @@ def _free_box(clutter: Clutter, size_in: tuple[float, float], anchor: FloatArray
     return float(left[best]), float(bottom[best]), float(right[best]), float(top[best])
 
 
-def _counts(parts: Sequence[FloatArray], edges: tuple[FloatArray, FloatArray, FloatArray, FloatArray]) -> FloatArray:
-    """How many points lie in each of the boxes, shape (boxes,)."""
-    if not parts:
-        return np.zeros(len(edges[0]))
-    points = np.concatenate(parts)
-    # Points closer than a letter's stroke count as one: a sweep has many more than words need.
-    points = np.unique(np.round(points / STEP_IN), axis=0) * STEP_IN
-    x, y = points[:, 0], points[:, 1]
-    inside = (
-        (x > edges[0][:, np.newaxis])
-        & (x < edges[2][:, np.newaxis])
-        & (y > edges[1][:, np.newaxis])
-        & (y < edges[3][:, np.newaxis])
-    )
-    return np.asarray(inside.sum(axis=1), dtype=float)
+def _counts(
+    parts: Sequence[FloatArray],
+    edges: tuple[FloatArray, FloatArray, FloatArray, FloatArray],
+    size_in: tuple[float, float],
+) -> FloatArray:
+    """How many cells with points lie in each of the boxes, shape (boxes,): a table of sums, one look-up a corner."""
+    shape = tuple(int(length / STEP_IN) + 3 for length in size_in)
+    taken = np.zeros((shape[0] + 1, shape[1] + 1))
+    for points in parts:
+        cells = np.floor(points / STEP_IN).astype(int) + 1
+        inside = ((cells >= 0) & (cells < shape)).all(axis=1)
+        taken[cells[inside, 0] + 1, cells[inside, 1] + 1] = 1
+    sums = taken.cumsum(axis=0).cumsum(axis=1)
+
+    def at(edge: FloatArray, axis: int, *, end: bool) -> NDArray[np.int_]:
+        """The cell that holds an edge, counted in as a whole."""
+        cell = np.floor(edge / STEP_IN).astype(int) + (2 if end else 1)
+        return np.asarray(np.clip(cell, 0, shape[axis]))
+
+    left, bottom = at(edges[0], 0, end=False), at(edges[1], 1, end=False)
+    right, top = at(edges[2], 0, end=True), at(edges[3], 1, end=True)
+    return np.asarray(sums[right, top] - sums[left, top] - sums[right, bottom] + sums[left, bottom])

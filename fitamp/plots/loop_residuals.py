@@ -27,7 +27,7 @@ def residual_title(fit: LoopFit, width_in: float) -> list[str]:
     )
     sigma, freq_hz = _largest(fit)
     if sigma > STRIKING_SIGMA or not fit.adequacy.adequate:
-        words += f"; largest {sigma:.3g} σ at {si(freq_hz, 'Hz', digits=3)}"
+        words += f"; largest magnitude {sigma:.2g} σ at {si(freq_hz, 'Hz', digits=3)}"
     return wrapped(words, width_in, SMALL_PT, _weight(fit))
 
 
@@ -36,9 +36,8 @@ def _weight(fit: LoopFit) -> str:
 
 
 def _largest(fit: LoopFit) -> tuple[float, float]:
-    """The largest of all real and imaginary parts in σ, and its frequency."""
-    residuals = fit.residuals()
-    size = np.maximum(np.abs(residuals.real), np.abs(residuals.imag))
+    """The largest magnitude in σ, and its frequency."""
+    size = np.abs(fit.residuals())
     return float(size.max()), float(fit.sweep.freq_hz[np.argmax(size)])
 
 

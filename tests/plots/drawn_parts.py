@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from functools import lru_cache
 
 import numpy as np
@@ -12,9 +13,9 @@ from matplotlib.text import Text
 
 from fitamp.amplifier import Elements
 from fitamp.arrays import FloatArray
-from fitamp.comparison import Comparison, compare
+from fitamp.comparison import Comparison, Nulling, compare
 from fitamp.design import Design, HalfPlane, Limit, Roots
-from fitamp.fitting import LoopFit, fit_sweep
+from fitamp.fitting import FitWarning, LoopFit, WarningCode, fit_sweep
 from fitamp.noise import simulate_bench
 from fitamp.sweep import NoiseLevels, Origin, Sweep
 from fitamp.transfer import Transfer
@@ -50,6 +51,37 @@ def comparison_with_roots() -> Comparison:
     """A part against a design that has no elements."""
     roots = Roots(dc_gain=12000, pole1_hz=1.1e3, pole2_hz=60e6, zero_hz=131e6, half_plane=HalfPlane.LEFT)
     return compare(part(1300), Design.from_roots(roots))
+
+
+@lru_cache
+def comparison_in_trouble() -> Comparison:
+    """A part of little phase margin, whose verdict is open, with limits broken, a model that misses, and warnings."""
+    limits = {"phase_margin_deg": Limit(low=60, high=85), "pole2_hz": Limit(low=50e6), "crossover_hz": Limit(low=40e6)}
+    sweep = bench_sweep(ELEMENTS.with_changes(Rz=0, CL=60e-12).transfer(), np.geomspace(10, 1e8, 141))
+    found = compare(sweep, Design.from_elements(ELEMENTS, limits=limits))
+    warnings = tuple(
+        FitWarning(code=WarningCode.LAG_AMBIGUITY, message=f"warning {name} has so much to say " * 6 + "end")
+        for name in ("one", "two", "three")
+    )
+    fit = replace(found.fit, adequacy=replace(found.fit.adequacy, level=50.0, structure=50.0), warnings=warnings)
+    return replace(found, fit=fit, verdict=replace(found.verdict, nulling=Nulling.UNDECIDED), notes=())
+
+
+def covered(text: Text, points: FloatArray) -> int:
+    """How many points (display coordinates, shape (n, 2)) lie under drawn words."""
+    box = text.get_window_extent()
+    x, y = points[:, 0], points[:, 1]
+    return int(((x > box.x0) & (x < box.x1) & (y > box.y0) & (y < box.y1)).sum())
+
+
+def shown_points(line: Line2D, step_px: float = 2.0) -> FloatArray:
+    """Points of a line in display coordinates; with the stretches between them where they are joined."""
+    points = np.asarray(line.get_transform().transform(np.stack([x_of(line), y_of(line)], axis=-1)), dtype=float)
+    if line.get_linestyle() == "None" or len(points) < 2:
+        return points
+    along = np.concatenate([[0.0], np.cumsum(np.hypot(*np.diff(points, axis=0).T))])
+    at = np.arange(0, along[-1], step_px)
+    return np.stack([np.interp(at, along, points[:, 0]), np.interp(at, along, points[:, 1])], axis=-1)
 
 
 @lru_cache

@@ -3,12 +3,14 @@
 from __future__ import annotations
 
 import re
+from dataclasses import replace
 
 import numpy as np
 import pytest
 from drawn_parts import comparison_of, drawn, drawn_lines, fit_of_pair, words_in, x_of, y_of
 from matplotlib.patches import Polygon, Rectangle
 
+from fitamp.comparison import Nulling
 from fitamp.plots import splane_figure
 
 
@@ -64,6 +66,13 @@ def test_the_way_to_the_other_half_plane_goes_through_infinity() -> None:
     assert {"to ∞", "from ∞"} <= set(words)
     stays = comparison_of(3000)
     assert not {"to ∞", "from ∞"} & set(words_in(splane_figure(stays.fit, stays)))
+
+
+def test_an_open_verdict_moves_no_zero_through_infinity() -> None:
+    comparison = comparison_of(0)
+    verdict = replace(comparison.verdict, nulling=Nulling.UNDECIDED)
+    undecided = replace(comparison, verdict=verdict)
+    assert not {"to ∞", "from ∞"} & set(words_in(splane_figure(undecided.fit, undecided)))
 
 
 def test_values_and_deviation_are_written() -> None:

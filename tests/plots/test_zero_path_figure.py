@@ -3,13 +3,29 @@
 from __future__ import annotations
 
 import re
+from dataclasses import replace
 
 import numpy as np
 import pytest
-from drawn_parts import ELEMENTS, comparison_of, comparison_with_roots, drawn, drawn_lines, words_in, x_of, y_of
+from drawn_parts import (
+    ELEMENTS,
+    comparison_of,
+    comparison_with_roots,
+    covered,
+    drawn,
+    drawn_lines,
+    shown_points,
+    words_in,
+    x_of,
+    y_of,
+)
+from matplotlib.container import ErrorbarContainer
 from matplotlib.figure import Figure
 from matplotlib.patches import Rectangle
+from matplotlib.text import Text
 
+from fitamp.comparison import Comparison, Nulling
+from fitamp.estimate import Estimate
 from fitamp.plots import zero_path_figure
 
 
@@ -72,3 +88,46 @@ def test_the_right_hand_scale_has_infinity_between_the_half_planes() -> None:
     places = sorted(ticks.values())
     inch = (strip.get_ylim()[1] - strip.get_ylim()[0]) / (strip.get_position().height * figure.get_figheight())
     assert min(np.diff(places)) > 0.15 * inch  # 9 points of text are 0.125 inch high
+
+
+def _undecided(rz_ohm: float, reach_s: float) -> Comparison:
+    """A verdict left open by an interval of ± `reach_s`."""
+    comparison = comparison_of(rz_ohm)
+    value = comparison.verdict.zero_time_s.value
+    assert value is not None
+    zero_time = Estimate.gaussian(value, reach_s / 1.96, quantile=1.96)
+    product = Estimate.gaussian(1 + value * ELEMENTS.gm2 / ELEMENTS.Cc, reach_s / 2e-9, quantile=1.96)
+    verdict = replace(comparison.verdict, nulling=Nulling.UNDECIDED, zero_time_s=zero_time, gm2_rz=product)
+    return replace(comparison, verdict=verdict)
+
+
+def test_an_open_verdict_advises_no_change() -> None:
+    figure = zero_path_figure(_undecided(0, 2e-9))
+    assert figure is not None
+    assert drawn(figure, "advice") == []
+    assert not any("Rz by\n" in text for text in words_in(figure))
+    assert len(drawn(_figure(0), "advice")) == 1
+
+
+@pytest.mark.parametrize(
+    "comparison",
+    [*map(comparison_of, (0.0, 625.0, 900.0, 1300.0, 3000.0)), _undecided(625.0, 2e-9), _undecided(1300.0, 1e-9)],
+)
+def test_words_keep_clear_of_lines_and_of_each_other(comparison: Comparison) -> None:
+    figure = zero_path_figure(comparison)
+    assert figure is not None
+    figure.draw_without_rendering()
+    words = [text for text in drawn(figure, "words") if isinstance(text, Text)]
+    assert len(words) >= 2
+    path = figure.axes[0]
+    level = next(line for line in path.lines if line.get_linestyle() == "--")
+    (container,) = path.containers
+    assert isinstance(container, ErrorbarContainer)
+    bars = [segment for bar in container.lines[2] for segment in bar.get_segments()]
+    for index, text in enumerate(words):
+        assert covered(text, shown_points(drawn_lines(figure, "path")[0])) == 0
+        assert covered(text, shown_points(level)) == 0
+        for start, end in bars:
+            share = np.linspace(0, 1, 300)[:, np.newaxis]
+            assert covered(text, path.transData.transform(start + share * (np.asarray(end) - start))) == 0
+        assert not any(text.get_window_extent().overlaps(other.get_window_extent()) for other in words[:index])
