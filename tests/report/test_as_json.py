@@ -120,9 +120,11 @@ def test_every_key_is_there_however_awkward_the_sweep(name: str) -> None:
     assert record["schema"] == "fitamp/compare/1"
     check_fit(record)
     check_comparison(record)
-    assert {key: value for key, value in record.items() if key in FIT - {"schema"}} == {
-        key: value for key, value in fit.items() if key != "schema"
+    assert {key: value for key, value in record.items() if key in FIT - {"schema", "warnings"}} == {
+        key: value for key, value in fit.items() if key not in {"schema", "warnings"}
     }
+    # A comparison knows more to warn of, and nothing less.
+    assert all(warning in record["warnings"] for warning in fit["warnings"])
 
 
 def test_every_key_is_there_for_the_examples(compared_examples: dict[str, Comparison]) -> None:

@@ -51,13 +51,14 @@ def test_a_long_name_in_wide_characters_is_wrapped() -> None:
 def test_wide_numbers_are_wrapped_and_not_cut() -> None:
     comparison = awkward("no resistor")
     rows = tuple(
-        replace(row, deviation=-123456.789, sigma=-1e7, low=1.23456789e-9, high=9.87654321e11)
+        replace(row, deviation=-9.123456789, sigma=-1e7, low=1.23456789e-9, high=9.87654321e11)
         for row in comparison.rows
     )
     text = comparison_text(replace(comparison, rows=rows))
     assert widest(text) <= 100
     assert "…" in text
-    assert text.count("−12345678.90") + text.count("−123456.79") >= 8
+    assert text.count("−912.35 %") >= 6
+    assert text.count("< −999") == len(rows)
 
 
 @pytest.mark.parametrize("colour", ["FORCE_COLOR", "CLICOLOR_FORCE", "TTY_COMPATIBLE", "COLORTERM"])
@@ -98,9 +99,9 @@ def cells_of(text: str, label: str) -> str:
 
 def test_rows_say_measured_limits_and_whether_within(compared_examples: dict[str, Comparison]) -> None:
     text = comparison_text(compared_examples["b"])
-    assert cells_of(text, "zero time τz").endswith("796 ps … 1.77 ns      NO")
-    assert cells_of(text, "pole 2").endswith("30.0 … 90.0 MHz     yes")
-    assert cells_of(text, "T(0)").endswith("76.0 … 88.0 dB     yes")
+    assert cells_of(text, "zero time τz").split()[-1] == "NO"
+    assert cells_of(text, "pole 2").split()[-5:] == ["30.0", "…", "90.0", "MHz", "yes"]
+    assert cells_of(text, "T(0)").split()[-5:] == ["76.0", "…", "88.0", "dB", "yes"]
     place = cells_of(text, "as a zero at")
     assert "131 MHz L" in place
     assert "MHz R" in place
