@@ -290,3 +290,13 @@ def test_names_in_the_lane_do_not_overlap() -> None:
             assert not any(box.overlaps(other) for other in boxes[:index])
             assert figure.axes[1].bbox.y0 <= box.y0
             assert box.y1 <= figure.axes[1].bbox.y1
+
+
+def test_data_with_a_delay_that_the_fit_lacks_fall_without_bounces() -> None:
+    fit = comparison_of(1300).fit
+    gain = fit.sweep.gain * np.exp(-2j * np.pi * fit.sweep.freq_hz * 20e-9)
+    figure = loop_figure(replace(fit, sweep=replace(fit.sweep, gain=gain)))
+    (phase,) = [line for line in figure.axes[2].lines if line.get_gid() == "measured"]
+    # 20 ns are two turns at 100 MHz, on top of the loop's own lag, and a quarter turn between the last two points.
+    assert -1000 < y_of(phase)[-1] < -720
+    assert np.abs(np.diff(y_of(phase))).max() < 120
