@@ -29,7 +29,7 @@ def estimate_noise(sweep: Sweep, model_gain: ComplexArray) -> NoiseLevels:
     Parameters
     ----------
     sweep
-        At least 5 points.
+        At least 6 points, so that there are as many second differences as levels.
     model_gain : shape (n,)
         Loop gain of a current model; it need not be right, only smooth and near.
 

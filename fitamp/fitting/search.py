@@ -104,7 +104,7 @@ class Search:
         ends: list[Solution] = []
         if vectors:
             # One noise for all, or their chi-squares could not be compared.
-            common = self.noise or estimate_noise(self.sweep, model.gain(vectors[0], self.sweep.freq_hz))
+            common = self.noise or min((self._noise_about(model, vector) for vector in vectors), key=self._variance)
             ends = [
                 solve(model, self.sweep, common, vector, tolerance=RACE_TOLERANCE, max_steps=RACE_STEPS)
                 for vector in vectors
@@ -115,9 +115,8 @@ class Search:
                 f"{self.sweep.origin.file}: no start converged to two poles and a zero; look at the sweep with "
                 "`fitamp read`"
             )
-        least = min(end.optimum.chi_square for end in ends)
-        # Of ends that are as good as one another the first: with lags free a pole and a zero may cancel anywhere.
-        winner = next(end for end in ends if end.optimum.chi_square <= least + FREE_OF_CHARGE)
+        # By any difference: with a noise taken for too large at the start, as on exact data, all differences are small.
+        winner = min(ends, key=lambda end: end.optimum.chi_square)
         return _in_sight(self._settled(winner), self.sweep)
 
     def plain_or_with_lag(self) -> tuple[Solution, Solution | None]:
@@ -159,6 +158,16 @@ class Search:
                 break
             solution = again
         return solution
+
+    def _noise_about(self, model: TwoPole, values: FloatArray) -> NoiseLevels:
+        return estimate_noise(self.sweep, model.gain(values, self.sweep.freq_hz))
+
+    def _variance(self, noise: NoiseLevels) -> float:
+        """Typical variance of the loop equation: a start that is far off has its own curvature in the scatter."""
+        gain = self.sweep.gain
+        through = np.abs(1 + gain) ** 2
+        channels = noise.return_channel**2 + np.abs(gain * noise.error_channel) ** 2
+        return float(np.median(channels + (np.abs(gain * noise.relative) ** 2 + noise.ratio**2) / through))
 
     def _is_sane(self, model: TwoPole, values: FloatArray) -> bool:
         """Whether this can be a loop: in size, and without a far pole on the right nearer than pole 2.
