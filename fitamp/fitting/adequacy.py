@@ -65,8 +65,9 @@ def judge(solution: Solution) -> Adequacy:
     residuals = solution.residuals
     count = len(residuals)
     chi = solution.reduced_chi_square
+    estimated = solution.noise.source.startswith("estimated")
     # The noise level comes from second differences of the same points: variance 35/18 in place of 1.
-    level = (chi - 1) * np.sqrt(count / (35 / 18 if solution.noise.source.startswith("estimated") else 1.0))
+    level = (chi - 1) * np.sqrt(count / (35 / 18 if estimated else 1.0))
     lags = max(count // 12, 1)
     correlations = _correlations(residuals, lags)
     structure = float(correlations.sum() * np.sqrt(2 * count / lags))
@@ -82,10 +83,11 @@ def judge(solution: Solution) -> Adequacy:
         structure=structure,
         inflation=inflation,
         # Without noise there is only rounding, of which second differences make too much.
-        noise_too_large=level <= -ALARM and solution.noise.relative > COMPUTED,
+        noise_too_large=bool(estimated and level <= -ALARM and solution.noise.relative > COMPUTED),
     )
 
 
 def _correlations(residuals: ComplexArray, lags: int) -> np.ndarray:
-    energy = float((np.abs(residuals) ** 2).sum()) or 1.0
+    # A pattern counts against the noise: one in residuals far below it harms nobody.
+    energy = max(float((np.abs(residuals) ** 2).sum()), 2.0 * len(residuals))
     return np.array([(residuals[lag:] * np.conj(residuals[:-lag])).sum().real / energy for lag in range(1, lags + 1)])

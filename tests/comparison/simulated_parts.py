@@ -29,12 +29,13 @@ SPREADS: dict[str, float] = {
     "Cc": 0.06,
     "Rz": 0.12,
 }
-BENCH = Bench(load_f=2e-12, load_spread=0.05, delay_s=0.4e-9, delay_spread_s=0.02e-9)
+DELAY_S = 0.4e-9
+BENCH = Bench(load_f=2e-12, load_spread=0.05, delay_s=DELAY_S, delay_spread_s=0.02e-9)
 DESIGN = Design.from_elements(NOMINAL, spreads=SPREADS, bench=BENCH)
 
 
 def noise_free(
-    elements: Elements, *, load_f: float = BENCH.load_f, delay_s: float = BENCH.delay_s, freq_hz: FloatArray = FREQ_HZ
+    elements: Elements, *, load_f: float = BENCH.load_f, delay_s: float = DELAY_S, freq_hz: FloatArray = FREQ_HZ
 ) -> Sweep:
     """What a perfect bench with this load and cable would read."""
     on_bench = replace(elements, CL=elements.CL + load_f, delay_s=elements.delay_s + delay_s)
@@ -51,7 +52,7 @@ def measured(
     seed: int,
     *,
     load_f: float = BENCH.load_f,
-    delay_s: float = BENCH.delay_s,
+    delay_s: float = DELAY_S,
     freq_hz: FloatArray = FREQ_HZ,
 ) -> Sweep:
     """What the bench reads, with its noise, about which the sweep says nothing."""

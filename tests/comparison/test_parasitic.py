@@ -6,7 +6,7 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
-from simulated_parts import BENCH, DESIGN, FREQ_HZ, NOMINAL, SPREADS, drawn, measured, noise_free
+from simulated_parts import BENCH, DELAY_S, DESIGN, FREQ_HZ, NOMINAL, SPREADS, drawn, measured, noise_free
 
 from fitamp.comparison import Parasitic, compare
 from fitamp.comparison.expectation import fit_with_design
@@ -48,7 +48,7 @@ def test_load_interval_covers_the_truth_on_dies() -> None:
     for seed in range(40):
         die = drawn(rng, others).with_changes(CL=4.5e-12)
         load_f = BENCH.load_f * (1 + BENCH.load_spread * rng.standard_normal())
-        delay_s = BENCH.delay_s + BENCH.delay_spread_s * rng.standard_normal()
+        delay_s = DELAY_S + BENCH.delay_spread_s * rng.standard_normal()
         found = parasitic_of(measured(die, seed, load_f=load_f, delay_s=delay_s)).load_f
         assert found.value is not None
         assert found.stderr is not None

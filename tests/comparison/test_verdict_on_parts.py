@@ -7,7 +7,7 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
-from simulated_parts import BENCH, DESIGN, FREQ_HZ, NOISE, NOMINAL, SPREADS, drawn, measured
+from simulated_parts import BENCH, DELAY_S, DESIGN, FREQ_HZ, NOISE, NOMINAL, SPREADS, drawn, measured
 
 from fitamp.amplifier import Elements
 from fitamp.comparison import Nulling, compare
@@ -129,7 +129,7 @@ def test_no_die_of_a_lot_is_put_into_the_wrong_half_plane() -> None:
         kind = list(made)[seed % 4]
         die = die.with_changes(Rz={"intact": die.Rz, "missing": 0.0, "null": 1 / die.gm2, "2.2": 2.2 * die.Rz}[kind])
         load_f = BENCH.load_f * (1 + BENCH.load_spread * rng.standard_normal())
-        delay_s = BENCH.delay_s + BENCH.delay_spread_s * rng.standard_normal()
+        delay_s = DELAY_S + BENCH.delay_spread_s * rng.standard_normal()
         verdict = judge_nulling(fit_with_design(measured(die, seed, load_f=load_f, delay_s=delay_s), DESIGN), DESIGN)
         made[kind][verdict.nulling] += 1
         pulls.append(pull(die, verdict.zero_time_s.value, verdict.zero_time_s.stderr))
