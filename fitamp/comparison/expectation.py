@@ -8,13 +8,14 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass, fields, replace
+from functools import partial
 from typing import Any
 
 from fitamp.amplifier import Elements, coefficients
 from fitamp.comparison.mirror import mirror_moved, widened_by_mirror
 from fitamp.design import Design, Roots
 from fitamp.errors import FitError
-from fitamp.fitting import DelayPrior, FarPolePrior, LoopFit, Pole2Prior, fit_sweep
+from fitamp.fitting import DelayPrior, FarPoleCurve, FarPolePrior, LoopFit, Pole2Prior, fit_sweep
 from fitamp.sweep import NoiseLevels, Origin, Sweep
 from fitamp.transfer import Transfer
 
@@ -28,14 +29,13 @@ NO_PRIOR_SPREAD = 1.0
 FAR_POLE_FLOOR = 0.01
 # One standard deviation of ln pole 2 before the sweep is seen: a factor of two.
 POLE2_LN_SD = math.log(2)
-ROUNDS = 3
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Expectation:
     """Priors and known factor that go into the fit of a sweep of this design."""
 
-    far_pole: FarPolePrior
+    far_pole: FarPolePrior | FarPoleCurve
     delay: DelayPrior
     pole2: Pole2Prior
     known: Transfer | None
@@ -45,8 +45,12 @@ class Expectation:
         return {"far_pole": self.far_pole, "delay": self.delay, "pole2": self.pole2, "known": self.known}
 
 
-def expectation(design: Design, zero_time_s: float) -> Expectation:
-    """What the design expects of a part whose zero time is about `zero_time_s`."""
+def expectation(design: Design) -> Expectation:
+    """What the design expects of its parts.
+
+    The far pole follows the zero that is found, so that a part without its resistor is not judged with the far pole of
+    one that has it.
+    """
     if design.elements is None:
         return _from_roots(design)
     elements = replace(design.elements, CL=design.elements.CL + design.bench.load_f)
@@ -55,7 +59,11 @@ def expectation(design: Design, zero_time_s: float) -> Expectation:
         # Pole at f and zero at 2f: a lag of 1/(2π 2f) to first order, uncertain as the pole is.
         mirror_spread_s = design.spreads.get("mirror_pole_hz", 0.0) / (4 * math.pi * elements.mirror_pole_hz)
     return Expectation(
-        far_pole=_far_pole_line(elements, design, zero_time_s),
+        far_pole=FarPoleCurve(
+            at=partial(_far_pole_line, elements, design),
+            zero_time_s=design.zero_time_s,
+            settled_s=0.2 * design.small_zero_time_s,
+        ),
         delay=_delay_prior(design, mirror_spread_s),
         pole2=_pole2_prior(replace(elements, mirror_pole_hz=None, delay_s=0.0).transfer()),
         known=_known_factor(elements),
@@ -141,44 +149,28 @@ def _known_factor(elements: Elements) -> Transfer | None:
 def fit_with_design(sweep: Sweep, design: Design, *, noise: NoiseLevels | None = None) -> LoopFit:
     """Fit a sweep with the design's far pole, delay and known factor as priors.
 
-    The far pole's line is laid at the zero time that the fit finds, so that a part without its resistor is not judged
-    with the far pole of one that has it. Errors hold what an uncertain mirror pole adds.
+    Errors hold what an uncertain mirror pole adds.
 
     Raises
     ------
     FitError
         As `fit_sweep`.
     """
-    fit = _fit_at_its_zero(sweep, design, noise)
+    fit = fit_sweep(sweep, noise=noise, **expectation(design).as_arguments())
     moved = mirror_moved(design)
     if moved is None:
         return fit
     # With one noise for all, or a change of weights would pass for an effect of the mirror.
-    higher, lower = (_fit_at_its_zero(sweep, other, fit.noise) for other in moved)
+    higher, lower = (fit_sweep(sweep, noise=fit.noise, **expectation(other).as_arguments()) for other in moved)
     return widened_by_mirror(fit, higher, lower)
-
-
-def _fit_at_its_zero(sweep: Sweep, design: Design, noise: NoiseLevels | None) -> LoopFit:
-    zero_time_s = design.zero_time_s
-    fit: LoopFit | None = None
-    for _ in range(ROUNDS):
-        expected = expectation(design, zero_time_s)
-        fit = fit_sweep(sweep, noise=noise, **expected.as_arguments())
-        found = fit.solution.model.physical(fit.solution.values)[3]
-        if abs(found - zero_time_s) <= 0.2 * design.small_zero_time_s:
-            break
-        zero_time_s = found
-    assert fit is not None
-    return fit
 
 
 def designed_as_measured(design: Design, fit: LoopFit) -> LoopFit | None:
     """The designed response through the same band, weights, priors and model as the sweep; None where that fails."""
     freq_hz = fit.sweep.freq_hz
     gain = design.on_bench().evaluate(freq_hz)
-    expected = expectation(design, design.zero_time_s)
     sweep = Sweep(freq_hz=freq_hz, gain=gain, origin=Origin(file=f"{design.file} (designed)", form="computed"))
     try:
-        return fit_sweep(sweep, noise=fit.noise, **expected.as_arguments())
+        return fit_sweep(sweep, noise=fit.noise, **expectation(design).as_arguments())
     except FitError:
         return None

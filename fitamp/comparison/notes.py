@@ -53,7 +53,7 @@ def _on_delay(fit: LoopFit, design: Design) -> Iterator[tuple[WarningCode, str]]
 
 
 def _with_free_delay(fit: LoopFit, design: Design) -> LoopFit | None:
-    expected = replace(expectation(design, design.zero_time_s), delay=DelayPrior(sd_s=math.inf))
+    expected = replace(expectation(design), delay=DelayPrior(sd_s=math.inf))
     try:
         return fit_sweep(fit.sweep, noise=fit.sweep.noise, **expected.as_arguments())
     except FitError:

@@ -11,11 +11,12 @@ from fitamp.fitting.result import (
     ZeroPlace,
     ZeroSeen,
 )
-from fitamp.fitting.two_pole import DelayPrior, FarPolePrior, Pole2Prior
+from fitamp.fitting.two_pole import DelayPrior, FarPoleCurve, FarPolePrior, Pole2Prior
 
 __all__ = [
     "MIN_POINTS",
     "DelayPrior",
+    "FarPoleCurve",
     "FarPolePrior",
     "FitWarning",
     "FittedMargins",

@@ -13,7 +13,7 @@ from fitamp.fitting.intervals import RISE_95, estimate_by_curvature, estimate_by
 from fitamp.fitting.result import LoopFit
 from fitamp.fitting.search import Search, lifted
 from fitamp.fitting.statements import place_of_zero, warnings_of
-from fitamp.fitting.two_pole import DelayPrior, FarPolePrior, Pole2Prior, Solution, solution_at
+from fitamp.fitting.two_pole import DelayPrior, FarPoleCurve, FarPolePrior, Pole2Prior, Solution, solution_at
 from fitamp.sweep import NoiseLevels, Sweep
 from fitamp.transfer import Transfer
 
@@ -36,7 +36,7 @@ def fit_sweep(
     sweep: Sweep,
     *,
     noise: NoiseLevels | None = None,
-    far_pole: FarPolePrior | None = None,
+    far_pole: FarPolePrior | FarPoleCurve | None = None,
     delay: DelayPrior | None = None,
     pole2: Pole2Prior | None = None,
     known: Transfer | None = None,
@@ -81,7 +81,7 @@ def fit_sweep(
     with np.errstate(over="ignore", invalid="ignore", divide="ignore"):
         search = Search(sweep=sweep, noise=noise, known=known, delay_s=delay.mean_s if delay else 0.0, pole2=pole2)
         if lag_is_known:
-            solution = search.best(far_pole or FarPolePrior(), delay or DelayPrior())
+            solution = search.with_far_pole(far_pole or FarPolePrior(), delay or DelayPrior())
         else:
             solution, any_lag = search.plain_or_with_lag()
     _check_likeness(sweep, solution)

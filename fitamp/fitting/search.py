@@ -10,7 +10,16 @@ from fitamp.arrays import FloatArray
 from fitamp.errors import FitError
 from fitamp.fitting.adequacy import judge
 from fitamp.fitting.start import Start, excess_delay, starts
-from fitamp.fitting.two_pole import DelayPrior, FarPolePrior, Pole2Prior, Solution, TwoPole, solution_at, solve
+from fitamp.fitting.two_pole import (
+    DelayPrior,
+    FarPoleCurve,
+    FarPolePrior,
+    Pole2Prior,
+    Solution,
+    TwoPole,
+    solution_at,
+    solve,
+)
 from fitamp.noise import estimate_noise
 from fitamp.sweep import NoiseLevels, Sweep
 from fitamp.transfer import Transfer
@@ -18,6 +27,7 @@ from fitamp.transfer import Transfer
 __all__ = ["Search", "lifted"]
 
 NOISE_ROUNDS = 3
+CURVE_ROUNDS = 3
 # To tell which start ends lowest, chi-square to seven digits is enough, and who is still far off after so many steps
 # does not win.
 RACE_TOLERANCE = 1e-7
@@ -118,6 +128,20 @@ class Search:
         # By any difference: with a noise taken for too large at the start, as on exact data, all differences are small.
         winner = min(ends, key=lambda end: end.optimum.chi_square)
         return _in_sight(self._settled(winner), self.sweep)
+
+    def with_far_pole(self, far_pole: FarPolePrior | FarPoleCurve, delay: DelayPrior) -> Solution:
+        """The best solution under what is known of the lag; a curve is followed to where the zero is found."""
+        if isinstance(far_pole, FarPolePrior):
+            return self.best(far_pole, delay)
+        at_s, solution = far_pole.zero_time_s, None
+        for _ in range(CURVE_ROUNDS):
+            solution = self.best(far_pole.at(at_s), delay, also=solution)
+            found_s = solution.model.physical(solution.values)[3]
+            if abs(found_s - at_s) <= far_pole.settled_s:
+                break
+            at_s = found_s
+        assert solution is not None
+        return solution
 
     def plain_or_with_lag(self) -> tuple[Solution, Solution | None]:
         """The solution without lag, or, where that is not adequate, with the simplest lag that makes it so.

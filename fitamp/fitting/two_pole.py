@@ -10,6 +10,7 @@ free under a Gaussian prior: they are the two things that pass for a right-half-
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
@@ -19,7 +20,17 @@ from fitamp.fitting.leastsq import MAX_STEPS, TOLERANCE, Optimum, covariance_of,
 from fitamp.sweep import NoiseLevels, Sweep
 from fitamp.transfer import Transfer
 
-__all__ = ["DelayPrior", "FarPolePrior", "Pole2Prior", "Solution", "TwoPole", "loop_equation", "solution_at", "solve"]
+__all__ = [
+    "DelayPrior",
+    "FarPoleCurve",
+    "FarPolePrior",
+    "Pole2Prior",
+    "Solution",
+    "TwoPole",
+    "loop_equation",
+    "solution_at",
+    "solve",
+]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -33,6 +44,19 @@ class FarPolePrior:
     intercept_s: float = 0.0
     slope: float = 0.0
     sd_s: float = 0.0
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class FarPoleCurve:
+    """Knowledge of the far-pole time that bends with the zero time: its tangent `at` a zero time.
+
+    A fit starts at `zero_time_s` and lays the tangent anew where it finds the zero, until that moves by `settled_s` or
+    less.
+    """
+
+    at: Callable[[float], FarPolePrior]
+    zero_time_s: float
+    settled_s: float
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
