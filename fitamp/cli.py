@@ -25,6 +25,15 @@ COLUMNS_HELP = (
     'columns of a CSV as key=column:unit, a column by its number or quoted name, as in "f=1:Hz mag=2:dB phase=3:deg"; '
     "keys and units: f Hz, kHz, MHz, GHz, rad/s; mag dB, linear; phase deg, rad; re, im and complex without unit"
 )
+NOISE_HELP = (
+    "noise levels instead of those estimated from the sweep, complex standard deviations, as in "
+    '"error=2e-5 return=2e-5 relative=1e-3": floors of the two receivers for a drive of 1, relative gain error, and '
+    "ratio, a floor of the loop gain itself; one that is left out is 0"
+)
+DELAY_HELP = (
+    'delay that the bench adds to the loop: "0.4 ns", "0.4 ns +- 0.02 ns" with its standard deviation, or free where '
+    "nothing is known of it"
+)
 
 
 class _Parser(argparse.ArgumentParser):
@@ -54,6 +63,7 @@ def build_parser() -> argparse.ArgumentParser:
     fit = commands.add_parser("fit", help="fit two poles and one zero to a sweep")
     fit.add_argument("file", metavar="FILE", help="CSV or Touchstone sweep of the loop gain")
     _reading_options(fit)
+    _bench_options(fit, unstated="free")
     _output_options(fit, folder=True)
     fit.set_defaults(action="fit")
 
@@ -61,6 +71,7 @@ def build_parser() -> argparse.ArgumentParser:
     compare.add_argument("file", metavar="FILE", help="CSV or Touchstone sweep of the loop gain")
     compare.add_argument("--design", required=True, metavar="D.toml", help="design file")
     _reading_options(compare)
+    _bench_options(compare, unstated="as the design file states it")
     _output_options(compare, folder=True)
     compare.set_defaults(action="compare")
 
@@ -82,6 +93,12 @@ def _reading_options(parser: argparse.ArgumentParser) -> None:
     group.add_argument("--columns", metavar="SPEC", help=COLUMNS_HELP)
     group.add_argument("--trace", metavar="Sij", help="trace of a Touchstone file (default S11 of one port, else S21)")
     group.add_argument("--sign", choices=("as-read", "inverted"), help="sign of the read-out, where it is not plain")
+
+
+def _bench_options(parser: argparse.ArgumentParser, *, unstated: str) -> None:
+    group = parser.add_argument_group("bench")
+    group.add_argument("--noise", metavar="LEVELS", help=NOISE_HELP)
+    group.add_argument("--delay", metavar="TIME", help=f"{DELAY_HELP}; default: {unstated}")
 
 
 def _output_options(parser: argparse.ArgumentParser, *, folder: bool) -> None:

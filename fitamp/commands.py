@@ -5,21 +5,24 @@ from __future__ import annotations
 import argparse
 import csv
 import io
+import math
 import sys
 from collections.abc import Mapping
+from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from fitamp.comparison import Comparison
 from fitamp.comparison import compare as compare_sweep
-from fitamp.design import read_design
+from fitamp.design import Design, read_design
 from fitamp.errors import FitError, InputError, UsageError
-from fitamp.fitting import LoopFit, fit_sweep
+from fitamp.fitting import DelayPrior, FarPolePrior, LoopFit, fit_sweep
 from fitamp.importers import read_sweep
+from fitamp.options import parse_delay, parse_noise
 from fitamp.report.as_json import comparison_as_dict, dumps, fit_as_dict, sweep_as_dict
 from fitamp.report.files import refuse_existing, staged_directory, write_text
 from fitamp.report.tables import comparison_text, fit_text, printable, sweep_text
-from fitamp.sweep import Sign, Sweep
+from fitamp.sweep import NoiseLevels, Sign, Sweep
 
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
@@ -57,7 +60,8 @@ def read(args: argparse.Namespace) -> int:
 def fit(args: argparse.Namespace) -> int:
     """`fitamp fit FILE`."""
     _refuse_early(args)
-    result = fit_sweep(_sweep(args, args.file))
+    noise, lag = _noise(args), _lag(args)
+    result = fit_sweep(_sweep(args, args.file), noise=noise, **lag)
     record, text = fit_as_dict(result), fit_text(result)
     if args.out:
         from fitamp.plots import fit_figures
@@ -70,8 +74,8 @@ def fit(args: argparse.Namespace) -> int:
 def compare(args: argparse.Namespace) -> int:
     """`fitamp compare FILE --design D.toml`."""
     _refuse_early(args)
-    design = read_design(args.design)
-    result = compare_sweep(_sweep(args, args.file), design)
+    noise, design = _noise(args), _on_stated_delay(args, read_design(args.design))
+    result = compare_sweep(_sweep(args, args.file), design, noise=noise)
     record, text = comparison_as_dict(result), comparison_text(result)
     if args.out:
         _write_comparison(result, record, text, Path(args.out), force=args.force)
@@ -137,6 +141,29 @@ def _examples(given: str | None) -> Path:
 def _sweep(args: argparse.Namespace, file: str) -> Sweep:
     sign = Sign(args.sign) if args.sign else None
     return read_sweep(file, columns=args.columns, trace=args.trace, sign=sign)
+
+
+def _noise(args: argparse.Namespace) -> NoiseLevels | None:
+    return None if args.noise is None else parse_noise(args.noise)
+
+
+def _lag(args: argparse.Namespace) -> dict[str, Any]:
+    """Priors of a fit with a stated delay: the third pole is free then, or its lag would pass for more of the delay."""
+    stated = None if args.delay is None else parse_delay(args.delay)
+    if stated is None or stated.is_free:
+        return {}
+    delay = DelayPrior(mean_s=stated.delay_s, sd_s=stated.sd_s)
+    return {"delay": delay, "far_pole": FarPolePrior(sd_s=math.inf)}
+
+
+def _on_stated_delay(args: argparse.Namespace, design: Design) -> Design:
+    """The design with the delay of ``--delay`` in place of the bench's."""
+    if args.delay is None:
+        return design
+    stated = parse_delay(args.delay)
+    known = {"delay_s": stated.delay_s, "delay_spread_s": stated.sd_s}
+    bench = replace(design.bench, **({"delay_s": None, "delay_spread_s": 0.0} if stated.is_free else known))
+    return replace(design, bench=bench)
 
 
 def _refuse_early(args: argparse.Namespace) -> None:

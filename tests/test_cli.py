@@ -117,6 +117,54 @@ def test_columns_trace_and_sign_reach_the_reader(capsys: Captured) -> None:
     assert "-42.100" in out
 
 
+def parameters_of(capsys: Captured, *arguments: str | Path) -> dict[str, Any]:
+    """Record of a command that ends well."""
+    code, out, err = called(capsys, *arguments, "--json", "-")
+    assert (code, err) == (0, "")
+    record: dict[str, Any] = json.loads(out)
+    return record
+
+
+def test_stated_noise_reaches_fit_and_comparison(capsys: Captured) -> None:
+    commands: list[list[str | Path]] = [["fit", PART_A], ["compare", PART_A, "--design", DESIGN]]
+    for command in commands:
+        record = parameters_of(capsys, *command, "--noise", "relative=0.1% error=2e-5 return = 3e-5 ratio=1e-9")
+        noise = {"error_channel": 2e-5, "return_channel": 3e-5, "relative": 1e-3, "ratio": 1e-9, "source": "given"}
+        assert record["noise"] == noise
+    # The user's noise is taken at its word, in the fit and in what is said of the delay.
+    code, out, err = called(capsys, *commands[1], "--noise", "error=2e-6 return=2e-6 relative=1e-4", "--json", "-")
+    assert code == 4
+    assert "times as large as the scatter allows" in err
+    assert "delay-contradicted" not in {note["code"] for note in json.loads(out)["warnings"]}
+
+
+def test_a_stated_delay_reaches_the_fit(capsys: Captured) -> None:
+    # Part a was made with a cable of 0.41 ns and τz = 1.02·1.8 pF·(1365 Ω − 1/(0.96·1.6 mS)) = 1.3108 ns; its third
+    # pole, near 0.25 ns, must not go into the delay.
+    stated = parameters_of(capsys, "fit", PART_A, "--delay", "0.4 ns +- 20 ps")["parameters"]
+    assert stated["zero_time_s"]["value"] == pytest.approx(1.3108e-9, abs=4 * stated["zero_time_s"]["stderr"])
+    assert stated["zero_time_s"]["stderr"] < 0.01e-9
+    assert stated["delay_s"]["value"] == pytest.approx(0.41e-9, abs=0.02e-9)
+    held = parameters_of(capsys, "fit", PART_A, "--delay", "0.41 ns")["parameters"]
+    assert (held["delay_s"]["value"], held["delay_s"]["stderr"]) == (0.41e-9, None)
+    assert held["zero_time_s"]["stderr"] < stated["zero_time_s"]["stderr"]
+    free = parameters_of(capsys, "fit", PART_A, "--delay", "free")
+    assert free == parameters_of(capsys, "fit", PART_A)
+
+
+def test_a_stated_delay_takes_the_place_of_the_design_files(capsys: Captured) -> None:
+    compare: list[str | Path] = ["compare", PART_A, "--design", DESIGN]
+    assert parameters_of(capsys, *compare, "--delay", "0.4ns ± 0.02ns") == parameters_of(capsys, *compare)
+    free = parameters_of(capsys, *compare, "--delay", "free")
+    assert free["verdict"]["nulling"] == "as-designed"
+    assert "delay-not-stated" in {note["code"] for note in free["warnings"]}
+    # The sweep has 0.41 ns: none at all is contradicted, and no verdict is given.
+    code, out, _ = called(capsys, *compare, "--delay", "0 ns", "--json", "-")
+    record = json.loads(out)
+    assert (code, record["verdict"]["nulling"]) == (4, "undecided")
+    assert "delay-contradicted" in {note["code"] for note in record["warnings"]}
+
+
 @pytest.mark.parametrize("arguments", [["--help"], ["compare", "--help"], ["--version"]])
 def test_help_and_version_end_well(capsys: Captured, arguments: list[str]) -> None:
     with pytest.raises(SystemExit, match=r"^0$"):
@@ -189,6 +237,10 @@ def test_template_prints_or_writes_a_design_file(capsys: Captured, tmp_path: Pat
         (["fit", str(PART_A), "--sign", "sideways"], "invalid choice: 'sideways'"),
         (["compare", str(PART_A)], "--design"),
         (["fit", str(PART_A), "--columns", "nonsense"], "columns"),
+        (["fit", str(PART_A), "--noise", "loud"], "'loud' is not one of error, return, relative, ratio with ="),
+        (["fit", str(PART_A), "--delay", "0.4"], "'0.4' is not a time with unit; expected \"0.4 ns\""),
+        (["compare", str(PART_A), "--design", str(DESIGN), "--noise", "error=0"], "no level above 0 in 'error=0'"),
+        (["compare", str(PART_A), "--design", str(DESIGN), "--delay", "-1 ns"], "'-1 ns' is negative"),
     ],
 )
 def test_a_command_put_together_wrongly_is_usage(capsys: Captured, arguments: list[str], words: str) -> None:

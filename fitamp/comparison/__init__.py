@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 from fitamp.comparison.expectation import designed_as_measured, fit_with_design
 from fitamp.comparison.notes import comparison_notes
 from fitamp.comparison.parasitic import parasitics
@@ -36,7 +38,9 @@ def compare(sweep: Sweep, design: Design, *, noise: NoiseLevels | None = None) -
     """
     if not isinstance(sweep, Sweep) or not isinstance(design, Design):
         raise UsageError("compare takes a Sweep and a Design: read them with read_sweep and read_design")
-    fit = fit_with_design(sweep, design, noise=noise)
+    if noise is not None:
+        sweep = replace(sweep, noise=noise)  # for every fit of this sweep, the notes' too
+    fit = fit_with_design(sweep, design)
     designed_fit = designed_as_measured(design, fit)
     verdict = judge_nulling(fit, design)
     designed_zero_s = design.zero_time_s

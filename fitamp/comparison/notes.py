@@ -35,7 +35,7 @@ def _on_delay(fit: LoopFit, design: Design) -> Iterator[tuple[WarningCode, str]]
     if bench.delay_s is None:
         yield (
             WarningCode.DELAY_NOT_STATED,
-            f"[bench] states no delay, so it was fitted: {text_of('delay_s', delay)}; measure it with a through sweep: "
+            f"no delay is stated, so it was fitted: {text_of('delay_s', delay)}; measure it with a through sweep: "
             "it passes for a zero farther right",
         )
         return
@@ -47,7 +47,7 @@ def _on_delay(fit: LoopFit, design: Design) -> Iterator[tuple[WarningCode, str]]
     stated = si_with_error(bench.delay_s, bench.delay_spread_s, "s")
     yield (
         WarningCode.DELAY_CONTRADICTED,
-        f"[bench] states a delay of {stated}, but the sweep asks for {text_of('delay_s', wanted.parameters.delay_s)}; "
+        f"a delay of {stated} is stated, but the sweep asks for {text_of('delay_s', wanted.parameters.delay_s)}; "
         "measure it with a through sweep, or look for a pole that the design does not have",
     )
 
