@@ -21,9 +21,16 @@ FLOOR = 1e-13
 LOG_REACH = 60.0
 # A second difference of exactly 0 (repeated digits) has no logarithm; it counts as this share of the mean.
 TINY = 1e-12
+# A second difference so many times its mean square is no noise: it comes once in 160 000 times, and without it the mean
+# loses one part in 10 000, so nothing has to be made up for. Not more than this share can be set aside so.
+GLITCH = 12.0
+# Scatter below this is arithmetic, whose errors follow no such law.
+ROUNDING = 1e-12
+MOST_GLITCHES = 0.3
+GLITCH_ROUNDS = 8
 
 
-def estimate_noise(sweep: Sweep, model_gain: ComplexArray) -> NoiseLevels:
+def estimate_noise(sweep: Sweep, model_gain: ComplexArray, *, set_aside: bool = True) -> NoiseLevels:
     """Estimate the receivers' floors and the relative gain error from the scatter of a sweep about a smooth model.
 
     Parameters
@@ -32,6 +39,9 @@ def estimate_noise(sweep: Sweep, model_gain: ComplexArray) -> NoiseLevels:
         At least 6 points, so that there are as many second differences as levels.
     model_gain : shape (n,)
         Loop gain of a current model; it need not be right, only smooth and near.
+    set_aside
+        Whether second differences far beyond their law count as bad points' and are set aside. About a model that is
+        not near they may be its own curvature, and the noise would come out too small.
 
     Returns
     -------
@@ -50,7 +60,7 @@ def estimate_noise(sweep: Sweep, model_gain: ComplexArray) -> NoiseLevels:
     through = np.abs(1 + model_gain) ** 2
     parts = np.stack([size, model * size, model / through * size, size / through], axis=1)
     design = np.stack([np.convolve(part, CONTRAST**2, mode="valid") for part in parts.T], axis=1)
-    variances = _gamma_regression(observed, design)
+    variances = (_without_glitches if set_aside else _gamma_regression)(observed, design)
     n_return, n_error, relative, ratio = np.sqrt(variances)
     return NoiseLevels(
         error_channel=float(n_error),
@@ -59,6 +69,21 @@ def estimate_noise(sweep: Sweep, model_gain: ComplexArray) -> NoiseLevels:
         ratio=float(ratio),
         source="estimated from the sweep",
     )
+
+
+def _without_glitches(observed: FloatArray, design: FloatArray) -> FloatArray:
+    """The regression without what is far beyond its own law, once that has settled; over all if too much would go."""
+    everything = variances = _gamma_regression(observed, design)
+    keep = np.ones(len(observed), dtype=bool)
+    for _ in range(GLITCH_ROUNDS):
+        settled = keep
+        keep = observed <= np.maximum(GLITCH * (design @ variances), ROUNDING**2)
+        if not keep.any() or np.mean(~keep) > MOST_GLITCHES:
+            return everything
+        if np.array_equal(keep, settled):
+            break
+        variances = _gamma_regression(observed[keep], design[keep])
+    return variances
 
 
 def _gamma_regression(observed: FloatArray, design: FloatArray) -> FloatArray:
@@ -81,7 +106,8 @@ def _gamma_regression(observed: FloatArray, design: FloatArray) -> FloatArray:
 
     # Each component explains what is largest in its own stretch of the band, to begin with.
     start = np.log([np.average(target, weights=column**2) for column in columns.T / columns.max(axis=1)])
-    logs, _ = leastsq(deviance_residuals, start, ftol=1e-8, xtol=1e-6)
+    # With its full output it does not warn where it stops early: a valley without end is as good anywhere.
+    logs = leastsq(deviance_residuals, start, ftol=1e-8, xtol=1e-6, full_output=True)[0]
     return np.asarray(np.exp(np.clip(logs, -LOG_REACH, LOG_REACH)) * level / scale, dtype=float)
 
 

@@ -115,3 +115,19 @@ def test_levels_rounded_off_by_a_file_are_found_as_a_relative_error() -> None:
     sweep = Sweep(freq_hz=FREQ_HZ[sloping], gain=read[sloping])
     found = estimate_noise(sweep, true[sloping])
     assert found.relative == pytest.approx(3.3e-6, rel=0.4)
+
+
+def test_a_few_bad_points_do_not_swell_the_noise() -> None:
+    for seed in range(5):
+        sweep = measured(seed)
+        spoilt = sweep.gain.copy()
+        spoilt[[100, 160, 161, 200, 290]] *= 1.3
+        found = as_array(estimate_noise(Sweep(freq_hz=FREQ_HZ, gain=spoilt), gain()))
+        assert found == pytest.approx(as_array(estimate_noise(sweep, gain())), rel=0.2)
+
+
+def test_setting_aside_what_is_no_noise_leaves_clean_estimates_unmoved() -> None:
+    # Relative error alone, so that one number holds all points: known to 1/sqrt(30 · 321) in the mean.
+    only_relative = NoiseLevels(error_channel=0.0, return_channel=0.0, relative=1e-3)
+    found = [estimate_noise(measured(seed, only_relative), gain()).relative for seed in range(30)]
+    assert np.mean(found) == pytest.approx(1e-3, rel=0.03)

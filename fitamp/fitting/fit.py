@@ -11,6 +11,7 @@ from fitamp.fitting.adequacy import judge
 from fitamp.fitting.derive import ZERO, fitted_margins, fitted_parameters, fitted_roots
 from fitamp.fitting.intervals import RISE_95, estimate_by_curvature, estimate_by_profile, hull, profile
 from fitamp.fitting.result import LoopFit
+from fitamp.fitting.screen import screened
 from fitamp.fitting.search import Search, lifted
 from fitamp.fitting.statements import place_of_zero, warnings_of
 from fitamp.fitting.two_pole import DelayPrior, FarPoleCurve, FarPolePrior, Pole2Prior, Solution, solution_at
@@ -21,6 +22,8 @@ __all__ = ["MIN_POINTS", "fit_sweep"]
 
 # Four parameters and three noise levels out of two numbers a point, with something left to judge the fit by.
 MIN_POINTS = 12
+# A search without bad points may show more of them; so often at most.
+SCREENINGS = 3
 # A fit whose residuals are this large against the response does not describe the sweep at all.
 UNLIKE_LOOP = 0.3
 # Relative scatter beyond which a sweep is too coarse or too noisy to hold a shape.
@@ -40,6 +43,7 @@ def fit_sweep(
     delay: DelayPrior | None = None,
     pole2: Pole2Prior | None = None,
     known: Transfer | None = None,
+    keep_all: bool = False,
 ) -> LoopFit:
     """Fit two poles and one zero to a loop-gain sweep.
 
@@ -59,6 +63,9 @@ def fit_sweep(
     known
         A factor of the chip's loop gain known beforehand (a mirror pole-zero pair, say); its DC gain must be 1. Margins
         include it, poles and zeros do not.
+    keep_all
+        Keep points that stand apart from their neighbours (glitches, mains lines). Otherwise they are left out and
+        listed in the ``left_out`` of the result's sweep.
 
     Returns
     -------
@@ -77,13 +84,24 @@ def fit_sweep(
     noise = noise or sweep.noise
     lag_is_known = far_pole is not None or delay is not None
     any_lag = None
+    whole = sweep
     # A start that overflows loses by its chi-square; that is no news.
     with np.errstate(over="ignore", invalid="ignore", divide="ignore"):
-        search = Search(sweep=sweep, noise=noise, known=known, delay_s=delay.mean_s if delay else 0.0, pole2=pole2)
-        if lag_is_known:
-            solution = search.with_far_pole(far_pole or FarPolePrior(), delay or DelayPrior())
-        else:
-            solution, any_lag = search.plain_or_with_lag()
+        for screening in range(SCREENINGS + 1):
+            search = Search(sweep=sweep, noise=noise, known=known, delay_s=delay.mean_s if delay else 0.0, pole2=pole2)
+            if lag_is_known:
+                solution = search.with_far_pole(far_pole or FarPolePrior(), delay or DelayPrior())
+            else:
+                solution = search.plain()
+            if keep_all or screening == SCREENINGS:
+                break
+            rest = screened(sweep, solution, noise, whole=whole, fewest=MIN_POINTS)
+            if rest is sweep:
+                break
+            # If too many would go, all stay.
+            keep_all, sweep = rest is whole, rest
+        if not lag_is_known:
+            solution, any_lag = search.plain_or_with_lag(solution)
     _check_likeness(sweep, solution)
     adequacy = judge(solution)
     # The noise comes from about as many second differences as there are points.

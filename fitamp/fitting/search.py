@@ -143,13 +143,16 @@ class Search:
         assert solution is not None
         return solution
 
-    def plain_or_with_lag(self) -> tuple[Solution, Solution | None]:
-        """The solution without lag, or, where that is not adequate, with the simplest lag that makes it so.
+    def plain(self) -> Solution:
+        """The best solution without lag."""
+        return self.best(NO_FAR_POLE, NO_DELAY)
+
+    def plain_or_with_lag(self, plain: Solution) -> tuple[Solution, Solution | None]:
+        """The solution `plain` without lag, or, where that is not adequate, with the simplest lag that makes it so.
 
         The second solution has third pole and delay both free: what it says of the zero holds whatever they are. It is
         None where the sweep does not determine them at all.
         """
-        plain = self.best(NO_FAR_POLE, NO_DELAY)
         if judge(plain).adequate:
             # Only from there: elsewhere the two more parameters would find a doublet in the noise.
             return plain, self._best_or_none(FREE_FAR_POLE, FREE_DELAY, also=plain, elsewhere=False)
@@ -184,7 +187,7 @@ class Search:
         return solution
 
     def _noise_about(self, model: TwoPole, values: FloatArray) -> NoiseLevels:
-        return estimate_noise(self.sweep, model.gain(values, self.sweep.freq_hz))
+        return estimate_noise(self.sweep, model.gain(values, self.sweep.freq_hz), set_aside=False)
 
     def _variance(self, noise: NoiseLevels) -> float:
         """Typical variance of the loop equation: a start that is far off has its own curvature in the scatter."""

@@ -253,7 +253,7 @@ def test_a_large_residual_is_ringed_and_leaves_the_small_ones_visible() -> None:
     sweep = part(0)
     gain = sweep.gain.copy()
     gain[100] *= 1.2
-    fit = fit_sweep(replace(sweep, gain=gain))
+    fit = fit_sweep(replace(sweep, gain=gain), keep_all=True)
     figure = loop_figure(fit)
     (ring,) = drawn_lines(figure, "largest residual")
     assert x_of(ring)[0] == sweep.freq_hz[100]
