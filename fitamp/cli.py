@@ -99,6 +99,11 @@ def _bench_options(parser: argparse.ArgumentParser, *, unstated: str) -> None:
     group = parser.add_argument_group("bench")
     group.add_argument("--noise", metavar="LEVELS", help=NOISE_HELP)
     group.add_argument("--delay", metavar="TIME", help=f"{DELAY_HELP}; default: {unstated}")
+    group.add_argument(
+        "--keep-all",
+        action="store_true",
+        help="fit all points; without it glitches and mains lines are left out, each listed with its reason",
+    )
 
 
 def _output_options(parser: argparse.ArgumentParser, *, folder: bool) -> None:

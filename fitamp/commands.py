@@ -61,7 +61,7 @@ def fit(args: argparse.Namespace) -> int:
     """`fitamp fit FILE`."""
     _refuse_early(args)
     noise, lag = _noise(args), _lag(args)
-    result = fit_sweep(_sweep(args, args.file), noise=noise, **lag)
+    result = fit_sweep(_sweep(args, args.file), noise=noise, keep_all=args.keep_all, **lag)
     record, text = fit_as_dict(result), fit_text(result)
     if args.out:
         from fitamp.plots import fit_figures
@@ -75,7 +75,7 @@ def compare(args: argparse.Namespace) -> int:
     """`fitamp compare FILE --design D.toml`."""
     _refuse_early(args)
     noise, design = _noise(args), _on_stated_delay(args, read_design(args.design))
-    result = compare_sweep(_sweep(args, args.file), design, noise=noise)
+    result = compare_sweep(_sweep(args, args.file), design, noise=noise, keep_all=args.keep_all)
     record, text = comparison_as_dict(result), comparison_text(result)
     if args.out:
         _write_comparison(result, record, text, Path(args.out), force=args.force)

@@ -13,7 +13,7 @@ from typing import Any
 
 import pytest
 
-from fitamp import __version__
+from fitamp import __version__, read_sweep
 from fitamp.cli import COLUMNS_HELP, main, run
 from fitamp.importers.quantity import UNITS_OF
 
@@ -123,6 +123,22 @@ def parameters_of(capsys: Captured, *arguments: str | Path) -> dict[str, Any]:
     assert (code, err) == (0, "")
     record: dict[str, Any] = json.loads(out)
     return record
+
+
+def test_a_bad_point_is_left_out_and_listed_unless_all_are_kept(capsys: Captured, tmp_path: Path) -> None:
+    sweep = read_sweep(PART_A)
+    gain = sweep.gain.copy()
+    gain[150] *= 1.3
+    rows = zip(sweep.freq_hz, gain, strict=True)
+    file = tmp_path / "spoilt.csv"
+    file.write_text("f (Hz),re,im\n" + "".join(f"{f:.9g},{t.real:.9g},{t.imag:.9g}\n" for f, t in rows), "utf-8")
+    commands: list[list[str | Path]] = [["fit", file], ["compare", file, "--design", DESIGN]]
+    for command in commands:
+        (point,) = parameters_of(capsys, *command)["sweep"]["left_out"]
+        assert point["f_hz"] == pytest.approx(sweep.freq_hz[150], rel=1e-6)
+        assert point["reason"].endswith("σ off its neighbours")
+        _, out, _ = called(capsys, *command, "--keep-all", "--json", "-")
+        assert json.loads(out)["sweep"]["left_out"] == []
 
 
 def test_stated_noise_reaches_fit_and_comparison(capsys: Captured) -> None:

@@ -17,7 +17,7 @@ from fitamp.sweep import NoiseLevels, Sweep
 __all__ = ["Advice", "Comparison", "Nulling", "Parasitic", "Row", "Verdict", "Window", "compare"]
 
 
-def compare(sweep: Sweep, design: Design, *, noise: NoiseLevels | None = None) -> Comparison:
+def compare(sweep: Sweep, design: Design, *, noise: NoiseLevels | None = None, keep_all: bool = False) -> Comparison:
     """Fit a sweep with what its design expects, and hold the two against each other.
 
     Parameters
@@ -28,6 +28,8 @@ def compare(sweep: Sweep, design: Design, *, noise: NoiseLevels | None = None) -
         Element values with spreads, or poles, zero and gain.
     noise
         Noise levels; estimated from the sweep where neither this nor ``sweep.noise`` is given.
+    keep_all
+        Keep glitches and mains lines, which are otherwise left out and listed in ``fit.sweep.left_out``.
 
     Raises
     ------
@@ -40,7 +42,7 @@ def compare(sweep: Sweep, design: Design, *, noise: NoiseLevels | None = None) -
         raise UsageError("compare takes a Sweep and a Design: read them with read_sweep and read_design")
     if noise is not None:
         sweep = replace(sweep, noise=noise)  # for every fit of this sweep, the notes' too
-    fit = fit_with_design(sweep, design)
+    fit = fit_with_design(sweep, design, keep_all=keep_all)
     designed_fit = designed_as_measured(design, fit)
     verdict = judge_nulling(fit, design)
     designed_zero_s = design.zero_time_s

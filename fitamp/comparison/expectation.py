@@ -146,22 +146,26 @@ def _known_factor(elements: Elements) -> Transfer | None:
     return Transfer(dc_gain=1.0, poles_hz=poles, zeros_hz=zeros, delay_s=elements.delay_s)
 
 
-def fit_with_design(sweep: Sweep, design: Design, *, noise: NoiseLevels | None = None) -> LoopFit:
+def fit_with_design(
+    sweep: Sweep, design: Design, *, noise: NoiseLevels | None = None, keep_all: bool = False
+) -> LoopFit:
     """Fit a sweep with the design's far pole, delay and known factor as priors.
 
-    Errors hold what an uncertain mirror pole adds.
+    Errors hold what an uncertain mirror pole adds. `keep_all` keeps glitches and mains lines.
 
     Raises
     ------
     FitError
         As `fit_sweep`.
     """
-    fit = fit_sweep(sweep, noise=noise, **expectation(design).as_arguments())
+    fit = fit_sweep(sweep, noise=noise, keep_all=keep_all, **expectation(design).as_arguments())
     moved = mirror_moved(design)
     if moved is None:
         return fit
-    # With one noise for all, or a change of weights would pass for an effect of the mirror.
-    higher, lower = (fit_sweep(sweep, noise=fit.noise, **expectation(other).as_arguments()) for other in moved)
+    # With one noise for all and the same points, or a change of weights would pass for an effect of the mirror.
+    higher, lower = (
+        fit_sweep(fit.sweep, noise=fit.noise, keep_all=True, **expectation(other).as_arguments()) for other in moved
+    )
     return widened_by_mirror(fit, higher, lower)
 
 
@@ -171,6 +175,6 @@ def designed_as_measured(design: Design, fit: LoopFit) -> LoopFit | None:
     gain = design.on_bench().evaluate(freq_hz)
     sweep = Sweep(freq_hz=freq_hz, gain=gain, origin=Origin(file=f"{design.file} (designed)", form="computed"))
     try:
-        return fit_sweep(sweep, noise=fit.noise, **expectation(design).as_arguments())
+        return fit_sweep(sweep, noise=fit.noise, keep_all=True, **expectation(design).as_arguments())
     except FitError:
         return None

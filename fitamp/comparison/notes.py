@@ -55,7 +55,7 @@ def _on_delay(fit: LoopFit, design: Design) -> Iterator[tuple[WarningCode, str]]
 def _with_free_delay(fit: LoopFit, design: Design) -> LoopFit | None:
     expected = replace(expectation(design), delay=DelayPrior(sd_s=math.inf))
     try:
-        return fit_sweep(fit.sweep, noise=fit.sweep.noise, **expected.as_arguments())
+        return fit_sweep(fit.sweep, noise=fit.sweep.noise, keep_all=True, **expected.as_arguments())
     except FitError:
         return None
 
