@@ -21,8 +21,6 @@ __all__ = ["MOST_SHARE", "Spur", "find_spurs", "without_spurs"]
 MOST_SHARE = 0.1
 # Neighbours on each side that a point is held against.
 SIDE = 3
-# Below this, a point has too few neighbours.
-MIN_POINTS = 4 * SIDE
 # Variance of a standard normal value less the median of six or of three others, or less 5/3 of the median of the next
 # three and −2/3 of that of the three behind: the line through both, continued to an end of the sweep.
 LESS_SIX, LESS_THREE = 1.215, 1.449
@@ -31,6 +29,8 @@ LESS_LINE = 1 + (25 + 4) / 9 * 0.449
 SIDE_SHARE = 1 / 3
 # Half the neighbours, on each side, over which the local scatter of the deviations is taken.
 SCATTER_SIDE = 6
+# Below this, the ends have too few neighbours.
+MIN_POINTS = SCATTER_SIDE + 3 * SIDE + 1
 # False alarms in a clean sweep: over all points, and over those at mains lines, of which less is asked.
 CHANCE, CHANCE_MAINS = 0.02, 0.015
 # The noise levels come from the sweep itself, each from about this share of its points.
@@ -128,13 +128,16 @@ def _deviations(residuals: ComplexArray) -> tuple[ComplexArray, FloatArray]:
     for side in (left, right):
         from_side = np.abs(centre - _median(side)) ** 2 / 2 / LESS_THREE / SIDE_SHARE
         apart[SIDE:-SIDE] = np.minimum(apart[SIDE:-SIDE], from_side)
-    # At the ends there is one side only, and a slope must not count.
+    # At the ends there is one side only: a slope must not count, nor a bend, which lifts the points further in as well.
+    reach = SIDE + SCATTER_SIDE
     for end, forward in ((slice(0, SIDE), residuals), (slice(-1, -SIDE - 1, -1), residuals[::-1])):
         next_three, further = (
-            _median(sliding_window_view(forward[first : first + 2 * SIDE - 1], SIDE)) for first in (1, 1 + SIDE)
+            _median(sliding_window_view(forward[first : first + reach + SIDE - 1], SIDE)) for first in (1, 1 + SIDE)
         )
-        deviation[end] = forward[:SIDE] - (5 * next_three - 2 * further) / 3
-        apart[end] = np.abs(deviation[end]) ** 2 / 2 / LESS_LINE
+        from_line = forward[:reach] - (5 * next_three - 2 * further) / 3
+        size = np.abs(from_line) ** 2 / 2 / LESS_LINE
+        deviation[end] = from_line[:SIDE]
+        apart[end] = size[:SIDE] / max(float(np.median(size[SIDE:])) / math.log(2), 1.0)
     around = sliding_window_view(np.pad(apart, SCATTER_SIDE, mode="reflect"), 2 * SCATTER_SIDE + 1)
     scatter = np.median(np.delete(around, SCATTER_SIDE, axis=1), axis=1) / math.log(2)
     return deviation, apart / np.maximum(scatter, 1.0)
