@@ -24,7 +24,7 @@ from fitamp.margins import closed_loop_step, margins
 from fitamp.sweep import Sweep
 from fitamp.transfer import Transfer
 
-__all__ = ["fitted_margins", "fitted_parameters", "fitted_roots"]
+__all__ = ["fitted_margins", "fitted_parameters", "fitted_resonances", "fitted_roots"]
 
 # Above this standard deviation of a logarithm the likelihood is no longer near-quadratic and is profiled.
 QUADRATIC_LN = 0.15
@@ -93,6 +93,28 @@ def fitted_roots(solution: Solution, covariance: FloatArray) -> tuple[tuple[Root
     )
 
 
+def fitted_resonances(solution: Solution, covariance: FloatArray) -> tuple[tuple[Root, ...], tuple[Root, ...]]:
+    """Poles and zeros of the resonances, the upper half of each pair first, with the covariance of (re, im)."""
+
+    def roots_of(which: int, kind: int) -> Callable[[TwoPole, FloatArray], tuple[complex, ...]]:
+        def roots(model: TwoPole, values: FloatArray) -> tuple[complex, ...]:
+            found = model.resonances[which].roots_hz(model.resonance_values(values)[which])[kind]
+            return tuple(sorted(found, key=lambda root: -root.imag))
+
+        return roots
+
+    model, values = solution.model, solution.values
+    poles, zeros = (
+        tuple(
+            _root(model, values, covariance, index, roots_of(which, kind))
+            for which in range(len(model.resonances))
+            for index in range(2)
+        )
+        for kind in range(2)
+    )
+    return poles, zeros
+
+
 def fitted_margins(
     solution: Solution, covariance: FloatArray, quantile: float, extra: Transfer | None = None
 ) -> FittedMargins:
@@ -100,7 +122,7 @@ def fitted_margins(
     model = solution.model
 
     def loop(values: FloatArray) -> Transfer:
-        response = model.response(values)
+        response = model.whole_response(values)
         return response if extra is None else response.cascade(extra)
 
     def quantities(values: FloatArray) -> tuple[float | None, ...]:

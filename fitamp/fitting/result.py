@@ -43,6 +43,7 @@ class WarningCode(StrEnum):
     CROSSOVER_OUTSIDE_BAND = "crossover-outside-band"
     NO_CROSSOVER = "no-crossover"
     OUTLYING_POINTS = "outlying-points"
+    RESONANCE = "resonance"
     DELAY_NOT_STATED = "delay-not-stated"
     DELAY_CONTRADICTED = "delay-contradicted"
     FAR_FROM_DESIGN = "far-from-design"
@@ -118,7 +119,8 @@ class ZeroSeen:
 class LoopFit:
     """A two-pole, one-zero loop gain fitted to a sweep.
 
-    response : gain, poles and zero at the optimum, without path delay and without what was known beforehand
+    response : gain and all roots at the optimum, without path delay and without what was known beforehand
+    resonant_poles, resonant_zeros : roots of resonances beside the two poles and the zero, empty where none was needed
     solution : parameter vector, covariance and residuals, for those who derive further quantities
     quantile : Student's t by which 95 % intervals are wider than a standard error
     """
@@ -129,6 +131,8 @@ class LoopFit:
     zero: ZeroSeen
     poles: tuple[Root, ...]
     zeros: tuple[Root, ...]
+    resonant_poles: tuple[Root, ...]
+    resonant_zeros: tuple[Root, ...]
     margins: FittedMargins
     adequacy: Adequacy
     warnings: tuple[FitWarning, ...]

@@ -2,14 +2,16 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
+from itertools import product
 
 import numpy as np
 
 from fitamp.arrays import FloatArray
 from fitamp.errors import FitError
 from fitamp.fitting.adequacy import judge
-from fitamp.fitting.start import Start, excess_delay, starts
+from fitamp.fitting.resonance import PARAMETERS, guesses_at, peak_of
+from fitamp.fitting.start import Start, excess_delay, more_starts, starts
 from fitamp.fitting.two_pole import (
     DelayPrior,
     FarPoleCurve,
@@ -24,10 +26,18 @@ from fitamp.noise import estimate_noise
 from fitamp.sweep import NoiseLevels, Sweep
 from fitamp.transfer import Transfer
 
-__all__ = ["Search", "lifted"]
+__all__ = ["Search", "lifted", "needs_resonance"]
 
 NOISE_ROUNDS = 3
 CURVE_ROUNDS = 3
+# A package has a few; more is no resonance but a model that is wrong everywhere.
+MOST_RESONANCES = 3
+# So many points that gain most by a resonance do not count for it.
+WORST = 2
+# Mean of five exponential variables that chance exceeds somewhere among 281 points once in 50 sweeps.
+STANDS_OUT = 3.6
+# Beyond what the criterion asks for: odds of e^5 and better.
+CLEARLY_BETTER = 10.0
 # To tell which start ends lowest, chi-square to seven digits is enough, and who is still far off after so many steps
 # does not win.
 RACE_TOLERANCE = 1e-7
@@ -95,19 +105,7 @@ class Search:
             When no start converges.
         """
         model = TwoPole(time_s=self._time_s(), known=self.known, far_pole=far_pole, delay=delay, pole2=self.pole2)
-        vectors = [
-            model.vector(
-                g=guess.g,
-                q=guess.q,
-                b=guess.b,
-                zero_time_s=guess.zero_time_s,
-                far_pole_s=guess.far_pole_s,
-                delay_s=guess.delay_s,
-            )
-            for guess in (self._guesses_for(delay) if elsewhere else ())
-            # A third pole in the start is of use only where the model has room for it.
-            if not guess.far_pole_s or far_pole.sd_s
-        ]
+        vectors = self._vectors(model) if elsewhere else []
         if also is not None:
             vectors.insert(0, lifted(also, model))
         vectors = [vector for vector in vectors if self._is_sane(model, vector)]
@@ -129,6 +127,22 @@ class Search:
         winner = min(ends, key=lambda end: end.optimum.chi_square)
         return _in_sight(self._settled(winner), self.sweep)
 
+    def _vectors(self, model: TwoPole) -> list[FloatArray]:
+        """The guesses as parameter vectors of a model without resonances."""
+        return [
+            model.vector(
+                g=guess.g,
+                q=guess.q,
+                b=guess.b,
+                zero_time_s=guess.zero_time_s,
+                far_pole_s=guess.far_pole_s,
+                delay_s=guess.delay_s,
+            )
+            for guess in self._guesses_for(model.delay)
+            # A third pole in the start is of use only where the model has room for it.
+            if not guess.far_pole_s or model.far_pole.sd_s
+        ]
+
     def with_far_pole(self, far_pole: FarPolePrior | FarPoleCurve, delay: DelayPrior) -> Solution:
         """The best solution under what is known of the lag; a curve is followed to where the zero is found."""
         if isinstance(far_pole, FarPolePrior):
@@ -144,8 +158,19 @@ class Search:
         return solution
 
     def plain(self) -> Solution:
-        """The best solution without lag."""
-        return self.best(NO_FAR_POLE, NO_DELAY)
+        """The best solution without lag; where that is not adequate, from more starts than vector fitting gives."""
+        plain = self.best(NO_FAR_POLE, NO_DELAY)
+        if judge(plain).adequate:
+            return plain
+        ends = [plain]
+        model = plain.model
+        for guess in more_starts(self._bare()):
+            vector = model.vector(g=guess.g, q=guess.q, b=guess.b, zero_time_s=guess.zero_time_s)
+            end = solve(model, self.sweep, plain.noise, vector, tolerance=RACE_TOLERANCE, max_steps=RACE_STEPS)
+            if np.isfinite(end.optimum.chi_square) and self._is_sane(model, end.values):
+                ends.append(end)
+        winner = min(ends, key=lambda end: end.optimum.chi_square)
+        return plain if winner is plain else _in_sight(self._settled(winner), self.sweep)
 
     def plain_or_with_lag(self, plain: Solution) -> tuple[Solution, Solution | None]:
         """The solution `plain` without lag, or, where that is not adequate, with the simplest lag that makes it so.
@@ -164,6 +189,85 @@ class Search:
         if any_lag is not None and judge(any_lag).adequate and _is_lag(any_lag):
             return any_lag, any_lag
         return plain, any_lag
+
+    def with_resonances(self, solution: Solution) -> Solution:
+        """The solution with as many resonances as it is better for, by the Bayesian information criterion.
+
+        G. Schwarz, Annals of Statistics 6, 1978: a parameter must lower chi-square by the logarithm of the number of
+        data. Both solutions are weighed under the noise of the richer one, which no resonance swells.
+        """
+        while len(solution.model.resonances) < MOST_RESONANCES:
+            richer = self._one_more_resonance(solution)
+            if richer is None:
+                break
+            if (
+                self._gain_without_the_worst(solution, richer)
+                < PARAMETERS * np.log(2 * len(self.sweep)) + CLEARLY_BETTER
+            ):
+                break
+            solution = richer
+            if not needs_resonance(solution):
+                break
+        return solution
+
+    def _gain_without_the_worst(self, solution: Solution, richer: Solution) -> float:
+        """What chi-square gains by the resonance where the points that gain most are left out of both.
+
+        A bad point or two must not make a resonance: a pair of roots can always be bent through them.
+        """
+        before = solve(solution.model, self.sweep, richer.noise, solution.values)
+        gains = np.abs(before.residuals) ** 2 - np.abs(richer.residuals) ** 2
+        keep = np.ones(len(gains), dtype=bool)
+        keep[np.argsort(gains)[-WORST:]] = False
+        rest = self.sweep.without(keep, "")
+        without = solve(solution.model, rest, richer.noise, solution.values)
+        return without.optimum.chi_square - float((np.abs(richer.residuals[keep]) ** 2).sum())
+
+    def resonant(self, solution: Solution, any_lag: Solution | None) -> tuple[Solution, Solution | None]:
+        """An inadequate solution with the resonances it needs, and what then holds for any lag.
+
+        Without priors (`any_lag` given) the lag may be needed as well.
+        """
+        best = self.with_resonances(solution)
+        if any_lag is None:
+            return best, None
+        if not judge(best).adequate:
+            lagging = self.with_resonances(any_lag)
+            if judge(lagging).adequate and _is_lag(lagging):
+                return lagging, lagging
+        if not best.model.resonances:
+            return best, any_lag
+        model = replace(best.model, far_pole=FREE_FAR_POLE, delay=FREE_DELAY)
+        return best, self._settled(solve(model, self.sweep, best.noise, lifted(best, model)))
+
+    def _one_more_resonance(self, solution: Solution) -> Solution | None:
+        peak_hz = peak_of(solution.residuals, self.sweep.freq_hz)
+        bases = [solution.values]
+        if not solution.model.resonances:
+            # What was fitted without the resonance may be far off because of it.
+            bases += self._vectors(solution.model)
+        ends = []
+        for base, (resonance, start) in product(bases, guesses_at(peak_hz)):
+            model = replace(solution.model, resonances=(*solution.model.resonances, resonance))
+            vector = np.concatenate([base, start])
+            end = solve(model, self.sweep, solution.noise, vector, tolerance=RACE_TOLERANCE, max_steps=RACE_STEPS)
+            if self._has_local_resonances(end):
+                ends.append(end)
+        if not ends:
+            return None
+        richer = self._settled(min(ends, key=lambda end: end.optimum.chi_square))
+        return richer if self._has_local_resonances(richer) else None
+
+    def _has_local_resonances(self, solution: Solution) -> bool:
+        model = solution.model
+        return (
+            bool(np.isfinite(solution.optimum.chi_square))
+            and self._is_sane(model, solution.values)
+            and all(
+                resonance.is_local(pair)
+                for resonance, pair in zip(model.resonances, model.resonance_values(solution.values), strict=True)
+            )
+        )
 
     def _best_or_none(
         self, far_pole: FarPolePrior, delay: DelayPrior, *, also: Solution, elsewhere: bool = True
@@ -212,6 +316,12 @@ class Search:
         return float(np.clip(self.guesses[0].b, 0.01 * top, 1 / (2 * np.pi * self.sweep.f_min_hz)))
 
 
+def needs_resonance(solution: Solution) -> bool:
+    """Whether the residuals are inadequate, or stand out over a few neighbours, as of a resonance taken for noise."""
+    energy = np.convolve(np.abs(solution.residuals) ** 2 / 2, np.full(5, 0.2), mode="valid")
+    return not judge(solution).adequate or bool(energy.max(initial=0.0) > STANDS_OUT)
+
+
 def lifted(solution: Solution, model: TwoPole) -> FloatArray:
     """The parameter vector of a solution for a model with more freedom and the same scale of time.
 
@@ -219,7 +329,8 @@ def lifted(solution: Solution, model: TwoPole) -> FloatArray:
     """
     *_, far_pole_s, delay_s = solution.model.physical(solution.values)
     lags = {"far_pole": far_pole_s / model.time_s, "delay": delay_s / model.time_s}
-    return np.array([*solution.values[:4], *(lags[name] for name in model.names[4:])])
+    pairs = np.concatenate([[], *solution.model.resonance_values(solution.values)])
+    return np.array([*solution.values[:4], *(lags[name] for name in model.names[4:] if name in lags), *pairs])
 
 
 def _in_sight(solution: Solution, sweep: Sweep) -> Solution:

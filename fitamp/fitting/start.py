@@ -15,7 +15,7 @@ import numpy as np
 from fitamp.arrays import ComplexArray, FloatArray
 from fitamp.sweep import Sweep
 
-__all__ = ["Start", "excess_delay", "starts"]
+__all__ = ["Start", "excess_delay", "more_starts", "starts"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -62,6 +62,19 @@ def _from_straight_lines(sweep: Sweep) -> Start:
     g = omega[near_one] * max(magnitude[near_one], 1e-12)
     q = g / max(float(magnitude.max()), 1e-12)
     return Start(g=float(g), q=float(q), b=float(0.3 / g), zero_time_s=0.0)
+
+
+def more_starts(sweep: Sweep) -> tuple[Start, ...]:
+    """Starts by straight lines, pole 2 above and below crossover, the zero on either side: where vector fitting fails.
+
+    It mirrors unstable poles, and so misses the roots of a loop that would not be stable when closed.
+    """
+    line = _from_straight_lines(sweep)
+    return tuple(
+        replace(line, b=share / line.g, zero_time_s=part * share / line.g)
+        for share in (0.1, 0.4, 1.5, 6.0)
+        for part in (-0.6, 0.6)
+    )
 
 
 def _from_vector_fit(sweep: Sweep, poles: int) -> tuple[Start, ...]:

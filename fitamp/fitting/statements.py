@@ -13,6 +13,7 @@ from fitamp.fitting.result import (
     FittedMargins,
     FittedParameters,
     FitWarning,
+    Root,
     WarningCode,
     ZeroPlace,
     ZeroSeen,
@@ -93,6 +94,7 @@ def warnings_of(
     with_any_lag: Estimate | None,
     *,
     residuals: ComplexArray,
+    resonant_poles: tuple[Root, ...],
 ) -> tuple[FitWarning, ...]:
     """Everything a reader has to know before leaning on the numbers."""
     found: list[FitWarning] = []
@@ -107,6 +109,7 @@ def warnings_of(
             f"{math.sqrt(adequacy.inflation):.2g} times and may still be too narrow",
         )
     found.extend(_outlying(sweep, residuals))
+    found.extend(_resonances(resonant_poles))
     if parameters.pole1_hz.known is not Known.MEASURED:
         warn(
             WarningCode.POLE1_BELOW_BAND,
@@ -149,6 +152,20 @@ def warnings_of(
             f"crossover at {si(crossover_hz, 'Hz')} lies outside the band; margins are extrapolated by the model",
         )
     return tuple(found)
+
+
+def _resonances(poles: tuple[Root, ...]) -> list[FitWarning]:
+    """One warning a resonance, which has its pole pair in `poles`."""
+    found = []
+    for pole in (pole for pole in poles if pole.value_hz.imag > 0):
+        quality = abs(pole.value_hz) / abs(2 * pole.value_hz.real)
+        place = si(abs(pole.value_hz), "Hz")
+        message = (
+            f"two poles and a zero were not enough: a resonance at {place} (Q = {quality:.2g}) was fitted beside them; "
+            "look for it in package, supply or fixture"
+        )
+        found.append(FitWarning(code=WarningCode.RESONANCE, message=message))
+    return found
 
 
 def _outlying(sweep: Sweep, residuals: ComplexArray) -> list[FitWarning]:

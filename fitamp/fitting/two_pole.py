@@ -17,6 +17,7 @@ import numpy as np
 
 from fitamp.arrays import ComplexArray, FloatArray, frozen_float
 from fitamp.fitting.leastsq import MAX_STEPS, TOLERANCE, Optimum, covariance_of, interleaved, minimise
+from fitamp.fitting.resonance import PARAMETERS, Resonance
 from fitamp.sweep import NoiseLevels, Sweep
 from fitamp.transfer import Transfer
 
@@ -82,7 +83,8 @@ class Pole2Prior:
 class TwoPole:
     """The model's fixed side: what is known, what is free, and the time by which τz, τ3 and τd are scaled.
 
-    Parameter vector, in the order of `names`: ln g, ln q, ln b, τz/time_s, then τ3/time_s and τd/time_s where free.
+    Parameter vector, in the order of `names`: ln g, ln q, ln b, τz/time_s, then τ3/time_s and τd/time_s where free,
+    then four numbers for each resonance.
     """
 
     time_s: float
@@ -90,12 +92,19 @@ class TwoPole:
     far_pole: FarPolePrior = FarPolePrior()
     delay: DelayPrior = DelayPrior()
     pole2: Pole2Prior | None = None
+    resonances: tuple[Resonance, ...] = ()
 
     @property
     def names(self) -> tuple[str, ...]:
         """Names of the free parameters, in order."""
         extra = (("far_pole",) if self.far_pole.sd_s else ()) + (("delay",) if self.delay.sd_s else ())
-        return ("ln_g", "ln_q", "ln_b", "zero", *extra)
+        pairs = tuple(f"resonance{i}_{part}" for i in range(len(self.resonances)) for part in ("n1", "n2", "d1", "d2"))
+        return ("ln_g", "ln_q", "ln_b", "zero", *extra, *pairs)
+
+    def resonance_values(self, values: FloatArray) -> tuple[FloatArray, ...]:
+        """The part of the parameter vector that belongs to each resonance, shape (4,)."""
+        first = len(values) - PARAMETERS * len(self.resonances)
+        return tuple(values[first + PARAMETERS * i : first + PARAMETERS * (i + 1)] for i in range(len(self.resonances)))
 
     def physical(self, values: FloatArray) -> tuple[float, float, float, float, float, float]:
         """(g, q, b, τz, τ3, τd) in SI units of a parameter vector."""
@@ -132,11 +141,16 @@ class TwoPole:
     def gain_and_derivatives(self, values: FloatArray, freq_hz: FloatArray) -> tuple[ComplexArray, ComplexArray]:
         """Loop gain, shape (n,), and its derivatives by the parameters, shape (n, p)."""
         g, q, b, zero_time_s, far_pole_s, delay_s = self.physical(values)
-        s = 2j * np.pi * freq_hz
+        s = np.asarray(2j * np.pi * freq_hz, dtype=np.complex128)
         denominator = q + s + b * s**2 + b * far_pole_s * s**3
         outer = np.exp(-s * delay_s) * g / denominator
         if self.known is not None:
             outer = outer * self.known.evaluate(freq_hz)
+        log_slopes: list[ComplexArray] = []
+        for resonance, pair in zip(self.resonances, self.resonance_values(values), strict=True):
+            factor, slopes = resonance.factor_and_derivatives(pair, s)
+            outer = outer * factor
+            log_slopes.extend(slopes.T)
         gain = outer * (1 + s * zero_time_s)
         columns = [
             gain,
@@ -148,6 +162,7 @@ class TwoPole:
             columns.append(-gain * b * s**3 / denominator * self.time_s)
         if self.delay.sd_s:
             columns.append(-s * gain * self.time_s)
+        columns.extend(gain * slope for slope in log_slopes)
         return gain, np.stack(columns, axis=1)
 
     def prior_rows(self, values: FloatArray) -> tuple[FloatArray, FloatArray]:
@@ -181,6 +196,14 @@ class TwoPole:
         denominator = [1.0, 1 / q, b / q] + ([b * far_pole_s / q] if far_pole_s > 0 else [])
         numerator = [g / q] + ([g / q * zero_time_s] if zero_time_s else [])
         return Transfer.from_polynomials(numerator, denominator)
+
+    def whole_response(self, values: FloatArray) -> Transfer:
+        """`response` with the resonances' roots."""
+        whole = self.response(values)
+        for resonance, pair in zip(self.resonances, self.resonance_values(values), strict=True):
+            poles_hz, zeros_hz = resonance.roots_hz(pair)
+            whole = whole.cascade(Transfer(dc_gain=1.0, poles_hz=poles_hz, zeros_hz=zeros_hz))
+        return whole
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

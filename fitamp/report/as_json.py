@@ -33,8 +33,9 @@ def fit_as_dict(fit: LoopFit) -> dict[str, Any]:
         "sweep": _sweep(fit.sweep),
         "model": {
             "name": fit.model_name,
-            "poles": len(fit.poles),
-            "zeros": len(fit.zeros),
+            "poles": len(fit.poles) + len(fit.resonant_poles),
+            "zeros": len(fit.zeros) + len(fit.resonant_zeros),
+            "resonances": len(fit.resonant_poles) // 2,
             "adequate": fit.adequacy.adequate,
             "reduced_chi_square": _finite(fit.adequacy.reduced_chi_square),
             "residuals": fit.adequacy.sentence,
@@ -52,8 +53,8 @@ def fit_as_dict(fit: LoopFit) -> dict[str, Any]:
             "frequency_hz": _finite(fit.zero.frequency_hz),
             "ci95_hz": [_finite(end) for end in fit.zero.ci95_hz],
         },
-        "poles": [_root(root) for root in fit.poles],
-        "zeros": [_root(root) for root in fit.zeros],
+        "poles": [_root(root) for root in (*fit.poles, *fit.resonant_poles)],
+        "zeros": [_root(root) for root in (*fit.zeros, *fit.resonant_zeros)],
         "margins": {name: _estimate(estimate) for name, estimate in fit.margins.items()},
         "warnings": [{"code": warning.code.value, "message": warning.message} for warning in fit.warnings],
     }
