@@ -52,6 +52,10 @@ class Resonance:
         ratio = abs(poles[0]) / abs(zeros[0]) if zeros and zeros[0] else np.inf
         return bool(sharp and stable and 1 / WIDEST_RATIO < ratio < WIDEST_RATIO)
 
+    def is_between(self, values: FloatArray, low_hz: float, high_hz: float) -> bool:
+        """Whether poles and zeros lie inside a band, by their distance; at its ends half a resonance is any bend."""
+        return all(low_hz < abs(root) < high_hz for roots in self.roots_hz(values) for root in roots)
+
 
 def peak_of(residuals: ComplexArray, freq_hz: FloatArray) -> float:
     """Frequency around which the residuals are largest over a few neighbours, in hertz."""

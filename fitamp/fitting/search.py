@@ -264,7 +264,7 @@ class Search:
             bool(np.isfinite(solution.optimum.chi_square))
             and self._is_sane(model, solution.values)
             and all(
-                resonance.is_local(pair)
+                resonance.is_local(pair) and resonance.is_between(pair, self.sweep.f_min_hz, self.sweep.f_max_hz)
                 for resonance, pair in zip(model.resonances, model.resonance_values(solution.values), strict=True)
             )
         )
