@@ -231,14 +231,15 @@ class Search:
         best = self.with_resonances(solution)
         if any_lag is None:
             return best, None
-        if not judge(best).adequate:
-            lagging = self.with_resonances(any_lag)
-            if judge(lagging).adequate and _is_lag(lagging):
-                return lagging, lagging
         if not best.model.resonances:
             return best, any_lag
-        model = replace(best.model, far_pole=FREE_FAR_POLE, delay=FREE_DELAY)
-        return best, self._settled(solve(model, self.sweep, best.noise, lifted(best, model)))
+        freed = []
+        for far_pole, delay in ((NO_FAR_POLE, FREE_DELAY), (FREE_FAR_POLE, NO_DELAY), (FREE_FAR_POLE, FREE_DELAY)):
+            model = replace(best.model, far_pole=far_pole, delay=delay)
+            freed.append(self._settled(solve(model, self.sweep, best.noise, lifted(best, model))))
+        if not judge(best).adequate:
+            best = next((lagging for lagging in freed if judge(lagging).adequate and _is_lag(lagging)), best)
+        return best, freed[-1]
 
     def _one_more_resonance(self, solution: Solution) -> Solution | None:
         peak_hz = peak_of(solution.residuals, self.sweep.freq_hz)
