@@ -198,7 +198,12 @@ def _check_likeness(sweep: Sweep, solution: Solution) -> None:
             f"{sweep.origin.file}: from point to point the loop gain scatters by {solution.noise.relative:.0%}, "
             "which is no noise to fit through; take a denser or quieter sweep, and check the columns"
         )
-    if not (solution.optimum.converged and miss < UNLIKE_LOOP):
+    if miss < UNLIKE_LOOP and not solution.optimum.converged:
+        raise FitError(
+            f"{sweep.origin.file}: the fit comes near but does not settle, because the band leaves too much open; "
+            "state what is known (a design file, the delay), or sweep wider"
+        )
+    if not miss < UNLIKE_LOOP:
         raise FitError(
             f"{sweep.origin.file}: two poles and a zero do not describe this sweep (typical miss {miss:.0%} of the "
             "closed-loop response); check that the columns hold loop gain, and the band"
