@@ -15,7 +15,7 @@ import numpy as np
 from fitamp.arrays import ComplexArray, FloatArray
 from fitamp.sweep import Sweep
 
-__all__ = ["Start", "excess_delay", "more_starts", "starts"]
+__all__ = ["Start", "excess_delay", "more_starts", "starts", "vector_fit_roots"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -77,6 +77,20 @@ def more_starts(sweep: Sweep) -> tuple[Start, ...]:
     )
 
 
+def vector_fit_roots(sweep: Sweep, real: int, pairs: int) -> tuple[ComplexArray, ComplexArray] | None:
+    """Poles and zeros of the loop gain (rad/s) from a pair fit with so many real poles and complex pole pairs.
+
+    None where the fit failed. They are guesses: unweighted, some of them fitted to noise, and unstable closed-loop poles
+    mirrored.
+    """
+    model = _fit_pair(sweep, real, pairs)
+    if model is None:
+        return None
+    pole_matrix, residues, constant = model
+    zeros, poles = (_zeros(pole_matrix, residues[i], constant[i]) for i in range(2))
+    return poles, zeros
+
+
 def _from_vector_fit(sweep: Sweep, poles: int) -> tuple[Start, ...]:
     """Guesses from a pair fit with `poles` poles: its two lowest poles, and its three lowest where there are three."""
     model = _fit_pair(sweep, poles)
@@ -108,7 +122,7 @@ def _guess(dc_gain: float, poles: ComplexArray, zero_time_s: float) -> Start | N
     )
 
 
-def _fit_pair(sweep: Sweep, poles: int) -> tuple[ComplexArray, ComplexArray, FloatArray] | None:
+def _fit_pair(sweep: Sweep, poles: int, pairs: int = 0) -> tuple[ComplexArray, ComplexArray, FloatArray] | None:
     import skrf
     from skrf.vectorFitting import VectorFitting
 
@@ -124,7 +138,7 @@ def _fit_pair(sweep: Sweep, poles: int) -> tuple[ComplexArray, ComplexArray, Flo
         try:
             fit.vector_fit(
                 n_poles_real=poles,
-                n_poles_cmplx=0,
+                n_poles_cmplx=pairs,
                 init_pole_spacing="log",
                 fit_constant=True,
                 fit_proportional=False,
