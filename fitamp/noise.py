@@ -11,7 +11,7 @@ import numpy as np
 from fitamp.arrays import ComplexArray, FloatArray
 from fitamp.sweep import NoiseLevels, Sweep
 
-__all__ = ["estimate_noise", "simulate_bench"]
+__all__ = ["FLOOR", "estimate_noise", "simulate_bench", "variance_components"]
 
 # Second difference with unit variance for white noise.
 CONTRAST = np.array([1.0, -2.0, 1.0]) / np.sqrt(6.0)
@@ -60,7 +60,7 @@ def estimate_noise(sweep: Sweep, model_gain: ComplexArray, *, set_aside: bool = 
     through = np.abs(1 + model_gain) ** 2
     parts = np.stack([size, model * size, model / through * size, size / through], axis=1)
     design = np.stack([np.convolve(part, CONTRAST**2, mode="valid") for part in parts.T], axis=1)
-    variances = (_without_glitches if set_aside else _gamma_regression)(observed, design)
+    variances = (variance_components if set_aside else _gamma_regression)(observed, design)
     n_return, n_error, relative, ratio = np.sqrt(variances)
     return NoiseLevels(
         error_channel=float(n_error),
@@ -71,8 +71,12 @@ def estimate_noise(sweep: Sweep, model_gain: ComplexArray, *, set_aside: bool = 
     )
 
 
-def _without_glitches(observed: FloatArray, design: FloatArray) -> FloatArray:
-    """The regression without what is far beyond its own law, once that has settled; over all if too much would go."""
+def variance_components(observed: FloatArray, design: FloatArray) -> FloatArray:
+    """Variances θ ≥ 0, shape (c,), of which mean squares `observed`, shape (n,), have the means `design` @ θ.
+
+    Each observed value is exponential, or the mean of several that are. What is far beyond its own law is set aside,
+    once that has settled, but nothing if it were too much.
+    """
     everything = variances = _gamma_regression(observed, design)
     keep = np.ones(len(observed), dtype=bool)
     for _ in range(GLITCH_ROUNDS):

@@ -22,7 +22,7 @@ if TYPE_CHECKING:
     import pandas as pd
     import skrf
 
-__all__ = ["Decision", "LeftOut", "NoiseLevels", "Origin", "Sign", "Sweep"]
+__all__ = ["Concern", "Decision", "LeftOut", "NoiseLevels", "Origin", "Sign", "Sweep"]
 
 
 class Sign(StrEnum):
@@ -33,13 +33,22 @@ class Sign(StrEnum):
     UNKNOWN = "unknown"  # nobody has looked yet
 
 
+class Concern(StrEnum):
+    """Whom a decision concerns."""
+
+    READING = "reading"  # who wants to know how the file was understood
+    RESULT = "result"  # who reads a result of the sweep
+    CAUTION = "caution"  # the same reader, as a warning
+
+
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Decision:
-    """One thing that was decided while reading: what about, what was chosen, and why."""
+    """One thing that was decided while reading: what about, what was chosen, why, and whom it concerns."""
 
     topic: str
     choice: str
     reason: str
+    concern: Concern = Concern.READING
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -53,12 +62,16 @@ class LeftOut:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Origin:
-    """Where a sweep came from. `file` is the name as given; `sha256` is of the file's bytes."""
+    """Where a sweep came from. `file` is the name as given; `sha256` is of the file's bytes.
+
+    averaged : where the sweeps came from whose average this one is
+    """
 
     file: str
-    form: str = ""  # "csv", "touchstone", "data frame", "network", "computed"
+    form: str = ""  # "csv", "touchstone", "data frame", "network", "computed", "average"
     trace: str = ""  # which columns or which S-parameter
     sha256: str | None = None
+    averaged: tuple[Origin, ...] = ()
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -68,7 +81,8 @@ class NoiseLevels:
     error_channel, return_channel : additive floor of each receiver
     relative : gain errors, relative
     ratio : additive floor of the loop gain itself, as from processing after the receivers; 0 with receivers alone
-    source : where the numbers come from ("estimated from the sweep", "given", "repeats")
+    source : where the numbers come from ("estimated from the sweep", "given", "from 5 repeats")
+    repeats : number of sweeps from whose differences they were estimated, 0 where not so
     """
 
     error_channel: float
@@ -76,6 +90,7 @@ class NoiseLevels:
     relative: float
     ratio: float = 0.0
     source: str = "given"
+    repeats: int = 0
 
     def __post_init__(self) -> None:
         levels = (self.error_channel, self.return_channel, self.relative, self.ratio)
@@ -156,9 +171,10 @@ class Sweep:
         """Unwrapped phase in degrees, shape (n,), the first point within ±180°."""
         return np.asarray(np.degrees(np.unwrap(np.angle(self.gain))), dtype=float)
 
-    def with_decision(self, topic: str, choice: str, reason: str) -> Sweep:
+    def with_decision(self, topic: str, choice: str, reason: str, *, concern: Concern = Concern.READING) -> Sweep:
         """Return this sweep with one more decision noted."""
-        return replace(self, decisions=(*self.decisions, Decision(topic=topic, choice=choice, reason=reason)))
+        decision = Decision(topic=topic, choice=choice, reason=reason, concern=concern)
+        return replace(self, decisions=(*self.decisions, decision))
 
     def without(self, keep: ArrayLike, reason: str) -> Sweep:
         """Return this sweep with the points where `keep` is False left out for `reason`.
@@ -216,7 +232,7 @@ class Sweep:
             freq_hz=frame["f_hz"].to_numpy(dtype=float),
             gain=gain,
             noise=NoiseLevels(**facts["noise"]) if facts.get("noise") else None,
-            origin=Origin(**facts["origin"]),
+            origin=_origin(facts["origin"]),
             sign=Sign(facts.get("sign", Sign.UNKNOWN)),
             decisions=tuple(Decision(**decision) for decision in facts.get("decisions", ())),
             left_out=tuple(
@@ -259,6 +275,11 @@ class Sweep:
     def _repr_html_(self) -> str:
         cells = (f"<tr><th>{html.escape(n)}</th><td>{html.escape(t)}</td></tr>" for n, t in self._summary())
         return f"<table>{''.join(cells)}</table>"
+
+
+def _origin(facts: dict[str, Any]) -> Origin:
+    averaged = tuple(_origin(part) for part in facts.get("averaged", ()))
+    return Origin(**(facts | {"averaged": averaged}))
 
 
 def _check(name: str, freq_hz: FloatArray, gain: ComplexArray) -> None:

@@ -66,8 +66,10 @@ def judge(solution: Solution) -> Adequacy:
     count = len(residuals)
     chi = solution.reduced_chi_square
     estimated = solution.noise.source.startswith("estimated")
-    # The noise level comes from second differences of the same points: variance 35/18 in place of 1.
-    level = (chi - 1) * np.sqrt(count / (35 / 18 if estimated else 1.0))
+    # The noise level comes from second differences of the same points: variance 35/18 in place of 1. That of K repeats
+    # has K − 1 degrees of freedom a point, whose variance adds to that of the residuals.
+    of_repeats = 1 / (solution.noise.repeats - 1) if solution.noise.repeats > 1 else 0.0
+    level = (chi - 1) * np.sqrt(count / (35 / 18 if estimated else 1.0 + of_repeats))
     lags = max(count // 12, 1)
     correlations = _correlations(residuals, lags)
     structure = float(correlations.sum() * np.sqrt(2 * count / lags))
