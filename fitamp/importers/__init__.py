@@ -9,7 +9,6 @@ from __future__ import annotations
 
 import os
 import re
-from pathlib import PurePath
 
 from fitamp.conditioning.sign import settle_sign
 from fitamp.errors import SweepError, UsageError
@@ -23,11 +22,14 @@ from fitamp.sweep import Sign, Sweep
 
 __all__ = ["ColumnChoice", "ColumnRef", "Quantity", "Unit", "read_sweep", "write_sweep"]
 
-_TOUCHSTONE_SUFFIX = re.compile(r"\.(s[0-9]+p|ts)", re.IGNORECASE)
+_TOUCHSTONE_SUFFIX = re.compile(r"\.(s[0-9]+p|ts)")
 # An option line or a version keyword at the start of a line, in a file whose name says something else.
 _TOUCHSTONE_CONTENT = re.compile(
     rb"^[ \t]*(?:\[version\][ \t]*[0-9]|#[ \t]*[kmg]?hz[ \t]+[syzgh][ \t]+(?:ri|ma|db)\b)", re.IGNORECASE | re.MULTILINE
 )
+
+# Bytes of comments and information that stand above an option line at most.
+_LONGEST_PREAMBLE = 1 << 16
 
 
 def read_sweep(
@@ -42,7 +44,8 @@ def read_sweep(
     Parameters
     ----------
     path
-        ``.s1p``, ``.s2p``, ... and ``.ts`` in any case are read as Touchstone, all else as a text table.
+        ``.s1p``, ``.s2p``, ... and ``.ts`` in any case are read as Touchstone, all else as a text table; either may be
+        a gzip file (``.csv.gz``). ``-`` is standard input.
     columns
         For text tables whose header does not decide: which column holds what, in which unit, as in
         ``"f=1:Hz mag=2:dB phase=3:deg"`` or ``"f='Frequency':MHz re='Re' im='Im'"`` (see `ColumnChoice`).
@@ -67,7 +70,7 @@ def read_sweep(
     """
     choice = ColumnChoice.parse(columns) if isinstance(columns, str) else columns
     source = load_source(path)
-    if _TOUCHSTONE_SUFFIX.fullmatch(PurePath(source.file).suffix):
+    if _TOUCHSTONE_SUFFIX.fullmatch(source.suffix):
         if choice is not None:
             raise UsageError(f"{source.file}: --columns is for text tables; a Touchstone file takes --trace")
         return settle_sign(read_touchstone(source, trace=trace), sign)
@@ -78,7 +81,7 @@ def read_sweep(
 
 
 def _refuse_touchstone_content(source: Source) -> None:
-    if _TOUCHSTONE_CONTENT.search(source.data):
+    if _TOUCHSTONE_CONTENT.search(source.data, 0, _LONGEST_PREAMBLE):
         raise SweepError(
             f"{source.file}: the content is Touchstone, but the name does not say for how many ports; "
             "rename it to end in .s1p or .s2p"

@@ -58,6 +58,7 @@ def read_csv(source: Source, *, columns: ColumnChoice | None = None) -> Sweep:
         used = told_columns(file, header, _complex_columns(frame))
     decimal, decimal_reason = decimal_mark(file, _marked_cells(frame, block))
     decisions = [
+        *source.decisions,
         text.decision,
         Decision(topic="separator", choice=block.separator.label, reason=_separator_reason(block)),
         Decision(topic="decimal mark", choice="comma" if decimal == "," else "point", reason=decimal_reason),

@@ -8,7 +8,6 @@ from __future__ import annotations
 
 import io
 import re
-from pathlib import PurePath
 
 import numpy as np
 
@@ -44,14 +43,19 @@ def read_touchstone(source: Source, *, trace: str | None = None) -> Sweep:
     text = decode(source)
     if text.encoding.startswith("UTF-16"):
         raise SweepError(f"{source.file}: the file is {text.encoding}; Touchstone is plain text, save it as UTF-8")
-    suffix = re.fullmatch(r"\.s([0-9]{1,3})p", PurePath(source.file).suffix, re.IGNORECASE)
+    suffix = re.fullmatch(r"\.s([0-9]{1,3})p", source.suffix)
     if suffix and int(suffix[1]) == 0:
         raise SweepError(f"{source.file}: the file name says 0 ports; name it .s1p or .s2p")
     found = scan(source.file, text.lines, int(suffix[1]) if suffix else None)
     row, column, reason = _pick_trace(source.file, trace, found.ports)
     name = f"S{row}{column}" if found.ports < 10 else f"S{row},{column}"
     freq_hz, gain = _parse(found, row - 1, column - 1)
-    decisions = [text.decision, *_decisions(found), Decision(topic="trace", choice=name, reason=reason)]
+    decisions = [
+        *source.decisions,
+        text.decision,
+        *_decisions(found),
+        Decision(topic="trace", choice=name, reason=reason),
+    ]
     points = Points(lines=tuple(found.row_lines), freq_hz=freq_hz, gain=gain)
     origin = Origin(file=source.file, form="touchstone", trace=name, sha256=source.sha256)
     return finish(points, origin=origin, decisions=tuple(decisions), may_fall=False)
