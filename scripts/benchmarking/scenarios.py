@@ -83,6 +83,7 @@ class Scenario:
     truth: Mapping[str, float]
     note: str = ""
     band_hz: tuple[float, float] = BAND_HZ
+    points: int = POINTS
     judged: tuple[Judged, ...] = ALL_FOUR
     free: tuple[str, ...] = CORE
     priors: tuple[GaussianPrior, ...] = ()
@@ -98,7 +99,7 @@ class Scenario:
     @property
     def freq_hz(self) -> np.ndarray:
         """Frequencies of the sweep, logarithmically spaced."""
-        return np.geomspace(*self.band_hz, POINTS)
+        return np.geomspace(*self.band_hz, self.points)
 
     def measure(self, rng: np.random.Generator) -> np.ndarray:
         """One noisy sweep's loop gain, shape (n,)."""
