@@ -53,10 +53,10 @@ class Decision:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class LeftOut:
-    """A point that is not used, with the reason."""
+    """A point that is not used, with the reason; `gain` is None where the file has no reading for it."""
 
     f_hz: float
-    gain: complex
+    gain: complex | None
     reason: str
 
 
@@ -209,7 +209,13 @@ class Sweep:
             "sign": self.sign.value,
             "decisions": [asdict(decision) for decision in self.decisions],
             "left_out": [
-                {"f_hz": p.f_hz, "real": p.gain.real, "imag": p.gain.imag, "reason": p.reason} for p in self.left_out
+                {
+                    "f_hz": p.f_hz,
+                    "real": None if p.gain is None else p.gain.real,
+                    "imag": None if p.gain is None else p.gain.imag,
+                    "reason": p.reason,
+                }
+                for p in self.left_out
             ],
         }
         return frame
@@ -236,7 +242,11 @@ class Sweep:
             sign=Sign(facts.get("sign", Sign.UNKNOWN)),
             decisions=tuple(Decision(**decision) for decision in facts.get("decisions", ())),
             left_out=tuple(
-                LeftOut(f_hz=p["f_hz"], gain=complex(p["real"], p["imag"]), reason=p["reason"])
+                LeftOut(
+                    f_hz=p["f_hz"],
+                    gain=None if p["real"] is None else complex(p["real"], p["imag"]),
+                    reason=p["reason"],
+                )
                 for p in facts.get("left_out", ())
             ),
         )

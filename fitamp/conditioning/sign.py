@@ -99,7 +99,7 @@ def _undecided(sweep: Sweep, text: str) -> SweepError:
 def _with_sign(sweep: Sweep, sign: Sign, reason: str) -> Sweep:
     turned = sign is Sign.INVERTED if sweep.sign is Sign.UNKNOWN else sign is not sweep.sign
     if turned:
-        left_out = tuple(replace(point, gain=-point.gain) for point in sweep.left_out)
+        left_out = tuple(replace(p, gain=None if p.gain is None else -p.gain) for p in sweep.left_out)
         sweep = replace(sweep, gain=-sweep.gain, left_out=left_out)
     return replace(sweep, sign=sign).with_decision("sign", sign.value, reason)
 

@@ -44,7 +44,7 @@ class Curves:
 
 def drawable(points: tuple[LeftOut, ...]) -> list[LeftOut]:
     """Left-out points that have a place in a logarithmic picture."""
-    return [p for p in points if np.isfinite(p.f_hz) and p.f_hz > 0 and np.isfinite(p.gain) and p.gain != 0]
+    return [p for p in points if np.isfinite(p.f_hz) and p.f_hz > 0 and p.gain and np.isfinite(p.gain)]
 
 
 def curves_of(fit: LoopFit, comparison: Comparison | None, low_hz: float, high_hz: float) -> Curves:
