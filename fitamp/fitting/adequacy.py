@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Protocol
 
 import numpy as np
 
 from fitamp.arrays import ComplexArray
-from fitamp.fitting.two_pole import Solution
+from fitamp.sweep import NoiseLevels
 
-__all__ = ["Adequacy", "judge"]
+__all__ = ["Adequacy", "Judged", "judge"]
 
 # Both statistics are about standard normal for a right model; 4.5 keeps false alarms below one in a few thousand
 # sweeps, the noise having been estimated from the same points.
@@ -18,6 +19,19 @@ ALARM = 4.5
 COMPUTED = 1e-9
 # Residuals below this share of the drive are arithmetic, and arithmetic has patterns of its own.
 ROUNDING = 1e-12
+
+
+class Judged(Protocol):
+    """What can be judged: complex residuals in standard deviations per component, shape (n,), and their noise."""
+
+    @property
+    def residuals(self) -> ComplexArray: ...
+
+    @property
+    def noise(self) -> NoiseLevels: ...
+
+    @property
+    def reduced_chi_square(self) -> float: ...
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -55,7 +69,7 @@ class Adequacy:
         return f"the residuals {' and '.join(seen)}"
 
 
-def judge(solution: Solution) -> Adequacy:
+def judge(solution: Judged) -> Adequacy:
     """Compare residuals with noise.
 
     The lag correlations ρ_l of the complex residuals are each normal with variance 1/(2n) under white noise; their sum
