@@ -15,7 +15,7 @@ import numpy as np
 
 from fitamp.arrays import ComplexArray, FloatArray, frozen_float
 
-__all__ = ["Optimum", "covariance_of", "interleaved", "minimise"]
+__all__ = ["Optimum", "covariance_of", "interleaved", "minimise", "triangle_of"]
 
 Residual = Callable[[FloatArray], FloatArray]
 Jacobian = Callable[[FloatArray], FloatArray]
@@ -29,6 +29,9 @@ UNDETERMINED_VARIANCE = 1e30
 # A fit that converges takes some tens of steps, NIST's hardest 513. In the curved valley of an exact
 # sweep with two lags free MINPACK would go on for its default of thousands.
 MAX_STEPS = 1000
+# Rows that are brought to a triangle at a time. More of them would wake every thread of the linear algebra, which on a
+# busy machine wait for one another a thousand times longer than they work.
+BLOCK_ROWS = 512
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -137,8 +140,16 @@ def covariance_of(jacobian: FloatArray) -> FloatArray:
         return np.asarray(np.diag(np.full(jacobian.shape[1], UNDETERMINED_VARIANCE)))
     scale = np.linalg.norm(jacobian, axis=0)
     scale = np.where(scale > 0, scale, 1.0)
-    _, singular, rotation = np.linalg.svd(jacobian / scale, full_matrices=False)
+    _, singular, rotation = np.linalg.svd(triangle_of(jacobian / scale), full_matrices=False)
     informative = singular > RANK_RTOL * singular.max(initial=0.0)
     variance = np.where(informative, 1 / np.where(informative, singular, 1.0) ** 2, UNDETERMINED_VARIANCE)
     scaled: FloatArray = (rotation.T * variance) @ rotation
     return np.asarray(scaled / np.outer(scale, scale), dtype=float)
+
+
+def triangle_of(matrix: FloatArray) -> FloatArray:
+    """A triangle R with R'R = A'A, of p columns and at most p rows, of a tall matrix A of p columns."""
+    triangle = np.zeros((0, matrix.shape[1]))
+    for first in range(0, max(len(matrix), 1), BLOCK_ROWS):
+        triangle = np.linalg.qr(np.vstack([triangle, matrix[first : first + BLOCK_ROWS]]), mode="r")
+    return np.asarray(triangle, dtype=float)

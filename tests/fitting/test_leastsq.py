@@ -11,7 +11,7 @@ import numpy as np
 import pytest
 
 from fitamp.arrays import ComplexArray, FloatArray
-from fitamp.fitting.leastsq import MAX_STEPS, Optimum, interleaved, minimise
+from fitamp.fitting.leastsq import MAX_STEPS, Optimum, interleaved, minimise, triangle_of
 
 NIST = Path(__file__).parents[1] / "data" / "nist"
 
@@ -203,3 +203,11 @@ def test_the_answer_cannot_be_changed() -> None:
     for array in (optimum.values, optimum.covariance, optimum.residuals):
         with pytest.raises(ValueError, match="read-only"):
             array[0] = 0.0
+
+
+def test_a_tall_matrix_comes_to_the_triangle_of_its_qr_decomposition() -> None:
+    matrix = np.random.default_rng(4).standard_normal((1500, 3)) * [1e6, 1.0, 1e-6]
+    triangle = triangle_of(matrix)
+    assert triangle.shape == (3, 3)
+    np.testing.assert_allclose(np.abs(triangle), np.abs(np.linalg.qr(matrix, mode="r")), rtol=1e-10, atol=1e-16)
+    assert triangle_of(matrix[:2]).shape == (2, 3)
