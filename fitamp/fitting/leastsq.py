@@ -151,5 +151,6 @@ def triangle_of(matrix: FloatArray) -> FloatArray:
     """A triangle R with R'R = A'A, of p columns and at most p rows, of a tall matrix A of p columns."""
     triangle = np.zeros((0, matrix.shape[1]))
     for first in range(0, max(len(matrix), 1), BLOCK_ROWS):
-        triangle = np.linalg.qr(np.vstack([triangle, matrix[first : first + BLOCK_ROWS]]), mode="r")
-    return np.asarray(triangle, dtype=float)
+        block = np.vstack([triangle, matrix[first : first + BLOCK_ROWS]])
+        triangle = np.asarray(np.linalg.qr(block, mode="r"), dtype=float)
+    return triangle
