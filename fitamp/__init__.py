@@ -15,6 +15,7 @@ from typing import TYPE_CHECKING
 if TYPE_CHECKING:
     from fitamp.amplifier import Elements
     from fitamp.comparison import Comparison, Nulling, compare
+    from fitamp.conditioning.repeats import average_repeats
     from fitamp.design import Design, HalfPlane, read_design, write_design
     from fitamp.errors import DesignError, FitampError, FitError, InputError, SweepError, UsageError
     from fitamp.estimate import Estimate, Known
@@ -50,6 +51,7 @@ _HOME = {
     "Transfer": "transfer",
     "UsageError": "errors",
     "ZeroPlace": "fitting",
+    "average_repeats": "conditioning.repeats",
     "closed_loop_step": "margins",
     "compare": "comparison",
     "estimate_noise": "noise",
@@ -85,6 +87,7 @@ __all__ = [
     "Transfer",
     "UsageError",
     "ZeroPlace",
+    "average_repeats",
     "closed_loop_step",
     "compare",
     "estimate_noise",

@@ -35,6 +35,7 @@ PUBLIC = {
     "Transfer",
     "UsageError",
     "ZeroPlace",
+    "average_repeats",
     "closed_loop_step",
     "compare",
     "estimate_noise",
