@@ -1,4 +1,4 @@
-"""Files to sweeps, by one door: `read_sweep`; and back to a plain file: `write_sweep`.
+"""Files to sweeps, by one door: `read_sweep`, or `read_sweeps` for all sweeps of a file; and back: `write_sweep`.
 
 Text tables (CSV and its kin) and Touchstone files are told apart by suffix and content. Reading is strict,
 explained and lossless: what the file does not decide is refused with the option that decides it, and every
@@ -13,14 +13,14 @@ import re
 from fitamp.conditioning.sign import settle_sign
 from fitamp.errors import SweepError, UsageError
 from fitamp.importers.choice import ColumnChoice, ColumnRef
-from fitamp.importers.csv_table import read_csv
+from fitamp.importers.csv_table import read_csv, read_csv_sweeps
 from fitamp.importers.quantity import Quantity, Unit
 from fitamp.importers.source import Source, load_source
 from fitamp.importers.touchstone import read_touchstone
 from fitamp.importers.write import write_sweep
 from fitamp.sweep import Sign, Sweep
 
-__all__ = ["ColumnChoice", "ColumnRef", "Quantity", "Unit", "read_sweep", "write_sweep"]
+__all__ = ["ColumnChoice", "ColumnRef", "Quantity", "Unit", "read_sweep", "read_sweeps", "write_sweep"]
 
 _TOUCHSTONE_SUFFIX = re.compile(r"\.(s[0-9]+p|ts)")
 # An option line or a version keyword at the start of a line, in a file whose name says something else.
@@ -38,6 +38,7 @@ def read_sweep(
     columns: str | ColumnChoice | None = None,
     trace: str | None = None,
     sign: Sign | None = None,
+    sweep: int | None = None,
 ) -> Sweep:
     """Read one sweep from a CSV or Touchstone file.
 
@@ -54,6 +55,9 @@ def read_sweep(
         and S21 of a two-port.
     sign
         Whether the file holds T or −T; None to recognise it from the band, `Sign.UNKNOWN` to leave it open.
+    sweep
+        Which one of a text table that holds several sweeps, counted from 1; None where there is one. `read_sweeps`
+        gives all of them.
 
     Returns
     -------
@@ -68,16 +72,46 @@ def read_sweep(
     UsageError
         When an option is malformed or does not fit the kind of file.
     """
+    source, choice, is_touchstone = _opened(path, columns, trace)
+    if is_touchstone:
+        if sweep not in (None, 1):
+            raise UsageError(f"{source.file}: sweep {sweep} is not there; a Touchstone file holds one sweep")
+        return settle_sign(read_touchstone(source, trace=trace), sign)
+    return settle_sign(read_csv(source, columns=choice, sweep=sweep), sign)
+
+
+def read_sweeps(
+    path: str | os.PathLike[str],
+    *,
+    columns: str | ColumnChoice | None = None,
+    trace: str | None = None,
+    sign: Sign | None = None,
+) -> tuple[Sweep, ...]:
+    """Read all sweeps of a CSV or Touchstone file, in the order of the file; options and errors as `read_sweep`.
+
+    A text table holds several where its header stands again among the rows, where a column named as sweep, run or the
+    like numbers them, or where the frequency starts anew over the same band. A Touchstone file holds one.
+    """
+    source, choice, is_touchstone = _opened(path, columns, trace)
+    if is_touchstone:
+        return (settle_sign(read_touchstone(source, trace=trace), sign),)
+    return tuple(settle_sign(one, sign) for one in read_csv_sweeps(source, columns=choice))
+
+
+def _opened(
+    path: str | os.PathLike[str], columns: str | ColumnChoice | None, trace: str | None
+) -> tuple[Source, ColumnChoice | None, bool]:
+    """The file's bytes, the parsed choice, and whether it is Touchstone."""
     choice = ColumnChoice.parse(columns) if isinstance(columns, str) else columns
     source = load_source(path)
     if _TOUCHSTONE_SUFFIX.fullmatch(source.suffix):
         if choice is not None:
             raise UsageError(f"{source.file}: --columns is for text tables; a Touchstone file takes --trace")
-        return settle_sign(read_touchstone(source, trace=trace), sign)
+        return source, None, True
     _refuse_touchstone_content(source)
     if trace is not None:
         raise UsageError(f"{source.file}: --trace is for Touchstone files; a text table takes --columns")
-    return settle_sign(read_csv(source, columns=choice), sign)
+    return source, choice, False
 
 
 def _refuse_touchstone_content(source: Source) -> None:

@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
-from dataclasses import dataclass
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, replace
+from types import MappingProxyType
 
 from fitamp.errors import SweepError
 from fitamp.importers.cells import show
@@ -13,6 +14,8 @@ from fitamp.importers.quantity import UNITS_OF, Meaning, Quantity, Unit
 from fitamp.sweep import Decision
 
 __all__ = ["Column", "Columns", "chosen_columns", "told_columns"]
+
+_NONE: Mapping[int, Unit] = MappingProxyType({})
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -40,34 +43,48 @@ class Columns:
     decisions: tuple[Decision, ...] = ()
 
 
-def chosen_columns(file: str, choice: ColumnChoice, header: Header) -> Columns:
+def chosen_columns(
+    file: str, choice: ColumnChoice, header: Header, *, units_in_cells: Mapping[int, Unit] = _NONE
+) -> Columns:
     """Look up the columns of a choice.
+
+    Parameters
+    ----------
+    units_in_cells
+        Units that stand behind the digits of a column's cells, by the column's index.
 
     Raises
     ------
     SweepError
         When a column is not in the file, or neither choice nor header gives a unit that is needed.
     """
+    header, units = _with_units_in_cells(header, units_in_cells)
     found = {quantity: _look_up(file, quantity, ref, header) for quantity, ref in choice.columns.items()}
     form = next(form for form in FORMS if set(form) <= set(found))
     gain = tuple(found[quantity] for quantity in form)
     frequency = found[Quantity.FREQUENCY]
-    return Columns(frequency=frequency, gain=gain, decisions=_decisions((frequency, *gain), "as given by --columns"))
+    decisions = (*units, *_decisions((frequency, *gain), "as given by --columns"))
+    return Columns(frequency=frequency, gain=gain, decisions=decisions)
 
 
-def told_columns(file: str, header: Header, complex_columns: Sequence[int]) -> Columns:
+def told_columns(
+    file: str, header: Header, complex_columns: Sequence[int], *, units_in_cells: Mapping[int, Unit] = _NONE
+) -> Columns:
     """Take the columns that the header names without doubt.
 
     Parameters
     ----------
     complex_columns
         Indices of columns whose cells are complex numbers.
+    units_in_cells
+        Units that stand behind the digits of a column's cells, by the column's index.
 
     Raises
     ------
     SweepError
         When the header leaves a doubt; the message names ``--columns`` with an example for this file.
     """
+    header, units = _with_units_in_cells(header, units_in_cells)
     meanings = [_with_content(m, index in complex_columns) for index, m in enumerate(header.meanings)]
     remedy = f"say which columns to use, as in {example_choice(meanings)}"
     if header.line is None:
@@ -83,8 +100,21 @@ def told_columns(file: str, header: Header, complex_columns: Sequence[int]) -> C
     check: tuple[Column, ...] = ()
     if form == FORMS[0] and _is_determined(meanings, FORMS[1]):
         check = tuple(_the_one(place, quantity, meanings, remedy) for quantity in FORMS[1])
-    decisions = _decisions((frequency, *gain), f"named by the header on line {header.line}")
+    decisions = (*units, *_decisions((frequency, *gain), f"named by the header on line {header.line}"))
     return Columns(frequency=frequency, gain=gain, check=check, decisions=decisions)
+
+
+def _with_units_in_cells(header: Header, units: Mapping[int, Unit]) -> tuple[Header, tuple[Decision, ...]]:
+    """The header with the units that only the cells say."""
+    meanings, decisions = list(header.meanings), []
+    for index, unit in units.items():
+        meaning = meanings[index]
+        if meaning.unit is not None or (meaning.quantity and unit not in UNITS_OF[meaning.quantity]):
+            continue
+        meanings[index] = replace(meaning.with_unit(unit), text=meaning.text, doubt="")
+        reason = f"every cell of column {index + 1} has it behind the digits"
+        decisions.append(Decision(topic="unit in the cells", choice=unit.value, reason=reason))
+    return replace(header, meanings=tuple(meanings)), tuple(decisions)
 
 
 def _with_content(meaning: Meaning, is_complex: bool) -> Meaning:

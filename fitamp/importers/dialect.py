@@ -1,4 +1,4 @@
-"""How a text table is laid out: separator, decimal mark, comments, and where its rows of numbers are.
+"""How a text table is laid out: separator, comments, and where its rows of numbers are.
 
 Everything here is told from the rows of numbers themselves, because headers and preambles follow no rule.
 """
@@ -13,15 +13,17 @@ from dataclasses import dataclass
 from enum import Enum
 
 from fitamp.errors import SweepError
-from fitamp.importers.cells import MINUS, is_complex_like, is_number_like, show
+from fitamp.importers.cells import is_number_like
 from fitamp.importers.text import Line
 
-__all__ = ["Block", "Separator", "decimal_mark", "find_block", "is_comment", "split_cells", "uncommented"]
+__all__ = ["Block", "Separator", "find_block", "is_comment", "split_cells", "uncommented"]
 
 _COMMENT = re.compile(r"\s*(?:#|!|%|//)+")
 # A pair in parentheses is one cell also where its comma is the separator.
 _BARE_PAIR = re.compile(r"(^|[,;\s])\s*(\([^()\"]*[,;][^()\"]*\))")
-_COMMA_PAIR = re.compile(r"\([^;ij]*,[^;ij]*\)")
+# A no-break space stands inside a number, not between two.
+_SPACED = re.compile(r"[^ \t\v\f]+")
+_SPACED_OR_QUOTED = re.compile(r'"[^"]*"|[^ \t\v\f"]+')
 # Separator and first row are told from this many lines; no preamble is longer.
 _SAMPLE = 5000
 
@@ -46,7 +48,7 @@ class Block:
 
     separator : how their cells are apart
     rows : the lines, blank and comment lines left aside, a separator at the end of every row taken off
-    width : how many cells each of them has
+    width : how many cells most of them have
     above : the lines before them
     comments : how many comment lines stand between them
     trailing : whether every row ended with a separator
@@ -70,7 +72,7 @@ def uncommented(text: str) -> str:
     return _COMMENT.sub("", text, count=1).strip()
 
 
-def protected(text: str, separator: Separator) -> str:
+def _protected(text: str, separator: Separator) -> str:
     """The line as a reader of quoted cells takes it: without outer blanks, bare ``(1.2,3.4)`` in quotes."""
     if separator is Separator.TAB:
         return text.strip(" ")
@@ -87,9 +89,12 @@ def split_cells(text: str, separator: Separator) -> tuple[str, ...]:
     """
     if text.count('"') % 2:
         raise ValueError("a quote is not closed on this line; close it or remove it")
-    guarded = protected(text, separator)
+    if not ('"' in text or "(" in text):  # nothing to protect: most rows of most files
+        cells = _SPACED.findall(text) if separator is Separator.SPACE else text.strip(" ").split(separator.value)
+        return tuple(map(str.strip, cells))
+    guarded = _protected(text, separator)
     if separator is Separator.SPACE:
-        return tuple(cell.strip('"').strip() for cell in re.findall(r'"[^"]*"|[^\s"]+', guarded))
+        return tuple(cell.strip('"').strip() for cell in _SPACED_OR_QUOTED.findall(guarded))
     row = next(csv.reader([guarded], delimiter=separator.value, skipinitialspace=True), [])
     return tuple(cell.strip() for cell in row)
 
@@ -100,7 +105,7 @@ def find_block(file: str, lines: Sequence[Line]) -> Block:
     Raises
     ------
     SweepError
-        When there are no rows of numbers, or rows differ in their number of cells.
+        When there are no rows of numbers.
     """
     used = [line for line in lines if line.text.strip() and not is_comment(line.text)]
     separator = _find_separator(file, used[:_SAMPLE])
@@ -113,45 +118,11 @@ def find_block(file: str, lines: Sequence[Line]) -> Block:
     return Block(
         separator=separator,
         rows=rows,
-        width=_common_width(file, rows, separator),
+        width=_usual_width(rows[:_SAMPLE], separator),
         above=tuple(line for line in lines if line.number < first),
         comments=sum(is_comment(line.text) for line in lines if line.number > first),
         trailing=trailing,
     )
-
-
-def decimal_mark(file: str, cells: Iterable[tuple[int, str]]) -> tuple[str, str]:
-    """The decimal mark of the cells, "." or ",", and why.
-
-    Parameters
-    ----------
-    cells
-        Line number and text of every cell.
-
-    Raises
-    ------
-    SweepError
-        When commas may be decimal marks as well as thousands separators, or both marks are in use.
-    """
-    marked = [(line, text) for line, text in cells if ("," in text or "." in text) and is_number_like(text)]
-    commas = [(line, text) for line, text in marked if "," in text and not _COMMA_PAIR.fullmatch(text)]
-    if not commas:
-        return ".", "no number has a decimal comma"
-    for line, text in commas:
-        if text.count(",") > 1 + is_complex_like(text) or "." in text:
-            raise SweepError(f"{file}, line {line}: {text!r} has thousands separators; export the numbers without them")
-    line, text = commas[0]
-    if any("." in text for _, text in marked):
-        raise SweepError(
-            f"{file}, line {line}: {text!r} has a comma where other cells have a decimal point; "
-            "export with one decimal mark and without thousands separators"
-        )
-    if all(re.fullmatch(rf"[+\-{MINUS}]?[1-9][0-9]{{0,2}},[0-9]{{3}}", text) for _, text in commas):
-        raise SweepError(
-            f"{file}, line {line}: {text!r} may have a decimal comma or a thousands separator; "
-            "export with a decimal point and without thousands separators"
-        )
-    return ",", f"numbers such as {text!r} on line {line} have one comma each and no point"
 
 
 def _find_separator(file: str, lines: Sequence[Line]) -> Separator:
@@ -211,23 +182,7 @@ def _all_end_with(rows: Sequence[Line], separator: Separator) -> bool:
     return all(row.text.rstrip(" ").endswith(separator.value) for row in rows)
 
 
-def _common_width(file: str, rows: Sequence[Line], separator: Separator) -> int:
-    widths = []
-    for row in rows:
-        try:
-            widths.append(len(split_cells(row.text, separator)))
-        except ValueError as error:
-            raise SweepError(f"{file}, line {row.number}: {error}") from error
-    usual = Counter(widths).most_common(1)[0][0]
-    for row, width in zip(rows, widths, strict=True):
-        if width != usual and not _count_numbers(split_cells(row.text, separator)):
-            raise SweepError(
-                f"{file}, line {row.number}: {show(row.text.strip())} stands among the rows of numbers; remove the "
-                "line, and keep one sweep per file"
-            )
-        if width != usual:
-            raise SweepError(
-                f"{file}, line {row.number}: {width} cell{'s' if width > 1 else ''} where other rows have {usual} "
-                f"(separator: {separator.label}); complete the row or remove it"
-            )
-    return usual
+def _usual_width(rows: Sequence[Line], separator: Separator) -> int:
+    widths = Counter(len(_lenient_cells(row, separator)) for row in rows)
+    del widths[0]  # an open quote
+    return widths.most_common(1)[0][0]

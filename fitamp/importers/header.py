@@ -9,8 +9,9 @@ from dataclasses import dataclass, replace
 from fitamp.errors import SweepError
 from fitamp.importers.cells import is_number_like, show
 from fitamp.importers.dialect import Block, Separator, is_comment, split_cells, uncommented
-from fitamp.importers.quantity import UNITS_OF, Meaning, Quantity, Unit, doubt_of, meaning_of, unit_of
+from fitamp.importers.quantity import UNITS_OF, Meaning, Quantity, Unit, as_german, doubt_of, meaning_of, unit_of
 from fitamp.importers.text import Line
+from fitamp.importers.words import language_of
 from fitamp.sweep import Decision
 
 __all__ = ["Header", "find_header", "is_header_row"]
@@ -27,12 +28,14 @@ _RULE = re.compile(r"[\s|+]*(?:[-=_]{3,}[\s|+]*)+")
 class Header:
     """What the columns hold, one meaning for each; `line` is None where the file has no header.
 
-    `others` are lines that may be headers as well, where none of them names the columns.
+    `lines` are those of header and units; `others` are lines that may be headers as well, where none of them names the
+    columns.
     """
 
     line: int | None
     meanings: tuple[Meaning, ...]
     decisions: tuple[Decision, ...]
+    lines: tuple[int, ...] = ()
     others: tuple[int, ...] = ()
 
 
@@ -70,7 +73,14 @@ def find_header(file: str, block: Block) -> Header:
         meanings = _with_units(file, meanings, units)
         under = "the line under the header has only units"
         decisions.append(Decision(topic="units row", choice=f"line {units[0]}", reason=under))
-    return Header(line=names[0], meanings=meanings, decisions=tuple(decisions), others=others)
+    if any(meaning.doubt for meaning in meanings) and language_of(names[1]) == "German":
+        settled = tuple(map(as_german, meanings))
+        if settled != meanings:
+            reason = "in a German header it is no gradian"
+            decisions.append(Decision(topic="Grad", choice="degrees", reason=reason))
+            meanings = settled
+    lines = (names[0],) if units is None else (names[0], units[0])
+    return Header(line=names[0], meanings=meanings, decisions=tuple(decisions), lines=lines, others=others)
 
 
 def is_header_row(row: Line, block: Block) -> bool:

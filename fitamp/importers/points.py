@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -19,13 +20,25 @@ _AT_ZERO = "0 Hz has no place on a logarithmic frequency axis"
 class Points:
     """The points of a file in its order, each with the line it came from."""
 
-    lines: tuple[int, ...]
+    lines: Sequence[int]
     freq_hz: FloatArray
     gain: ComplexArray
 
 
-def finish(points: Points, *, origin: Origin, decisions: tuple[Decision, ...], may_fall: bool) -> Sweep:
+def finish(
+    points: Points,
+    *,
+    origin: Origin,
+    decisions: tuple[Decision, ...],
+    may_fall: bool,
+    left_out: tuple[LeftOut, ...] = (),
+) -> Sweep:
     """Build the sweep: falling order is turned round where `may_fall`, a point at 0 Hz is left out with a reason.
+
+    Parameters
+    ----------
+    left_out
+        Points that are not among `points` for another reason.
 
     Raises
     ------
@@ -45,22 +58,23 @@ def finish(points: Points, *, origin: Origin, decisions: tuple[Decision, ...], m
         reason = f"the file starts at {freq_hz[-1]:g} Hz and falls to {freq_hz[0]:g} Hz"
         decisions = (*decisions, Decision(topic="order", choice="reversed", reason=reason))
     _refuse_disorder(file, lines, freq_hz)
-    left_out = tuple(
-        LeftOut(f_hz=0.0, gain=complex(t), reason=_AT_ZERO) for f, t in zip(freq_hz, gain, strict=True) if f == 0
-    )
-    if left_out:
-        decisions = (*decisions, Decision(topic="point at 0 Hz", choice="left out", reason=_AT_ZERO))
     keep = freq_hz > 0
-    if not keep.any():
+    if not keep.all():
+        left_out = (*(LeftOut(f_hz=0.0, gain=complex(t), reason=_AT_ZERO) for t in gain[~keep]), *left_out)
+        decisions = (*decisions, Decision(topic="point at 0 Hz", choice="left out", reason=_AT_ZERO))
+        freq_hz, gain = freq_hz[keep], gain[keep]
+    if not len(freq_hz):
         raise SweepError(f"{file}: no point above 0 Hz; a sweep needs at least one")
-    return Sweep(freq_hz=freq_hz[keep], gain=gain[keep], origin=origin, decisions=decisions, left_out=left_out)
+    return Sweep(freq_hz=freq_hz, gain=gain, origin=origin, decisions=decisions, left_out=left_out)
 
 
-def _refuse_disorder(file: str, lines: tuple[int, ...], freq_hz: FloatArray) -> None:
+def _refuse_disorder(file: str, lines: Sequence[int], freq_hz: FloatArray) -> None:
+    if (np.diff(freq_hz) > 0).all():
+        return
     same = np.unique(freq_hz, return_counts=True)
     repeated = same[0][same[1] > 1]
     if len(repeated):
-        first, second, *_ = sorted(lines[row] for row in np.flatnonzero(freq_hz == repeated[0]))
+        first, second, *_ = sorted(lines[row] for row in np.flatnonzero(freq_hz == repeated[0]).tolist())
         raise SweepError(
             f"{file}, line {second}: frequency {repeated[0]:g} Hz is there already on line {first}; "
             "keep one of the rows, or one sweep per file"

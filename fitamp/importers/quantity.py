@@ -11,7 +11,19 @@ import unicodedata
 from dataclasses import dataclass, replace
 from enum import StrEnum
 
-__all__ = ["UNITS_OF", "Meaning", "Quantity", "Unit", "doubt_of", "meaning_of", "unit_of"]
+from fitamp.importers.words import JAPANESE, WORDS, folded
+
+__all__ = [
+    "UNITS_OF",
+    "Meaning",
+    "Quantity",
+    "Unit",
+    "as_german",
+    "doubt_of",
+    "meaning_of",
+    "names_sweeps",
+    "unit_of",
+]
 
 
 class Quantity(StrEnum):
@@ -54,38 +66,39 @@ _SPELLINGS = {
     Unit.MHZ: "mhz megahertz",
     Unit.GHZ: "ghz gigahertz",
     Unit.RAD_PER_S: "rad/s rad/sec rads/s radian/s radians/s rad_s rad_per_s rad·s−1 rad*s-1 rad·s^-1 rad*s^-1",
-    Unit.DB: "db db20 decibel decibels",
-    Unit.LINEAR: "linear lin v/v ratio",
-    Unit.DEGREE: "deg degs degree degrees °",
-    Unit.RADIAN: "rad rads radian radians bogenmaß",
+    Unit.DB: "db db20 decibel decibels dezibel decibelios",
+    Unit.LINEAR: "linear lin v/v ratio lineaire lineal lineare",
+    Unit.DEGREE: "deg degs degree degrees ° degre degres grados gradi",
+    Unit.RADIAN: "rad rads radian radians bogenmass radiant radianes radianti",
 }
-# Units that say one thing here and another there.
-_DOUBTFUL = frozenset({"grad", "grads"})
-
-
-def _word_set(words: str) -> frozenset[str]:
-    return frozenset(words.split())
+# Units that say one thing here and another there; in German the first is degrees.
+_DOUBTFUL = frozenset({"grad", "grads", "grade", "grades"})
+_DEGREES_IN_GERMAN = "grad"
 
 
 _UNIT_BY_SPELLING = {spelling: unit for unit, spellings in _SPELLINGS.items() for spelling in spellings.split()}
-_WORDS = {
-    Quantity.FREQUENCY: "f freq freqs frq frequency frequencies omega ω",
-    Quantity.MAGNITUDE: "mag magn magnitude gain loopgain amplitude ampl amp level modulus mod abs",
-    Quantity.PHASE: "phase phas pha ph arg argument angle ang phi φ",
-    Quantity.REAL: "re real",
-    Quantity.IMAGINARY: "im imag imaginary img",
-    Quantity.COMPLEX: "complex cplx",
+_MEANINGS = {
+    "frequency": Quantity.FREQUENCY,
+    "omega": Quantity.FREQUENCY,
+    "magnitude": Quantity.MAGNITUDE,
+    "phase": Quantity.PHASE,
+    "real": Quantity.REAL,
+    "imaginary": Quantity.IMAGINARY,
+    "complex": Quantity.COMPLEX,
 }
-_QUANTITY_BY_WORD = {word: quantity for quantity, words in _WORDS.items() for word in words.split()}
+
+
+def _word_set(*kinds: str) -> frozenset[str]:
+    return frozenset(word for kind in kinds for words in WORDS[kind].values() for word in words.split())
+
+
+_QUANTITY_BY_WORD = {word: quantity for kind, quantity in _MEANINGS.items() for word in _word_set(kind)}
 # "Loop gain phase", "real part of gain": here gain names the trace, not its magnitude.
-_TRACE_WORDS = frozenset({"gain", "loopgain", "level"})
-# Names that say nothing of the quantity, so that a unit alone may decide.
-_NEUTRAL = _word_set("t l h a loop lg open ol trace tr ch channel data response value y of in")
-# Columns that belong to a trace without being one.
-_SIDE_WORDS = _word_set(
-    "margin noise sd std stdev stderr sigma error err uncertainty coherence limit weight delay mask upper lower "
-    "impedance admittance ohm ohms"
-)
+_TRACE_WORDS = _word_set("trace")
+_NEUTRAL = _word_set("neutral")
+_SIDE_WORDS = _word_set("side")
+_ANGULAR_WORDS = _word_set("omega", "angular")
+_SWEEP_WORDS = _word_set("sweep")
 _MEANT_BY_UNIT: dict[Unit, Quantity] = {
     unit: quantity for quantity, units in UNITS_OF.items() for unit in units if unit is not Unit.LINEAR
 }
@@ -127,18 +140,31 @@ class Meaning:
 
 def unit_of(text: str) -> Unit | None:
     """Read a unit, bare or in brackets; None where it is none of ours. ``mHz`` is not taken for MHz."""
-    cell = text.strip()
+    cell = _normalised(text)
     bracketed = re.fullmatch(r"[(\[{<]\s*(.*?)\s*[)\]}>]", cell)
-    cell = _normalised(bracketed[1] if bracketed else cell)
+    cell = bracketed[1] if bracketed else cell
     if cell.startswith("mH"):
         return None
-    return _UNIT_BY_SPELLING.get(cell.lower())
+    return _UNIT_BY_SPELLING.get(folded(cell))
 
 
 def doubt_of(unit: str) -> str:
     """Why a unit, bare or in brackets, is not taken though it is one; empty where there is nothing to say."""
     word = unit.strip().strip("()[]{}<>").strip()
     return f"{word} may be degrees or gradians, 400 to the turn" if word.lower() in _DOUBTFUL else ""
+
+
+def as_german(meaning: Meaning) -> Meaning:
+    """Return what a cell means in a German header, where "Grad" is degrees."""
+    if meaning.doubt.partition(" ")[0].lower() != _DEGREES_IN_GERMAN:
+        return meaning
+    return replace(meaning.with_unit(Unit.DEGREE), text=meaning.text, doubt="")
+
+
+def names_sweeps(text: str) -> bool:
+    """Whether a header cell names a column that numbers the sweeps of a file: ``Sweep``, ``run no.``."""
+    words = [word for word in _words(_normalised(text)) if word not in {"no", "nr", "number", "index", "id", "num"}]
+    return len(words) == 1 and words[0] in _SWEEP_WORDS
 
 
 def meaning_of(text: str) -> Meaning:
@@ -155,7 +181,7 @@ def _meaning(cell: str) -> Meaning:
         return Meaning(text=cell)
     quantity = _named(name, words, unit)
     if quantity is not None:
-        if unit is None and ({"omega", "ω"} & set(words) or "angular" in words):
+        if unit is None and _ANGULAR_WORDS & set(words):
             unit = Unit.RAD_PER_S
         fitting = UNITS_OF[quantity] or (Unit.LINEAR,)
         if (unit is not None and unit not in fitting) or (not UNITS_OF[quantity] and _SCALED.search(cell)):
@@ -186,13 +212,17 @@ def _is_neutral(name: str) -> bool:
 
 def _words(name: str) -> list[str]:
     apart = re.sub(r"(?<=[a-zω])(?=[A-Z])", " ", name)
-    return re.findall(r"[a-zωφ]+", re.sub(r"\b[sS][0-9]{2}\b", " ", apart).lower())
+    return re.findall(r"[a-zωφ]+", folded(re.sub(r"\b[sS][0-9]{2}\b", " ", apart)))
 
 
 def _normalised(text: str) -> str:
     for symbol, plain in _SYMBOLS.items():
         text = text.replace(symbol, plain)
-    return unicodedata.normalize("NFKC", text).strip().strip("\"'").strip()
+    text = unicodedata.normalize("NFKC", text).replace("\N{DIVISION SLASH}", "/")
+    if not text.isascii():
+        for term, english in JAPANESE.items():
+            text = text.replace(term, f" {english} ")
+    return text.strip().strip("\"'").strip()
 
 
 def _split_unit(cell: str) -> tuple[str, Unit | None]:

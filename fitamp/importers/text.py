@@ -8,15 +8,23 @@ from dataclasses import dataclass
 
 from fitamp.errors import SweepError
 from fitamp.importers.source import Source
+from fitamp.importers.words import JAPANESE
 from fitamp.sweep import Decision
 
-__all__ = ["Line", "Text", "decode"]
+__all__ = ["MAX_LINES", "MAX_LINE_LENGTH", "Line", "Text", "decode"]
 
 _UTF32_MARKS = (codecs.BOM_UTF32_LE, codecs.BOM_UTF32_BE)
 _LINE_END = re.compile(r"\r\n|\n|\r")
 # Control characters that no text export holds; tab, line ends, form feed and a closing Ctrl-Z are fine.
 _BINARY = re.compile(r"[\x00-\x08\x0e-\x1f\x7f]")
 _CTRL_Z = "\x1a"
+# Limits beyond which a file is no table of a sweep, and reading it would only take memory.
+MAX_LINES = 2_000_000
+MAX_LINE_LENGTH = 50_000
+# Encodings that are only taken where they show a known word of a header.
+_JAPANESE_CODECS = {"cp932": "Shift-JIS", "euc_jp": "EUC-JP"}
+# Control characters in Latin-1, dashes and quotation marks in Windows-1252.
+_C1_BYTES = re.compile(rb"[\x80-\x9f]")
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -29,20 +37,20 @@ class Line:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Text:
-    """The lines of a file, its encoding by name, and the decision on it."""
+    """The lines of a file, its encoding by name, and what was decided on the way to them."""
 
     lines: tuple[Line, ...]
     encoding: str
-    decision: Decision
+    decisions: tuple[Decision, ...]
 
 
 def decode(source: Source) -> Text:
-    """Decode a file: UTF-8 or UTF-16, each with or without byte order mark, else Latin-1.
+    """Decode a file: UTF-8 or UTF-16, each with or without byte order mark, else an encoding of single bytes.
 
     Raises
     ------
     SweepError
-        When the bytes are not text.
+        When the bytes are not text, or more lines or longer ones than a table of numbers has.
     """
     content, encoding, reason = _decode(source)
     content = content.rstrip(_CTRL_Z)
@@ -53,11 +61,17 @@ def decode(source: Source) -> Text:
             f"{source.file}, line {number}: this is a binary file, not text (control character "
             f"0x{ord(binary[0]):02x}); export the sweep as CSV or Touchstone"
         )
-    texts = _LINE_END.split(content)
+    if max(content.count("\n"), content.count("\r")) > MAX_LINES:  # before they take memory
+        raise SweepError(
+            f"{source.file}: more than the {MAX_LINES} lines that a sweep may have; export one sweep per file"
+        )
+    texts = content.split("\n") if "\r" not in content else _LINE_END.split(content)
     if texts[-1] == "":
         texts.pop()
+    _refuse_long_lines(source.file, texts)
     lines = tuple(Line(number=number, text=text) for number, text in enumerate(texts, start=1))
-    return Text(lines=lines, encoding=encoding, decision=Decision(topic="encoding", choice=encoding, reason=reason))
+    decision = Decision(topic="encoding", choice=encoding, reason=reason)
+    return Text(lines=lines, encoding=encoding, decisions=(*source.decisions, decision))
 
 
 def _decode(source: Source) -> tuple[str, str, str]:
@@ -81,8 +95,36 @@ def _decode(source: Source) -> tuple[str, str, str]:
         return data.decode("utf-8"), "UTF-8", "all bytes are valid UTF-8"
     except UnicodeDecodeError as error:
         number = len(_LINE_END.findall(data[: error.start].decode("latin-1"))) + 1
-        reason = f"line {number} is not valid UTF-8; bytes above 127 are taken as Latin-1"
-        return data.decode("latin-1"), "Latin-1", reason
+        return _not_unicode(data, number)
+
+
+def _not_unicode(data: bytes, number: int) -> tuple[str, str, str]:
+    """Text of an older encoding; line `number` is the first that shows that it is not UTF-8."""
+    for codec, encoding in _JAPANESE_CODECS.items():
+        try:
+            content = data.decode(codec)
+        except UnicodeDecodeError:
+            continue
+        term = next((term for term in JAPANESE if term in content), None)
+        if term is not None:
+            return content, encoding, f"line {number} is not valid UTF-8; as {encoding} the file has the word {term}"
+    reason = f"line {number} is not valid UTF-8; bytes above 127 are taken as "
+    if _C1_BYTES.search(data):
+        try:
+            return data.decode("cp1252"), "Windows-1252", f"{reason}Windows-1252"
+        except UnicodeDecodeError:
+            pass
+    return data.decode("latin-1"), "Latin-1", f"{reason}Latin-1"
+
+
+def _refuse_long_lines(file: str, texts: list[str]) -> None:
+    longest = max(map(len, texts), default=0)
+    if longest > MAX_LINE_LENGTH:
+        number = next(number for number, text in enumerate(texts, start=1) if len(text) == longest)
+        raise SweepError(
+            f"{file}, line {number}: {longest} characters are more than the {MAX_LINE_LENGTH} that a line may have; "
+            "export one row of numbers per line"
+        )
 
 
 def _strictly(source: Source, data: bytes, codec: str, encoding: str) -> str:

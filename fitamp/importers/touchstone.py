@@ -50,12 +50,7 @@ def read_touchstone(source: Source, *, trace: str | None = None) -> Sweep:
     row, column, reason = _pick_trace(source.file, trace, found.ports)
     name = f"S{row}{column}" if found.ports < 10 else f"S{row},{column}"
     freq_hz, gain = _parse(found, row - 1, column - 1)
-    decisions = [
-        *source.decisions,
-        text.decision,
-        *_decisions(found),
-        Decision(topic="trace", choice=name, reason=reason),
-    ]
+    decisions = [*text.decisions, *_decisions(found), Decision(topic="trace", choice=name, reason=reason)]
     points = Points(lines=tuple(found.row_lines), freq_hz=freq_hz, gain=gain)
     origin = Origin(file=source.file, form="touchstone", trace=name, sha256=source.sha256)
     return finish(points, origin=origin, decisions=tuple(decisions), may_fall=False)

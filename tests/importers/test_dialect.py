@@ -9,8 +9,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from fitamp.errors import SweepError
-from fitamp.importers.dialect import Separator, decimal_mark, find_block, is_comment, split_cells, uncommented
+from fitamp.importers.dialect import Separator, find_block, is_comment, split_cells, uncommented
 from fitamp.importers.text import Line
 
 WORDS = st.text(st.characters(codec="ascii", exclude_characters='"()', exclude_categories=["Cc"]), max_size=8)
@@ -79,37 +78,3 @@ def test_separator_at_row_ends_is_taken_off_only_where_every_row_has_it() -> Non
     assert (every.width, every.trailing) == (2, True)
     some = find_block("a.csv", lines("f,a,note\n1,2,\n2,3,x"))
     assert (some.width, some.trailing) == (3, False)
-
-
-@pytest.mark.parametrize(
-    ("cells", "mark"),
-    [
-        (["1.5", "2"], "."),
-        (["1", "2"], "."),
-        (["1,5", "2"], ","),
-        (["1,000", "2,5"], ","),
-        (["0,125"], ","),
-        (["1,250e3"], ","),
-        (["(1.5,2.5)"], "."),
-        (["(1,5)", "3"], "."),
-        (["(1,5;2,5)"], ","),
-        (["1,5+2,5j"], ","),
-        (["OK, 2.5 V"], "."),
-    ],
-)
-def test_decimal_mark(cells: list[str], mark: str) -> None:
-    assert decimal_mark("a.csv", list(enumerate(cells, start=1)))[0] == mark
-
-
-@pytest.mark.parametrize(
-    ("cells", "message"),
-    [
-        (["1,000", "12,000"], "a.csv, line 1: '1,000' may have a decimal comma or a thousands separator"),
-        (["1,5", "1,000,000"], "a.csv, line 2: '1,000,000' has thousands separators"),
-        (["1,000.5"], "a.csv, line 1: '1,000.5' has thousands separators"),
-        (["2.5", "1,5"], "a.csv, line 2: '1,5' has a comma where other cells have a decimal point"),
-    ],
-)
-def test_comma_that_could_be_two_things_is_refused(cells: list[str], message: str) -> None:
-    with pytest.raises(SweepError, match=message):
-        decimal_mark("a.csv", list(enumerate(cells, start=1)))

@@ -96,7 +96,7 @@ def test_header_cell_means_what_it_says_and_no_more(text: str) -> None:
 
 
 def test_unit_under_an_unknown_name_speaks_weakly() -> None:
-    for text, quantity in (("RBW (Hz)", F), ("Frequenz (Hz)", F), ("Flatness (dB)", MAG), ("Tilt (deg)", PH)):
+    for text, quantity in (("RBW (Hz)", F), ("Taktrate (Hz)", F), ("Flatness (dB)", MAG), ("Tilt (deg)", PH)):
         meaning = meaning_of(text)
         assert (meaning.quantity, meaning.weak) == (quantity, True)
 

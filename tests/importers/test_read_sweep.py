@@ -22,7 +22,7 @@ TOUCHSTONE = "# Hz S RI R 50\n" + "\n".join(" ".join(row) for row in cells("re i
 
 def test_public_names_change_only_on_purpose() -> None:
     assert sorted(fitamp.importers.__all__) == [
-        "ColumnChoice", "ColumnRef", "Quantity", "Unit", "read_sweep", "write_sweep",
+        "ColumnChoice", "ColumnRef", "Quantity", "Unit", "read_sweep", "read_sweeps", "write_sweep",
     ]  # fmt: skip
 
 

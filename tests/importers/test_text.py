@@ -26,16 +26,32 @@ def source(data: bytes) -> Source:
         (CONTENT.encode("utf-16-be"), "UTF-16 BE"),
         (CONTENT.encode("latin-1"), "Latin-1"),
         (CONTENT.encode("utf-8") + b"\x1a", "UTF-8"),
+        (CONTENT.encode("cp1252"), "Latin-1"),
     ],
 )
 def test_encoding_is_found_and_stated(data: bytes, encoding: str) -> None:
     text = decode(source(data))
-    assert text.encoding == text.decision.choice == encoding
+    assert text.encoding == text.decisions[-1].choice == encoding
     assert [(line.number, line.text) for line in text.lines] == [(1, "Phase (°), µV"), (2, "1,2")]
 
 
+@pytest.mark.parametrize(
+    ("text", "codec", "encoding"),
+    [
+        ("周波数(Hz),位相(度)", "cp932", "Shift-JIS"),
+        ("周波数(Hz),位相(度)", "euc_jp", "EUC-JP"),
+        ("f,|T|\n1,\N{EN DASH}2", "cp1252", "Windows-1252"),
+        ("f \xb0\n\x81", "latin-1", "Latin-1"),
+    ],
+)
+def test_older_encodings_are_taken_where_they_show(text: str, codec: str, encoding: str) -> None:
+    decoded = decode(source(text.encode(codec)))
+    assert decoded.encoding == encoding
+    assert "\n".join(line.text for line in decoded.lines) == text
+
+
 def test_latin_1_decision_names_the_first_line_that_shows_it() -> None:
-    assert decode(source(b"a\nb\xb0\n")).decision.reason.startswith("line 2 is not valid UTF-8")
+    assert decode(source(b"a\nb\xb0\n")).decisions[-1].reason.startswith("line 2 is not valid UTF-8")
 
 
 @pytest.mark.parametrize("end", ["\n", "\r\n", "\r"])
@@ -52,6 +68,8 @@ def test_lines_are_counted_as_editors_count(end: str) -> None:
         (CONTENT.encode("utf-32"), "bench.csv: the file is UTF-32; save it as UTF-8"),
         (b"\xef\xbb\xbf1,\xff\n", "bench.csv: marked as UTF-8, but byte 3 does not fit; save it as UTF-8"),
         (b"\xff\xfe1\x00\x00\xd8", "bench.csv: marked as UTF-16 LE, but byte 3 does not fit"),
+        (b"1\n" * 2_000_001, "bench.csv: more than the 2000000 lines that a sweep may have; export one sweep"),
+        (b"1\n" + b"2" * 50_001, "bench.csv, line 2: 50001 characters are more than the 50000 that a line may have"),
     ],
 )
 def test_what_is_no_text_is_refused(data: bytes, message: str) -> None:
