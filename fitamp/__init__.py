@@ -17,6 +17,7 @@ if TYPE_CHECKING:
     from fitamp.comparison import Comparison, Nulling, compare
     from fitamp.conditioning.repeats import average_repeats
     from fitamp.design import Design, HalfPlane, read_design, write_design
+    from fitamp.elements import Condition, ElementEstimate, estimate_elements
     from fitamp.errors import DesignError, FitampError, FitError, InputError, SweepError, UsageError
     from fitamp.estimate import Estimate, Known
     from fitamp.fitting import DelayPrior, FarPolePrior, LoopFit, ZeroPlace, fit_sweep
@@ -31,9 +32,11 @@ if TYPE_CHECKING:
 # anything imports it.
 _HOME = {
     "Comparison": "comparison",
+    "Condition": "elements",
     "DelayPrior": "fitting",
     "Design": "design",
     "DesignError": "errors",
+    "ElementEstimate": "elements",
     "Elements": "amplifier",
     "Estimate": "estimate",
     "FarPolePrior": "fitting",
@@ -54,6 +57,7 @@ _HOME = {
     "average_repeats": "conditioning.repeats",
     "closed_loop_step": "margins",
     "compare": "comparison",
+    "estimate_elements": "elements",
     "estimate_noise": "noise",
     "fit_sweep": "fitting",
     "loop_margins": "margins:margins",
@@ -67,9 +71,11 @@ _HOME = {
 __version__ = "0.1.0"
 __all__ = [
     "Comparison",
+    "Condition",
     "DelayPrior",
     "Design",
     "DesignError",
+    "ElementEstimate",
     "Elements",
     "Estimate",
     "FarPolePrior",
@@ -90,6 +96,7 @@ __all__ = [
     "average_repeats",
     "closed_loop_step",
     "compare",
+    "estimate_elements",
     "estimate_noise",
     "fit_sweep",
     "loop_margins",

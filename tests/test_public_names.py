@@ -15,9 +15,11 @@ ROOT = Path(__file__).resolve().parent.parent
 
 PUBLIC = {
     "Comparison",
+    "Condition",
     "DelayPrior",
     "Design",
     "DesignError",
+    "ElementEstimate",
     "Elements",
     "Estimate",
     "FarPolePrior",
@@ -38,6 +40,7 @@ PUBLIC = {
     "average_repeats",
     "closed_loop_step",
     "compare",
+    "estimate_elements",
     "estimate_noise",
     "fit_sweep",
     "loop_margins",

@@ -20,7 +20,7 @@ from fitamp.elements.condition import Condition
 from fitamp.elements.response import loop_gain_and_slopes
 from fitamp.errors import UsageError
 
-__all__ = ["BENCH_DELAY", "BENCH_LOAD", "MIRROR_POLE", "UNITS", "Circuit", "Parameter"]
+__all__ = ["BENCH_DELAY", "BENCH_LOAD", "MIRROR_POLE", "NOTHING_KNOWN", "UNITS", "Circuit", "Parameter"]
 
 MIRROR_POLE, BENCH_LOAD, BENCH_DELAY = "mirror_pole_hz", "bench_load_f", "bench_delay_s"
 # What can be free, in the order of the vector, with its unit.
@@ -41,6 +41,10 @@ UNITS: Mapping[str, str] = {
 # Those that may be 0, or pass 0, and have no logarithm there.
 LINEAR = frozenset({"Rz", BENCH_DELAY})
 STANDARD = Condition()
+# Standard deviation of a number without a prior before any sweep is seen: a factor of e^10. It tells nothing, and keeps
+# what no sweep shows from running away.
+NOTHING_KNOWN = 10.0
+FARTHEST_LN = 100.0
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -64,7 +68,8 @@ class Parameter:
 
     def to_si(self, number: float) -> float:
         """The value in SI units of its number in the vector."""
-        return self.scale * (math.exp(number) if self.is_log else number)
+        # No iterate may overflow: beyond so many orders of magnitude there is no circuit anyway.
+        return self.scale * (math.exp(min(max(number, -FARTHEST_LN), FARTHEST_LN)) if self.is_log else number)
 
     def from_si(self, value: float) -> float:
         """The number in the vector of a value in SI units."""
@@ -158,9 +163,7 @@ class Circuit:
         """Every number in SI units by name, free or held; Rz may be below 0 in an iterate."""
         found = {name: getattr(self.nominal, name) for name in (*ELEMENT_NAMES, "Cgd", MIRROR_POLE)}
         found |= {BENCH_LOAD: self.bench_load_f, BENCH_DELAY: self.bench_delay_s}
-        with np.errstate(over="ignore", under="ignore"):
-            found |= {p.name: p.to_si(float(number)) for p, number in zip(self.parameters, values, strict=True)}
-        return found
+        return found | {p.name: p.to_si(float(number)) for p, number in zip(self.parameters, values, strict=True)}
 
     def elements(self, values: FloatArray) -> Elements:
         """The amplifier alone, without what the bench adds; an Rz below 0 is taken as 0."""
@@ -196,11 +199,12 @@ class Circuit:
         return gain, np.stack(columns, axis=1)
 
     def prior_rows(self, values: FloatArray) -> tuple[FloatArray, FloatArray]:
-        """Residuals of the priors in standard deviations, shape (r,), and their derivatives, shape (r, p)."""
-        rows = np.array([0.0 if p.prior_sd is None else 1 / p.prior_sd for p in self.parameters])
-        residuals = (values - self.designed) * rows
-        has_prior = rows > 0
-        return residuals[has_prior], np.diag(rows)[has_prior]
+        """Residuals of the priors in standard deviations, shape (p,), and their derivatives, shape (p, p).
+
+        Where there is no prior `NOTHING_KNOWN` stands for it.
+        """
+        rows = np.array([1 / (NOTHING_KNOWN if p.prior_sd is None else p.prior_sd) for p in self.parameters])
+        return (values - self.designed) * rows, np.diag(rows)
 
     def prior_information(self) -> FloatArray:
         """Inverse covariance of the priors, shape (p, p)."""

@@ -21,11 +21,17 @@ __all__ = ["Measured", "information", "loop_equation", "stacked"]
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Measured:
-    """One sweep with how it was taken and the noise it is weighted with."""
+    """One sweep with how it was taken and the noise it is weighted with.
+
+    inflation : by which its variance is larger than the noise, where the circuit does not describe it within the noise
+    factor : what is known to be in the sweep beside the circuit, shape (n,); None for nothing
+    """
 
     sweep: Sweep
     condition: Condition
     noise: NoiseLevels
+    inflation: float = 1.0
+    factor: ComplexArray | None = None
 
 
 def loop_equation(
@@ -62,9 +68,12 @@ def stacked(circuit: Circuit, values: FloatArray, sweeps: Sequence[Measured]) ->
     residuals, derivatives = [], []
     for one in sweeps:
         gain, slopes = circuit.gain_and_derivatives(values, one.sweep.freq_hz, one.condition)
+        if one.factor is not None:
+            gain, slopes = gain * one.factor, slopes * one.factor[:, np.newaxis]
         residual, slope = loop_equation(gain, slopes, one.sweep.gain, one.noise)
-        residuals.append(interleaved(residual))
-        derivatives.append(interleaved(slope))
+        share = 1 / np.sqrt(one.inflation)
+        residuals.append(interleaved(residual) * share)
+        derivatives.append(interleaved(slope) * share)
     priors, prior_slopes = circuit.prior_rows(values)
     return np.concatenate([*residuals, priors]), np.concatenate([*derivatives, prior_slopes])
 
