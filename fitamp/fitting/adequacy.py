@@ -7,7 +7,8 @@ from typing import Protocol
 
 import numpy as np
 
-from fitamp.arrays import ComplexArray
+from fitamp.arrays import ComplexArray, FloatArray
+from fitamp.fitting.stretches import place_in_words, stretches_of
 from fitamp.sweep import NoiseLevels
 
 __all__ = ["Adequacy", "Judged", "judge"]
@@ -41,6 +42,8 @@ class Adequacy:
     level, structure : reduced chi-square and lag correlation, each as standard deviations from what noise gives
     inflation : factor on the covariance, 1 for an adequate model, otherwise reduced chi-square times the correlation
         length of the residuals: neighbours that err together count as fewer points
+    where_hz : stretches (from, to) of the band that hold most of what raised the alarm, rising; empty where it is
+        spread over the band or there is none; None where the frequencies were not given
     """
 
     reduced_chi_square: float
@@ -48,6 +51,7 @@ class Adequacy:
     structure: float
     inflation: float
     noise_too_large: bool
+    where_hz: tuple[tuple[float, float], ...] | None = None
 
     @property
     def adequate(self) -> bool:
@@ -59,18 +63,23 @@ class Adequacy:
         """What was seen, in plain words."""
         if self.adequate:
             return "residuals look like the noise"
-        seen = []
-        if self.structure >= ALARM:
-            seen.append("follow a pattern along frequency")
-        if self.level >= ALARM:
-            seen.append(f"are {np.sqrt(self.reduced_chi_square):.2g} times as large as the scatter allows")
         if self.noise_too_large:
-            seen.append("are far smaller than the scatter from point to point, as of a sweep too coarse for its shape")
-        return f"the residuals {' and '.join(seen)}"
+            seen = ["are far smaller than the scatter from point to point, as of a sweep too coarse for its shape"]
+            if self.structure >= ALARM:
+                seen.insert(0, "follow a pattern along frequency")
+            return f"the residuals {' and '.join(seen)}"
+        place = "" if self.where_hz is None else place_in_words(self.where_hz)
+        large = f"are {np.sqrt(self.reduced_chi_square):.2g} times as large as the scatter allows"
+        if self.structure < ALARM:
+            return f"the residuals {large}{place and f', {place}'}"
+        pattern = f"follow a pattern along frequency{place and f', {place}'}"
+        if self.level < ALARM:
+            return f"the residuals {pattern}"
+        return f"the residuals {pattern}{place and ','} and {large}"
 
 
-def judge(solution: Judged) -> Adequacy:
-    """Compare residuals with noise.
+def judge(solution: Judged, freq_hz: FloatArray | None = None) -> Adequacy:
+    """Compare residuals with noise; with `freq_hz`, shape (n,), also say where along the band they are unlike it.
 
     The lag correlations ρ_l of the complex residuals are each normal with variance 1/(2n) under white noise; their sum
     over n/12 lags catches slow patterns that a single lag misses (portmanteau idea of G. E. P. Box and D. A. Pierce,
@@ -100,7 +109,27 @@ def judge(solution: Judged) -> Adequacy:
         inflation=inflation,
         # Without noise there is only rounding, of which second differences make too much.
         noise_too_large=bool(estimated and level <= -ALARM and solution.noise.relative > COMPUTED),
+        where_hz=None if freq_hz is None else _where_hz(residuals, freq_hz, level, structure, lags),
     )
+
+
+def _where_hz(
+    residuals: ComplexArray, freq_hz: FloatArray, level: float, structure: float, lags: int
+) -> tuple[tuple[float, float], ...]:
+    """Stretches that hold most of the alarms, each point weighed by what it adds to level and structure."""
+    square = np.abs(residuals) ** 2 / 2
+    misfit = np.zeros(len(residuals))
+    if level >= ALARM:
+        misfit += level * (square - 1) / max(float((square - 1).sum()), 1e-300)
+    if structure >= ALARM:
+        alike = np.zeros(len(residuals))
+        for lag in range(1, lags + 1):
+            # Half of what two points have in common belongs to either.
+            common = (residuals[lag:] * np.conj(residuals[:-lag])).real / 2
+            alike[lag:] += common
+            alike[:-lag] += common
+        misfit += structure * alike / max(float(alike.sum()), 1e-300)
+    return tuple((float(freq_hz[first]), float(freq_hz[last])) for first, last in stretches_of(misfit))
 
 
 def _correlations(residuals: ComplexArray, lags: int) -> np.ndarray:

@@ -105,7 +105,7 @@ def fit_sweep(
         if needs_resonance(solution):
             solution, any_lag = search.resonant(solution, any_lag)
     _check_likeness(sweep, solution)
-    adequacy = judge(solution)
+    adequacy = judge(solution, sweep.freq_hz)
     # The noise comes from about as many second differences as there are points.
     quantile = two_sided_95(1e9 if noise else len(sweep) - 5)
     parameters = fitted_parameters(solution, sweep, adequacy, quantile)

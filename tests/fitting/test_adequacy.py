@@ -93,3 +93,49 @@ def test_an_exact_sweep_is_no_evidence_against_the_model() -> None:
     verdict = judge(plain_fit(STANDARD.exact()))
     assert verdict.adequate
     assert verdict.reduced_chi_square < 0.01
+
+
+def within(verdict_hz: tuple[float, float], low_hz: float, high_hz: float) -> bool:
+    return low_hz <= verdict_hz[0] <= verdict_hz[1] <= high_hz
+
+
+def test_where_the_residuals_are_unlike_the_noise_is_said() -> None:
+    third = replace(STANDARD, third_s=1 / (2 * np.pi * 300e6))
+    s = 1j * FREQ_HZ / 3e6
+    doublet = (1 + s / 20 * 1.1 + s**2) / (1 + s / 20 + s**2)
+    for seed in range(3):
+        # What a third pole beyond the band leaves is near its top; what a resonance leaves is around it.
+        verdict = judge(plain_fit(third.measured(seed)), FREQ_HZ)
+        assert verdict.where_hz is not None
+        assert len(verdict.where_hz) == 1
+        assert within(verdict.where_hz[0], 1e6, 100e6)
+        assert "follow a pattern along frequency, mostly between" in verdict.sentence
+        assert ", and are " in verdict.sentence
+        sweep = STANDARD.measured(seed)
+        verdict = judge(plain_fit(replace(sweep, gain=sweep.gain * doublet)), FREQ_HZ)
+        assert verdict.where_hz is not None
+        assert within(verdict.where_hz[0], 1e6, 9e6)
+        assert verdict.where_hz[0][0] < 3e6 < verdict.where_hz[0][1]
+        assert verdict.sentence.startswith("the residuals are ")
+        assert ", mostly between" in verdict.sentence
+
+
+def test_too_much_everywhere_is_said_to_be_everywhere_and_of_one_level_where_it_rules() -> None:
+    low = NoiseLevels(error_channel=1e-5, return_channel=1e-5, relative=5e-4)
+    verdict = judge(plain_fit(STANDARD.measured(3), noise=low), FREQ_HZ)
+    assert verdict.where_hz == ()
+    assert verdict.sentence.endswith("as the scatter allows, throughout the band")
+    # The error receiver's floor rules where the loop gain is above relative/floor = 50: below about 300 kHz.
+    quiet_error = NoiseLevels(error_channel=1e-5, return_channel=2e-5, relative=1e-3)
+    verdict = judge(plain_fit(STANDARD.measured(3), noise=quiet_error), FREQ_HZ)
+    assert verdict.where_hz is not None
+    assert within(verdict.where_hz[0], 10.0, 600e3)
+
+
+def test_adequate_residuals_have_no_place_and_without_frequencies_nothing_is_said_of_it(good: list[Solution]) -> None:
+    assert judge(good[0], FREQ_HZ).where_hz == ()
+    assert judge(good[0], FREQ_HZ).sentence == "residuals look like the noise"
+    low = NoiseLevels(error_channel=1e-5, return_channel=1e-5, relative=5e-4)
+    verdict = judge(plain_fit(STANDARD.measured(3), noise=low))
+    assert verdict.where_hz is None
+    assert verdict.sentence.endswith("2 times as large as the scatter allows")
