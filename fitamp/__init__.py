@@ -16,6 +16,7 @@ if TYPE_CHECKING:
     from fitamp.amplifier import Elements
     from fitamp.comparison import Comparison, Nulling, compare
     from fitamp.conditioning.repeats import average_repeats
+    from fitamp.conditioning.through import ThroughDelay, divided_by_through, through_delay
     from fitamp.design import Design, HalfPlane, read_design, write_design
     from fitamp.elements import Condition, ElementEstimate, estimate_elements
     from fitamp.errors import DesignError, FitampError, FitError, InputError, SweepError, UsageError
@@ -51,12 +52,14 @@ _HOME = {
     "Sign": "sweep",
     "Sweep": "sweep",
     "SweepError": "errors",
+    "ThroughDelay": "conditioning.through",
     "Transfer": "transfer",
     "UsageError": "errors",
     "ZeroPlace": "fitting",
     "average_repeats": "conditioning.repeats",
     "closed_loop_step": "margins",
     "compare": "comparison",
+    "divided_by_through": "conditioning.through",
     "estimate_elements": "elements",
     "estimate_noise": "noise",
     "fit_sweep": "fitting",
@@ -64,6 +67,7 @@ _HOME = {
     "read_design": "design",
     "read_sweep": "importers",
     "simulate_bench": "noise",
+    "through_delay": "conditioning.through",
     "write_design": "design",
     "write_sweep": "importers",
 }
@@ -90,12 +94,14 @@ __all__ = [
     "Sign",
     "Sweep",
     "SweepError",
+    "ThroughDelay",
     "Transfer",
     "UsageError",
     "ZeroPlace",
     "average_repeats",
     "closed_loop_step",
     "compare",
+    "divided_by_through",
     "estimate_elements",
     "estimate_noise",
     "fit_sweep",
@@ -103,6 +109,7 @@ __all__ = [
     "read_design",
     "read_sweep",
     "simulate_bench",
+    "through_delay",
     "write_design",
     "write_sweep",
 ]

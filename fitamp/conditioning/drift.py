@@ -89,7 +89,7 @@ def drifts(differences: Differences, names: Sequence[str]) -> tuple[Drift, ...]:
     contrasts whose sum of squares over all parts, or square in one, is beyond the F distribution's quantile.
     """
     count = len(names)
-    parts = _parts(differences.freq_hz)
+    parts = band_parts(differences.freq_hz)
     whitened = differences.deviations / np.sqrt(differences.variance)
     means = np.stack([whitened[:, part].sum(axis=1) / np.sqrt(len(part)) for part in parts], axis=1)
     degrees = SHARE_PER_LEVEL * len(differences.freq_hz) * (count - 1)
@@ -175,7 +175,7 @@ def _as_percent(change: complex) -> str:
     return text.replace("-", "−")
 
 
-def _parts(freq_hz: FloatArray) -> list[np.ndarray]:
+def band_parts(freq_hz: FloatArray) -> list[np.ndarray]:
     """Indices of the parts of the band, each with some points."""
     place = np.floor(np.log10(freq_hz / freq_hz[0]) / PART_DECADES)
     parts: list[np.ndarray] = []
