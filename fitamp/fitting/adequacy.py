@@ -20,6 +20,7 @@ ALARM = 4.5
 COMPUTED = 1e-9
 # Residuals below this share of the drive are arithmetic, and arithmetic has patterns of its own.
 ROUNDING = 1e-12
+HUNDRED = 99.5  # two digits make this 100
 
 
 class Judged(Protocol):
@@ -69,7 +70,8 @@ class Adequacy:
                 seen.insert(0, "follow a pattern along frequency")
             return f"the residuals {' and '.join(seen)}"
         place = "" if self.where_hz is None else place_in_words(self.where_hz)
-        large = f"are {np.sqrt(self.reduced_chi_square):.2g} times as large as the scatter allows"
+        times = float(np.sqrt(self.reduced_chi_square))
+        large = f"are {f'{times:.2g}' if times < HUNDRED else f'{times:.0f}'} times as large as the scatter allows"
         if self.structure < ALARM:
             return f"the residuals {large}{place and f', {place}'}"
         pattern = f"follow a pattern along frequency{place and f', {place}'}"

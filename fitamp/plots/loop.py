@@ -13,7 +13,7 @@ from fitamp.plots.lane import draw_lane, lane_rows
 from fitamp.plots.loop_legend import NOTE_LINE_IN, ROW_IN, draw_legend, draw_notes, note_lines, reason_lines
 from fitamp.plots.loop_marks import draw_crossover, draw_limits, draw_phase_margin, limit_phases_deg
 from fitamp.plots.loop_panels import curves_of, draw_magnitude, draw_phase, drawable, shade_beyond
-from fitamp.plots.loop_residuals import TITLE_LINE_IN, draw_residuals, residual_title
+from fitamp.plots.loop_residuals import draw_residuals, residual_title, title_room_in
 from fitamp.plots.roots import Mark, designed_marks, measured_marks
 from fitamp.plots.style import WIDTH_IN, drawing_style, place_axes
 
@@ -23,7 +23,7 @@ LEFT_IN, RIGHT_IN, BOTTOM_IN = 0.95, 0.35, 0.55
 PANEL_IN = WIDTH_IN - LEFT_IN - RIGHT_IN
 NOTES_IN = WIDTH_IN - LEFT_IN - 0.2
 RESIDUALS_IN, MAGNITUDE_IN, PHASE_IN = 1.1, 2.3, 2.1
-GAP_IN, TITLE_GAP_IN = 0.1, 0.155
+GAP_IN = 0.1
 # The picture goes this far below and above the sweep, and up to ten times beyond where that shows a root in place;
 # roots farther out become arrows at the edge.
 BELOW, ABOVE, ROOTS_BEYOND = 1.25, 2.2, 10.0
@@ -52,7 +52,7 @@ def loop_figure(fit: LoopFit, comparison: Comparison | None = None) -> Figure:
         notes = note_lines(fit, comparison, NOTES_IN)
         notes_in = NOTE_LINE_IN * len(notes) + (0.05 if notes else 0.0)
         heights = (RESIDUALS_IN, sum(row.height_in for row in rows), PHASE_IN, MAGNITUDE_IN)
-        gaps = (TITLE_GAP_IN + TITLE_LINE_IN * len(title), GAP_IN, GAP_IN)
+        gaps = (title_room_in(fit, title), GAP_IN, GAP_IN)
         body_in = notes_in + BOTTOM_IN + sum(heights) + sum(gaps) + ROW_IN * (2 + len(reasons)) + 0.05
         figure = figure_with_head(fit, comparison, body_in=body_in)
         panels = _panels(figure, heights, gaps, notes_in + BOTTOM_IN)
