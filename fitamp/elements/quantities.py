@@ -1,13 +1,12 @@
 """What follows from the elements, with exact derivatives: zero time, poles, gain-bandwidth, crossover, phase margin.
 
-All for the amplifier with the bench's load and what a condition adds, without the bench's delay. Derivatives of the
-roots are implicit ones, dp = −(∂P/∂x)/(∂P/∂s); so are those of the crossover.
+Derivatives of the roots are implicit ones, dp = −(∂P/∂x)/(∂P/∂s); so are those of the crossover.
 """
 
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping
+from collections.abc import Collection, Mapping
 from enum import StrEnum
 from typing import Any
 
@@ -16,12 +15,11 @@ import numpy as np
 from fitamp.amplifier import ELEMENT_NAMES, Elements, coefficients
 from fitamp.arrays import FloatArray
 from fitamp.elements.circuit import BENCH_LOAD, MIRROR_POLE, Circuit
-from fitamp.elements.condition import Condition
 from fitamp.elements.response import loop_gain_and_slopes
 from fitamp.margins import margins
 from fitamp.transfer import TWO_PI, Transfer
 
-__all__ = ["Quantity", "quantities_and_slopes"]
+__all__ = ["Quantity", "Slopes", "by_vector", "quantities_and_slopes"]
 
 # Step of the complex differentiation, relative; the coefficients are polynomials in every element.
 COMPLEX_STEP = 1e-30
@@ -45,20 +43,25 @@ class Quantity(StrEnum):
         return {"zero_time_s": "s", "phase_margin_deg": "deg"}.get(self.value, "Hz")
 
 
-def quantities_and_slopes(
-    circuit: Circuit, values: FloatArray, condition: Condition | None = None
-) -> dict[Quantity, tuple[float | None, FloatArray]]:
-    """Each quantity and its derivatives by the vector, shape (p,); None and NaN for a crossover that there is not."""
-    elements = circuit.loaded(values, condition or Condition())
-    found = _of_roots(elements) | _of_crossover(elements)
-    return {quantity: (value, _by_vector(circuit, values, slopes)) for quantity, (value, slopes) in found.items()}
+def quantities_and_slopes(elements: Elements) -> dict[Quantity, tuple[float | None, Slopes]]:
+    """Each quantity of an amplifier and its derivatives by element, in SI units.
+
+    A crossover that there is not is None, with derivatives that are NaN.
+    """
+    return _of_roots(elements) | _of_crossover(elements)
 
 
-def _by_vector(circuit: Circuit, values: FloatArray, slopes: Mapping[str, float]) -> FloatArray:
+def by_vector(
+    circuit: Circuit, values: FloatArray, slopes: Mapping[str, float], *, without: Collection[str] = ()
+) -> FloatArray:
+    """Derivatives by the vector, shape (p,), of one with derivatives by element; the bench's load acts as CL does.
+
+    without : names of the vector that have no part in it, because another value stands in their place
+    """
     by_name = {**slopes, BENCH_LOAD: slopes["CL"]}
     return np.array(
         [
-            by_name.get(one.name, 0.0) * one.slope(float(number))
+            0.0 if one.name in without else by_name.get(one.name, 0.0) * one.slope(float(number))
             for one, number in zip(circuit.parameters, values, strict=True)
         ]
     )
