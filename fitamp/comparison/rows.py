@@ -2,8 +2,12 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import replace
 
+import numpy as np
+
+from fitamp.arrays import FloatArray
 from fitamp.comparison.result import Row, Window
 from fitamp.design import Design
 from fitamp.estimate import Estimate, Known
@@ -26,6 +30,8 @@ QUANTITIES = (
 BY_DIFFERENCE = frozenset({"phase_margin_deg", "gain_margin_db"})
 # No spread of elements and no forgotten probe moves pole 2 so far; a zero on pole 2 seems to.
 HIDDEN_POLE_RATIO = 4.0
+# What a sweep does not see is varied by no more than this, of parameters of order 1.
+FARTHEST_STEP = 1.0
 
 
 def designed_poles_hz(design: Design) -> tuple[float, ...]:
@@ -88,7 +94,7 @@ def comparison_rows(
                 sigma=sigma,
                 low=low,
                 high=high,
-                inside=_inside(estimate, low, high) if trusted else None,
+                inside=_is_inside(fit, quantity, estimate, low, high) if trusted else None,
             )
         )
     return tuple(rows)
@@ -109,6 +115,32 @@ def _deviation(quantity: str, estimate: Estimate, reference: float | None) -> tu
     if quantity in BY_DIFFERENCE:
         return difference, sigma
     return (difference / abs(reference) if reference else None), sigma
+
+
+def _is_inside(fit: LoopFit, quantity: str, estimate: Estimate, low: float | None, high: float | None) -> bool | None:
+    if quantity != "gain_margin_db" or estimate.value is not None or (low is None and high is None):
+        return _inside(estimate, low, high)
+    # Without a value the phase does not reach −180°, or not for sure; where it does not, the margin has no limit.
+    start, end = -math.inf if low is None else low, math.inf if high is None else high
+    found = {start <= margin_db <= end for margin_db in _gain_margins_db(fit)}
+    return found.pop() if len(found) == 1 else None
+
+
+def _gain_margins_db(fit: LoopFit) -> list[float]:
+    """Gain margins of the fitted loop and of those about it that its errors leave open; infinite without a crossing.
+
+    Those are the ends of the axes of the 95 % ellipsoid of the parameters.
+    """
+    model, values = fit.solution.model, fit.solution.values
+    variances, axes = np.linalg.eigh(fit.covariance)
+    steps: FloatArray = fit.quantile * np.sqrt(variances.clip(0)) * axes
+    steps = steps * np.minimum(1.0, FARTHEST_STEP / np.maximum(np.abs(steps).max(axis=0), FARTHEST_STEP))
+    found = []
+    for vector in (values, *(values + sign * step for step in steps.T for sign in (1, -1))):
+        loop = model.whole_response(vector)
+        gain_margin_db = margins(loop if model.known is None else loop.cascade(model.known)).gain_margin_db
+        found.append(math.inf if gain_margin_db is None else gain_margin_db)
+    return found
 
 
 def _inside(estimate: Estimate, low: float | None, high: float | None) -> bool | None:

@@ -238,3 +238,40 @@ def test_a_row_that_does_not_exist_is_refused() -> None:
     comparison = compare(noise_free(NOMINAL), DESIGN)
     with pytest.raises(KeyError, match="slew_rate"):
         comparison.row("slew_rate")
+
+
+def gain_margin_inside(fit: LoopFit, limit: Limit, *, trusted: bool = True, design: Design = DESIGN) -> bool | None:
+    """What the table says of a gain margin without a value."""
+    limited = replace(design, limits={"gain_margin_db": limit})
+    unlimited = replace(fit, margins=replace(fit.margins, gain_margin_db=UNKNOWN))
+    rows = comparison_rows(unlimited, None, limited, WINDOW, trusted=trusted)
+    (row,) = (row for row in rows if row.quantity == "gain_margin_db")
+    return row.inside
+
+
+def test_an_unlimited_gain_margin_is_above_every_lower_limit_and_beyond_every_upper_one(healthy: LoopFit) -> None:
+    # python-control gives the nominal circuit an infinite gain margin (first test of this file).
+    assert healthy.margins.gain_margin_db.value is None
+    assert gain_margin_inside(healthy, Limit(low=12.0)) is True
+    assert gain_margin_inside(healthy, Limit(low=12.0, high=60.0)) is False
+    assert gain_margin_inside(healthy, Limit(high=60.0)) is False
+    assert gain_margin_inside(healthy, Limit(low=12.0), trusted=False) is None
+
+
+def test_a_gain_margin_that_may_be_unlimited_is_held_against_all_that_it_may_be() -> None:
+    bare = fit_with_design(measured(NOMINAL.with_changes(Rz=0), 5), DESIGN)
+    known_db = bare.margins.gain_margin_db.value
+    assert known_db is not None
+    assert gain_margin_inside(bare, Limit(low=known_db - 1)) is True
+    assert gain_margin_inside(bare, Limit(low=known_db + 1)) is False
+    assert gain_margin_inside(bare, Limit(low=known_db + 1e-3)) is None
+    assert gain_margin_inside(bare, Limit(high=known_db + 1)) is True
+
+
+def test_a_mirror_pole_that_is_known_counts_in_the_gain_margin() -> None:
+    design = Design.from_elements(NOMINAL.with_changes(Rz=300, mirror_pole_hz=60e6), spreads=SPREADS, bench=BENCH)
+    fit = fit_with_design(noise_free(NOMINAL.with_changes(Rz=300, mirror_pole_hz=60e6)), design)
+    known_db = fit.margins.gain_margin_db.value
+    assert known_db is not None
+    assert gain_margin_inside(fit, Limit(low=known_db - 1), design=design) is True
+    assert gain_margin_inside(fit, Limit(low=known_db + 1), design=design) is False
