@@ -26,9 +26,17 @@ COLUMNS_HELP = (
     "keys and units: f Hz, kHz, MHz, GHz, rad/s; mag dB, linear; phase deg, rad; re, im and complex without unit"
 )
 NOISE_HELP = (
-    "noise levels instead of those estimated from the sweep, complex standard deviations, as in "
+    "noise levels of one sweep instead of those estimated from it, complex standard deviations, as in "
     '"error=2e-5 return=2e-5 relative=1e-3": floors of the two receivers for a drive of 1, relative gain error, and '
     "ratio, a floor of the loop gain itself; one that is left out is 0"
+)
+THROUGH_HELP = (
+    "through sweep of the same bench, both receivers on one node: its delay, with its standard error, is that of the "
+    "path, in place of --delay and of what the design file states; read with the same --columns or --trace"
+)
+REPEATED_HELP = (
+    "CSV or Touchstone sweep of the loop gain; several must be repeats of one sweep, of the same part at the same "
+    "frequencies and settings, in the order in which they were taken, and are averaged"
 )
 DELAY_HELP = (
     'delay that the bench adds to the loop: "0.4 ns", "0.4 ns +- 0.02 ns" with its standard deviation, or free where '
@@ -60,15 +68,15 @@ def build_parser() -> argparse.ArgumentParser:
     _output_options(read, folder=False)
     read.set_defaults(action="read")
 
-    fit = commands.add_parser("fit", help="fit two poles and one zero to a sweep")
-    fit.add_argument("file", metavar="FILE", help="CSV or Touchstone sweep of the loop gain")
+    fit = commands.add_parser("fit", help="fit two poles and one zero to a sweep or its repeats")
+    fit.add_argument("files", nargs="+", metavar="FILE", help=REPEATED_HELP)
     _reading_options(fit)
     _bench_options(fit, unstated="free")
     _output_options(fit, folder=True)
     fit.set_defaults(action="fit")
 
     compare = commands.add_parser("compare", help="hold a sweep against its design: verdict, numbers, pictures")
-    compare.add_argument("file", metavar="FILE", help="CSV or Touchstone sweep of the loop gain")
+    compare.add_argument("files", nargs="+", metavar="FILE", help=REPEATED_HELP)
     compare.add_argument("--design", required=True, metavar="D.toml", help="design file")
     _reading_options(compare)
     _bench_options(compare, unstated="as the design file states it")
@@ -93,12 +101,18 @@ def _reading_options(parser: argparse.ArgumentParser) -> None:
     group.add_argument("--columns", metavar="SPEC", help=COLUMNS_HELP)
     group.add_argument("--trace", metavar="Sij", help="trace of a Touchstone file (default S11 of one port, else S21)")
     group.add_argument("--sign", choices=("as-read", "inverted"), help="sign of the read-out, where it is not plain")
+    group.add_argument(
+        "--repeats",
+        action="store_true",
+        help="the files, and all sweeps in each of them, are repeats of one sweep: average them",
+    )
 
 
 def _bench_options(parser: argparse.ArgumentParser, *, unstated: str) -> None:
     group = parser.add_argument_group("bench")
     group.add_argument("--noise", metavar="LEVELS", help=NOISE_HELP)
     group.add_argument("--delay", metavar="TIME", help=f"{DELAY_HELP}; default: {unstated}")
+    group.add_argument("--through", metavar="FILE", help=THROUGH_HELP)
     group.add_argument(
         "--keep-all",
         action="store_true",

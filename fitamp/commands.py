@@ -5,24 +5,24 @@ from __future__ import annotations
 import argparse
 import csv
 import io
-import math
 import sys
 from collections.abc import Mapping
-from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from fitamp.comparison import Comparison
 from fitamp.comparison import compare as compare_sweep
-from fitamp.design import Design, read_design
+from fitamp.conditioning.repeats import average_repeats
+from fitamp.design import read_design
 from fitamp.errors import FitError, InputError, UsageError
-from fitamp.fitting import DelayPrior, FarPolePrior, LoopFit, fit_sweep
+from fitamp.fitting import LoopFit, fit_sweep
 from fitamp.importers import read_sweep
-from fitamp.options import parse_delay, parse_noise
+from fitamp.measured import Measured, Reading, measured
 from fitamp.report.as_json import comparison_as_dict, dumps, fit_as_dict, sweep_as_dict
+from fitamp.report.conditions import through_as_dict
 from fitamp.report.files import refuse_existing, staged_directory, write_text
 from fitamp.report.tables import comparison_text, fit_text, printable, sweep_text
-from fitamp.sweep import NoiseLevels, Sign, Sweep
+from fitamp.sweep import Sign, Sweep
 
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
@@ -37,9 +37,16 @@ def read(args: argparse.Namespace) -> int:
     _refuse_early(args)
     sweeps: list[Sweep] = []
     errors: list[dict[str, str]] = []
+    reading = _reading(args)
+    if reading.are_repeats:
+        average = average_repeats(reading.sweeps(args.files))
+        _deliver(
+            args, {"schema": "fitamp/read/1", "sweeps": [sweep_as_dict(average)], "errors": []}, sweep_text(average)
+        )
+        return 0
     for file in args.files:
         try:
-            sweeps.append(_sweep(args, file))
+            sweeps.extend(reading.sweeps([file]))
         except InputError as error:
             if len(args.files) == 1:
                 raise
@@ -58,29 +65,31 @@ def read(args: argparse.Namespace) -> int:
 
 
 def fit(args: argparse.Namespace) -> int:
-    """`fitamp fit FILE`."""
+    """`fitamp fit FILE…`."""
     _refuse_early(args)
-    noise, lag = _noise(args), _lag(args)
-    result = fit_sweep(_sweep(args, args.file), noise=noise, keep_all=args.keep_all, **lag)
-    record, text = fit_as_dict(result), fit_text(result)
+    taken = _measured(args)
+    result = fit_sweep(taken.sweep, keep_all=args.keep_all, **taken.priors)
+    record, text = fit_as_dict(result) | _through(taken), fit_text(result)
     if args.out:
         from fitamp.plots import fit_figures
 
         _write_folder(Path(args.out), "fit", record, text, fit_figures(result), force=args.force)
     _deliver(args, record, text)
-    return _trusted(result, args.file)
+    return _trusted(result)
 
 
 def compare(args: argparse.Namespace) -> int:
-    """`fitamp compare FILE --design D.toml`."""
+    """`fitamp compare FILE… --design D.toml`."""
     _refuse_early(args)
-    noise, design = _noise(args), _on_stated_delay(args, read_design(args.design))
-    result = compare_sweep(_sweep(args, args.file), design, noise=noise, keep_all=args.keep_all)
-    record, text = comparison_as_dict(result), comparison_text(result)
+    design = read_design(args.design)
+    taken = _measured(args)
+    sweep, design = taken.on_bench_of(design)
+    result = compare_sweep(sweep, design, keep_all=args.keep_all)
+    record, text = comparison_as_dict(result) | _through(taken), comparison_text(result)
     if args.out:
         _write_comparison(result, record, text, Path(args.out), force=args.force)
     _deliver(args, record, text)
-    return _trusted(result.fit, args.file)
+    return _trusted(result.fit)
 
 
 def template(args: argparse.Namespace) -> int:
@@ -116,12 +125,13 @@ def demo(args: argparse.Namespace) -> int:
     return 0
 
 
-def _trusted(result: LoopFit, file: str) -> int:
+def _trusted(result: LoopFit) -> int:
     """Exit code of a fit that was delivered: 4, and a line to say so, where the model does not describe the sweep."""
     if result.adequacy.adequate:
         return 0
+    file = printable(result.sweep.origin.file)
     print(
-        f"fitamp: {printable(file)}: not trustworthy, {result.adequacy.sentence}; look at the residuals for what the "
+        f"fitamp: {file}: not trustworthy, {result.adequacy.sentence}; look at the residuals for what the "
         "model lacks, or bad points",
         file=sys.stderr,
     )
@@ -138,32 +148,25 @@ def _examples(given: str | None) -> Path:
     return folder
 
 
-def _sweep(args: argparse.Namespace, file: str) -> Sweep:
+def _reading(args: argparse.Namespace) -> Reading:
     sign = Sign(args.sign) if args.sign else None
-    return read_sweep(file, columns=args.columns, trace=args.trace, sign=sign)
+    return Reading(columns=args.columns, trace=args.trace, sign=sign, are_repeats=args.repeats)
 
 
-def _noise(args: argparse.Namespace) -> NoiseLevels | None:
-    return None if args.noise is None else parse_noise(args.noise)
+def _measured(args: argparse.Namespace) -> Measured:
+    return measured(
+        args.files,
+        _reading(args),
+        noise=args.noise,
+        delay=args.delay,
+        through=args.through,
+        keep_all=args.keep_all,
+    )
 
 
-def _lag(args: argparse.Namespace) -> dict[str, Any]:
-    """Priors of a fit with a stated delay: the third pole is free then, or its lag would pass for more of the delay."""
-    stated = None if args.delay is None else parse_delay(args.delay)
-    if stated is None or stated.is_free:
-        return {}
-    delay = DelayPrior(mean_s=stated.delay_s, sd_s=stated.sd_s)
-    return {"delay": delay, "far_pole": FarPolePrior(sd_s=math.inf)}
-
-
-def _on_stated_delay(args: argparse.Namespace, design: Design) -> Design:
-    """The design with the delay of ``--delay`` in place of the bench's."""
-    if args.delay is None:
-        return design
-    stated = parse_delay(args.delay)
-    known = {"delay_s": stated.delay_s, "delay_spread_s": stated.sd_s}
-    bench = replace(design.bench, **({"delay_s": None, "delay_spread_s": 0.0} if stated.is_free else known))
-    return replace(design, bench=bench)
+def _through(taken: Measured) -> dict[str, Any]:
+    """What the record says of a through sweep."""
+    return {"through": None if taken.through is None else through_as_dict(taken.through)}
 
 
 def _refuse_early(args: argparse.Namespace) -> None:

@@ -10,7 +10,8 @@ from typing import Any
 from fitamp.comparison import Comparison
 from fitamp.estimate import Estimate
 from fitamp.fitting import LoopFit, Root
-from fitamp.sweep import Sweep
+from fitamp.report.conditions import caution_records, repeat_records
+from fitamp.sweep import NoiseLevels, Sweep
 
 __all__ = ["comparison_as_dict", "dumps", "fit_as_dict", "sweep_as_dict"]
 
@@ -40,13 +41,7 @@ def fit_as_dict(fit: LoopFit) -> dict[str, Any]:
             "reduced_chi_square": _finite(fit.adequacy.reduced_chi_square),
             "residuals": fit.adequacy.sentence,
         },
-        "noise": {
-            "error_channel": fit.noise.error_channel,
-            "return_channel": fit.noise.return_channel,
-            "relative": fit.noise.relative,
-            "ratio": fit.noise.ratio,
-            "source": fit.noise.source,
-        },
+        "noise": _noise(fit.noise),
         "parameters": {name: _estimate(estimate) for name, estimate in fit.parameters.items()},
         "zero": {
             "half_plane": fit.zero.half_plane.value,
@@ -56,7 +51,10 @@ def fit_as_dict(fit: LoopFit) -> dict[str, Any]:
         "poles": [_root(root) for root in (*fit.poles, *fit.resonant_poles)],
         "zeros": [_root(root) for root in (*fit.zeros, *fit.resonant_zeros)],
         "margins": {name: _estimate(estimate) for name, estimate in fit.margins.items()},
-        "warnings": [{"code": warning.code.value, "message": warning.message} for warning in fit.warnings],
+        "warnings": [
+            *caution_records(fit.sweep),
+            *({"code": warning.code.value, "message": warning.message} for warning in fit.warnings),
+        ],
     }
 
 
@@ -99,9 +97,8 @@ def comparison_as_dict(comparison: Comparison) -> dict[str, Any]:
         "rz_change_ohm": _estimate(comparison.advice.rz_change_ohm),
         "sentence": comparison.advice.sentence,
     }
-    record["warnings"] = [
-        {"code": note.code.value, "message": note.message} for note in (*comparison.notes, *comparison.fit.warnings)
-    ]
+    notes = [{"code": note.code.value, "message": note.message} for note in comparison.notes]
+    record["warnings"] = notes + record["warnings"]
     record["broken_limits"] = list(comparison.broken_limits)
     record["parasitic"] = None
     if parasitic is not None:
@@ -120,16 +117,28 @@ def _sweep(sweep: Sweep) -> dict[str, Any]:
         "sha256": sweep.origin.sha256,
         "form": sweep.origin.form,
         "trace": sweep.origin.trace,
+        "repeats": repeat_records(sweep),
         "points": len(sweep) + len(sweep.left_out),
         "points_used": len(sweep),
         "f_min_hz": sweep.f_min_hz,
         "f_max_hz": sweep.f_max_hz,
         "sign": sweep.sign.value,
+        "noise": None if sweep.noise is None else _noise(sweep.noise),
         "left_out": [{"f_hz": point.f_hz, "reason": point.reason} for point in sweep.left_out],
         "decisions": [
             {"topic": decision.topic, "choice": decision.choice, "reason": decision.reason}
             for decision in sweep.decisions
         ],
+    }
+
+
+def _noise(noise: NoiseLevels) -> dict[str, Any]:
+    return {
+        "error_channel": noise.error_channel,
+        "return_channel": noise.return_channel,
+        "relative": noise.relative,
+        "ratio": noise.ratio,
+        "source": noise.source,
     }
 
 

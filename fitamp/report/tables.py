@@ -14,7 +14,8 @@ from fitamp.comparison import Comparison, Row
 from fitamp.estimate import Estimate
 from fitamp.fitting import FitWarning, LoopFit, Root
 from fitamp.fitting.result import LABELS, text_of, unit_of
-from fitamp.sweep import Sweep
+from fitamp.report.conditions import cautions, conditions
+from fitamp.sweep import NoiseLevels, Sweep
 from fitamp.units import si, si_with_error, to_db
 
 if TYPE_CHECKING:
@@ -37,6 +38,7 @@ def sweep_text(sweep: Sweep) -> str:
         ("points", f"{len(sweep)} used, {len(sweep.left_out)} left out", ""),
         ("band", f"{si(sweep.f_min_hz, 'Hz')} to {si(sweep.f_max_hz, 'Hz')}", ""),
         ("loop gain", f"{sweep.magnitude_db[0]:.1f} dB to {sweep.magnitude_db[-1]:.1f} dB", "low end to high end"),
+        *([] if sweep.noise is None else [("noise", _levels(sweep.noise), sweep.noise.source)]),
         *((decision.topic, decision.choice, decision.reason) for decision in sweep.decisions),
     ]
     _print_table(console, printable(sweep.origin.file), ("", "understood", "why"), rows)
@@ -187,10 +189,13 @@ def zero_sentence(fit: LoopFit) -> str:
 
 def noise_sentence(fit: LoopFit) -> str:
     """The three noise numbers in words."""
-    noise = fit.noise
+    return f"noise: {_levels(fit.noise)} ({fit.noise.source})"
+
+
+def _levels(noise: NoiseLevels) -> str:
     return (
-        f"noise: error channel {noise.error_channel:.2g}, return channel {noise.return_channel:.2g}, "
-        f"relative {noise.relative:.2g} ({noise.source})"
+        f"error channel {noise.error_channel:.2g}, return channel {noise.return_channel:.2g}, "
+        f"relative {noise.relative:.2g}"
     )
 
 
@@ -323,6 +328,10 @@ def _margins(console: Console, fit: LoopFit, rows: Sequence[str] | None = None) 
 
 
 def _warnings(console: Console, fit: LoopFit, notes: Sequence[FitWarning]) -> None:
+    for condition in conditions(fit.sweep):
+        _say(console, condition)
+    for code, sentence in cautions(fit.sweep):
+        _say(console, f"note ({code}): {sentence}", style="yellow")
     for warning in (*notes, *fit.warnings):
         _say(console, f"note ({warning.code.value}): {warning.message}", style="yellow")
 
