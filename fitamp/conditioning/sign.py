@@ -19,7 +19,7 @@ from numpy.typing import NDArray
 
 from fitamp.arrays import ComplexArray, FloatArray
 from fitamp.errors import SweepError
-from fitamp.sweep import Sign, Sweep
+from fitamp.sweep import Decision, Sign, Sweep
 from fitamp.units import si, to_db
 
 __all__ = ["settle_sign"]
@@ -48,6 +48,8 @@ _FALLING_SLOPE = -0.7
 _FIRST_FALLING_DECADES = 0.5
 # A median needs no more points than this.
 _MOST_ASKED = 200
+# And a line through its surroundings no more than about this many.
+_MOST_FITTED = 1000
 _ASK = "give --sign as-read or --sign inverted"
 
 
@@ -101,7 +103,8 @@ def _with_sign(sweep: Sweep, sign: Sign, reason: str) -> Sweep:
     if turned:
         left_out = tuple(replace(p, gain=None if p.gain is None else -p.gain) for p in sweep.left_out)
         sweep = replace(sweep, gain=-sweep.gain, left_out=left_out)
-    return replace(sweep, sign=sign).with_decision("sign", sign.value, reason)
+    decision = Decision(topic="sign", choice=sign.value, reason=reason)
+    return replace(sweep, sign=sign, decisions=(*sweep.decisions, decision))
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -196,23 +199,23 @@ def _lower_half(log_f: FloatArray) -> int:
 
 def _band(freq_hz: FloatArray, gain: ComplexArray) -> _Band:
     """The points with |T| above 1, thinned out, each with the lines through its surroundings."""
-    log_f, log_size, phase = np.log(freq_hz), np.log(np.abs(gain)), np.angle(gain)
-    above = np.flatnonzero(log_size > 0)
+    above = np.flatnonzero(np.abs(gain) > 1)
     above = above[np.unique(np.linspace(0, len(above) - 1, _MOST_ASKED).astype(int))]
-    half = _HALF_WINDOW_DECADES * np.log(10)
+    reach = 10**_HALF_WINDOW_DECADES
     local = []
     for index in above.tolist():
-        first, last = np.searchsorted(log_f, [log_f[index] - half, log_f[index] + half]).tolist()
+        first, last = np.searchsorted(freq_hz, [freq_hz[index] / reach, freq_hz[index] * reach]).tolist()
         first = min(first, max(index - _MIN_WINDOW_POINTS // 2, 0))
-        last = max(last, min(index + _MIN_WINDOW_POINTS // 2 + 1, len(log_f)))
-        x = log_f[first:last]
-        slope, scatter = _line(x, log_size[first:last])
-        local.append((slope, scatter, _line(x, np.unwrap(phase[first:last]))[1], float(np.ptp(x))))
+        last = max(last, min(index + _MIN_WINDOW_POINTS // 2 + 1, len(freq_hz)))
+        window = slice(first, last, max((last - first) // _MOST_FITTED, 1))
+        x, t = np.log(freq_hz[window]), gain[window]
+        slope, scatter = _line(x, np.log(np.abs(t)))
+        local.append((slope, scatter, _line(x, np.unwrap(np.angle(t)))[1], float(np.ptp(x))))
     slopes, scatters, phase_scatters, widths = np.array(local).T
     return _Band(
-        log_f=log_f[above],
-        log_size=log_size[above],
-        phase=phase[above],
+        log_f=np.log(freq_hz[above]),
+        log_size=np.log(np.abs(gain[above])),
+        phase=np.angle(gain[above]),
         slope=slopes,
         scatter=scatters,
         phase_scatter=phase_scatters,

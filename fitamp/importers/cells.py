@@ -138,6 +138,8 @@ def is_number_like(text: str) -> bool:
 
 def is_complex_like(text: str) -> bool:
     """Whether a cell has the form of a complex number: an imaginary unit, or a pair in parentheses."""
+    if not ("j" in text or "i" in text or "(" in text):
+        return False
     cell = text.strip()
     return len(cell) <= _LONGEST and bool(_COMPLEX_LIKE.fullmatch(cell) or _PAIR_LIKE.fullmatch(cell))
 

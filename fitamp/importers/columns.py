@@ -42,6 +42,11 @@ class Columns:
     check: tuple[Column, ...] = ()
     decisions: tuple[Decision, ...] = ()
 
+    @property
+    def trace(self) -> str:
+        """The gain's columns by name."""
+        return ", ".join(column.name or f"column {column.index + 1}" for column in self.gain)
+
 
 def chosen_columns(
     file: str, choice: ColumnChoice, header: Header, *, units_in_cells: Mapping[int, Unit] = _NONE

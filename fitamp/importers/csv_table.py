@@ -14,9 +14,11 @@ from fitamp.importers.blocks import find_tables
 from fitamp.importers.choice import ColumnChoice
 from fitamp.importers.dialect import find_block
 from fitamp.importers.found import Found, found_in
+from fitamp.importers.long_table import long_table
 from fitamp.importers.points import finish
 from fitamp.importers.source import Source
 from fitamp.importers.text import decode
+from fitamp.importers.understanding import understand
 from fitamp.sweep import Decision, Origin, Sweep
 
 __all__ = ["read_csv", "read_csv_sweeps"]
@@ -94,15 +96,18 @@ def _which(file: str, found: Sequence[Found | _Unread]) -> SweepError:
 
 
 def _sweeps_in(source: Source, columns: ColumnChoice | None) -> list[Found | _Unread]:
+    long = long_table(source, columns)
+    if long is not None:
+        return [long]
     text = decode(source)
     block = find_block(source.file, text.lines)
     tables = find_tables(source.file, block, text.lines)
     if len(tables) == 1:
-        return [*found_in(source.file, text, tables[0], columns)]
+        return [*found_in(source.file, tables[0], understand(source.file, text, tables[0], columns))]
     found: list[Found | _Unread] = []
     for table in tables:
         try:
-            own = found_in(source.file, text, table, columns)
+            own = found_in(source.file, table, understand(source.file, text, table, columns))
         except SweepError as error:
             found.append(_Unread(line=table.rows[0].number, error=error))
         else:

@@ -12,21 +12,25 @@ from fitamp.arrays import ComplexArray, FloatArray
 from fitamp.errors import SweepError
 from fitamp.importers.blocks import Table
 from fitamp.importers.cells import show
-from fitamp.importers.choice import ColumnChoice
 from fitamp.importers.columns import Column
 from fitamp.importers.gain import AGREEMENT, differing, frequency_hz, gain_fault, loop_gain
 from fitamp.importers.notation import Notation
 from fitamp.importers.points import Points
 from fitamp.importers.readings import MOST_WITHOUT
 from fitamp.importers.several import by_label, by_restart
-from fitamp.importers.text import Text
-from fitamp.importers.understanding import understand
+from fitamp.importers.understanding import Understood
 from fitamp.importers.values import Values, column_values
 from fitamp.sweep import Decision, LeftOut
 
-__all__ = ["Found", "found_in"]
+__all__ = ["AGREED", "Found", "found_in"]
 
 _SHOWN = 5
+
+AGREED = Decision(
+    topic="magnitude and phase",
+    choice="left aside",
+    reason=f"they agree with real and imaginary part within {AGREEMENT:g} of the magnitude",
+)
 
 # Rows without a reading: the column at fault, and what is said of it.
 _Faults = dict[int, tuple[Column, str]]
@@ -47,7 +51,7 @@ class Found:
     told: str = ""
 
 
-def found_in(file: str, text: Text, table: Table, choice: ColumnChoice | None) -> list[Found]:
+def found_in(file: str, table: Table, understood: Understood) -> list[Found]:
     """The sweeps of a table: one, unless a column numbers several, or the frequency starts anew.
 
     Raises
@@ -55,17 +59,16 @@ def found_in(file: str, text: Text, table: Table, choice: ColumnChoice | None) -
     SweepError
         When the table cannot be read without guessing; the message has line and column.
     """
-    understood = understand(file, text, table, choice)
     used, notation = understood.used, understood.notation
     freq = _frequency(file, table, used.frequency, notation)
     gain, faults = _gain(file, table, used.gain, notation)
     decisions = understood.decisions
     if used.check:
         other, unsure = _gain(file, table, used.check, notation)
-        decisions = (*decisions, _agreement(file, table, gain, other, {*faults, *unsure}))
+        _refuse_disagreement(file, table, differing(gain, other), {*faults, *unsure})
+        decisions = (*decisions, AGREED)
     _refuse_many_without(file, table, faults)
-    trace = ", ".join(column.name or f"column {column.index + 1}" for column in used.gain)
-    whole = Found(points=Points(lines=[], freq_hz=freq, gain=gain), trace=trace, decisions=decisions)
+    whole = Found(points=Points(lines=[], freq_hz=freq, gain=gain), trace=used.trace, decisions=decisions)
     parts = _parts(table, understood.labels, freq)
     return [replace(_part(whole, table, rows, faults), told=told) for rows, told in parts]
 
@@ -115,20 +118,14 @@ def _refuse_many_without(file: str, table: Table, faults: _Faults) -> None:
     raise SweepError(f"{file}, line {table.rows[row].number}, {column.label}: {reason}{others}")
 
 
-def _agreement(file: str, table: Table, gain: ComplexArray, other: ComplexArray, unsure: set[int]) -> Decision:
-    """Real and imaginary part are used where magnitude and phase say the same."""
-    differs = differing(gain, other)
+def _refuse_disagreement(file: str, table: Table, differs: NDArray[np.bool_], unsure: set[int]) -> None:
+    """Real and imaginary part are used only where magnitude and phase say the same."""
     differs[list(unsure)] = False
     if differs.any():
         raise SweepError(
             f"{file}, line {table.rows[int(np.argmax(differs))].number}: real and imaginary part do not agree with "
             "magnitude and phase; say with --columns which of them to use"
         )
-    return Decision(
-        topic="magnitude and phase",
-        choice="left aside",
-        reason=f"they agree with real and imaginary part within {AGREEMENT:g} of the magnitude",
-    )
 
 
 def _parts(table: Table, labels: int | None, freq_hz: FloatArray) -> list[tuple[NDArray[np.intp], str]]:

@@ -39,4 +39,7 @@ def is_no_reading(text: str) -> bool:
 
 def without_reading(values: FloatArray) -> NDArray[np.bool_]:
     """Where numbers are the ones that stand for no reading, shape as `values`."""
-    return np.isin(np.abs(values), SCPI_NO_READING)
+    size = np.abs(values)
+    if not (size >= min(SCPI_NO_READING)).any():
+        return np.zeros(len(values), dtype=bool)
+    return np.isin(size, SCPI_NO_READING)

@@ -9,6 +9,7 @@ from __future__ import annotations
 import hashlib
 import os
 import sys
+from collections.abc import Callable
 from dataclasses import dataclass
 from pathlib import Path, PurePath
 from typing import BinaryIO
@@ -44,15 +45,17 @@ _FOREIGN = (
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Source:
-    """One file: its name as given, its bytes, the SHA-256 of the file in hexadecimal, and how it was packed.
-
-    `data` are the bytes unpacked; `packed` is the size of a gzip file in bytes, None for one that was plain.
-    """
+    """One file: its name as given, its bytes unpacked, what was done to it, and how to have its hash."""
 
     file: str
     data: bytes
-    sha256: str
-    packed: int | None = None
+    digest: Callable[[], str]
+    decisions: tuple[Decision, ...] = ()
+
+    @property
+    def sha256(self) -> str:
+        """SHA-256 of the file as it is, in hexadecimal."""
+        return self.digest()
 
     @property
     def suffix(self) -> str:
@@ -61,14 +64,6 @@ class Source:
         if len(suffixes) > 1 and suffixes[-1] == ".gz":
             del suffixes[-1]
         return suffixes[-1] if suffixes else ""
-
-    @property
-    def decisions(self) -> tuple[Decision, ...]:
-        """What was done to the bytes."""
-        if self.packed is None:
-            return ()
-        choice = f"gzip, {self.packed} bytes unpacked to {len(self.data)}"
-        return (Decision(topic="packing", choice=choice, reason="the file starts as gzip files do"),)
 
 
 def load_source(path: str | os.PathLike[str], *, max_bytes: int = MAX_BYTES) -> Source:
@@ -98,8 +93,26 @@ def load_source(path: str | os.PathLike[str], *, max_bytes: int = MAX_BYTES) -> 
     for start, kind, remedy in _FOREIGN:
         if data.startswith(start):
             raise SweepError(f"{file}: this is {kind}, not a text file; {remedy}")
-    packed = len(stored) if is_packed else None
-    return Source(file=file, data=data, sha256=hashlib.sha256(stored).hexdigest(), packed=packed)
+    decisions = (_unpacking(len(stored), len(data)),) if is_packed else ()
+    return Source(file=file, data=data, digest=_digest(stored), decisions=decisions)
+
+
+def _digest(stored: bytes) -> Callable[[], str]:
+    """The hash; that of a large file is worked out beside the reading of it."""
+    if len(stored) < _PIECE:
+        known = hashlib.sha256(stored).hexdigest()
+        return lambda: known
+    from concurrent.futures import ThreadPoolExecutor
+
+    pool = ThreadPoolExecutor(max_workers=1)
+    future = pool.submit(lambda: hashlib.sha256(stored).hexdigest())
+    pool.shutdown(wait=False)
+    return future.result
+
+
+def _unpacking(packed: int, unpacked_to: int) -> Decision:
+    choice = f"gzip, {packed} bytes unpacked to {unpacked_to}"
+    return Decision(topic="packing", choice=choice, reason="the file starts as gzip files do")
 
 
 def _from_file(file: str, path: Path, max_bytes: int) -> bytes:

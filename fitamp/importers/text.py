@@ -37,9 +37,13 @@ class Line:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Text:
-    """The lines of a file, its encoding by name, and what was decided on the way to them."""
+    """The lines of a file, their number, its encoding by name, and what was decided on the way to them.
+
+    `line_count` is larger than the number of `lines` where only the first ones were decoded.
+    """
 
     lines: tuple[Line, ...]
+    line_count: int
     encoding: str
     decisions: tuple[Decision, ...]
 
@@ -71,7 +75,8 @@ def decode(source: Source) -> Text:
     _refuse_long_lines(source.file, texts)
     lines = tuple(Line(number=number, text=text) for number, text in enumerate(texts, start=1))
     decision = Decision(topic="encoding", choice=encoding, reason=reason)
-    return Text(lines=lines, encoding=encoding, decisions=(*source.decisions, decision))
+    decisions = (*source.decisions, decision)
+    return Text(lines=lines, line_count=len(lines), encoding=encoding, decisions=decisions)
 
 
 def _decode(source: Source) -> tuple[str, str, str]:

@@ -110,6 +110,6 @@ def _aside(text: Text, table: Table, columns: Sequence[Column], labels: int | No
         decisions.append(Decision(topic="last line", choice=f"line {lines} left aside", reason=reason))
     above = sum(bool(line.text.strip()) for line in block.above)
     if above:
-        reason = f"{above} of {len(text.lines)} lines stand above the numbers"
+        reason = f"{above} of {text.line_count} lines stand above the numbers"
         decisions.append(Decision(topic="first row", choice=f"line {table.rows[0].number}", reason=reason))
     return decisions

@@ -113,7 +113,7 @@ def test_gzip_file_is_unpacked_and_hashed_as_it_is(tmp_path: Path) -> None:
     [("a.s2p", ".s2p"), ("a.S2P.GZ", ".s2p"), ("a.csv.gz", ".csv"), ("a.gz", ".gz"), ("a", ""), ("b.1/a", "")],
 )
 def test_suffix_is_that_of_the_content(name: str, suffix: str) -> None:
-    assert Source(file=name, data=b"", sha256="").suffix == suffix
+    assert Source(file=name, data=b"", digest=str).suffix == suffix
 
 
 def test_broken_gzip_files_are_refused_with_the_reason(tmp_path: Path) -> None:

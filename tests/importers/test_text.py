@@ -12,7 +12,7 @@ CONTENT = "Phase (°), µV\n1,2\n"
 
 
 def source(data: bytes) -> Source:
-    return Source(file="bench.csv", data=data, sha256="")
+    return Source(file="bench.csv", data=data, digest=str)
 
 
 @pytest.mark.parametrize(
