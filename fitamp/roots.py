@@ -42,19 +42,49 @@ def polynomial_roots(coefficients: ArrayLike) -> tuple[complex, ...]:
     root is right to about the m-th root of the rounding error, as it must be from rounded coefficients; the mean
     of its m copies is right to rounding.
     """
-    values = [float(value) for value in np.trim_zeros(np.asarray(coefficients, dtype=float), "b")]
-    if not all(math.isfinite(value) for value in values):
+    values: list[float] = np.asarray(coefficients, dtype=float).tolist()
+    if not all(map(math.isfinite, values)):
         raise ValueError("polynomial coefficients must be finite")
+    while values and values[-1] == 0:
+        values.pop()
     at_origin = next((index for index, value in enumerate(values) if value != 0), 0)
     values = values[at_origin:]
     degree = len(values) - 1
     if degree < 1:
         return (0j,) * at_origin
+    if degree == 1:
+        return (0j,) * at_origin + (complex(-values[0] / values[1]),)
+    if degree == 2 and (pair := _quadratic(*values)) is not None:
+        return (0j,) * at_origin + in_order(pair)
     # In x = s/scale the geometric mean of the roots is 1, so that no power over- or underflows.
     scale = math.exp((math.log(abs(values[0])) - math.log(abs(values[-1]))) / degree)
     scaled = [value * scale**power / values[0] for power, value in enumerate(values)]
     found = _pair_conjugates(_recentre(scaled, _iterate(scaled, _starts(scaled))))
     return (0j,) * at_origin + in_order(root * scale for root in found)
+
+
+def _quadratic(constant: float, linear: float, square: float) -> tuple[complex, complex] | None:
+    """Both roots of constant + linear·x + square·x²; None where a square leaves the range of floats.
+
+    The larger root by the sum that does not cancel, the smaller by their product (N. J. Higham, Accuracy and Stability
+    of Numerical Algorithms, 2nd ed., sec. 1.8).
+    """
+    # By powers of two, which round nothing: constant and square become of order 1.
+    height, width = math.frexp(constant)[1], (math.frexp(constant)[1] - math.frexp(square)[1]) // 2
+    try:
+        constant, linear, square = (
+            math.ldexp(value, power * width - height) for power, value in enumerate((constant, linear, square))
+        )
+        half = linear / 2
+        quarter = half * half - constant * square
+        if quarter < 0:
+            upper = complex(math.ldexp(-half / square, width), math.ldexp(math.sqrt(-quarter) / abs(square), width))
+            return upper, upper.conjugate()
+        larger = -half - math.copysign(math.sqrt(quarter), half)
+        roots = (math.ldexp(larger / square, width), math.ldexp(constant / larger, width))
+    except OverflowError:
+        return None
+    return (complex(roots[0]), complex(roots[1])) if math.isfinite(quarter) and all(roots) else None
 
 
 def in_order(roots: Iterable[complex]) -> tuple[complex, ...]:
