@@ -6,10 +6,14 @@ The estimate looks at local scatter only: second differences along the sweep of 
 
 from __future__ import annotations
 
+import math
+from typing import TypeVar
+
 import numpy as np
 
 from fitamp.arrays import ComplexArray, FloatArray
 from fitamp.sweep import NoiseLevels, Sweep
+from fitamp.tall import normal_equations, product
 
 __all__ = ["FLOOR", "estimate_noise", "simulate_bench", "variance_components"]
 
@@ -17,10 +21,16 @@ __all__ = ["FLOOR", "estimate_noise", "simulate_bench", "variance_components"]
 CONTRAST = np.array([1.0, -2.0, 1.0]) / np.sqrt(6.0)
 # A sweep without any scatter (a simulator's export) still gets a floor: the digits of a double and a little more.
 FLOOR = 1e-13
-# Variance components are sought within a factor exp(60) of the mean scatter, far beyond any receiver's range.
-LOG_REACH = 60.0
 # A second difference of exactly 0 (repeated digits) has no logarithm; it counts as this share of the mean.
 TINY = 1e-12
+# The regression ends when no mean moves by more than this share, relatively; about a start that is not near the truth
+# its own curvature is in the scatter, and a rough answer is as good.
+SETTLED, ROUGHLY_SETTLED = 1e-7, 1e-3
+# Steps by expected information suit any start and converge well where the law holds; after so many of them, by the
+# observed one, which converges anywhere near the end.
+EXPECTED_STEPS, MOST_STEPS, HALVINGS = 4, 100, 30
+# Share of its diagonal added to an information matrix, which two levels that look alike leave singular.
+RIDGE = 1e-12
 # A second difference so many times its mean square is no noise: it comes once in 160 000 times, and without it the mean
 # loses one part in 10 000, so nothing has to be made up for. Not more than this share can be set aside so.
 GLITCH = 12.0
@@ -56,11 +66,13 @@ def estimate_noise(sweep: Sweep, model_gain: ComplexArray, *, set_aside: bool = 
     model = np.abs(model_gain) ** 2
     size = 1 / (1 + model)
     scaled = (sweep.gain - model_gain) / (1 + sweep.gain) * np.sqrt(size)
-    observed = np.abs(np.convolve(scaled, CONTRAST, mode="valid")) ** 2
-    through = np.abs(1 + model_gain) ** 2
-    parts = np.stack([size, model * size, model / through * size, size / through], axis=1)
-    design = np.stack([np.convolve(part, CONTRAST**2, mode="valid") for part in parts.T], axis=1)
-    variances = (variance_components if set_aside else _gamma_regression)(observed, design)
+    observed = np.abs(_contrast(scaled, CONTRAST)) ** 2
+    apart = size / np.abs(1 + model_gain) ** 2
+    design = _contrast(np.stack([size, model * size, model * apart, apart], axis=1), CONTRAST**2)
+    if set_aside:
+        variances = variance_components(observed, design)
+    else:
+        variances = _gamma_regression(observed, design, tolerance=ROUGHLY_SETTLED)
     n_return, n_error, relative, ratio = np.sqrt(variances)
     return NoiseLevels(
         error_channel=float(n_error),
@@ -69,6 +81,14 @@ def estimate_noise(sweep: Sweep, model_gain: ComplexArray, *, set_aside: bool = 
         ratio=float(ratio),
         source="estimated from the sweep",
     )
+
+
+Values = TypeVar("Values", FloatArray, ComplexArray)
+
+
+def _contrast(values: Values, weights: FloatArray) -> Values:
+    """Weighted sums of three neighbours along the first axis, shape (n − 2, …)."""
+    return np.asarray(values[:-2] * weights[0] + values[1:-1] * weights[1] + values[2:] * weights[2])
 
 
 def variance_components(observed: FloatArray, design: FloatArray) -> FloatArray:
@@ -86,33 +106,81 @@ def variance_components(observed: FloatArray, design: FloatArray) -> FloatArray:
             return everything
         if np.array_equal(keep, settled):
             break
-        variances = _gamma_regression(observed[keep], design[keep])
+        variances = _gamma_regression(observed[keep], design[keep], start=variances)
     return variances
 
 
-def _gamma_regression(observed: FloatArray, design: FloatArray) -> FloatArray:
-    """Coefficients ≥ 0 of exponential means `design` @ θ, by their logarithms: no step can leave the region.
+def _gamma_regression(
+    observed: FloatArray, design: FloatArray, *, start: FloatArray | None = None, tolerance: float = SETTLED
+) -> FloatArray:
+    """Coefficients θ ≥ 0 by maximum likelihood for exponential values with means `design` @ θ.
 
-    The sum of squared deviance residuals is the deviance, so least squares of them is maximum likelihood.
+    Iteratively reweighted least squares, each within θ ≥ 0, and Newton's method near the end; a step that would lower
+    the likelihood is halved.
     """
-    from scipy.optimize import leastsq
-
     scale = design.max(axis=0)
     level = float(observed.mean())
     if not level > 0:
         return np.zeros(design.shape[1])
     columns, target = design / scale, np.maximum(observed / level, TINY)
+    if start is None:
+        # Each component explains what is largest in its own stretch of the band, to begin with.
+        now = np.array([np.average(target, weights=column**2) for column in columns.T / columns.max(axis=1)])
+    else:
+        now = start * scale / level
+    means = columns @ now
+    worth = _log_likelihood(target, means)
+    for step in range(MOST_STEPS):
+        better = _newton_step(target, columns, means, now) if step >= EXPECTED_STEPS else None
+        if better is None or not _log_likelihood(target, columns @ better) >= worth:
+            better = _scoring_step(target, columns, means, now, worth)
+        if better is None:
+            break
+        before, now, means = means, better, columns @ better
+        worth = _log_likelihood(target, means)
+        if np.abs(means / before - 1).max() <= tolerance:
+            break
+    return np.asarray(now * level / scale, dtype=float)
 
-    def deviance_residuals(logs: FloatArray) -> FloatArray:
-        ratio = target / (columns @ np.exp(np.clip(logs, -LOG_REACH, LOG_REACH)))
-        # 2 (y/μ − 1 − ln y/μ) is 0 at y = μ; rounding may put it a hair below.
-        return np.asarray(np.sign(ratio - 1) * np.sqrt(2 * np.maximum(ratio - 1 - np.log(ratio), 0.0)))
 
-    # Each component explains what is largest in its own stretch of the band, to begin with.
-    start = np.log([np.average(target, weights=column**2) for column in columns.T / columns.max(axis=1)])
-    # With its full output it does not warn where it stops early: a valley without end is as good anywhere.
-    logs = leastsq(deviance_residuals, start, ftol=1e-8, xtol=1e-6, full_output=True)[0]
-    return np.asarray(np.exp(np.clip(logs, -LOG_REACH, LOG_REACH)) * level / scale, dtype=float)
+def _log_likelihood(target: FloatArray, means: FloatArray) -> float:
+    """But for a constant."""
+    return -float((target / means + np.log(means)).sum()) if means.min() > 0 else -math.inf
+
+
+def _scoring_step(
+    target: FloatArray, columns: FloatArray, means: FloatArray, now: FloatArray, worth: float
+) -> FloatArray | None:
+    """Fisher's scoring: least squares weighted by the present means; None where no step leads up."""
+    from scipy.optimize import nnls
+
+    information, score, _ = normal_equations(columns / means[:, np.newaxis], target / means)
+    information[np.diag_indices_from(information)] *= 1 + RIDGE
+    if not np.isfinite(information).all():
+        return None
+    triangle = np.linalg.cholesky(information)
+    step = nnls(triangle.T, np.linalg.solve(triangle, score))[0] - now
+    for halvings in range(HALVINGS):
+        better = now + step * 0.5**halvings
+        if _log_likelihood(target, columns @ better) >= worth:
+            return np.asarray(better, dtype=float)
+    return None
+
+
+def _newton_step(target: FloatArray, columns: FloatArray, means: FloatArray, now: FloatArray) -> FloatArray | None:
+    """Newton's method for the components that are not held at 0."""
+    ratio = target / means
+    weighted = columns / means[:, np.newaxis]
+    gradient = product(weighted, (1 - ratio)[:, np.newaxis])[:, 0]
+    free = (now > 0) | (gradient < 0)
+    curvature = product(weighted * (2 * ratio - 1)[:, np.newaxis], weighted)
+    try:
+        step = np.linalg.solve(curvature[np.ix_(free, free)], gradient[free])
+    except np.linalg.LinAlgError:
+        return None
+    better = now.copy()
+    better[free] -= step
+    return np.maximum(better, 0.0)
 
 
 def simulate_bench(gain: ComplexArray, noise: NoiseLevels, rng: np.random.Generator) -> ComplexArray:

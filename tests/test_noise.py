@@ -8,7 +8,7 @@ import numpy as np
 import pytest
 
 from fitamp.arrays import ComplexArray, FloatArray
-from fitamp.noise import FLOOR, estimate_noise, simulate_bench
+from fitamp.noise import FLOOR, estimate_noise, simulate_bench, variance_components
 from fitamp.sweep import NoiseLevels, Sweep
 
 FREQ_HZ: FloatArray = np.geomspace(10.0, 1e9, 321)
@@ -131,3 +131,28 @@ def test_setting_aside_what_is_no_noise_leaves_clean_estimates_unmoved() -> None
     only_relative = NoiseLevels(error_channel=0.0, return_channel=0.0, relative=1e-3)
     found = [estimate_noise(measured(seed, only_relative), gain()).relative for seed in range(30)]
     assert np.mean(found) == pytest.approx(1e-3, rel=0.03)
+
+
+def test_variance_components_are_the_most_likely_ones() -> None:
+    # Where the gradient of the likelihood is 0, or leads out of the region θ ≥ 0 (W. Karush; H. W. Kuhn and
+    # A. W. Tucker), and no other point that a general optimiser finds is likelier.
+    from scipy.optimize import minimize
+
+    x = np.linspace(0.0, 1.0, 400)
+    design = np.stack([np.exp(-6 * x), np.exp(-6 * (1 - x)), np.ones(400)], axis=1)
+    for seed, truth in enumerate(([1.0, 4.0, 0.1], [1.0, 0.0, 0.02], [0.0, 0.0, 1.0])):
+        observed = design @ np.array(truth) * np.random.default_rng(seed).exponential(size=400)
+        observed = np.minimum(observed, 8 * (design @ np.array(truth)))  # nothing to set aside
+
+        def unlikely(theta: FloatArray, observed: FloatArray = observed) -> float:
+            return float((observed / (design @ theta) + np.log(design @ theta)).sum())
+
+        found = variance_components(observed, design)
+        means = design @ found
+        gradient = design.T @ ((1 - observed / means) / means)
+        size = np.abs(design).T @ (1 / means)
+        assert np.all(found >= 0)
+        assert np.all(np.abs(gradient[found > 0]) < 1e-5 * size[found > 0])
+        assert np.all(gradient[found == 0] > -1e-5 * size[found == 0])
+        other = minimize(unlikely, np.full(3, 0.5), bounds=[(1e-9, None)] * 3, method="L-BFGS-B")
+        assert unlikely(found) <= other.fun + 1e-6
