@@ -3,26 +3,31 @@
 Residuals are real and already divided by their standard deviation; a complex residual is interleaved re, im by
 `interleaved`, because lmfit flattens complex arrays that way and a Jacobian in another order fails silently.
 lmfit's own objects stay in here.
+
+Fits that are only to tell which start is best, or how far chi-square has risen, go by `racing.descend`: lmfit's
+bookkeeping takes ten times as long as their arithmetic. And MINPACK's C code as in scipy 1.17 reads one number beyond
+the Jacobian when it renews the norm of a column that nearly depends on the others, so that such a start runs
+differently from one call to the next.
 """
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
 
 from fitamp.arrays import ComplexArray, FloatArray, frozen_float
+from fitamp.fitting.racing import Jacobian, Residual, descend
 
 __all__ = ["Optimum", "covariance_of", "interleaved", "minimise", "triangle_of"]
-
-Residual = Callable[[FloatArray], FloatArray]
-Jacobian = Callable[[FloatArray], FloatArray]
 
 # MINPACK's relative tolerances on chi-square and parameters: at lmfit's defaults (1.5e-8) the NIST set MGH09 stops
 # early with success=True; at rounding level it reaches the certified digits.
 TOLERANCE = 1e-15
+# From this tolerance on the end is not reported, but weighed against others.
+COARSE = 1e-9
 # Singular values of the scaled Jacobian below this share of the largest carry rounding, not information.
 RANK_RTOL = 1e-12
 UNDETERMINED_VARIANCE = 1e30
@@ -83,25 +88,60 @@ def minimise(
     jacobian
         Values to derivatives of shape (m, p); differences where None.
     tolerance
-        Relative, on chi-square and on parameters, at which to stop.
+        Relative, on chi-square and on parameters, at which to stop. From 1e-9 on (and with a Jacobian) the descent is
+        our own.
     max_steps
         Evaluations (times p + 1 where the derivatives are differences) after which to give up.
 
     Returns
     -------
     Optimum
-        `converged` is False when MINPACK gave up or the end point is not finite; it proves no global minimum.
+        `converged` is False when the descent gave up or the end point is not finite; it proves no global minimum.
     """
+    names = tuple(names)
+    covariance = None
+    if jacobian is not None and tolerance >= COARSE:
+        values, settled = descend(residual, jacobian, start, tolerance=tolerance, max_steps=max_steps)
+    else:
+        values, settled, covariance = _by_lmfit(
+            residual, start, names=names, jacobian=jacobian, tolerance=tolerance, max_steps=max_steps
+        )
+    residuals = residual(values)
+    if jacobian is not None:
+        covariance = covariance_of(jacobian(values))
+    elif covariance is None:
+        covariance = np.diag(np.full(len(names), UNDETERMINED_VARIANCE))
+    return Optimum(
+        names=names,
+        values=frozen_float(values),
+        covariance=frozen_float(covariance),
+        chi_square=float(residuals @ residuals),
+        residuals=frozen_float(residuals),
+        converged=settled and bool(np.isfinite(residuals).all()),
+    )
+
+
+def _by_lmfit(
+    residual: Residual,
+    start: Sequence[float] | FloatArray,
+    *,
+    names: tuple[str, ...],
+    jacobian: Jacobian | None,
+    tolerance: float,
+    max_steps: int,
+) -> tuple[FloatArray, bool, FloatArray | None]:
+    """Where lmfit ended, whether it says that it is there, and its covariance if it has one."""
     import lmfit
 
-    names = tuple(names)
-    parameters = lmfit.Parameters()
-    for name, value in zip(names, start, strict=True):
-        parameters.add(name, value=float(value))
+    class Minimizer(lmfit.Minimizer):  # type: ignore[misc]  # lmfit has no types
+        def _calculate_uncertainties_correlations(self) -> None:
+            """Skipped: errors come from `covariance_of`."""
 
     def values_of(current: Any) -> FloatArray:
         return np.array([current[name].value for name in names])
 
+    # A list spares lmfit a copy of its expression evaluator, which takes longer than a fit.
+    parameters = [lmfit.Parameter(name, value=float(value)) for name, value in zip(names, start, strict=True)]
     options: dict[str, Any] = {"ftol": tolerance, "xtol": tolerance, "gtol": 0.0}
     if jacobian is None:
         options |= {"epsfcn": TOLERANCE, "max_nfev": max_steps * (len(names) + 1)}
@@ -110,28 +150,13 @@ def minimise(
         options["Dfun"] = lambda current: jacobian(values_of(current))
     # lmfit leaves numpy's error state changed when a residual raises; the context puts it back.
     with np.errstate():
-        minimizer = lmfit.Minimizer(
+        minimizer = Minimizer(
             lambda current: residual(values_of(current)), parameters, scale_covar=False, nan_policy="propagate"
         )
         result = minimizer.leastsq(**options)
-    values = values_of(result.params)
-    residuals = residual(values)
-    if jacobian is not None:
-        covariance = covariance_of(jacobian(values))
-    elif result.covar is not None:
-        covariance = np.asarray(result.covar, dtype=float)
-    else:
-        covariance = np.diag(np.full(len(names), UNDETERMINED_VARIANCE))
     # MINPACK's codes 1-4 are convergence, 6-8 say that the tolerance asked for is below rounding: both are the end.
-    converged = result.ier in {1, 2, 3, 4, 6, 7, 8} and bool(np.isfinite(residuals).all())
-    return Optimum(
-        names=names,
-        values=frozen_float(values),
-        covariance=frozen_float(covariance),
-        chi_square=float(residuals @ residuals),
-        residuals=frozen_float(residuals),
-        converged=converged,
-    )
+    settled = result.ier in {1, 2, 3, 4, 6, 7, 8}
+    return values_of(result.params), settled, None if result.covar is None else np.asarray(result.covar, dtype=float)
 
 
 def covariance_of(jacobian: FloatArray) -> FloatArray:
