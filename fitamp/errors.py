@@ -21,9 +21,10 @@ class UsageError(FitampError):
 
 
 class InputError(FitampError):
-    """A file cannot be used as it is."""
+    """A file cannot be used as it is; `excerpt` are lines that show the place, where one can be shown."""
 
     exit_code = 3
+    excerpt: tuple[str, ...] = ()
 
 
 class SweepError(InputError):

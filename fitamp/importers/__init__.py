@@ -9,13 +9,17 @@ from __future__ import annotations
 
 import os
 import re
+from collections.abc import Iterator
+from contextlib import contextmanager
 
 from fitamp.conditioning.sign import settle_sign
 from fitamp.errors import SweepError, UsageError
 from fitamp.importers.choice import ColumnChoice, ColumnRef
 from fitamp.importers.csv_table import read_csv, read_csv_sweeps
+from fitamp.importers.fault import LineError, attach_excerpt
 from fitamp.importers.quantity import Quantity, Unit
 from fitamp.importers.source import Source, load_source
+from fitamp.importers.text import lines_of
 from fitamp.importers.touchstone import read_touchstone
 from fitamp.importers.write import write_sweep
 from fitamp.sweep import Sign, Sweep
@@ -73,11 +77,12 @@ def read_sweep(
         When an option is malformed or does not fit the kind of file.
     """
     source, choice, is_touchstone = _opened(path, columns, trace)
-    if is_touchstone:
-        if sweep not in (None, 1):
-            raise UsageError(f"{source.file}: sweep {sweep} is not there; a Touchstone file holds one sweep")
-        return settle_sign(read_touchstone(source, trace=trace), sign)
-    return settle_sign(read_csv(source, columns=choice, sweep=sweep), sign)
+    if is_touchstone and sweep not in (None, 1):
+        raise UsageError(f"{source.file}: sweep {sweep} is not there; a Touchstone file holds one sweep")
+    with _showing_lines(source):
+        if is_touchstone:
+            return settle_sign(read_touchstone(source, trace=trace), sign)
+        return settle_sign(read_csv(source, columns=choice, sweep=sweep), sign)
 
 
 def read_sweeps(
@@ -93,9 +98,20 @@ def read_sweeps(
     like numbers them, or where the frequency starts anew over the same band. A Touchstone file holds one.
     """
     source, choice, is_touchstone = _opened(path, columns, trace)
-    if is_touchstone:
-        return (settle_sign(read_touchstone(source, trace=trace), sign),)
-    return tuple(settle_sign(one, sign) for one in read_csv_sweeps(source, columns=choice))
+    with _showing_lines(source):
+        if is_touchstone:
+            return (settle_sign(read_touchstone(source, trace=trace), sign),)
+        return tuple(settle_sign(one, sign) for one in read_csv_sweeps(source, columns=choice))
+
+
+@contextmanager
+def _showing_lines(source: Source) -> Iterator[None]:
+    """Give an error about a line that line."""
+    try:
+        yield
+    except LineError as error:
+        attach_excerpt(error, lines_of(source))
+        raise
 
 
 def _opened(

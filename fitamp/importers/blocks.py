@@ -6,9 +6,9 @@ import re
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
 
-from fitamp.errors import SweepError
 from fitamp.importers.cells import is_number_like, show
 from fitamp.importers.dialect import Block, is_comment, split_cells
+from fitamp.importers.fault import LineError, at_line, quote_span, span_of
 from fitamp.importers.header import is_header_row
 from fitamp.importers.readings import is_no_reading
 from fitamp.importers.text import Line
@@ -33,6 +33,12 @@ class Table:
     block: Block
     cells: tuple[tuple[str, ...], ...]
     closing: tuple[Line, ...] = ()
+
+    def fault(self, file: str, row: int, text: str, *, index: int | None = None, label: str = "") -> LineError:
+        """The error for a fault in a row, or in one of its cells under its column's label."""
+        line = self.rows[row]
+        span = None if index is None else span_of(line.text, self.cells[row], index)
+        return at_line(file, line.number, text, where=label, span=span)
 
     def texts(self, index: int) -> list[str]:
         """The cells of one column."""
@@ -85,7 +91,7 @@ def _split(file: str, block: Block) -> Iterator[_Row]:
         try:
             yield line, split_cells(line.text, block.separator)
         except ValueError as error:
-            raise SweepError(f"{file}, line {line.number}: {error}") from error
+            raise at_line(file, line.number, str(error), span=quote_span(line.text)) from error
 
 
 def _is_words(row: _Row, width: int) -> bool:
@@ -105,9 +111,11 @@ def _as_rows(file: str, words: Sequence[_Row], block: Block) -> list[_Row]:
     """Rows of words that are no header: as wide as the table they are rows whose cells are at fault."""
     for line, cells in words:
         if len(cells) != block.width:
-            raise SweepError(
-                f"{file}, line {line.number}: {show(line.text.strip())} stands among the rows of numbers; remove the "
-                "line, and keep one sweep per file"
+            raise at_line(
+                file,
+                line.number,
+                f"{show(line.text.strip())} stands among the rows of numbers; remove the line, and keep one sweep per "
+                "file",
             )
     return list(words)
 
@@ -115,9 +123,11 @@ def _as_rows(file: str, words: Sequence[_Row], block: Block) -> list[_Row]:
 def _refuse_other_width(file: str, row: _Row, block: Block) -> None:
     line, cells = row
     if len(cells) != block.width:
-        raise SweepError(
-            f"{file}, line {line.number}: {len(cells)} cell{'s' if len(cells) > 1 else ''} where other rows have "
-            f"{block.width} (separator: {block.separator.label}); complete the row or remove it"
+        raise at_line(
+            file,
+            line.number,
+            f"{len(cells)} cell{'s' if len(cells) > 1 else ''} where other rows have {block.width} (separator: "
+            f"{block.separator.label}); complete the row or remove it",
         )
 
 

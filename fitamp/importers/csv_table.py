@@ -13,6 +13,7 @@ from fitamp.errors import SweepError, UsageError
 from fitamp.importers.blocks import find_tables
 from fitamp.importers.choice import ColumnChoice
 from fitamp.importers.dialect import find_block
+from fitamp.importers.fault import at_line
 from fitamp.importers.found import Found, found_in
 from fitamp.importers.long_table import long_table
 from fitamp.importers.points import finish
@@ -89,9 +90,11 @@ def _finished(source: Source, found: Sequence[Found | _Unread], number: int, *, 
 def _which(file: str, found: Sequence[Found | _Unread]) -> SweepError:
     starts = [one.line if isinstance(one, _Unread) else one.points.lines[0] for one in found]
     lines = ", ".join(map(str, starts[:_SHOWN])) + (" …" if len(starts) > _SHOWN else "")
-    return SweepError(
-        f"{file}, line {starts[1]}: {found[1].told}; the file holds {len(found)} sweeps, from lines {lines}: choose "
-        "one, as in --sweep 2, or split the file"
+    return at_line(
+        file,
+        starts[1],
+        f"{found[1].told}; the file holds {len(found)} sweeps, from lines {lines}: choose "
+        "one, as in --sweep 2, or split the file",
     )
 
 

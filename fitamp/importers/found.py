@@ -9,7 +9,6 @@ import numpy as np
 from numpy.typing import NDArray
 
 from fitamp.arrays import ComplexArray, FloatArray
-from fitamp.errors import SweepError
 from fitamp.importers.blocks import Table
 from fitamp.importers.cells import show
 from fitamp.importers.columns import Column
@@ -76,7 +75,7 @@ def found_in(file: str, table: Table, understood: Understood) -> list[Found]:
 def _frequency(file: str, table: Table, column: Column, notation: Notation) -> FloatArray:
     values = column_values(file, table, column, notation)
     for row, reason in values.faults.items():
-        raise SweepError(f"{file}, line {table.rows[row].number}, {column.label}: {reason}")
+        raise table.fault(file, row, reason, index=column.index, label=column.label)
     return frequency_hz(column, np.asarray(values.numbers, dtype=float))
 
 
@@ -92,10 +91,8 @@ def _gain(file: str, table: Table, columns: Sequence[Column], notation: Notation
     if fault.any():
         row = int(np.argmax(fault))
         first = columns[0]
-        raise SweepError(
-            f"{file}, line {table.rows[row].number}, {first.label}: {table.cells[row][first.index]!r} is {what}; "
-            "check the unit of the column"
-        )
+        text = f"{table.cells[row][first.index]!r} is {what}; check the unit of the column"
+        raise table.fault(file, row, text, index=first.index, label=first.label)
     return loop_gain(columns, numbers), faults
 
 
@@ -115,16 +112,17 @@ def _refuse_many_without(file: str, table: Table, faults: _Faults) -> None:
     row = min(faults)
     column, reason = faults[row]
     others = f" ({len(faults)} of {len(table.rows)} points are without; up to a tenth are left out)"
-    raise SweepError(f"{file}, line {table.rows[row].number}, {column.label}: {reason}{others}")
+    raise table.fault(file, row, f"{reason}{others}", index=column.index, label=column.label)
 
 
 def _refuse_disagreement(file: str, table: Table, differs: NDArray[np.bool_], unsure: set[int]) -> None:
     """Real and imaginary part are used only where magnitude and phase say the same."""
     differs[list(unsure)] = False
     if differs.any():
-        raise SweepError(
-            f"{file}, line {table.rows[int(np.argmax(differs))].number}: real and imaginary part do not agree with "
-            "magnitude and phase; say with --columns which of them to use"
+        raise table.fault(
+            file,
+            int(np.argmax(differs)),
+            "real and imaginary part do not agree with magnitude and phase; say with --columns which of them to use",
         )
 
 

@@ -6,9 +6,9 @@ import re
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
-from fitamp.errors import SweepError
 from fitamp.importers.cells import is_number_like, show
 from fitamp.importers.dialect import Block, Separator, is_comment, split_cells, uncommented
+from fitamp.importers.fault import at_line, quote_span
 from fitamp.importers.quantity import UNITS_OF, Meaning, Quantity, Unit, as_german, doubt_of, meaning_of, unit_of
 from fitamp.importers.text import Line
 from fitamp.importers.words import language_of
@@ -148,9 +148,10 @@ def _refuse_numbers(file: str, line: Line, block: Block, *, nearest: bool) -> No
     """Refuse a line of numbers above the rows of numbers: it would be lost in silence."""
     cells = re.split(r"[\s,;]+", line.text.strip(" \t,;"))
     if all(is_number_like(cell) for cell in cells) and (nearest or len(cells) == block.width):
-        raise SweepError(
-            f"{file}, line {line.number}: a row of numbers apart from the {block.width} columns below it; "
-            "complete the row or remove it"
+        raise at_line(
+            file,
+            line.number,
+            f"a row of numbers apart from the {block.width} columns below it; complete the row or remove it",
         )
 
 
@@ -160,14 +161,15 @@ def _refuse_uneven_header(file: str, plain: Sequence[Line], block: Block) -> Non
         return
     line = plain[-1]
     if line.text.count('"') % 2:
-        raise SweepError(f"{file}, line {line.number}: a quote is not closed on this line; close it or remove it")
+        text = "a quote is not closed on this line; close it or remove it"
+        raise at_line(file, line.number, text, span=quote_span(line.text))
     cells = [cell for cell in split_cells(line.text, block.separator) if cell]
     if len(cells) < 2 or Quantity.FREQUENCY not in {meaning_of(cell).quantity for cell in cells}:
         return
     remedy = "give each column one name"
     if block.separator is Separator.COMMA and block.width == 2 * len(cells):
         remedy = "the comma seems to be decimal mark as well as separator: export with semicolons or decimal points"
-    raise SweepError(f"{file}, line {line.number}: {len(cells)} names for the {block.width} columns below; {remedy}")
+    raise at_line(file, line.number, f"{len(cells)} names for the {block.width} columns below; {remedy}")
 
 
 def _commented_header(comments: Sequence[Line], block: Block) -> tuple[_Cells | None, _Cells | None]:
@@ -233,9 +235,9 @@ def _with_units(file: str, meanings: Sequence[Meaning], units: _Cells) -> tuple[
             merged.append(replace(meaning, doubt=doubt_of(cell) or meaning.doubt))
             continue
         if meaning.unit is not None and meaning.unit is not unit:
-            raise SweepError(
-                f"{file}, line {units[0]}, column {column}: unit {show(cell)} contradicts {meaning.unit} in the "
-                f"header {show(meaning.text)}; correct one of them"
+            text = (
+                f"unit {show(cell)} contradicts {meaning.unit} in the header {show(meaning.text)}; correct one of them"
             )
+            raise at_line(file, units[0], text, where=f"column {column}")
         merged.append(replace(meaning.with_unit(unit), text=meaning.text))
     return tuple(merged)

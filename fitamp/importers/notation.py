@@ -10,8 +10,8 @@ import re
 from collections.abc import Sequence
 from dataclasses import dataclass
 
-from fitamp.errors import SweepError
 from fitamp.importers.cells import GROUP_MARKS, grouped, is_complex_like, is_number_like
+from fitamp.importers.fault import LineError, at_cell
 from fitamp.sweep import Decision
 
 __all__ = ["Notation", "find_notation", "may_tell"]
@@ -123,20 +123,26 @@ def _decisions(
 
 def _refusal(
     file: str, marked: Sequence[tuple[int, str]], suspects: Sequence[tuple[int, str]], *, ambiguous: bool
-) -> SweepError:
+) -> LineError:
     line, text = suspects[0]
     if ambiguous:
-        return SweepError(
-            f"{file}, line {line}: {text!r} may have a decimal comma or a thousands separator; "
-            "export with a decimal point and without thousands separators"
+        return at_cell(
+            file,
+            line,
+            text,
+            "may have a decimal comma or a thousands separator; export with a decimal point and without thousands "
+            "separators",
         )
     for at, cell in suspects:
         if cell.count(",") > 1 + is_complex_like(cell) or ("." in cell and "," in cell) or _in_groups(cell):
-            return SweepError(f"{file}, line {at}: {cell!r} has thousands separators; export the numbers without them")
+            return at_cell(file, at, cell, "has thousands separators; export the numbers without them")
     if "," in text and any("." in cell for _, cell in marked):
-        return SweepError(
-            f"{file}, line {line}: {text!r} has a comma where other cells have a decimal point; "
-            "export with one decimal mark and without thousands separators"
+        return at_cell(
+            file,
+            line,
+            text,
+            "has a comma where other cells have a decimal point; export with one decimal mark and without thousands "
+            "separators",
         )
     at, cell = next(((at, cell) for at, cell in suspects if _TWO_GROUPS.fullmatch(cell)), (line, text))
-    return SweepError(f"{file}, line {at}: {cell!r} is not a number; measure the point again or remove the row")
+    return at_cell(file, at, cell, "is not a number; measure the point again or remove the row")

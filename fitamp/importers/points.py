@@ -9,6 +9,7 @@ import numpy as np
 
 from fitamp.arrays import ComplexArray, FloatArray
 from fitamp.errors import SweepError
+from fitamp.importers.fault import at_line
 from fitamp.sweep import Decision, LeftOut, Origin, Sweep
 
 __all__ = ["Points", "finish"]
@@ -49,9 +50,8 @@ def finish(
     negative = freq_hz < 0
     if negative.any():
         row = int(np.argmax(negative))
-        raise SweepError(
-            f"{file}, line {lines[row]}: frequency {freq_hz[row]:g} Hz is negative; remove the row or check the columns"
-        )
+        text = f"frequency {freq_hz[row]:g} Hz is negative; remove the row or check the columns"
+        raise at_line(file, lines[row], text)
     step = np.diff(freq_hz)
     if may_fall and len(step) and (step < 0).sum() > (step > 0).sum():
         freq_hz, gain, lines = freq_hz[::-1], gain[::-1], lines[::-1]
@@ -75,14 +75,13 @@ def _refuse_disorder(file: str, lines: Sequence[int], freq_hz: FloatArray) -> No
     repeated = same[0][same[1] > 1]
     if len(repeated):
         first, second, *_ = sorted(lines[row] for row in np.flatnonzero(freq_hz == repeated[0]).tolist())
-        raise SweepError(
-            f"{file}, line {second}: frequency {repeated[0]:g} Hz is there already on line {first}; "
-            "keep one of the rows, or one sweep per file"
-        )
+        text = f"frequency {repeated[0]:g} Hz is there already on line {first}"
+        raise at_line(file, second, f"{text}; keep one of the rows, or one sweep per file")
     falls = np.diff(freq_hz) < 0
     if falls.any():
         row = int(np.argmax(falls)) + 1
-        raise SweepError(
-            f"{file}, line {lines[row]}: frequency must rise or fall throughout, but {freq_hz[row]:g} Hz stands "
-            f"next to {freq_hz[row - 1]:g} Hz of line {lines[row - 1]}; sort the rows or export one sweep per file"
+        text = (
+            f"frequency must rise or fall throughout, but {freq_hz[row]:g} Hz stands next to {freq_hz[row - 1]:g} Hz "
+            f"of line {lines[row - 1]}; sort the rows or export one sweep per file"
         )
+        raise at_line(file, lines[row], text)

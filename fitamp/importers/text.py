@@ -7,11 +7,12 @@ import re
 from dataclasses import dataclass
 
 from fitamp.errors import SweepError
+from fitamp.importers.fault import at_cell, at_line
 from fitamp.importers.source import Source
 from fitamp.importers.words import JAPANESE
 from fitamp.sweep import Decision
 
-__all__ = ["MAX_LINES", "MAX_LINE_LENGTH", "Line", "Text", "decode"]
+__all__ = ["MAX_LINES", "MAX_LINE_LENGTH", "Line", "Text", "decode", "lines_of"]
 
 _UTF32_MARKS = (codecs.BOM_UTF32_LE, codecs.BOM_UTF32_BE)
 _LINE_END = re.compile(r"\r\n|\n|\r")
@@ -61,10 +62,11 @@ def decode(source: Source) -> Text:
     binary = _BINARY.search(content)
     if binary:
         number = len(_LINE_END.findall(content, 0, binary.start())) + 1
-        raise SweepError(
-            f"{source.file}, line {number}: this is a binary file, not text (control character "
-            f"0x{ord(binary[0]):02x}); export the sweep as CSV or Touchstone"
+        text = (
+            f"this is a binary file, not text (control character 0x{ord(binary[0]):02x}); export the sweep as CSV or "
+            "Touchstone"
         )
+        raise at_cell(source.file, number, binary[0], text, quoted=False)
     if max(content.count("\n"), content.count("\r")) > MAX_LINES:  # before they take memory
         raise SweepError(
             f"{source.file}: more than the {MAX_LINES} lines that a sweep may have; export one sweep per file"
@@ -77,6 +79,15 @@ def decode(source: Source) -> Text:
     decision = Decision(topic="encoding", choice=encoding, reason=reason)
     decisions = (*source.decisions, decision)
     return Text(lines=lines, line_count=len(lines), encoding=encoding, decisions=decisions)
+
+
+def lines_of(source: Source) -> list[str]:
+    """The lines of a file to look at, also of one that is not text."""
+    try:
+        content = _decode(source)[0]
+    except SweepError:
+        content = source.data.decode("latin-1")
+    return _LINE_END.split(content)
 
 
 def _decode(source: Source) -> tuple[str, str, str]:
@@ -126,10 +137,8 @@ def _refuse_long_lines(file: str, texts: list[str]) -> None:
     longest = max(map(len, texts), default=0)
     if longest > MAX_LINE_LENGTH:
         number = next(number for number, text in enumerate(texts, start=1) if len(text) == longest)
-        raise SweepError(
-            f"{file}, line {number}: {longest} characters are more than the {MAX_LINE_LENGTH} that a line may have; "
-            "export one row of numbers per line"
-        )
+        text = f"{longest} characters are more than the {MAX_LINE_LENGTH} that a line may have"
+        raise at_line(file, number, f"{text}; export one row of numbers per line")
 
 
 def _strictly(source: Source, data: bytes, codec: str, encoding: str) -> str:

@@ -9,6 +9,7 @@ from dataclasses import dataclass, field
 
 from fitamp.errors import SweepError
 from fitamp.importers.cells import number_from, show
+from fitamp.importers.fault import at_cell, at_line
 
 __all__ = ["Data", "Scan", "check_reference", "read_options"]
 
@@ -49,9 +50,11 @@ class Scan:
         pairs = self.ports**2 if self.matrix == "full" else self.ports * (self.ports + 1) // 2
         return 1 + 2 * pairs
 
-    def refuse(self, line: int | None, text: str) -> SweepError:
-        """The error for a fault on a line."""
-        return SweepError(f"{self.file}, line {line}: {text}" if line else f"{self.file}: {text}")
+    def refuse(self, line: int | None, text: str, *, part: str = "") -> SweepError:
+        """The error for a fault on a line, or in a part of it."""
+        if not line:
+            return SweepError(f"{self.file}: {text}")
+        return at_cell(self.file, line, part, text, quoted=False) if part else at_line(self.file, line, text)
 
 
 @dataclass(frozen=True, slots=True)
@@ -83,7 +86,8 @@ def read_options(found: Scan, number: int, text: str) -> None:
                 index += 1
             kind, value = "reference", " ".join(tokens[first : index + 1])
         else:
-            raise found.refuse(number, f"option {show(token)} is not known; expected a line such as # Hz S RI R 50")
+            text = f"option {show(token)} is not known; expected a line such as # Hz S RI R 50"
+            raise found.refuse(number, text, part=token)
         if kind in options:
             raise found.refuse(number, f"the option line names the {kind} twice; keep one")
         options[kind] = value

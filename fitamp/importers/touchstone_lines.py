@@ -86,7 +86,7 @@ class Sorter:
             try:
                 numbers.append(number_from(token.replace("\N{MINUS SIGN}", "?")))
             except ValueError as error:
-                raise found.refuse(number, f"number {column}: {error}") from None
+                raise found.refuse(number, f"number {column}: {error}", part=token) from None
         data = Data(number, tuple(numbers), text)
         if self.section == "reference":
             self._references(number, text)

@@ -10,7 +10,6 @@ from functools import partial
 import numpy as np
 
 from fitamp.arrays import ComplexArray, FloatArray
-from fitamp.errors import SweepError
 from fitamp.importers.blocks import Table
 from fitamp.importers.cells import complex_from, number_from
 from fitamp.importers.columns import Column
@@ -57,7 +56,7 @@ def column_values(file: str, table: Table, column: Column, notation: Notation) -
         except ValueError as error:
             if not is_no_reading(text):
                 reason = doubt_of_tail(text, column.quantity, column.unit) or str(error)
-                raise SweepError(f"{file}, line {table.rows[row].number}, {column.label}: {reason}") from None
+                raise table.fault(file, row, reason, index=column.index, label=column.label) from None
             faults[row] = str(error)
             numbers.append(0.0)
     array = np.array(numbers)
