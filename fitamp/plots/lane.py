@@ -8,6 +8,7 @@ from dataclasses import dataclass
 from matplotlib.axes import Axes
 
 from fitamp.comparison import Comparison
+from fitamp.plots.further import FURTHER_ALPHA, FURTHER_ROW, Further
 from fitamp.plots.roots import Mark
 from fitamp.plots.style import COLOURS, SMALL_PT, shortened, text_width_in
 from fitamp.units import si
@@ -24,7 +25,7 @@ ROW_IN, LEVEL_IN = 0.34, 0.17
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class _Spot:
-    """A mark at a frequency with its name, or all marks beyond one edge ("<" or ">") with theirs."""
+    """Marks with their name: one at a frequency, of a resonance two, or all beyond one edge ("<" or ">")."""
 
     marks: tuple[Mark, ...]
     at_hz: float
@@ -56,11 +57,30 @@ class LaneRow:
 
 
 def lane_rows(
-    measured: tuple[Mark, ...], designed: tuple[Mark, ...], low_hz: float, high_hz: float, width_in: float
+    measured: tuple[Mark, ...],
+    designed: tuple[Mark, ...],
+    low_hz: float,
+    high_hz: float,
+    width_in: float,
+    *,
+    further: tuple[Further, ...] = (),
 ) -> tuple[LaneRow, ...]:
-    """Rows of the lane from the bottom: measured, and designed where there is a design."""
-    rows = [("measured", measured), *([("designed", designed)] if designed else [])]
-    return tuple(LaneRow(name=name, named=_named(_spots(marks, low_hz, high_hz), width_in)) for name, marks in rows)
+    """Rows of the lane from the bottom: resonances where there are any, measured, designed where there is a design."""
+    rows = [("measured", _spots(measured, low_hz, high_hz))]
+    if further:
+        rows.insert(0, (FURTHER_ROW, [_resonance_spot(one, low_hz, high_hz) for one in further]))
+    if designed:
+        rows.append(("designed", _spots(designed, low_hz, high_hz)))
+    return tuple(LaneRow(name=name, named=_named(spots, width_in)) for name, spots in rows)
+
+
+def _resonance_spot(one: Further, low_hz: float, high_hz: float) -> tuple[_Spot, float]:
+    at_hz = min(max(_distance_hz(one.poles), low_hz), high_hz)
+    return _Spot(marks=one.marks, at_hz=at_hz, edge="", words=one.words), _share(at_hz, low_hz, high_hz)
+
+
+def _share(at_hz: float, low_hz: float, high_hz: float) -> float:
+    return math.log(at_hz / low_hz) / math.log(high_hz / low_hz)
 
 
 def _spots(marks: tuple[Mark, ...], low_hz: float, high_hz: float) -> list[tuple[_Spot, float]]:
@@ -76,8 +96,8 @@ def _spots(marks: tuple[Mark, ...], low_hz: float, high_hz: float) -> list[tuple
     if below:
         spots.append((_Spot(marks=below, at_hz=0.0, edge="<", words=_far_words(below)), 0.0))
     for mark in inside:
-        share = math.log(_distance_hz(mark) / low_hz) / math.log(high_hz / low_hz)
-        spots.append((_Spot(marks=(mark,), at_hz=_distance_hz(mark), edge="", words=mark.label), share))
+        at_hz = _distance_hz(mark)
+        spots.append((_Spot(marks=(mark,), at_hz=at_hz, edge="", words=mark.label), _share(at_hz, low_hz, high_hz)))
     if above:
         spots.append((_Spot(marks=above, at_hz=math.inf, edge=">", words=_far_words(above)), 1.0))
     return spots
@@ -128,7 +148,7 @@ def draw_lane(
     lane.tick_params(axis="y", length=0)
     for row, y in zip(rows, lines, strict=True):
         _draw_row(lane, y, row, width_in)
-    for named in rows[0].named:
+    for named in next(row for row in rows if row.name == "measured").named:
         if not named.spot.edge:
             for axes in panels:
                 axes.axvline(
@@ -172,26 +192,20 @@ def _draw_window(lane: Axes, comparison: Comparison, between: tuple[float, float
 def _draw_row(lane: Axes, y: float, row: LaneRow, width_in: float) -> None:
     low, high = lane.get_xlim()
     scale = width_in / math.log10(high / low)
-    colour = COLOURS["fitted" if row.name == "measured" else "designed"]
     for named in row.named:
         spot = named.spot
         for start, end in (region for mark in spot.marks for region in mark.regions_hz):
             near, far = sorted((abs(start), abs(end)))
             if near < high and far > low:
                 ends = [max(near, low), min(far, high)]
-                lane.plot(ends, [y, y], color=colour, linewidth=4, alpha=0.4, gid="region")
-        x = low * 10 ** (named.at_in / scale) if spot.edge else spot.at_hz
-        lane.plot(
-            [x],
-            [y],
-            spot.edge or ("o" if spot.marks[0].is_zero else "x"),
-            color=colour,
-            markerfacecolor=colour if row.name == "measured" else "white",
-            markersize=8,
-            markeredgewidth=2,
-            gid=f"{row.name} {', '.join(mark.name for mark in spot.marks)}",
-            zorder=4,
-        )
+                lane.plot(ends, [y, y], color=_colour(row), linewidth=4, alpha=0.4, gid="region")
+        if spot.edge:
+            names = ", ".join(mark.name for mark in spot.marks)
+            _draw_symbol(lane, row, (low * 10 ** (named.at_in / scale), y), spot.edge, names)
+        else:
+            for mark in spot.marks:
+                at_hz = spot.at_hz if len(spot.marks) == 1 else _distance_hz(mark)
+                _draw_symbol(lane, row, (at_hz, y), "o" if mark.is_zero else "x", mark.name)
         lane.text(
             named.start_in / width_in,
             y - (0.02 + LEVEL_IN * named.level if named.level else 0.0),
@@ -204,3 +218,23 @@ def _draw_row(lane: Axes, y: float, row: LaneRow, width_in: float) -> None:
             bbox={"boxstyle": "square,pad=0.05", "facecolor": "white", "edgecolor": "none", "alpha": 0.75},
             zorder=3.5,
         )
+
+
+def _colour(row: LaneRow) -> str:
+    return COLOURS["designed" if row.name == "designed" else "fitted"]
+
+
+def _draw_symbol(lane: Axes, row: LaneRow, at: tuple[float, float], marker: str, names: str) -> None:
+    is_further = row.name == FURTHER_ROW
+    lane.plot(
+        [at[0]],
+        [at[1]],
+        marker,
+        color=_colour(row),
+        markerfacecolor=_colour(row) if row.name == "measured" else "none" if is_further else "white",
+        markersize=6 if is_further else 8,
+        markeredgewidth=1.3 if is_further else 2,
+        alpha=FURTHER_ALPHA if is_further else None,
+        gid=f"{row.name} {names}",
+        zorder=4,
+    )

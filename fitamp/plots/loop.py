@@ -8,6 +8,7 @@ from matplotlib.figure import Figure
 from fitamp.comparison import Comparison
 from fitamp.fitting import LoopFit
 from fitamp.plots.axes import frequency_axis
+from fitamp.plots.further import further_marks
 from fitamp.plots.header import figure_with_head
 from fitamp.plots.lane import draw_lane, lane_rows
 from fitamp.plots.loop_legend import NOTE_LINE_IN, ROW_IN, draw_legend, draw_notes, note_lines, reason_lines
@@ -46,7 +47,7 @@ def loop_figure(fit: LoopFit, comparison: Comparison | None = None) -> Figure:
         measured = measured_marks(fit)
         designed = designed_marks(comparison.design) if comparison is not None else ()
         low_hz, high_hz = _view(fit, measured, designed)
-        rows = lane_rows(measured, designed, low_hz, high_hz, PANEL_IN)
+        rows = lane_rows(measured, designed, low_hz, high_hz, PANEL_IN, further=further_marks(fit))
         reasons = reason_lines(fit.sweep.left_out, PANEL_IN - 0.5)
         title = residual_title(fit, PANEL_IN)
         notes = note_lines(fit, comparison, NOTES_IN)

@@ -69,8 +69,8 @@ class Mark:
 
     @property
     def sentence(self) -> str:
-        """Label and value: "zero (left): 131 MHz"."""
-        return f"{self.label}: {self.words}"
+        """Label and value, where there is one: "zero (left): 131 MHz"."""
+        return f"{self.label}: {self.words}" if self.words else self.label
 
 
 def zero_regions_hz(zero_time_s: Estimate) -> Regions:

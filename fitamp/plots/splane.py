@@ -12,6 +12,7 @@ from matplotlib.scale import SymmetricalLogTransform
 from fitamp.comparison import Comparison, Nulling
 from fitamp.fitting import LoopFit
 from fitamp.plots.axes import LINEAR_SHARE, signed_decades
+from fitamp.plots.further import FURTHER_ALPHA, FURTHER_ROW, Further, further_marks
 from fitamp.plots.header import figure_with_head
 from fitamp.plots.roots import Mark, designed_marks, deviation_words, measured_marks
 from fitamp.plots.splane_frame import linear_hz, name_half_planes, point_to_infinity, reach_hz
@@ -40,13 +41,13 @@ def splane_figure(fit: LoopFit, comparison: Comparison | None = None) -> Figure:
     """Draw poles (×) and zero (○) in the s-plane over 2π, in hertz, with their 95 % regions.
 
     Both half planes are drawn in decades, linear around 0. With all roots real, the designed ones stand in a lane above
-    the measured ones. A region that passes through infinity reaches both edges.
+    the measured ones, resonances at their real part below. A region that passes through infinity reaches both edges.
     """
     with drawing_style():
         measured = measured_marks(fit)
         designed = designed_marks(comparison.design) if comparison is not None else ()
         if any(mark.is_pair for mark in (*measured, *designed)):
-            return draw_pairs(fit, comparison, measured, designed)
+            return draw_pairs(fit, comparison, measured, designed, further_marks(fit))
         return _draw_lanes(fit, comparison, measured, designed)
 
 
@@ -55,9 +56,12 @@ def _draw_lanes(
 ) -> Figure:
     reach, linear = reach_hz(fit, measured, designed), linear_hz((*measured, *designed))
     width_in = WIDTH_IN - LEFT_IN - RIGHT_IN
+    further = further_marks(fit)
+    lowest = _levels(tuple(_at_real_part(one) for one in further), linear, reach, width_in, None)
     below = _levels(measured, linear, reach, width_in, comparison)
     above = _levels(designed, linear, reach, width_in, None)
-    measured_y = _room(below)
+    further_y = _room(lowest) if further else 0.0
+    measured_y = further_y + _room(below) + (FIRST_LEVEL_IN if further else 0.0)
     designed_y = measured_y + LANE_GAP_IN
     top = designed_y + _room(above) if designed else measured_y + FIRST_LEVEL_IN
     figure = figure_with_head(fit, comparison, body_in=BOTTOM_IN + top + TOP_IN)
@@ -66,6 +70,7 @@ def _draw_lanes(
     axes.set_xlim(-reach, reach)
     axes.set_ylim(0, top)
     rows = {"measured": measured_y} | ({"designed": designed_y} if designed else {})
+    rows |= {f"{FURTHER_ROW},\nreal part": further_y} if further else {}
     axes.set_yticks(list(rows.values()), list(rows), size=SIZE_PT)
     axes.tick_params(axis="y", length=0)
     axes.set_xlabel("s-plane over 2π: real axis (decades on both sides, linear around 0)")
@@ -81,9 +86,34 @@ def _draw_lanes(
         _draw_moves(axes, measured, moved, (measured_y, designed_y), reach)
     _draw_marks(axes, measured, measured_y, "measured")
     _draw_marks(axes, designed, designed_y, "designed")
+    _draw_further(axes, further, further_y)
+    _draw_labels(axes, lowest, further_y, -1, width_in)
     _draw_labels(axes, below, measured_y, -1, width_in)
     _draw_labels(axes, above, designed_y, +1, width_in)
     return figure
+
+
+def _at_real_part(one: Further) -> Mark:
+    """What a resonance's label on the real axis points at, and says."""
+    assert one.poles.value_hz is not None
+    return Mark(name=one.words, is_zero=False, value_hz=one.poles.value_hz)
+
+
+def _draw_further(axes: Axes, further: tuple[Further, ...], y: float) -> None:
+    for mark in (mark for one in further for mark in one.marks):
+        assert mark.value_hz is not None
+        axes.plot(
+            [mark.value_hz.real],
+            [y],
+            "o" if mark.is_zero else "x",
+            color=COLOURS["fitted"],
+            markerfacecolor="none",
+            markersize=7,
+            markeredgewidth=1.4,
+            alpha=FURTHER_ALPHA,
+            gid=f"{FURTHER_ROW} {mark.name}",
+            zorder=4,
+        )
 
 
 def _position_in(value_hz: float, linear: float, reach: float, width_in: float) -> float:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from dataclasses import dataclass, replace
 
 import numpy as np
 from matplotlib.axes import Axes
@@ -13,6 +14,7 @@ from fitamp.arrays import FloatArray
 from fitamp.comparison import Comparison
 from fitamp.fitting import LoopFit
 from fitamp.plots.axes import LINEAR_SHARE, signed_decades, signed_decimal
+from fitamp.plots.further import FURTHER_ALPHA, FURTHER_ROW, Further
 from fitamp.plots.header import figure_with_head
 from fitamp.plots.roots import Mark
 from fitamp.plots.splane_frame import distances_hz, linear_hz, name_half_planes, point_to_infinity, reach_hz
@@ -26,27 +28,36 @@ CHI_SQUARE_95_2 = 5.991
 # Up to this ratio of farthest to nearest root a linear plane shows all of them, and ellipses keep their shape.
 LINEAR_RATIO = 8.0
 WORDS_SHARE = 0.31
+PALE_INK = "#777777"
 
 
 def draw_pairs(
-    fit: LoopFit, comparison: Comparison | None, measured: tuple[Mark, ...], designed: tuple[Mark, ...]
+    fit: LoopFit,
+    comparison: Comparison | None,
+    measured: tuple[Mark, ...],
+    designed: tuple[Mark, ...],
+    further: tuple[Further, ...] = (),
 ) -> Figure:
-    """The plane with every root, its values in words above it."""
+    """The plane with every root, its values in words above it; resonances as far as they fall into it."""
     groups = {"designed": designed, "measured": measured} if designed else {"measured": measured}
+    scale = _scale_of(fit, measured, designed, further)
+    if further:
+        groups[FURTHER_ROW] = tuple(_in_legend(one, scale) for one in further)
     columns = _columns(groups)
     legend_in = ROW_IN * max(sum(1 + len(groups[group]) for group in column) for column in columns) + 0.15
     body_in = BOTTOM_IN + HEIGHT_IN + TOP_IN + legend_in
     figure = figure_with_head(fit, comparison, body_in=body_in)
     axes = place_axes(figure, left=LEFT_IN, bottom=BOTTOM_IN, width=WIDTH_IN - LEFT_IN - RIGHT_IN, height=HEIGHT_IN)
-    reach = _set_scales(axes, fit, measured, designed)
+    _set_scale(axes, scale)
     axes.axhline(0, color="#AAAAAA", linewidth=0.8, zorder=1)
     name_half_planes(axes)
     axes.grid(True)
     axes.set_xlabel("s-plane over 2π: real part")
     axes.set_ylabel("imaginary part")
     for group, marks in groups.items():
-        for mark in marks:
-            _draw_mark(axes, mark, group, reach)
+        for mark in marks if group != FURTHER_ROW else ():
+            _draw_mark(axes, mark, group, scale.reach_hz)
+    _draw_further(axes, further)
     left = LEFT_IN
     for column in columns:
         top = body_in
@@ -55,6 +66,12 @@ def draw_pairs(
             top -= ROW_IN * (1 + len(groups[group]))
         left += _width_in(groups[column[0]]) + 0.3
     return figure
+
+
+def _in_legend(one: Further, scale: _Scale) -> Mark:
+    assert one.poles.value_hz is not None
+    beyond = "" if scale.shows(one.poles.value_hz) else " (beyond the picture)"
+    return replace(one.poles, name=f"{one.words}{beyond}", words="")
 
 
 def _columns(groups: dict[str, tuple[Mark, ...]]) -> list[list[str]]:
@@ -83,25 +100,48 @@ def _draw_legend(figure: Figure, group: str, marks: tuple[Mark, ...], left_in: f
     legend.get_title().set_fontweight("bold")
 
 
-def _set_scales(axes: Axes, fit: LoopFit, measured: tuple[Mark, ...], designed: tuple[Mark, ...]) -> float:
-    """Scale both axes alike; the half width of the plane in hertz."""
+@dataclass(frozen=True, slots=True, kw_only=True)
+class _Scale:
+    """Half width and half height of the plane, and up to where it is linear: None for all of it."""
+
+    reach_hz: float
+    height_hz: float
+    linear_hz: float | None
+
+    def shows(self, value_hz: complex) -> bool:
+        """Whether a root falls into the picture."""
+        return abs(value_hz.real) <= self.reach_hz and abs(value_hz.imag) <= self.height_hz
+
+
+def _scale_of(
+    fit: LoopFit, measured: tuple[Mark, ...], designed: tuple[Mark, ...], further: tuple[Further, ...]
+) -> _Scale:
+    """Linear where that shows all roots, and then resonances as far as they fall into it; in decades with them."""
     marks = (*measured, *designed)
     reach = reach_hz(fit, measured, designed)
-    height = 2.5 * max(abs(mark.value_hz.imag) for mark in marks if mark.value_hz is not None)
+    highest = _highest(marks)
     if reach <= 2.5 * LINEAR_RATIO * min(d for d in distances_hz(marks) if d > 0):
-        reach, height = reach / 2, height / 2
+        return _Scale(reach_hz=reach / 2, height_hz=2.5 * highest / 2, linear_hz=None)
+    linear = linear_hz(marks)
+    highest = max(highest, _highest(tuple(one.poles for one in further)))
+    # Words above the farthest mark need a fixed share of the height, however many decades that has.
+    decades = math.log10(highest / linear) + LINEAR_SHARE if highest > linear else LINEAR_SHARE
+    return _Scale(reach_hz=reach, height_hz=highest * max(2.5, 10 ** (WORDS_SHARE * decades)), linear_hz=linear)
+
+
+def _highest(marks: tuple[Mark, ...]) -> float:
+    return max((abs(mark.value_hz.imag) for mark in marks if mark.value_hz is not None), default=0.0)
+
+
+def _set_scale(axes: Axes, scale: _Scale) -> None:
+    if scale.linear_hz is None:
         signed_decimal(axes.xaxis)
         signed_decimal(axes.yaxis)
     else:
-        linear = linear_hz(marks)
-        # Words above the farthest mark need a fixed share of the height, however many decades that has.
-        decades = math.log10(height / 2.5 / linear) + LINEAR_SHARE if height > 2.5 * linear else LINEAR_SHARE
-        height = max(height, height / 2.5 * 10 ** (WORDS_SHARE * decades))
-        signed_decades(axes.xaxis, linear, reach)
-        signed_decades(axes.yaxis, linear, height)
-    axes.set_xlim(-reach, reach)
-    axes.set_ylim(-height, height)
-    return reach
+        signed_decades(axes.xaxis, scale.linear_hz, scale.reach_hz)
+        signed_decades(axes.yaxis, scale.linear_hz, scale.height_hz)
+    axes.set_xlim(-scale.reach_hz, scale.reach_hz)
+    axes.set_ylim(-scale.height_hz, scale.height_hz)
 
 
 def _draw_mark(axes: Axes, mark: Mark, group: str, reach: float) -> None:
@@ -140,6 +180,27 @@ def _draw_mark(axes: Axes, mark: Mark, group: str, reach: float) -> None:
     )
 
 
+def _draw_further(axes: Axes, further: tuple[Further, ...]) -> None:
+    """Resonances, paler, each named once; the axes are not stretched for them."""
+    for mark in (mark for one in further for mark in one.marks):
+        assert mark.value_hz is not None
+        handle = _handle(FURTHER_ROW, mark)
+        handle.set_data([mark.value_hz.real] * 2, [mark.value_hz.imag, -mark.value_hz.imag])
+        handle.set_gid(f"{FURTHER_ROW} {mark.name}")
+        axes.add_line(handle)
+    for one in further:
+        assert one.poles.value_hz is not None
+        axes.annotate(
+            FURTHER_ROW,
+            xy=(one.poles.value_hz.real, one.poles.value_hz.imag),
+            xytext=(8, 0),
+            textcoords="offset points",
+            va="center",
+            size=SMALL_PT,
+            color=PALE_INK,
+        )
+
+
 def _ellipse(covariance: FloatArray) -> FloatArray:
     """Outline of the 95 % region around 0, shape (2, 60)."""
     values, vectors = np.linalg.eigh(covariance)
@@ -149,15 +210,17 @@ def _ellipse(covariance: FloatArray) -> FloatArray:
 
 
 def _handle(group: str, mark: Mark) -> Line2D:
-    colour = COLOURS["fitted" if group == "measured" else "designed"]
+    colour = COLOURS["designed" if group == "designed" else "fitted"]
+    is_further = group == FURTHER_ROW
     return Line2D(
         [],
         [],
         marker="o" if mark.is_zero else "x",
         linestyle="none",
         color=colour,
-        markerfacecolor=colour if group == "measured" else "white",
-        markersize=9,
-        markeredgewidth=2.2,
+        markerfacecolor=colour if group == "measured" else "none" if is_further else "white",
+        markersize=7 if is_further else 9,
+        markeredgewidth=1.4 if is_further else 2.2,
+        alpha=FURTHER_ALPHA if is_further else None,
         zorder=4 if group == "measured" else 3,
     )

@@ -12,7 +12,7 @@ from matplotlib.lines import Line2D
 from matplotlib.text import Text
 
 from fitamp.amplifier import Elements
-from fitamp.arrays import FloatArray
+from fitamp.arrays import ComplexArray, FloatArray
 from fitamp.comparison import Comparison, Nulling, compare
 from fitamp.design import Design, HalfPlane, Limit, Roots
 from fitamp.fitting import FitWarning, LoopFit, WarningCode, fit_sweep
@@ -89,6 +89,32 @@ def fit_of_pair() -> LoopFit:
     """A fit whose poles are −3 MHz ± j·4 MHz."""
     response = Transfer(dc_gain=20.0, poles_hz=(-3e6 + 4e6j, -3e6 - 4e6j), zeros_hz=(90e6,))
     return fit_sweep(bench_sweep(response, np.geomspace(1e4, 1e8, 81)))
+
+
+def resonance(freq_hz: FloatArray, at_hz: float, *, quality: float = 20.0, apart: float = 0.02) -> ComplexArray:
+    """A pole pair with a zero pair a little farther out, as a package has."""
+    s = 1j * freq_hz / at_hz
+    z = s / (1 + apart)
+    return np.asarray((1 + z / quality + z**2) / (1 + s / quality + s**2))
+
+
+@lru_cache
+def comparison_with_resonances() -> Comparison:
+    """The designed stage in a package with resonances at 400 kHz (Q 10) and 30 MHz (Q 20)."""
+    freq_hz = np.geomspace(10, 1e8, 281)
+    gain = ELEMENTS.transfer().evaluate(freq_hz) * resonance(freq_hz, 30e6)
+    gain = gain * resonance(freq_hz, 400e3, quality=10, apart=-0.03)
+    sweep = Sweep(freq_hz=freq_hz, gain=simulate_bench(gain, NOISE, np.random.default_rng(1)))
+    return compare(sweep, Design.from_elements(ELEMENTS, limits=LIMITS))
+
+
+@lru_cache
+def fit_of_pair_with_resonance(at_hz: float, zero_hz: float = 90e6) -> LoopFit:
+    """Poles at −3 MHz ± j·4 MHz, a zero, and a resonance."""
+    freq_hz = np.geomspace(1e4, 1e8, 161)
+    response = Transfer(dc_gain=20.0, poles_hz=(-3e6 + 4e6j, -3e6 - 4e6j), zeros_hz=(zero_hz,))
+    gain = response.evaluate(freq_hz) * resonance(freq_hz, at_hz)
+    return fit_sweep(Sweep(freq_hz=freq_hz, gain=simulate_bench(gain, NOISE, np.random.default_rng(1))))
 
 
 def drawn(figure: Figure, gid: str) -> list[Artist]:
