@@ -65,6 +65,7 @@ class Origin:
     """Where a sweep came from. `file` is the name as given; `sha256` is of the file's bytes.
 
     averaged : where the sweeps came from whose average this one is
+    notes : what the file says beside its numbers: lines of its preamble and comments above them, without their marks
     """
 
     file: str
@@ -72,6 +73,7 @@ class Origin:
     trace: str = ""  # which columns or which S-parameter
     sha256: str | None = None
     averaged: tuple[Origin, ...] = ()
+    notes: tuple[str, ...] = ()
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -289,7 +291,7 @@ class Sweep:
 
 def _origin(facts: dict[str, Any]) -> Origin:
     averaged = tuple(_origin(part) for part in facts.get("averaged", ()))
-    return Origin(**(facts | {"averaged": averaged}))
+    return Origin(**(facts | {"averaged": averaged, "notes": tuple(facts.get("notes", ()))}))
 
 
 def _check(name: str, freq_hz: FloatArray, gain: ComplexArray) -> None:

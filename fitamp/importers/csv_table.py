@@ -83,7 +83,7 @@ def _finished(source: Source, found: Sequence[Found | _Unread], number: int, *, 
         reason = "as given by --sweep" if chosen else "all of them are read"
         choice = f"{number} of {len(found)}, from line {one.points.lines[0]}"
         decisions = (*decisions, Decision(topic="sweep", choice=choice, reason=f"{one.told}; {reason}"))
-    origin = Origin(file=source.file, form="csv", trace=one.trace, sha256=source.sha256)
+    origin = Origin(file=source.file, form="csv", trace=one.trace, sha256=source.sha256, notes=one.notes)
     return finish(one.points, origin=origin, decisions=decisions, may_fall=True, left_out=one.left_out)
 
 
@@ -94,7 +94,7 @@ def _which(file: str, found: Sequence[Found | _Unread]) -> SweepError:
         file,
         starts[1],
         f"{found[1].told}; the file holds {len(found)} sweeps, from lines {lines}: choose "
-        "one, as in --sweep 2, or split the file",
+        "one, as in --sweep 2, or average them with --repeats",
     )
 
 

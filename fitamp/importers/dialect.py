@@ -16,8 +16,10 @@ from fitamp.errors import SweepError
 from fitamp.importers.cells import is_number_like
 from fitamp.importers.text import Line
 
-__all__ = ["Block", "Separator", "find_block", "is_comment", "split_cells", "uncommented"]
+__all__ = ["Block", "Separator", "find_block", "is_comment", "is_rule", "split_cells", "uncommented"]
 
+# A drawn line under a header.
+_RULE = re.compile(r"[\s|+]*(?:[-=_*#]{3,}[\s|+]*)+")
 _COMMENT = re.compile(r"\s*(?:#|!|%|//)+")
 # A pair in parentheses is one cell also where its comma is the separator.
 _BARE_PAIR = re.compile(r"(^|[,;\s])\s*(\([^()\"]*[,;][^()\"]*\))")
@@ -60,6 +62,11 @@ class Block:
     above: tuple[Line, ...]
     comments: int
     trailing: bool
+
+
+def is_rule(text: str) -> bool:
+    """Whether a line is one that is drawn, under a header or round a title."""
+    return bool(_RULE.fullmatch(uncommented(text) if is_comment(text) else text))
 
 
 def is_comment(text: str) -> bool:

@@ -40,11 +40,13 @@ class Found:
     """One sweep of a file, its points in the order of the file.
 
     trace : names of its columns
+    notes : what stands above its table and is no header
     told : how it is told from the others of its file; empty where it is alone
     """
 
     points: Points
     trace: str
+    notes: tuple[str, ...]
     decisions: tuple[Decision, ...]
     left_out: tuple[LeftOut, ...] = ()
     told: str = ""
@@ -67,7 +69,9 @@ def found_in(file: str, table: Table, understood: Understood) -> list[Found]:
         _refuse_disagreement(file, table, differing(gain, other), {*faults, *unsure})
         decisions = (*decisions, AGREED)
     _refuse_many_without(file, table, faults)
-    whole = Found(points=Points(lines=[], freq_hz=freq, gain=gain), trace=used.trace, decisions=decisions)
+    whole = Found(
+        points=Points(lines=[], freq_hz=freq, gain=gain), trace=used.trace, notes=understood.notes, decisions=decisions
+    )
     parts = _parts(table, understood.labels, freq)
     return [replace(_part(whole, table, rows, faults), told=told) for rows, told in parts]
 

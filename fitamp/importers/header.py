@@ -7,7 +7,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 from fitamp.importers.cells import is_number_like, show
-from fitamp.importers.dialect import Block, Separator, is_comment, split_cells, uncommented
+from fitamp.importers.dialect import Block, Separator, is_comment, is_rule, split_cells, uncommented
 from fitamp.importers.fault import at_line, quote_span
 from fitamp.importers.quantity import UNITS_OF, Meaning, Quantity, Unit, as_german, doubt_of, meaning_of, unit_of
 from fitamp.importers.text import Line
@@ -18,10 +18,6 @@ __all__ = ["Header", "find_header", "is_header_row"]
 
 # Cells of a units row that say "no unit".
 _NO_UNIT = frozenset({"", "-", "–", "[-]", "[1]", "(-)", "[]", "()", "v/v", "[v/v]", "(v/v)"})
-
-
-# A drawn line under a header.
-_RULE = re.compile(r"[\s|+]*(?:[-=_]{3,}[\s|+]*)+")
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -48,7 +44,7 @@ def find_header(file: str, block: Block) -> Header:
         When the line above the rows is neither header nor units, or a row of units contradicts the header.
     """
     above = [line for line in block.above if line.text.strip()]
-    plain = [line for line in above if not is_comment(line.text) and not _RULE.fullmatch(line.text)]
+    plain = [line for line in above if not is_comment(line.text) and not is_rule(line.text)]
     comments = [line for line in above if is_comment(line.text)]
     names, units = _plain_header(file, plain, block)
     others: tuple[int, ...] = ()

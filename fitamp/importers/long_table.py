@@ -144,4 +144,4 @@ def _found(data: bytes, first: int, understood: Understood, numbers: Sequence[Fl
             return None
         decisions = (*decisions, AGREED)
     points = Points(lines=range(first, first + len(freq_hz)), freq_hz=freq_hz, gain=gain)
-    return Found(points=points, trace=used.trace, decisions=decisions)
+    return Found(points=points, trace=used.trace, notes=understood.notes, decisions=decisions)

@@ -12,6 +12,7 @@ import re
 import numpy as np
 
 from fitamp.errors import SweepError, UsageError
+from fitamp.importers.notes import notes_among
 from fitamp.importers.points import Points, finish
 from fitamp.importers.source import Source
 from fitamp.importers.text import decode
@@ -51,8 +52,9 @@ def read_touchstone(source: Source, *, trace: str | None = None) -> Sweep:
     name = f"S{row}{column}" if found.ports < 10 else f"S{row},{column}"
     freq_hz, gain = _parse(found, row - 1, column - 1)
     decisions = [*text.decisions, *_decisions(found), Decision(topic="trace", choice=name, reason=reason)]
+    notes = notes_among(line for line in text.lines[: found.row_lines[0]] if line.text.lstrip().startswith("!"))
     points = Points(lines=tuple(found.row_lines), freq_hz=freq_hz, gain=gain)
-    origin = Origin(file=source.file, form="touchstone", trace=name, sha256=source.sha256)
+    origin = Origin(file=source.file, form="touchstone", trace=name, sha256=source.sha256, notes=notes)
     return finish(points, origin=origin, decisions=tuple(decisions), may_fall=False)
 
 

@@ -11,6 +11,7 @@ from fitamp.importers.choice import ColumnChoice
 from fitamp.importers.columns import Column, Columns, chosen_columns, told_columns
 from fitamp.importers.header import Header, find_header
 from fitamp.importers.notation import Notation, find_notation, may_tell
+from fitamp.importers.notes import notes_among
 from fitamp.importers.quantity import Unit, names_sweeps
 from fitamp.importers.tails import unit_in_cells
 from fitamp.importers.text import Text
@@ -21,11 +22,16 @@ __all__ = ["Understood", "understand"]
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Understood:
-    """The columns in use, how their numbers are written, and the column that numbers the sweeps (None without one)."""
+    """The columns in use, how their numbers are written, and what else is there.
+
+    labels : the column that numbers the sweeps; None without one
+    notes : what stands above the table and is no header
+    """
 
     used: Columns
     notation: Notation
     labels: int | None
+    notes: tuple[str, ...]
     decisions: tuple[Decision, ...]
 
 
@@ -49,8 +55,9 @@ def understand(file: str, text: Text, table: Table, choice: ColumnChoice | None)
     block = table.block
     separator = Decision(topic="separator", choice=block.separator.label, reason=_separator_reason(table))
     aside = _aside(text, table, columns, labels)
+    notes = notes_among(block.above, header.lines)
     decisions = (*text.decisions, separator, *why, *header.decisions, *used.decisions, *aside)
-    return Understood(used=used, notation=notation, labels=labels, decisions=decisions)
+    return Understood(used=used, notation=notation, labels=labels, notes=notes, decisions=decisions)
 
 
 def _complex_columns(table: Table) -> list[int]:

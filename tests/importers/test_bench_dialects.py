@@ -194,7 +194,8 @@ def test_file_of_several_sweeps(tmp_path: Path, form: str) -> None:
         assert (again.gain.tolist(), again.sign) == (sweep.gain.tolist(), Sign.AS_READ)
         assert choices(again)["sweep"].startswith(f"{k + 1} of 3, from line ")
     with pytest.raises(
-        SweepError, match=rf"{re.escape(told)}; the file holds 3 sweeps, from lines .*: choose one, as in"
+        SweepError,
+        match=rf"{re.escape(told)}; the file holds 3 sweeps, from lines .*: choose one, as in --sweep 2, or average",
     ):
         read_sweep(path)
     with pytest.raises(UsageError, match="sweep 4 is not there; the file holds 3 sweeps, counted from 1"):

@@ -233,7 +233,7 @@ BROKEN = {
     "last line": (GOOD + "stop\n", "line 5: 'stop' stands among the rows of numbers; remove the line, and keep one"),
     "second table": (
         GOOD + GOOD,
-        "line 6: a second header among the rows; the file holds 2 sweeps, from lines 2, 6: choose",
+        "line 6: a second header among the rows; the file holds 2 sweeps, from lines 2, 6: choose one",
     ),
     "wider table": (GOOD + "f,re,im,n\n1,2,3,4\n", "line 5: 'f,re,im,n' stands among the rows of numbers; remove the"),
     "words": (GOOD + "a,b,c\n", "line 5, column 1 ('freq_hz'): 'a' is not a number; measure the point again"),
