@@ -11,6 +11,7 @@ from repeated_sweeps import DC_GAIN, FREQ_HZ, NOISE, loop, repeats
 from fitamp.conditioning.repeats import average_repeats
 from fitamp.errors import SweepError, UsageError
 from fitamp.fitting import fit_sweep
+from fitamp.fitting.adequacy import judge
 from fitamp.sweep import Concern, LeftOut, NoiseLevels, Sign, Sweep
 
 LEVELS = ("error_channel", "return_channel", "relative")
@@ -56,6 +57,14 @@ def test_fits_of_averages_err_as_much_as_they_say(count: int) -> None:
     # 15 · 4 values, the four of a fit correlated: mean square 1 ± 0.25, mean 0 ± 0.2.
     assert np.mean(np.square(in_sigma)) == pytest.approx(1.0, abs=0.6)
     assert abs(np.mean(in_sigma)) < 0.5
+
+
+@pytest.mark.parametrize(("count", "variance"), [(2, 2.0), (5, 1.25)])
+def test_a_fit_is_judged_by_how_well_the_repeats_know_the_noise(count: int, variance: float) -> None:
+    # The residuals' mean square has variance 1/n, that of the noise 1/(n (K − 1)) more.
+    solution = fit_sweep(average_repeats(repeats(count, 7))).solution
+    as_given = replace(solution, noise=replace(solution.noise, source="given", repeats=0))
+    assert judge(as_given).level / judge(solution).level == pytest.approx(np.sqrt(variance))
 
 
 def test_five_repeats_halve_the_standard_error_and_more() -> None:
