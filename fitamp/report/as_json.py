@@ -40,6 +40,7 @@ def fit_as_dict(fit: LoopFit) -> dict[str, Any]:
             "adequate": fit.adequacy.adequate,
             "reduced_chi_square": _finite(fit.adequacy.reduced_chi_square),
             "residuals": fit.adequacy.sentence,
+            "misfit_hz": [list(stretch) for stretch in fit.adequacy.where_hz or ()],
         },
         "noise": _noise(fit.noise),
         "parameters": {name: _estimate(estimate) for name, estimate in fit.parameters.items()},

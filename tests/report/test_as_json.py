@@ -17,7 +17,7 @@ from fitamp.report.as_json import comparison_as_dict, dumps, fit_as_dict, sweep_
 ESTIMATE = {"value", "stderr", "ci95"}
 # The schemas fitamp/fit/1 and fitamp/compare/1: scripts rely on these keys. More may be there.
 SWEEP = {"file", "points", "points_used", "f_min_hz", "f_max_hz", "sign", "left_out"}
-MODEL = {"name", "poles", "zeros", "adequate", "reduced_chi_square"}
+MODEL = {"name", "poles", "zeros", "adequate", "reduced_chi_square", "misfit_hz"}
 NOISE = {"error_channel", "return_channel", "relative", "source"}
 PARAMETERS = {"dc_gain", "gain_bandwidth_hz", "pole1_hz", "pole2_hz", "zero_time_s", "delay_s"}
 MARGINS = {"crossover_hz", "phase_margin_deg", "gain_margin_db"}
@@ -188,3 +188,10 @@ def test_a_hostile_file_name_survives_the_round_trip_as_ascii() -> None:
 
 def test_known_words_are_those_of_the_schema() -> None:
     assert {known.value for known in Known} == KNOWN
+
+
+def test_stretches_of_a_misfit_are_pairs_of_frequencies(compared_examples: dict[str, Comparison]) -> None:
+    fit = compared_examples["a"].fit
+    assert fit_as_dict(fit)["model"]["misfit_hz"] == []
+    misfitting = replace(fit, adequacy=replace(fit.adequacy, where_hz=((12e6, 60e6),)))
+    assert fit_as_dict(misfitting)["model"]["misfit_hz"] == [[12e6, 60e6]]
