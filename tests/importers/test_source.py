@@ -138,6 +138,11 @@ def test_gzip_file_that_grows_beyond_the_limit_is_refused(tmp_path: Path) -> Non
     assert path.stat().st_size < 1_000_000
     with pytest.raises(SweepError, match="unpacks to more than the 1 MB that a sweep may have; export one"):
         load_source(path, max_bytes=1_000_000)
+    path.write_bytes(gzip.compress(b"0" * 20_000_000))
+    with pytest.raises(
+        SweepError, match="unpacks to more than 200 times its size, as no table of numbers does; unpack"
+    ):
+        load_source(path)
 
 
 class Endless(io.RawIOBase):
