@@ -15,7 +15,7 @@ import numpy as np
 from fitamp.arrays import ComplexArray, FloatArray
 from fitamp.sweep import NoiseLevels
 
-__all__ = ["LEAST_SIDE", "RangeStep", "find_range_steps"]
+__all__ = ["LEAST_SIDE", "RangeStep", "find_range_steps", "step_at"]
 
 # Points on each side of a gap that are looked at: within a factor e^SPAN in frequency, but so many at least and most.
 # What is smooth over that factor is a cubic; fewer points cannot tell a step from a bend of the band's end.
@@ -137,6 +137,31 @@ def find_range_steps(
     return tuple(sorted(steps, key=lambda step: step.index))
 
 
+def step_at(
+    f_hz: float, freq_hz: FloatArray, gain: ComplexArray, model_gain: ComplexArray, noise: NoiseLevels
+) -> RangeStep | None:
+    """The step that the points nearby show in the gap at `f_hz`, large or small; None near an end of the band.
+
+    For those who know the place from elsewhere: then three standard errors are no chance, where a search among all gaps
+    has to ask for more.
+    """
+    ln_ratio, sd = _ln_ratio(gain, model_gain, noise)
+    if len(freq_hz) < 2 * LEAST_SIDE:
+        return None
+    windows = _Windows.about_gaps(np.log(freq_hz))
+    gap = int(np.searchsorted(freq_hz, f_hz)) - 1 - int(windows.before[0])
+    if not 0 <= gap < len(windows.before):
+        return None
+    size, stderr, _ = _steps_at_gaps(windows.only(gap), ln_ratio, sd)
+    index = int(windows.before[gap])
+    return RangeStep(
+        index=index,
+        f_hz=float(np.sqrt(freq_hz[index] * freq_hz[index + 1])),
+        ln_ratio=complex(size[0]),
+        stderr=float(stderr[0]),
+    )
+
+
 def _ln_ratio(gain: ComplexArray, model_gain: ComplexArray, noise: NoiseLevels) -> tuple[ComplexArray, FloatArray]:
     """ln(gain/model), and its standard deviation per component by the loop equation."""
     size, through = np.abs(model_gain), np.abs(1 + model_gain)
@@ -201,6 +226,13 @@ class _Windows:
             used=near & (points >= 0) & (points < len(ln_f)),
             place=place,
             beyond=(offsets > 0).astype(float),
+        )
+
+    def only(self, gap: int) -> _Windows:
+        """The points about one gap."""
+        rows = slice(gap, gap + 1)
+        return replace(
+            self, before=self.before[rows], points=self.points[rows], used=self.used[rows], place=self.place[rows]
         )
 
 

@@ -10,6 +10,7 @@ import numpy as np
 from fitamp.arrays import FloatArray, frozen_float
 from fitamp.estimate import Estimate, Known
 from fitamp.fitting.adequacy import Adequacy
+from fitamp.fitting.factors import Factor, RangeStep
 from fitamp.fitting.intervals import (
     Profile,
     estimate_by_curvature,
@@ -18,16 +19,17 @@ from fitamp.fitting.intervals import (
     gradient,
     profile,
 )
-from fitamp.fitting.result import FittedMargins, FittedParameters, Root
+from fitamp.fitting.result import FittedMargins, FittedParameters, FittedStep, Root
 from fitamp.fitting.two_pole import Solution, TwoPole
 from fitamp.margins import closed_loop_step, margins
 from fitamp.sweep import Sweep
 from fitamp.transfer import Transfer
 
-__all__ = ["fitted_margins", "fitted_parameters", "fitted_resonances", "fitted_roots"]
+__all__ = ["fitted_factor_roots", "fitted_margins", "fitted_parameters", "fitted_range_steps", "fitted_roots"]
 
 # Above this standard deviation of a logarithm the likelihood is no longer near-quadratic and is profiled.
 QUADRATIC_LN = 0.15
+DB_PER_NEPER = 20 / math.log(10)
 LN_Q, LN_B, ZERO = 1, 2, 3
 # An error no smaller than this share of the prior's is the prior, not a measurement.
 HANDED_BACK = 0.5
@@ -93,26 +95,47 @@ def fitted_roots(solution: Solution, covariance: FloatArray) -> tuple[tuple[Root
     )
 
 
-def fitted_resonances(solution: Solution, covariance: FloatArray) -> tuple[tuple[Root, ...], tuple[Root, ...]]:
-    """Poles and zeros of the resonances, the upper half of each pair first, with the covariance of (re, im)."""
+def fitted_factor_roots(
+    solution: Solution, covariance: FloatArray, kind: type[Factor]
+) -> tuple[tuple[Root, ...], tuple[Root, ...]]:
+    """Poles and zeros of the further factors of one kind, the upper half of a pair first, with their covariances."""
 
-    def roots_of(which: int, kind: int) -> Callable[[TwoPole, FloatArray], tuple[complex, ...]]:
+    def roots_of(which: int, side: int) -> Callable[[TwoPole, FloatArray], tuple[complex, ...]]:
         def roots(model: TwoPole, values: FloatArray) -> tuple[complex, ...]:
-            found = model.resonances[which].roots_hz(model.resonance_values(values)[which])[kind]
+            found = model.factors[which].roots_hz(model.factor_values(values)[which])[side]
             return tuple(sorted(found, key=lambda root: -root.imag))
 
         return roots
 
     model, values = solution.model, solution.values
+    chosen = [index for index, factor in enumerate(model.factors) if isinstance(factor, kind)]
     poles, zeros = (
         tuple(
-            _root(model, values, covariance, index, roots_of(which, kind))
-            for which in range(len(model.resonances))
-            for index in range(2)
+            _root(model, values, covariance, index, roots_of(which, side))
+            for which in chosen
+            for index in range(len(roots_of(which, side)(model, values)))
         )
-        for kind in range(2)
+        for side in range(2)
     )
     return poles, zeros
+
+
+def fitted_range_steps(solution: Solution, covariance: FloatArray, quantile: float) -> tuple[FittedStep, ...]:
+    """Steps of a receiver's range that were fitted, with the error of their size."""
+    model = solution.model
+    found = []
+    for index, factor in enumerate(model.factors):
+        if not isinstance(factor, RangeStep):
+            continue
+        first = model.names.index(f"factor{index}_{factor.parts[0]}")
+        size, turn = (
+            Estimate.gaussian(
+                float(solution.values[at]) * unit, math.sqrt(float(covariance[at, at])) * unit, quantile=quantile
+            )
+            for at, unit in ((first, DB_PER_NEPER), (first + 1, math.degrees(1)))
+        )
+        found.append(FittedStep(f_hz=factor.f_hz, size_db=size, turn_deg=turn))
+    return tuple(found)
 
 
 def fitted_margins(

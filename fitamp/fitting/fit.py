@@ -2,17 +2,28 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 
 from fitamp.arrays import FloatArray
 from fitamp.errors import FitError
 from fitamp.estimate import NOT_KNOWN, Estimate, two_sided_95
 from fitamp.fitting.adequacy import judge
-from fitamp.fitting.derive import ZERO, fitted_margins, fitted_parameters, fitted_resonances, fitted_roots
+from fitamp.fitting.derive import (
+    ZERO,
+    fitted_factor_roots,
+    fitted_margins,
+    fitted_parameters,
+    fitted_range_steps,
+    fitted_roots,
+)
+from fitamp.fitting.factors import Doublet, Resonance
 from fitamp.fitting.intervals import RISE_95, estimate_by_curvature, estimate_by_profile, hull, profile
+from fitamp.fitting.orders import needs_more, with_factors
 from fitamp.fitting.result import LoopFit
 from fitamp.fitting.screen import screened
-from fitamp.fitting.search import Search, lifted, needs_resonance
+from fitamp.fitting.search import Search, lifted
 from fitamp.fitting.statements import place_of_zero, warnings_of
 from fitamp.fitting.two_pole import DelayPrior, FarPoleCurve, FarPolePrior, Pole2Prior, Solution, solution_at
 from fitamp.sweep import NoiseLevels, Sweep
@@ -102,8 +113,8 @@ def fit_sweep(
             keep_all, sweep = rest is whole, rest
         if not lag_is_known:
             solution, any_lag = search.plain_or_with_lag(solution)
-        if needs_resonance(solution):
-            solution, any_lag = search.resonant(solution, any_lag)
+        if solution.noise.relative <= HOPELESS_SCATTER and needs_more(solution):
+            solution, any_lag = with_factors(search, solution, any_lag)
     _check_likeness(sweep, solution)
     adequacy = judge(solution, sweep.freq_hz)
     # The noise comes from about as many second differences as there are points.
@@ -116,13 +127,14 @@ def fit_sweep(
         )
     covariance = solution.covariance * adequacy.inflation
     poles, zeros = fitted_roots(solution, covariance)
-    resonant_poles, resonant_zeros = fitted_resonances(solution, covariance)
+    resonant_poles, resonant_zeros = fitted_factor_roots(solution, covariance, Resonance)
+    doublet_poles, doublet_zeros = fitted_factor_roots(solution, covariance, Doublet)
     margins = fitted_margins(solution, covariance, quantile, known)
     # With priors the lag is in the estimate already; without, what may be said must hold for any.
     strict = parameters.zero_time_s
     if not lag_is_known:
         strict = _whatever_the_lag(any_lag, solution, parameters.zero_time_s, sweep, quantile)
-    return LoopFit(
+    fit = LoopFit(
         sweep=sweep,
         response=solution.model.whole_response(solution.values),
         parameters=parameters,
@@ -131,20 +143,16 @@ def fit_sweep(
         zeros=zeros,
         resonant_poles=resonant_poles,
         resonant_zeros=resonant_zeros,
+        doublet_poles=doublet_poles,
+        doublet_zeros=doublet_zeros,
+        range_steps=fitted_range_steps(solution, covariance, quantile),
         margins=margins,
         adequacy=adequacy,
-        warnings=warnings_of(
-            sweep,
-            parameters,
-            margins,
-            adequacy,
-            None if lag_is_known else strict,
-            residuals=solution.residuals,
-            resonant_poles=resonant_poles,
-        ),
+        warnings=(),
         solution=solution,
         quantile=quantile,
     )
+    return replace(fit, warnings=warnings_of(fit, None if lag_is_known else strict))
 
 
 def _whatever_the_lag(

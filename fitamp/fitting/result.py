@@ -17,9 +17,21 @@ from fitamp.sweep import NoiseLevels, Sweep
 from fitamp.transfer import Transfer
 from fitamp.units import si, si_with_error
 
-__all__ = ["FitWarning", "FittedMargins", "FittedParameters", "LoopFit", "Root", "WarningCode", "ZeroPlace", "ZeroSeen"]
+__all__ = [
+    "FitWarning",
+    "FittedMargins",
+    "FittedParameters",
+    "FittedStep",
+    "LoopFit",
+    "Root",
+    "WarningCode",
+    "ZeroPlace",
+    "ZeroSeen",
+]
 
 MODEL_NAME = "two-pole-one-zero"
+# With further roots, as vector fitting of rising order suggests them.
+RICHER_MODEL_NAME = "vector-fit"
 
 
 class ZeroPlace(StrEnum):
@@ -44,6 +56,9 @@ class WarningCode(StrEnum):
     NO_CROSSOVER = "no-crossover"
     OUTLYING_POINTS = "outlying-points"
     RESONANCE = "resonance"
+    DOUBLET = "doublet"
+    RANGE_STEP = "range-step"
+    UNSTABLE_ROOT = "unstable-root"
     DELAY_NOT_STATED = "delay-not-stated"
     DELAY_CONTRADICTED = "delay-contradicted"
     FAR_FROM_DESIGN = "far-from-design"
@@ -107,6 +122,15 @@ class Root:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class FittedStep:
+    """A receiver's change of range at `f_hz`: from there on all that was read is larger and turned by so much."""
+
+    f_hz: float
+    size_db: Estimate
+    turn_deg: Estimate
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class ZeroSeen:
     """Half plane of the zero and its distance; an open end of `ci95_hz` reaches to infinity."""
 
@@ -120,7 +144,10 @@ class LoopFit:
     """A two-pole, one-zero loop gain fitted to a sweep.
 
     response : gain and all roots at the optimum, without path delay and without what was known beforehand
-    resonant_poles, resonant_zeros : roots of resonances beside the two poles and the zero, empty where none was needed
+    resonant_poles, resonant_zeros : roots of resonances beside the two poles and the zero, empty where none was needed;
+        of each pair the upper half first
+    doublet_poles, doublet_zeros : real pole-zero pairs beside them, in the same order
+    range_steps : steps of a receiver's range that were fitted; they are the bench's and not in `response`
     solution : parameter vector, covariance and residuals, for those who derive further quantities
     quantile : Student's t by which 95 % intervals are wider than a standard error
     """
@@ -133,6 +160,9 @@ class LoopFit:
     zeros: tuple[Root, ...]
     resonant_poles: tuple[Root, ...]
     resonant_zeros: tuple[Root, ...]
+    doublet_poles: tuple[Root, ...]
+    doublet_zeros: tuple[Root, ...]
+    range_steps: tuple[FittedStep, ...]
     margins: FittedMargins
     adequacy: Adequacy
     warnings: tuple[FitWarning, ...]
@@ -147,7 +177,18 @@ class LoopFit:
     @property
     def model_name(self) -> str:
         """Name of the model in reports and JSON."""
-        return MODEL_NAME
+        return RICHER_MODEL_NAME if self.resonant_poles or self.doublet_poles else MODEL_NAME
+
+    @property
+    def named_poles(self) -> tuple[tuple[str, Root], ...]:
+        """Every pole with its name; the third is named so wherever it was fitted, in band or above."""
+        names = [f"pole {count}" for count in range(1, len(self.poles) + 1)]
+        return _named(names, self.poles, self.resonant_poles, self.doublet_poles)
+
+    @property
+    def named_zeros(self) -> tuple[tuple[str, Root], ...]:
+        """Every zero with its name."""
+        return _named(["zero"] * len(self.zeros), self.zeros, self.resonant_zeros, self.doublet_zeros)
 
     @property
     def covariance(self) -> FloatArray:
@@ -180,6 +221,13 @@ class LoopFit:
         rows += [(name, text_of(name, estimate)) for name, estimate in self.margins.items()]
         rows += [(f"warning: {warning.code.value}", warning.message) for warning in self.warnings]
         return rows
+
+
+def _named(
+    names: list[str], own: tuple[Root, ...], resonant: tuple[Root, ...], doublets: tuple[Root, ...]
+) -> tuple[tuple[str, Root], ...]:
+    all_names = [*names, *["resonance"] * len(resonant), *["doublet"] * len(doublets)]
+    return tuple(zip(all_names, (*own, *resonant, *doublets), strict=True))
 
 
 # What each quantity is called.

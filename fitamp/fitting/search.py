@@ -2,15 +2,13 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field, replace
-from itertools import product
+from dataclasses import dataclass, field
 
 import numpy as np
 
 from fitamp.arrays import FloatArray
 from fitamp.errors import FitError
 from fitamp.fitting.adequacy import judge
-from fitamp.fitting.resonance import PARAMETERS, guesses_at, peak_of
 from fitamp.fitting.start import Start, excess_delay, more_starts, starts
 from fitamp.fitting.two_pole import (
     DelayPrior,
@@ -26,18 +24,20 @@ from fitamp.noise import estimate_noise
 from fitamp.sweep import NoiseLevels, Sweep
 from fitamp.transfer import Transfer
 
-__all__ = ["Search", "lifted", "needs_resonance"]
+__all__ = [
+    "FREE_DELAY",
+    "FREE_FAR_POLE",
+    "NO_DELAY",
+    "NO_FAR_POLE",
+    "RACE_STEPS",
+    "RACE_TOLERANCE",
+    "Search",
+    "is_lag",
+    "lifted",
+]
 
 NOISE_ROUNDS = 3
 CURVE_ROUNDS = 3
-# A package has a few; more is no resonance but a model that is wrong everywhere.
-MOST_RESONANCES = 3
-# So many points that gain most by a resonance do not count for it.
-WORST = 2
-# Mean of five exponential variables that chance exceeds somewhere among 281 points once in 50 sweeps.
-STANDS_OUT = 3.6
-# Beyond what the criterion asks for: odds of e^5 and better.
-CLEARLY_BETTER = 10.0
 # To tell which start ends lowest, chi-square to seven digits is enough, and who is still far off after so many steps
 # does not win.
 RACE_TOLERANCE = 1e-7
@@ -74,9 +74,10 @@ class Search:
     guesses: tuple[Start, ...] = field(init=False)
 
     def __post_init__(self) -> None:
-        object.__setattr__(self, "guesses", starts(self._bare(), self.delay_s))
+        object.__setattr__(self, "guesses", starts(self.bare, self.delay_s))
 
-    def _bare(self) -> Sweep:
+    @property
+    def bare(self) -> Sweep:
         """The sweep without what is known."""
         if self.known is None:
             return self.sweep
@@ -87,7 +88,7 @@ class Search:
         """The first starts, and where the delay is open also those with the delay that the phase shows."""
         if not delay.sd_s:
             return self.guesses
-        bare = self._bare()
+        bare = self.bare
         seen_s = excess_delay(bare)
         offset_s = abs(seen_s - self.delay_s)
         if offset_s * self.sweep.f_max_hz < VISIBLE_TURN or offset_s > REACH_OF_PRIOR * delay.sd_s:
@@ -105,10 +106,10 @@ class Search:
             When no start converges.
         """
         model = TwoPole(time_s=self._time_s(), known=self.known, far_pole=far_pole, delay=delay, pole2=self.pole2)
-        vectors = self._vectors(model) if elsewhere else []
+        vectors = self.vectors(model) if elsewhere else []
         if also is not None:
             vectors.insert(0, lifted(also, model))
-        vectors = [vector for vector in vectors if self._is_sane(model, vector)]
+        vectors = [vector for vector in vectors if self.is_sane(model, vector)]
         ends: list[Solution] = []
         if vectors:
             # One noise for all, or their chi-squares could not be compared.
@@ -117,7 +118,7 @@ class Search:
                 solve(model, self.sweep, common, vector, tolerance=RACE_TOLERANCE, max_steps=RACE_STEPS)
                 for vector in vectors
             ]
-            ends = [end for end in ends if np.isfinite(end.optimum.chi_square) and self._is_sane(model, end.values)]
+            ends = [end for end in ends if np.isfinite(end.optimum.chi_square) and self.is_sane(model, end.values)]
         if not ends:
             raise FitError(
                 f"{self.sweep.origin.file}: no start converged to two poles and a zero; look at the sweep with "
@@ -125,10 +126,10 @@ class Search:
             )
         # By any difference: with a noise taken for too large at the start, as on exact data, all differences are small.
         winner = min(ends, key=lambda end: end.optimum.chi_square)
-        return _in_sight(self._settled(winner), self.sweep)
+        return _in_sight(self.settled(winner), self.sweep)
 
-    def _vectors(self, model: TwoPole) -> list[FloatArray]:
-        """The guesses as parameter vectors of a model without resonances."""
+    def vectors(self, model: TwoPole) -> list[FloatArray]:
+        """The guesses as parameter vectors of a model without further factors."""
         return [
             model.vector(
                 g=guess.g,
@@ -164,13 +165,13 @@ class Search:
             return plain
         ends = [plain]
         model = plain.model
-        for guess in more_starts(self._bare()):
+        for guess in more_starts(self.bare):
             vector = model.vector(g=guess.g, q=guess.q, b=guess.b, zero_time_s=guess.zero_time_s)
             end = solve(model, self.sweep, plain.noise, vector, tolerance=RACE_TOLERANCE, max_steps=RACE_STEPS)
-            if np.isfinite(end.optimum.chi_square) and self._is_sane(model, end.values):
+            if np.isfinite(end.optimum.chi_square) and self.is_sane(model, end.values):
                 ends.append(end)
         winner = min(ends, key=lambda end: end.optimum.chi_square)
-        return plain if winner is plain else _in_sight(self._settled(winner), self.sweep)
+        return plain if winner is plain else _in_sight(self.settled(winner), self.sweep)
 
     def plain_or_with_lag(self, plain: Solution) -> tuple[Solution, Solution | None]:
         """The solution `plain` without lag, or, where that is not adequate, with the simplest lag that makes it so.
@@ -184,91 +185,11 @@ class Search:
         any_lag = self._best_or_none(FREE_FAR_POLE, FREE_DELAY, also=plain)
         for far_pole, delay in ((NO_FAR_POLE, FREE_DELAY), (FREE_FAR_POLE, NO_DELAY)):
             with_lag = self._best_or_none(far_pole, delay, also=plain)
-            if with_lag is not None and judge(with_lag).adequate and _is_lag(with_lag):
+            if with_lag is not None and judge(with_lag).adequate and is_lag(with_lag):
                 return with_lag, any_lag
-        if any_lag is not None and judge(any_lag).adequate and _is_lag(any_lag):
+        if any_lag is not None and judge(any_lag).adequate and is_lag(any_lag):
             return any_lag, any_lag
         return plain, any_lag
-
-    def with_resonances(self, solution: Solution) -> Solution:
-        """The solution with as many resonances as it is better for, by the Bayesian information criterion.
-
-        G. Schwarz, Annals of Statistics 6, 1978: a parameter must lower chi-square by the logarithm of the number of
-        data. Both solutions are weighed under the noise of the richer one, which no resonance swells.
-        """
-        while len(solution.model.resonances) < MOST_RESONANCES:
-            richer = self._one_more_resonance(solution)
-            if richer is None:
-                break
-            if (
-                self._gain_without_the_worst(solution, richer)
-                < PARAMETERS * np.log(2 * len(self.sweep)) + CLEARLY_BETTER
-            ):
-                break
-            solution = richer
-            if not needs_resonance(solution):
-                break
-        return solution
-
-    def _gain_without_the_worst(self, solution: Solution, richer: Solution) -> float:
-        """What chi-square gains by the resonance where the points that gain most are left out of both.
-
-        A bad point or two must not make a resonance: a pair of roots can always be bent through them.
-        """
-        before = solve(solution.model, self.sweep, richer.noise, solution.values)
-        gains = np.abs(before.residuals) ** 2 - np.abs(richer.residuals) ** 2
-        keep = np.ones(len(gains), dtype=bool)
-        keep[np.argsort(gains)[-WORST:]] = False
-        rest = self.sweep.without(keep, "")
-        without = solve(solution.model, rest, richer.noise, solution.values)
-        return without.optimum.chi_square - float((np.abs(richer.residuals[keep]) ** 2).sum())
-
-    def resonant(self, solution: Solution, any_lag: Solution | None) -> tuple[Solution, Solution | None]:
-        """An inadequate solution with the resonances it needs, and what then holds for any lag.
-
-        Without priors (`any_lag` given) the lag may be needed as well.
-        """
-        best = self.with_resonances(solution)
-        if any_lag is None:
-            return best, None
-        if not best.model.resonances:
-            return best, any_lag
-        freed = []
-        for far_pole, delay in ((NO_FAR_POLE, FREE_DELAY), (FREE_FAR_POLE, NO_DELAY), (FREE_FAR_POLE, FREE_DELAY)):
-            model = replace(best.model, far_pole=far_pole, delay=delay)
-            freed.append(self._settled(solve(model, self.sweep, best.noise, lifted(best, model))))
-        if not judge(best).adequate:
-            best = next((lagging for lagging in freed if judge(lagging).adequate and _is_lag(lagging)), best)
-        return best, freed[-1]
-
-    def _one_more_resonance(self, solution: Solution) -> Solution | None:
-        peak_hz = peak_of(solution.residuals, self.sweep.freq_hz)
-        bases = [solution.values]
-        if not solution.model.resonances:
-            # What was fitted without the resonance may be far off because of it.
-            bases += self._vectors(solution.model)
-        ends = []
-        for base, (resonance, start) in product(bases, guesses_at(peak_hz)):
-            model = replace(solution.model, resonances=(*solution.model.resonances, resonance))
-            vector = np.concatenate([base, start])
-            end = solve(model, self.sweep, solution.noise, vector, tolerance=RACE_TOLERANCE, max_steps=RACE_STEPS)
-            if self._has_local_resonances(end):
-                ends.append(end)
-        if not ends:
-            return None
-        richer = self._settled(min(ends, key=lambda end: end.optimum.chi_square))
-        return richer if self._has_local_resonances(richer) else None
-
-    def _has_local_resonances(self, solution: Solution) -> bool:
-        model = solution.model
-        return (
-            bool(np.isfinite(solution.optimum.chi_square))
-            and self._is_sane(model, solution.values)
-            and all(
-                resonance.is_local(pair) and resonance.is_between(pair, self.sweep.f_min_hz, self.sweep.f_max_hz)
-                for resonance, pair in zip(model.resonances, model.resonance_values(solution.values), strict=True)
-            )
-        )
 
     def _best_or_none(
         self, far_pole: FarPolePrior, delay: DelayPrior, *, also: Solution, elsewhere: bool = True
@@ -278,7 +199,7 @@ class Search:
         except FitError:
             return None
 
-    def _settled(self, solution: Solution) -> Solution:
+    def settled(self, solution: Solution) -> Solution:
         """Finish what won the race: alternate noise and fit until both stand, or fit once where the noise is given."""
         for _ in range(1 if self.noise else NOISE_ROUNDS - 1):
             noise = self.noise or estimate_noise(self.sweep, solution.model.gain(solution.values, self.sweep.freq_hz))
@@ -286,7 +207,7 @@ class Search:
             if not again.optimum.converged:
                 # Down an endless valley of a parameter that the sweep does not see, seven digits have to do.
                 again = solve(solution.model, self.sweep, noise, again.values, tolerance=RACE_TOLERANCE)
-            if not (again.optimum.converged and self._is_sane(again.model, again.values)):
+            if not (again.optimum.converged and self.is_sane(again.model, again.values)):
                 break
             solution = again
         return solution
@@ -301,7 +222,7 @@ class Search:
         channels = noise.return_channel**2 + np.abs(gain * noise.error_channel) ** 2
         return float(np.median(channels + (np.abs(gain * noise.relative) ** 2 + noise.ratio**2) / through))
 
-    def _is_sane(self, model: TwoPole, values: FloatArray) -> bool:
+    def is_sane(self, model: TwoPole, values: FloatArray) -> bool:
         """Whether this can be a loop: in size, and without a far pole on the right nearer than pole 2.
 
         A runaway gain makes its own variance huge and its misfit small; such a far pole only cancels a zero that is not
@@ -317,12 +238,6 @@ class Search:
         return float(np.clip(self.guesses[0].b, 0.01 * top, 1 / (2 * np.pi * self.sweep.f_min_hz)))
 
 
-def needs_resonance(solution: Solution) -> bool:
-    """Whether the residuals are inadequate, or stand out over a few neighbours, as of a resonance taken for noise."""
-    energy = np.convolve(np.abs(solution.residuals) ** 2 / 2, np.full(5, 0.2), mode="valid")
-    return not judge(solution).adequate or bool(energy.max(initial=0.0) > STANDS_OUT)
-
-
 def lifted(solution: Solution, model: TwoPole) -> FloatArray:
     """The parameter vector of a solution for a model with more freedom and the same scale of time.
 
@@ -330,8 +245,8 @@ def lifted(solution: Solution, model: TwoPole) -> FloatArray:
     """
     *_, far_pole_s, delay_s = solution.model.physical(solution.values)
     lags = {"far_pole": far_pole_s / model.time_s, "delay": delay_s / model.time_s}
-    pairs = np.concatenate([[], *solution.model.resonance_values(solution.values)])
-    return np.array([*solution.values[:4], *(lags[name] for name in model.names[4:] if name in lags), *pairs])
+    further = np.concatenate([[], *solution.model.factor_values(solution.values)])
+    return np.array([*solution.values[:4], *(lags[name] for name in model.names[4:] if name in lags), *further])
 
 
 def _in_sight(solution: Solution, sweep: Sweep) -> Solution:
@@ -354,7 +269,7 @@ def _in_sight(solution: Solution, sweep: Sweep) -> Solution:
     return solution
 
 
-def _is_lag(solution: Solution) -> bool:
+def is_lag(solution: Solution) -> bool:
     """Whether the fitted third pole and delay are lags, or zero within their errors."""
     model, values = solution.model, solution.values
     stderr: FloatArray = np.sqrt(np.diag(solution.covariance))

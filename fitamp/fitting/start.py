@@ -80,8 +80,7 @@ def more_starts(sweep: Sweep) -> tuple[Start, ...]:
 def vector_fit_roots(sweep: Sweep, real: int, pairs: int) -> tuple[ComplexArray, ComplexArray] | None:
     """Poles and zeros of the loop gain (rad/s) from a pair fit with so many real poles and complex pole pairs.
 
-    None where the fit failed. They are guesses: unweighted, some of them fitted to noise, and unstable closed-loop poles
-    mirrored.
+    None where the fit failed. They are guesses: unweighted, some fitted to noise, unstable closed-loop poles mirrored.
     """
     model = _fit_pair(sweep, real, pairs)
     if model is None:

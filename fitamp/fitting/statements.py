@@ -13,6 +13,7 @@ from fitamp.fitting.result import (
     FittedMargins,
     FittedParameters,
     FitWarning,
+    LoopFit,
     Root,
     WarningCode,
     ZeroPlace,
@@ -86,17 +87,12 @@ def _frequency_interval(zero_time: Estimate) -> tuple[float | None, float | None
     return nearest, farthest
 
 
-def warnings_of(
-    sweep: Sweep,
-    parameters: FittedParameters,
-    margins: FittedMargins,
-    adequacy: Adequacy,
-    with_any_lag: Estimate | None,
-    *,
-    residuals: ComplexArray,
-    resonant_poles: tuple[Root, ...],
-) -> tuple[FitWarning, ...]:
-    """Everything a reader has to know before leaning on the numbers."""
+def warnings_of(fit: LoopFit, with_any_lag: Estimate | None) -> tuple[FitWarning, ...]:
+    """Everything a reader has to know before leaning on the numbers.
+
+    with_any_lag : zero time with third pole and delay free; None where priors say what they are
+    """
+    sweep, parameters, margins, adequacy = fit.sweep, fit.parameters, fit.margins, fit.adequacy
     found: list[FitWarning] = []
 
     def warn(code: WarningCode, message: str) -> None:
@@ -108,8 +104,9 @@ def warnings_of(
             f"two poles and a zero are not the whole story: {adequacy.sentence}; intervals are widened "
             f"{math.sqrt(adequacy.inflation):.2g} times and may still be too narrow",
         )
-    found.extend(_outlying(sweep, residuals))
-    found.extend(_resonances(resonant_poles))
+    found.extend(_outlying(sweep, fit.residuals()))
+    found.extend(further_roots(fit))
+    found.extend(_range_steps(fit))
     if parameters.pole1_hz.known is not Known.MEASURED:
         warn(
             WarningCode.POLE1_BELOW_BAND,
@@ -154,17 +151,49 @@ def warnings_of(
     return tuple(found)
 
 
-def _resonances(poles: tuple[Root, ...]) -> list[FitWarning]:
-    """One warning a resonance, which has its pole pair in `poles`."""
+def further_roots(fit: LoopFit) -> list[FitWarning]:
+    """A warning for every resonance and doublet, and for every unstable pole."""
     found = []
-    for pole in (pole for pole in poles if pole.value_hz.imag > 0):
+    for pole in (pole for pole in fit.resonant_poles if pole.value_hz.imag > 0):
         quality = abs(pole.value_hz) / abs(2 * pole.value_hz.real)
-        place = si(abs(pole.value_hz), "Hz")
         message = (
-            f"two poles and a zero were not enough: a resonance at {place} (Q = {quality:.2g}) was fitted beside them; "
-            "look for it in package, supply or fixture"
+            f"two poles and a zero were not enough: a resonance at {si(abs(pole.value_hz), 'Hz')} (Q = {quality:.2g}) "
+            "was fitted beside them; look for it in package, supply or fixture"
         )
         found.append(FitWarning(code=WarningCode.RESONANCE, message=message))
+    for pole, zero in zip(fit.doublet_poles, fit.doublet_zeros, strict=True):
+        message = (
+            f"two poles and a zero were not enough: a pole at {si(abs(pole.value_hz), 'Hz')} with a zero at "
+            f"{si(abs(zero.value_hz), 'Hz')} was fitted beside them, as of a current mirror or a second path; without "
+            "a design file which of the poles is pole 2 goes by nearness"
+        )
+        found.append(FitWarning(code=WarningCode.DOUBLET, message=message))
+    for name, pole in fit.named_poles:
+        if pole.value_hz.real > 0 and pole.value_hz.imag >= 0:
+            message = (
+                f"unstable: {name} at {si(pole.value_hz.real, 'Hz')} ± j {si(pole.value_hz.imag, 'Hz')} lies in the "
+                f"right half plane{_in_doubt(pole)}; the opened loop would run away by itself: check sign and set-up"
+            )
+            found.append(FitWarning(code=WarningCode.UNSTABLE_ROOT, message=message))
+    return found
+
+
+def _in_doubt(root: Root) -> str:
+    if root.covariance is None or root.value_hz.real > 2 * math.sqrt(float(root.covariance[0, 0])):
+        return ""
+    return ", though not beyond its error"
+
+
+def _range_steps(fit: LoopFit) -> list[FitWarning]:
+    found = []
+    for step in fit.range_steps:
+        message = (
+            f"at {si(step.f_hz, 'Hz')} all that was read jumps by {step.size_db.value:+.3f} ± "
+            f"{step.size_db.stderr:.3f} dB and {step.turn_deg.value:+.2f} ± {step.turn_deg.stderr:.2f}°, as where a "
+            "receiver changes its range; the jump was fitted, the points below it are taken as right: fix the range, "
+            "or calibrate"
+        )
+        found.append(FitWarning(code=WarningCode.RANGE_STEP, message=message))
     return found
 
 

@@ -12,12 +12,13 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 
 from fitamp.arrays import ComplexArray, FloatArray, frozen_float
+from fitamp.fitting.factors import Factor
 from fitamp.fitting.leastsq import MAX_STEPS, TOLERANCE, Optimum, covariance_of, interleaved, minimise
-from fitamp.fitting.resonance import PARAMETERS, Resonance
 from fitamp.sweep import NoiseLevels, Sweep
 from fitamp.transfer import Transfer
 
@@ -84,7 +85,7 @@ class TwoPole:
     """The model's fixed side: what is known, what is free, and the time by which τz, τ3 and τd are scaled.
 
     Parameter vector, in the order of `names`: ln g, ln q, ln b, τz/time_s, then τ3/time_s and τd/time_s where free,
-    then four numbers for each resonance.
+    then the numbers of each further factor.
     """
 
     time_s: float
@@ -92,19 +93,20 @@ class TwoPole:
     far_pole: FarPolePrior = FarPolePrior()
     delay: DelayPrior = DelayPrior()
     pole2: Pole2Prior | None = None
-    resonances: tuple[Resonance, ...] = ()
+    factors: tuple[Factor, ...] = ()
 
     @property
     def names(self) -> tuple[str, ...]:
         """Names of the free parameters, in order."""
         extra = (("far_pole",) if self.far_pole.sd_s else ()) + (("delay",) if self.delay.sd_s else ())
-        pairs = tuple(f"resonance{i}_{part}" for i in range(len(self.resonances)) for part in ("n1", "n2", "d1", "d2"))
-        return ("ln_g", "ln_q", "ln_b", "zero", *extra, *pairs)
+        further = tuple(f"factor{i}_{part}" for i, factor in enumerate(self.factors) for part in factor.parts)
+        return ("ln_g", "ln_q", "ln_b", "zero", *extra, *further)
 
-    def resonance_values(self, values: FloatArray) -> tuple[FloatArray, ...]:
-        """The part of the parameter vector that belongs to each resonance, shape (4,)."""
-        first = len(values) - PARAMETERS * len(self.resonances)
-        return tuple(values[first + PARAMETERS * i : first + PARAMETERS * (i + 1)] for i in range(len(self.resonances)))
+    def factor_values(self, values: FloatArray) -> tuple[FloatArray, ...]:
+        """The part of the parameter vector that belongs to each further factor."""
+        sizes = [len(factor.parts) for factor in self.factors]
+        ends = np.cumsum([len(values) - sum(sizes), *sizes])
+        return tuple(values[first:end] for first, end in pairwise(ends))
 
     def physical(self, values: FloatArray) -> tuple[float, float, float, float, float, float]:
         """(g, q, b, τz, τ3, τd) in SI units of a parameter vector."""
@@ -147,9 +149,9 @@ class TwoPole:
         if self.known is not None:
             outer = outer * self.known.evaluate(freq_hz)
         log_slopes: list[ComplexArray] = []
-        for resonance, pair in zip(self.resonances, self.resonance_values(values), strict=True):
-            factor, slopes = resonance.factor_and_derivatives(pair, s)
-            outer = outer * factor
+        for factor, own in zip(self.factors, self.factor_values(values), strict=True):
+            times, slopes = factor.factor_and_derivatives(own, s)
+            outer = outer * times
             log_slopes.extend(slopes.T)
         gain = outer * (1 + s * zero_time_s)
         columns = [
@@ -198,10 +200,10 @@ class TwoPole:
         return Transfer.from_polynomials(numerator, denominator)
 
     def whole_response(self, values: FloatArray) -> Transfer:
-        """`response` with the resonances' roots."""
+        """`response` with the roots of all further factors."""
         whole = self.response(values)
-        for resonance, pair in zip(self.resonances, self.resonance_values(values), strict=True):
-            poles_hz, zeros_hz = resonance.roots_hz(pair)
+        for factor, own in zip(self.factors, self.factor_values(values), strict=True):
+            poles_hz, zeros_hz = factor.roots_hz(own)
             whole = whole.cascade(Transfer(dc_gain=1.0, poles_hz=poles_hz, zeros_hz=zeros_hz))
         return whole
 

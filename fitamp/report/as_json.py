@@ -34,9 +34,10 @@ def fit_as_dict(fit: LoopFit) -> dict[str, Any]:
         "sweep": _sweep(fit.sweep),
         "model": {
             "name": fit.model_name,
-            "poles": len(fit.poles) + len(fit.resonant_poles),
-            "zeros": len(fit.zeros) + len(fit.resonant_zeros),
+            "poles": len(fit.named_poles),
+            "zeros": len(fit.named_zeros),
             "resonances": len(fit.resonant_poles) // 2,
+            "doublets": len(fit.doublet_poles),
             "adequate": fit.adequacy.adequate,
             "reduced_chi_square": _finite(fit.adequacy.reduced_chi_square),
             "residuals": fit.adequacy.sentence,
@@ -49,8 +50,12 @@ def fit_as_dict(fit: LoopFit) -> dict[str, Any]:
             "frequency_hz": _finite(fit.zero.frequency_hz),
             "ci95_hz": [_finite(end) for end in fit.zero.ci95_hz],
         },
-        "poles": [_root(root) for root in (*fit.poles, *fit.resonant_poles)],
-        "zeros": [_root(root) for root in (*fit.zeros, *fit.resonant_zeros)],
+        "poles": [_root(name, root) for name, root in fit.named_poles],
+        "zeros": [_root(name, root) for name, root in fit.named_zeros],
+        "range_steps": [
+            {"f_hz": step.f_hz, "size_db": _estimate(step.size_db), "turn_deg": _estimate(step.turn_deg)}
+            for step in fit.range_steps
+        ],
         "margins": {name: _estimate(estimate) for name, estimate in fit.margins.items()},
         "warnings": [
             *caution_records(fit.sweep),
@@ -152,8 +157,15 @@ def _estimate(estimate: Estimate) -> dict[str, Any]:
     }
 
 
-def _root(root: Root) -> dict[str, Any]:
-    return {"re_hz": root.value_hz.real, "im_hz": root.value_hz.imag}
+def _root(name: str, root: Root) -> dict[str, Any]:
+    errors = (None, None) if root.covariance is None else [math.sqrt(float(root.covariance[i, i])) for i in range(2)]
+    return {
+        "name": name,
+        "re_hz": root.value_hz.real,
+        "im_hz": root.value_hz.imag,
+        "re_stderr_hz": errors[0],
+        "im_stderr_hz": errors[1],
+    }
 
 
 def _finite(value: float | None) -> float | None:

@@ -12,9 +12,10 @@ from typing import TYPE_CHECKING
 
 from fitamp.comparison import Comparison, Row
 from fitamp.estimate import Estimate
-from fitamp.fitting import FitWarning, LoopFit, Root
+from fitamp.fitting import FitWarning, LoopFit
 from fitamp.fitting.result import LABELS, text_of, unit_of
 from fitamp.report.conditions import cautions, conditions
+from fitamp.report.further import further_sentences, model_in_words
 from fitamp.sweep import NoiseLevels, Sweep
 from fitamp.units import si, si_with_error, to_db
 
@@ -63,12 +64,13 @@ def fit_text(fit: LoopFit) -> str:
     ]
     _print_table(console, printable(fit.sweep.origin.file), ("quantity", "value ± 1 σ", "95 % interval", "known"), rows)
     _complex_pair(console, fit)
-    _resonances(console, fit)
+    for sentence in further_sentences(fit):
+        _say(console, sentence)
     _say(console, f"zero: {zero_sentence(fit)}")
     _margins(console, fit)
     _say(
         console,
-        f"model: two poles, one zero{_and_resonances(fit)}; {fit.adequacy.sentence} (reduced chi-square "
+        f"model: {model_in_words(fit)}; {fit.adequacy.sentence} (reduced chi-square "
         f"{fit.adequacy.reduced_chi_square:.3g})",
     )
     _say(console, noise_sentence(fit))
@@ -96,7 +98,8 @@ def comparison_text(comparison: Comparison) -> str:
     _print_table(console, title, headings, _comparison_rows(comparison.rows), numbers=True)
     _limits_kept(console, comparison)
     _complex_pair(console, comparison.fit)
-    _resonances(console, comparison.fit)
+    for sentence in further_sentences(comparison.fit):
+        _say(console, sentence)
     _margins(console, comparison.fit, rows=("overshoot", "settling_s"))
     _say(console, f"lag: {lag_sentence(comparison.fit)}")
     _say(
@@ -122,23 +125,6 @@ def _complex_pair(console: Console, fit: LoopFit) -> None:
             _say(console, f"poles: a complex pair at {real} ± j {imaginary} (Q = {quality:.3g}); pole 1 is pole 2")
 
 
-def _resonances(console: Console, fit: LoopFit) -> None:
-    for pole, zero in zip(fit.resonant_poles[::2], fit.resonant_zeros[::2], strict=True):
-        near = si(abs(zero.value_hz), "Hz", digits=6)
-        size = si_with_error(abs(pole.value_hz), _distance_error(pole), "Hz")
-        quality = abs(pole.value_hz) / abs(2 * pole.value_hz.real)
-        _say(console, f"resonance: poles at {size} (Q = {quality:.3g}), zeros at {near}")
-
-
-def _distance_error(root: Root) -> float | None:
-    """Standard error of a root's distance from the origin."""
-    if root.covariance is None:
-        return None
-    direction = (root.value_hz.real / abs(root.value_hz), root.value_hz.imag / abs(root.value_hz))
-    variance = sum(direction[i] * direction[j] * float(root.covariance[i, j]) for i in range(2) for j in range(2))
-    return math.sqrt(max(variance, 0.0))
-
-
 def _limits_kept(console: Console, comparison: Comparison) -> None:
     """How many of the stated limits are kept, and which are not."""
     stated = [row for row in comparison.rows if row.quantity != "zero_time_s" and (row.low, row.high) != (None, None)]
@@ -153,11 +139,6 @@ def _limits_kept(console: Console, comparison: Comparison) -> None:
     if open_rows:
         parts.append(f"not decided: {', '.join(open_rows)}")
     _say(console, f"limits beside the zero's: {'; '.join(parts)}")
-
-
-def _and_resonances(fit: LoopFit) -> str:
-    count = len(fit.resonant_poles) // 2
-    return {0: "", 1: " and a resonance"}.get(count, f" and {count} resonances")
 
 
 def lag_sentence(fit: LoopFit) -> str:

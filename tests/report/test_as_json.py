@@ -21,7 +21,19 @@ MODEL = {"name", "poles", "zeros", "adequate", "reduced_chi_square", "misfit_hz"
 NOISE = {"error_channel", "return_channel", "relative", "source"}
 PARAMETERS = {"dc_gain", "gain_bandwidth_hz", "pole1_hz", "pole2_hz", "zero_time_s", "delay_s"}
 MARGINS = {"crossover_hz", "phase_margin_deg", "gain_margin_db"}
-FIT = {"schema", "sweep", "model", "noise", "parameters", "zero", "poles", "zeros", "margins", "warnings"}
+FIT = {
+    "schema",
+    "sweep",
+    "model",
+    "noise",
+    "parameters",
+    "zero",
+    "poles",
+    "zeros",
+    "margins",
+    "warnings",
+    "range_steps",
+}
 COMPARE = FIT | {"comparison", "verdict", "advice"}
 ROW = {
     "quantity",
