@@ -18,7 +18,7 @@ if TYPE_CHECKING:
     from fitamp.conditioning.repeats import average_repeats
     from fitamp.conditioning.through import ThroughDelay, divided_by_through, through_delay
     from fitamp.design import Design, HalfPlane, read_design, write_design
-    from fitamp.elements import Condition, ElementEstimate, estimate_elements
+    from fitamp.elements import Condition, ElementEstimate, blame, estimate_elements, predict, read_steps
     from fitamp.errors import DesignError, FitampError, FitError, InputError, SweepError, UsageError
     from fitamp.estimate import Estimate, Known
     from fitamp.fitting import DelayPrior, FarPolePrior, LoopFit, ZeroPlace, fit_sweep
@@ -57,6 +57,7 @@ _HOME = {
     "UsageError": "errors",
     "ZeroPlace": "fitting",
     "average_repeats": "conditioning.repeats",
+    "blame": "elements",
     "closed_loop_step": "margins",
     "compare": "comparison",
     "divided_by_through": "conditioning.through",
@@ -64,7 +65,9 @@ _HOME = {
     "estimate_noise": "noise",
     "fit_sweep": "fitting",
     "loop_margins": "margins:margins",
+    "predict": "elements",
     "read_design": "design",
+    "read_steps": "elements",
     "read_sweep": "importers",
     "simulate_bench": "noise",
     "through_delay": "conditioning.through",
@@ -99,6 +102,7 @@ __all__ = [
     "UsageError",
     "ZeroPlace",
     "average_repeats",
+    "blame",
     "closed_loop_step",
     "compare",
     "divided_by_through",
@@ -106,7 +110,9 @@ __all__ = [
     "estimate_noise",
     "fit_sweep",
     "loop_margins",
+    "predict",
     "read_design",
+    "read_steps",
     "read_sweep",
     "simulate_bench",
     "through_delay",

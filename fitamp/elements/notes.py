@@ -137,10 +137,11 @@ def _spreads_off(one: EstimatedElement) -> float | None:
 def _on_bench(estimate: ElementEstimate) -> Iterator[ElementNote]:
     delay = next((one for one in estimate.bench if one.name == "bench_delay_s"), None)
     if delay is not None and delay.designed is None:
+        value = delay.estimate.value
+        found = "cannot be told from these sweeps" if value is None else f"was fitted, as {si(value, 's', digits=3)}"
         yield ElementNote(
             code=ElementNoteCode.DELAY_NOT_STATED,
-            message="the bench's delay is not stated; it was fitted, as "
-            f"{si(delay.estimate.value, 's', digits=3)}, and makes the rest less certain",
+            message=f"the bench's delay is not stated; it {found}, and makes the rest less certain",
         )
     temperatures = [condition.temp_c for condition in estimate.conditions if condition.temp_c is not None]
     if temperatures and max(temperatures) - min(temperatures) > SAME_TEMPERATURE:

@@ -10,7 +10,7 @@ import numpy as np
 from fitamp.arrays import FloatArray
 from fitamp.elements.circuit import BENCH_DELAY, Circuit
 from fitamp.elements.residual import Measured
-from fitamp.elements.solving import CircuitSolution, least_resistor_ohm, solve
+from fitamp.elements.solving import CircuitSolution, least_resistor_ohm, solve, solve_free
 from fitamp.errors import FitError
 from fitamp.fitting import LoopFit
 from fitamp.fitting.intervals import RISE_95
@@ -30,6 +30,8 @@ SAME_START = 0.15
 APART_SIGMA = 3.0
 # and by this share at least: what differs by less is one place, reached to within the race's tolerance.
 APART_LEAST = 1e-3
+# By so much chi-square rises between two valleys at the least.
+BARRIER = 1.0
 # No circuit of lumped elements is right to better than this share of the loop gain, whatever a simulator exports.
 RELATIVE_FLOOR = 1e-6
 FLOORED = "floor of a lumped circuit"
@@ -76,7 +78,9 @@ def search(
         # Under the same weights, or the chi-squares could not be compared.
         other = solve(circuit, best.sweeps, end.values)
         if other.optimum.chi_square < best.optimum.chi_square + RISE_95 and is_apart(best, other):
-            return Found(best=best, other=other)
+            if has_barrier(best, other):
+                return Found(best=best, other=other)
+            best = min(best, other, key=lambda solution: solution.optimum.chi_square)
     return Found(best=best, other=None)
 
 
@@ -85,6 +89,19 @@ def is_apart(one: CircuitSolution, other: CircuitSolution) -> bool:
     sd = np.sqrt(np.minimum(np.diag(one.covariance), np.diag(other.covariance)))
     distance = np.abs(one.values - other.values)
     return bool((distance > np.maximum(APART_SIGMA * sd, APART_LEAST)).any())
+
+
+def has_barrier(one: CircuitSolution, other: CircuitSolution) -> bool:
+    """Whether chi-square rises between two ends: the number that differs most is held half-way, the others refitted.
+
+    Else both lie in one long valley, which the errors hold, and not in two.
+    """
+    sd = np.sqrt(np.minimum(np.diag(one.covariance), np.diag(other.covariance)))
+    index = int(np.argmax(np.abs(one.values - other.values) / sd))
+    middle = (one.values + other.values) / 2
+    held = solve_free(one.circuit, one.sweeps, middle, hold={index: float(middle[index])})
+    higher = max(one.optimum.chi_square, other.optimum.chi_square)
+    return held.optimum.chi_square > higher + BARRIER
 
 
 def _starts(circuit: Circuit, sweeps: Sequence[Measured], fits: Sequence[LoopFit]) -> list[FloatArray]:

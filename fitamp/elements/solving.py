@@ -10,10 +10,15 @@ import numpy as np
 from fitamp.arrays import ComplexArray, FloatArray, frozen_float
 from fitamp.elements.circuit import Circuit
 from fitamp.elements.residual import Measured, loop_equation, stacked
-from fitamp.fitting.leastsq import MAX_STEPS, TOLERANCE, Optimum, covariance_of, minimise
+from fitamp.fitting.leastsq import Optimum, covariance_of, minimise
 from fitamp.sweep import NoiseLevels
 
 __all__ = ["CircuitSolution", "SweepResiduals", "least_resistor_ohm", "residuals_at", "solve", "solve_free"]
+
+# Relative, on chi-square and vector: six digits beyond what noise leaves of either.
+TOLERANCE = 1e-12
+# Sweeps that contradict one another go down a slow valley; what is not settled by then is as good as it gets.
+MAX_STEPS = 300
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
