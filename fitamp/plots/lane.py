@@ -97,7 +97,8 @@ def _spots(marks: tuple[Mark, ...], low_hz: float, high_hz: float) -> list[tuple
         spots.append((_Spot(marks=below, at_hz=0.0, edge="<", words=_far_words(below)), 0.0))
     for mark in inside:
         at_hz = _distance_hz(mark)
-        spots.append((_Spot(marks=(mark,), at_hz=at_hz, edge="", words=mark.label), _share(at_hz, low_hz, high_hz)))
+        words = mark.sentence if mark.value_hz is None else mark.label
+        spots.append((_Spot(marks=(mark,), at_hz=at_hz, edge="", words=words), _share(at_hz, low_hz, high_hz)))
     if above:
         spots.append((_Spot(marks=above, at_hz=math.inf, edge=">", words=_far_words(above)), 1.0))
     return spots
@@ -149,7 +150,7 @@ def draw_lane(
     for row, y in zip(rows, lines, strict=True):
         _draw_row(lane, y, row, width_in)
     for named in next(row for row in rows if row.name == "measured").named:
-        if not named.spot.edge:
+        if not named.spot.edge and named.spot.marks[0].value_hz is not None:
             for axes in panels:
                 axes.axvline(
                     named.spot.at_hz, color="#888888", linestyle=(0, (1, 3)), linewidth=0.9, zorder=1, gid=ROOT_GUIDE
@@ -171,9 +172,11 @@ def _far_word(mark: Mark) -> str:
 
 
 def _distance_hz(mark: Mark) -> float:
-    """Distance from the origin. Without a value pole 1 is below the band, and all else above it."""
+    """Distance from the origin; of a region with two ends its middle. Else pole 1 is below the band, others above."""
     if mark.value_hz is not None:
         return abs(mark.value_hz)
+    if len(mark.regions_hz) == 1 and all(end and math.isfinite(end) for end in mark.regions_hz[0]):
+        return math.sqrt(mark.regions_hz[0][0] * mark.regions_hz[0][1])
     return 0.0 if mark.name == "pole 1" else math.inf
 
 
@@ -203,7 +206,8 @@ def _draw_row(lane: Axes, y: float, row: LaneRow, width_in: float) -> None:
             names = ", ".join(mark.name for mark in spot.marks)
             _draw_symbol(lane, row, (low * 10 ** (named.at_in / scale), y), spot.edge, names)
         else:
-            for mark in spot.marks:
+            # Of a root without a value there is only the region.
+            for mark in (mark for mark in spot.marks if mark.value_hz is not None):
                 at_hz = spot.at_hz if len(spot.marks) == 1 else _distance_hz(mark)
                 _draw_symbol(lane, row, (at_hz, y), "o" if mark.is_zero else "x", mark.name)
         lane.text(
