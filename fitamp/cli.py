@@ -14,7 +14,7 @@ from collections.abc import Callable, Sequence
 from typing import NoReturn
 
 from fitamp import __version__
-from fitamp.errors import FitampError, UsageError
+from fitamp.errors import FitampError, InputError, UsageError
 
 __all__ = ["build_parser", "main", "run"]
 
@@ -63,7 +63,9 @@ def build_parser() -> argparse.ArgumentParser:
     commands = parser.add_subparsers(dest="command", metavar="COMMAND", required=True, parser_class=_Parser)
 
     read = commands.add_parser("read", help="show what is understood of sweep files")
-    read.add_argument("files", nargs="+", metavar="FILE", help="CSV or Touchstone sweep")
+    read.add_argument(
+        "files", nargs="+", metavar="FILE", help="CSV or Touchstone sweep, also as .gz; - is standard input"
+    )
     _reading_options(read)
     _output_options(read, folder=False)
     read.set_defaults(action="read")
@@ -101,6 +103,7 @@ def _reading_options(parser: argparse.ArgumentParser) -> None:
     group.add_argument("--columns", metavar="SPEC", help=COLUMNS_HELP)
     group.add_argument("--trace", metavar="Sij", help="trace of a Touchstone file (default S11 of one port, else S21)")
     group.add_argument("--sign", choices=("as-read", "inverted"), help="sign of the read-out, where it is not plain")
+    group.add_argument("--sweep", type=_count, metavar="N", help="which sweep of a CSV that holds several, from 1")
     group.add_argument(
         "--repeats",
         action="store_true",
@@ -130,6 +133,12 @@ def _output_options(parser: argparse.ArgumentParser, *, folder: bool) -> None:
     group.add_argument("--force", action="store_true", help="write over existing output")
 
 
+def _count(text: str) -> int:
+    if not (text.isascii() and text.isdigit() and 0 < len(text) < 10 and int(text) > 0):
+        raise argparse.ArgumentTypeError(f"{text!r} is not a whole number from 1")
+    return int(text)
+
+
 def _name(text: str) -> str:
     if not text.strip():
         raise argparse.ArgumentTypeError("the name is empty")
@@ -139,11 +148,14 @@ def _name(text: str) -> str:
 def main(argv: Sequence[str] | None = None) -> int:
     """Run a command and return its exit code."""
     words = sys.argv[1:] if argv is None else argv
+    shows_place = False
     try:
         args = build_parser().parse_args(words)
+        shows_place = args.action == "read"
         return _action(args.action)(args)
     except FitampError as error:
-        return _fail(str(error), error.exit_code, words)
+        excerpt = error.excerpt if shows_place and isinstance(error, InputError) else ()
+        return _fail(str(error), error.exit_code, words, excerpt)
     except KeyboardInterrupt:
         return _fail("interrupted; nothing half-written is left", EXIT_INTERRUPTED, words)
 
@@ -166,10 +178,13 @@ def run() -> NoReturn:
     sys.exit(code)
 
 
-def _fail(message: str, exit_code: int, words: Sequence[str]) -> int:
-    """Say what went wrong: one line on stderr, and with ``--json -`` an object on stdout."""
+def _fail(message: str, exit_code: int, words: Sequence[str], excerpt: Sequence[str] = ()) -> int:
+    """Say what went wrong: one line on stderr, with the place in the file under it where `excerpt` shows it.
+
+    With ``--json -`` there is an object on stdout, too.
+    """
     line = _one_line(message)
-    print(f"fitamp: {line}", file=sys.stderr)
+    print("\n".join([f"fitamp: {line}", *excerpt]), file=sys.stderr)
     if _wants_json_printed(words):
         error = {"message": line, "exit_code": exit_code}
         print(json.dumps({"schema": "fitamp/error/1", "error": error}, indent=2))

@@ -37,6 +37,7 @@ def read(args: argparse.Namespace) -> int:
     _refuse_early(args)
     sweeps: list[Sweep] = []
     errors: list[dict[str, str]] = []
+    places: list[tuple[str, ...]] = []
     reading = _reading(args)
     if reading.are_repeats:
         average = average_repeats(reading.sweeps(args.files))
@@ -51,8 +52,9 @@ def read(args: argparse.Namespace) -> int:
             if len(args.files) == 1:
                 raise
             errors.append({"file": file, "message": printable(str(error))})
-    for bad in errors:
-        print(f"fitamp: {bad['message']}", file=sys.stderr)
+            places.append(error.excerpt)
+    for bad, place in zip(errors, places, strict=True):
+        print("\n".join([f"fitamp: {bad['message']}", *place]), file=sys.stderr)
     code = InputError.exit_code if errors else 0
     record: dict[str, Any] = {"schema": "fitamp/read/1"}
     record |= {"sweeps": [sweep_as_dict(sweep) for sweep in sweeps], "errors": errors}
@@ -150,7 +152,7 @@ def _examples(given: str | None) -> Path:
 
 def _reading(args: argparse.Namespace) -> Reading:
     sign = Sign(args.sign) if args.sign else None
-    return Reading(columns=args.columns, trace=args.trace, sign=sign, are_repeats=args.repeats)
+    return Reading(columns=args.columns, trace=args.trace, sign=sign, are_repeats=args.repeats, sweep=args.sweep)
 
 
 def _measured(args: argparse.Namespace) -> Measured:

@@ -27,12 +27,23 @@ CLEARLY = 3.0
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Reading:
-    """How files are read: the options that `read_sweep` takes, and whether all sweeps are repeats of one."""
+    """How files are read: the options that `read_sweep` takes, and whether all sweeps are repeats of one.
+
+    Raises
+    ------
+    UsageError
+        When one sweep of a file is chosen and all are to be repeats.
+    """
 
     columns: str | None = None
     trace: str | None = None
     sign: Sign | None = None
     are_repeats: bool = False
+    sweep: int | None = None
+
+    def __post_init__(self) -> None:
+        if self.are_repeats and self.sweep is not None:
+            raise UsageError("--sweep chooses one sweep of a file, --repeats takes all of them; give one of the two")
 
     def sweeps(self, files: Sequence[str]) -> tuple[Sweep, ...]:
         """The sweeps of all files, in their order; of a file with several, all are taken as repeats only."""
@@ -42,7 +53,9 @@ class Reading:
                 for file in files
                 for sweep in read_sweeps(file, columns=self.columns, trace=self.trace, sign=self.sign)
             )
-        return tuple(read_sweep(file, columns=self.columns, trace=self.trace, sign=self.sign) for file in files)
+        return tuple(
+            read_sweep(file, columns=self.columns, trace=self.trace, sign=self.sign, sweep=self.sweep) for file in files
+        )
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -123,7 +136,7 @@ def measured(
         return Measured(
             sweep=average_repeats(reading.sweeps(files), noise=levels, keep_all=keep_all), delay=stated, through=None
         )
-    found = through_delay(replace(reading, sign=Sign.UNKNOWN, are_repeats=False).sweeps([through])[0])
+    found = through_delay(replace(reading, sign=Sign.UNKNOWN, are_repeats=False, sweep=None).sweeps([through])[0])
     sweep = average_repeats(reading.sweeps(files), noise=levels, keep_all=keep_all)
     return _with_measured_delay(sweep, found)
 
@@ -138,7 +151,9 @@ def _with_measured_delay(sweep: Sweep, through: ThroughDelay) -> Measured:
     if delay_s < 0:
         turn = np.exp(2j * np.pi * sweep.freq_hz * delay_s)
         left_out = tuple(
-            replace(point, gain=complex(point.gain * np.exp(2j * np.pi * point.f_hz * delay_s)))
+            point
+            if point.gain is None
+            else replace(point, gain=complex(point.gain * np.exp(2j * np.pi * point.f_hz * delay_s)))
             for point in sweep.left_out
         )
         sweep = replace(sweep, gain=sweep.gain * turn, left_out=left_out)

@@ -42,14 +42,16 @@ def called(capsys: Captured, *arguments: str | Path) -> tuple[int, str, str]:
 
 
 def refused(capsys: Captured, code: int, *arguments: str | Path) -> str:
-    """The one line of a command that fails with `code` and prints nothing else."""
+    """The one line of a command that fails with `code` and prints nothing else, but the place if it is `read`."""
     found, out, err = called(capsys, *arguments)
     assert found == code
     assert out == ""
     assert err.startswith("fitamp: ")
     assert err.endswith("\n")
-    assert err.count("\n") == 1
-    return err
+    line, *place = err.splitlines(keepends=True)
+    assert len(place) in ((0, 2) if arguments[:1] == ("read",) else (0,))
+    assert all(text.startswith("    ") for text in place)
+    return line
 
 
 def names_in(folder: Path) -> set[str]:
@@ -201,9 +203,9 @@ def test_read_shows_the_good_files_and_a_line_for_each_bad_one(capsys: Captured,
     code, out, err = called(capsys, "read", PART_A, bad, missing, PART_B)
     assert code == 3
     assert out.index(PART_A.name) < out.index(PART_B.name)
-    lines = err.splitlines()
+    lines = [line for line in err.splitlines() if line.startswith("fitamp: ")]
     assert [str(path) in line for path, line in zip((bad, missing), lines, strict=True)] == [True, True]
-    assert lines[0].startswith("fitamp: ")
+    assert err.splitlines()[1:3] == ["    3 | 20,OVL,0", "      |    ^^^"]
 
     code, out, _ = called(capsys, "read", PART_A, bad, missing, "--json", "-")
     record = json.loads(out)
@@ -212,6 +214,34 @@ def test_read_shows_the_good_files_and_a_line_for_each_bad_one(capsys: Captured,
     assert [error["file"] for error in record["errors"]] == [str(bad), str(missing)]
     assert [f"fitamp: {error['message']}" for error in record["errors"]] == lines
     assert json.loads(called(capsys, "read", PART_A, "--json", "-")[1])["errors"] == []
+
+
+def test_read_of_a_bad_file_shows_its_line_with_a_mark(capsys: Captured, tmp_path: Path) -> None:
+    bad = tmp_path / "bad.csv"
+    bad.write_text("f (Hz),|T| (dB),phase (deg)\n10,80,0\n20,\tx\u202e,0\n", encoding="utf-8")
+    code, out, err = called(capsys, "read", bad)
+    assert (code, out) == (3, "")
+    assert err.splitlines()[1:] == ["    3 | 20,\\tx\\u202e,0", "      |      ^^^^^^^"]
+    assert called(capsys, "fit", bad)[2] == err.splitlines(keepends=True)[0]
+
+
+def test_one_of_several_sweeps_is_chosen_or_all_are_averaged(capsys: Captured, tmp_path: Path) -> None:
+    file = tmp_path / "runs.csv"
+    sweep = read_sweep(PART_A)
+    rows = [f"{f!r},{t.real!r},{t.imag!r}" for f, t in zip(sweep.freq_hz.tolist(), sweep.gain.tolist(), strict=True)]
+    again = [
+        f"{f!r},{t.real!r},{t.imag!r}"
+        for f, t in zip(sweep.freq_hz.tolist(), (sweep.gain * 1.001).tolist(), strict=True)
+    ]
+    file.write_text("\n".join(["f (Hz),re,im", *rows, "f (Hz),re,im", *again, ""]), encoding="utf-8")
+    assert "choose one, as in --sweep 2, or average them with --repeats" in refused(capsys, 3, "fit", file)
+    code, out, _ = called(capsys, "read", file, "--sweep", "2")
+    assert code == 0
+    assert "2 of 2, from line 244" in " ".join(out.split())
+    assert called(capsys, "read", file, "--repeats")[0] == 0
+    assert "sweep 3 is not there; the file holds 2 sweeps" in refused(capsys, 2, "fit", file, "--sweep", "3")
+    assert "'0' is not a whole number from 1" in refused(capsys, 2, "fit", file, "--sweep", "0")
+    assert "give one of the two" in refused(capsys, 2, "fit", file, "--sweep", "1", "--repeats")
 
 
 def test_read_of_bad_files_only_has_nothing_to_show(capsys: Captured, tmp_path: Path) -> None:
