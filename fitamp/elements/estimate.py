@@ -19,7 +19,7 @@ from fitamp.elements.posterior import informed_shares
 from fitamp.elements.residual import Measured
 from fitamp.elements.result import ElementEstimate, EstimatedElement
 from fitamp.elements.search import Found, floored, search
-from fitamp.elements.taken import with_resonances
+from fitamp.elements.taken import with_what_is_beside
 from fitamp.errors import UsageError
 from fitamp.estimate import Estimate, two_sided_95
 from fitamp.fitting import LoopFit
@@ -109,7 +109,7 @@ def _result(
     quantile: float,
     keep_all: bool,
 ) -> ElementEstimate:
-    agreement = agreed(with_resonances(found.best, fits), quantile=quantile, keep_all=keep_all)
+    agreement = agreed(with_what_is_beside(found.best, fits), quantile=quantile, keep_all=keep_all)
     solution = agreement.solution
     circuit = solution.circuit
     covariance = solution.covariance

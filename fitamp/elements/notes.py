@@ -154,7 +154,7 @@ def _on_bench(estimate: ElementEstimate) -> Iterator[ElementNote]:
     if taken:
         yield ElementNote(
             code=ElementNoteCode.FACTOR_TAKEN_OVER,
-            message=f"{', '.join(taken)}: a resonance beside the amplifier is taken as the fit of two poles and a zero "
-            "found it; its own uncertainty is not in the errors",
+            message=f"{', '.join(taken)}: what is there beside the amplifier (a resonance, a doublet, a range step) is "
+            "taken as the fit of two poles and a zero found it; its own uncertainty is not in the errors",
             files=taken,
         )

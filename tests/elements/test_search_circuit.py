@@ -70,6 +70,15 @@ def test_no_sweep_may_have_a_negative_resistance() -> None:
     assert least_resistor_ohm(estimate.solution.sweeps[:2]) == 0.0
 
 
+def test_a_range_step_is_taken_over_from_its_fit() -> None:
+    sweeps = swept(drawn(1), STEPS, seed=2)
+    sweeps[2] = replace(sweeps[2], gain=sweeps[2].gain * np.where(FREQ_HZ > 3e5, 1.03, 1.0))
+    estimate = estimate_elements(sweeps, DESIGN, conditions=STEPS)
+    assert [one.factor is not None for one in estimate.solution.sweeps] == [False, False, True, False, False]
+    assert estimate.element("CL").estimate.value == pytest.approx(drawn(1).CL, abs=0.3e-12)
+    assert estimate.element("gm2").estimate.value == pytest.approx(drawn(1).gm2, rel=0.02)
+
+
 def test_a_resonance_beside_the_amplifier_is_taken_over_from_its_fit() -> None:
     # A pair of poles and one of zeros at 12 MHz, as of a package: no circuit of the model has them.
     f = 1j * FREQ_HZ / 12e6
