@@ -111,7 +111,7 @@ def demo(args: argparse.Namespace) -> int:
     examples = _examples(args.examples)
     out = Path(args.out)
     design = read_design(examples / "line_buffer.toml")
-    parts = sorted(path for path in examples.iterdir() if path.name.startswith("part_"))
+    parts = sorted(path for path in examples.iterdir() if path.name.startswith("part_") and path.is_file())
     for part in parts:
         refuse_existing(out / part.stem, force=args.force)
     print("Invented parts of an invented chip, each held against its design file.\n")

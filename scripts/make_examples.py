@@ -23,14 +23,27 @@ PROBE_F, CABLE_S = 2.03e-12, 0.41e-9
 # The parts: how far each element is from its design, and the resistor.
 HEALTHY = {"gm1": 1.03, "R1": 0.91, "C1": 1.06, "gm2": 0.96, "R2": 1.08, "CL": 1.04, "Cc": 1.02}
 OTHER = {"gm1": 0.98, "R1": 1.07, "C1": 0.97, "gm2": 1.04, "R2": 0.94, "CL": 1.10, "Cc": 0.98}
+# Part f: a weak second stage, and 0.8 pF of pad that nobody designed in CL, which is 1 % off beside it.
+STEPPED = {"gm1": 1.04, "R1": 0.93, "C1": 1.09, "gm2": 0.84, "R2": 1.10, "CL": 1.01 + 0.8 / 4.0, "Cc": 1.03}
+STEPPED_RZ_OHM = 1080.0
+# File, load and resistance added, as a steps file writes them and in SI units, and a note.
+STEPS = (
+    ("base.csv", "", "", 0.0, 0.0, "as delivered"),
+    ("load_5p.csv", "5 pF", "", 5e-12, 0.0, "C0G capacitor across the output"),
+    ("load_15p.csv", "15 pF", "", 15e-12, 0.0, "10 pF beside it"),
+    ("rz_minus_400.csv", "", "-400 Ohm", 0.0, -400.0, "trim code 2 instead of 6"),
+    ("rz_plus_500.csv", "", "500 Ohm", 0.0, 500.0, "trim code 11 instead of 6"),
+)
 
 
-def sweep_of(part: dict[str, float], rz_ohm: float, seed: int) -> tuple[np.ndarray, np.ndarray]:
+def sweep_of(
+    part: dict[str, float], rz_ohm: float, seed: int, *, load_added_f: float = 0.0
+) -> tuple[np.ndarray, np.ndarray]:
     """Frequency in hertz and loop gain of a part on this bench."""
     nominal = fitamp.read_design(HERE.parent / "data_examples" / "line_buffer.toml").elements
     assert nominal is not None
     changed = {name: getattr(nominal, name) * factor for name, factor in part.items()}
-    changed["CL"] += PROBE_F
+    changed["CL"] += PROBE_F + load_added_f
     elements = nominal.with_changes(**changed, Rz=rz_ohm, delay_s=CABLE_S)
     gain = elements.transfer().evaluate(FREQ_HZ)
     return FREQ_HZ, fitamp.simulate_bench(gain, NOISE, np.random.default_rng(seed))
@@ -48,12 +61,12 @@ def decibels(gain: np.ndarray) -> np.ndarray:
     return 20 * np.log10(np.abs(gain))
 
 
-def comma_table(gain: np.ndarray) -> str:
+def comma_table(gain: np.ndarray, what: str = "part a, loop gain") -> str:
     """Comma-separated, preamble of comments, units in the header."""
     rows = [
         f"{f:.6g},{m:.5f},{p:.4f}" for f, m, p in zip(FREQ_HZ, decibels(gain), np.angle(gain, deg=True), strict=True)
     ]
-    head = ["# line buffer, part a, loop gain (invented data)", "# injection at the output, 64 averages"]
+    head = [f"# line buffer, {what} (invented data)", "# injection at the output, 64 averages"]
     return "\n".join([*head, "Frequency (Hz),Gain (dB),Phase (deg)", *rows]) + "\n"
 
 
@@ -91,6 +104,20 @@ def two_port(gain: np.ndarray) -> str:
     return "\n".join([*head, *rows]) + "\n"
 
 
+def stepped_files() -> dict[str, str]:
+    """Part f: a sweep for each step, and the steps file, by name."""
+    rows = [
+        "# line buffer, part f: what was added in which sweep (invented data)",
+        "file,load_added_F,rz_added_ohm,temp_C,note",
+    ]
+    files = {}
+    for number, (name, load, resistance, load_added_f, rz_added_ohm, note) in enumerate(STEPS):
+        _, gain = sweep_of(STEPPED, STEPPED_RZ_OHM + rz_added_ohm, seed=21 + number, load_added_f=load_added_f)
+        files[name] = comma_table(gain, f"part f, {note}, loop gain")
+        rows.append(f"{name},{load},{resistance},24,{note}")
+    return files | {"steps.csv": "\n".join(rows) + "\n"}
+
+
 def main() -> None:
     """Write all files."""
     parser = argparse.ArgumentParser(description=__doc__, formatter_class=argparse.RawDescriptionHelpFormatter)
@@ -112,6 +139,11 @@ def main() -> None:
     for name, (text, encoding) in files.items():
         (out / name).write_bytes(text.encode(encoding))
         print(f"{out / name}: {len(FREQ_HZ)} points")
+    folder = out / "part_f_stepped"
+    folder.mkdir(exist_ok=True)
+    for name, text in stepped_files().items():
+        (folder / name).write_bytes(text.encode("utf-8"))
+    print(f"{folder}: {len(STEPS)} sweeps and what was added in each")
 
 
 if __name__ == "__main__":

@@ -91,7 +91,10 @@ def test_the_script_writes_the_shipped_files_byte_for_byte(
     monkeypatch.setattr(sys, "argv", [str(script), "--out", str(tmp_path)])
     module.main()
     assert capsys.readouterr().out.count("241 points") == 5
-    shipped = sorted(examples.glob("part_*.*"))
-    assert [path.name for path in shipped] == sorted(path.name for path in tmp_path.iterdir())
+    shipped = sorted(path.relative_to(examples) for path in examples.glob("part_*/*"))
+    assert len(shipped) == 6
+    shipped += sorted(path.relative_to(examples) for path in examples.glob("part_*.*"))
+    written = {path.relative_to(tmp_path) for path in tmp_path.rglob("*") if path.is_file()}
+    assert set(shipped) == written
     for path in shipped:
-        assert (tmp_path / path.name).read_bytes() == path.read_bytes(), path.name
+        assert (tmp_path / path).read_bytes() == (examples / path).read_bytes(), path
