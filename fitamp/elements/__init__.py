@@ -8,7 +8,7 @@ from fitamp.elements.estimate import estimate_elements
 from fitamp.elements.lines import Line, LineFit, LineKind, line_fits
 from fitamp.elements.posterior import informed_shares
 from fitamp.elements.prediction import Against, Band, Prediction, predict, resistors_about
-from fitamp.elements.quantities import Quantity
+from fitamp.elements.quantities import Quantity, by_vector, quantities_and_slopes
 from fitamp.elements.residual import information
 from fitamp.elements.result import (
     DerivedQuantities,
@@ -47,6 +47,7 @@ __all__ = [
     "Step",
     "SweepCheck",
     "blame",
+    "by_vector",
     "estimate_elements",
     "estimated_design",
     "estimated_design_text",
@@ -55,6 +56,7 @@ __all__ = [
     "line_fits",
     "load_range",
     "predict",
+    "quantities_and_slopes",
     "read_steps",
     "resistors_about",
     "restoring_resistor",
