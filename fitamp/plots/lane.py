@@ -8,7 +8,7 @@ from dataclasses import dataclass
 from matplotlib.axes import Axes
 
 from fitamp.comparison import Comparison
-from fitamp.plots.further import FURTHER_ALPHA, FURTHER_ROW, Further
+from fitamp.plots.further import FURTHER_ALPHA, Further, row_name
 from fitamp.plots.roots import Mark
 from fitamp.plots.style import COLOURS, SMALL_PT, shortened, text_width_in
 from fitamp.units import si
@@ -25,7 +25,7 @@ ROW_IN, LEVEL_IN = 0.34, 0.17
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class _Spot:
-    """Marks with their name: one at a frequency, of a resonance two, or all beyond one edge ("<" or ">")."""
+    """Marks with their words: one at a frequency, of a resonance two, or all beyond one edge ("<" or ">")."""
 
     marks: tuple[Mark, ...]
     at_hz: float
@@ -65,16 +65,16 @@ def lane_rows(
     *,
     further: tuple[Further, ...] = (),
 ) -> tuple[LaneRow, ...]:
-    """Rows of the lane from the bottom: resonances where there are any, measured, designed where there is a design."""
+    """Rows of the lane from the bottom: resonances and doublets if any, measured, designed where there is a design."""
     rows = [("measured", _spots(measured, low_hz, high_hz))]
     if further:
-        rows.insert(0, (FURTHER_ROW, [_resonance_spot(one, low_hz, high_hz) for one in further]))
+        rows.insert(0, (row_name(further), [_further_spot(one, low_hz, high_hz) for one in further]))
     if designed:
         rows.append(("designed", _spots(designed, low_hz, high_hz)))
     return tuple(LaneRow(name=name, named=_named(spots, width_in)) for name, spots in rows)
 
 
-def _resonance_spot(one: Further, low_hz: float, high_hz: float) -> tuple[_Spot, float]:
+def _further_spot(one: Further, low_hz: float, high_hz: float) -> tuple[_Spot, float]:
     at_hz = min(max(_distance_hz(one.poles), low_hz), high_hz)
     return _Spot(marks=one.marks, at_hz=at_hz, edge="", words=one.words), _share(at_hz, low_hz, high_hz)
 
@@ -229,7 +229,7 @@ def _colour(row: LaneRow) -> str:
 
 
 def _draw_symbol(lane: Axes, row: LaneRow, at: tuple[float, float], marker: str, names: str) -> None:
-    is_further = row.name == FURTHER_ROW
+    is_further = row.name not in {"measured", "designed"}
     lane.plot(
         [at[0]],
         [at[1]],
@@ -239,6 +239,6 @@ def _draw_symbol(lane: Axes, row: LaneRow, at: tuple[float, float], marker: str,
         markersize=6 if is_further else 8,
         markeredgewidth=1.3 if is_further else 2,
         alpha=FURTHER_ALPHA if is_further else None,
-        gid=f"{row.name} {names}",
+        gid=names if is_further else f"{row.name} {names}",
         zorder=4,
     )

@@ -15,6 +15,7 @@ from fitamp.plots.loop_legend import NOTE_LINE_IN, ROW_IN, draw_legend, draw_not
 from fitamp.plots.loop_marks import draw_crossover, draw_limits, draw_phase_margin, limit_phases_deg
 from fitamp.plots.loop_panels import curves_of, draw_magnitude, draw_phase, drawable, shade_beyond
 from fitamp.plots.loop_residuals import draw_residuals, residual_title, title_room_in
+from fitamp.plots.loop_steps import draw_range_steps, name_range_steps
 from fitamp.plots.roots import Mark, designed_marks, measured_marks
 from fitamp.plots.style import WIDTH_IN, drawing_style, place_axes
 
@@ -86,8 +87,10 @@ def _draw_panels(panels: list[Axes], fit: LoopFit, comparison: Comparison | None
         shade_beyond(panel, fit)
     if comparison is not None:
         draw_limits(magnitude, phase, comparison, fit)
+    draw_range_steps(fit, magnitude, phase, panels[0])
     draw_crossover(fit, magnitude, phase)
     draw_phase_margin(fit, phase)
+    name_range_steps(fit, magnitude)
 
 
 def _view(fit: LoopFit, measured: tuple[Mark, ...], designed: tuple[Mark, ...]) -> tuple[float, float]:

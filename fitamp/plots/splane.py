@@ -12,7 +12,7 @@ from matplotlib.scale import SymmetricalLogTransform
 from fitamp.comparison import Comparison, Nulling
 from fitamp.fitting import LoopFit
 from fitamp.plots.axes import LINEAR_SHARE, signed_decades
-from fitamp.plots.further import FURTHER_ALPHA, FURTHER_ROW, Further, further_marks
+from fitamp.plots.further import FURTHER_ALPHA, Further, further_marks, row_name
 from fitamp.plots.header import figure_with_head
 from fitamp.plots.roots import Mark, designed_marks, deviation_words, measured_marks
 from fitamp.plots.splane_frame import linear_hz, name_half_planes, point_to_infinity, reach_hz
@@ -41,7 +41,8 @@ def splane_figure(fit: LoopFit, comparison: Comparison | None = None) -> Figure:
     """Draw poles (×) and zero (○) in the s-plane over 2π, in hertz, with their 95 % regions.
 
     Both half planes are drawn in decades, linear around 0. With all roots real, the designed ones stand in a lane above
-    the measured ones, resonances at their real part below. A region that passes through infinity reaches both edges.
+    the measured ones, and resonances (at their real part) and doublets in one below. A region that passes through
+    infinity reaches both edges.
     """
     with drawing_style():
         measured = measured_marks(fit)
@@ -70,7 +71,7 @@ def _draw_lanes(
     axes.set_xlim(-reach, reach)
     axes.set_ylim(0, top)
     rows = {"measured": measured_y} | ({"designed": designed_y} if designed else {})
-    rows |= {f"{FURTHER_ROW},\nreal part": further_y} if further else {}
+    rows |= {_row_words(further): further_y} if further else {}
     axes.set_yticks(list(rows.values()), list(rows), size=SIZE_PT)
     axes.tick_params(axis="y", length=0)
     axes.set_xlabel("s-plane over 2π: real axis (decades on both sides, linear around 0)")
@@ -94,9 +95,14 @@ def _draw_lanes(
 
 
 def _at_real_part(one: Further) -> Mark:
-    """What a resonance's label on the real axis points at, and says."""
+    """What the label on the real axis points at, and says."""
     assert one.poles.value_hz is not None
     return Mark(name=one.words, is_zero=False, value_hz=one.poles.value_hz)
+
+
+def _row_words(further: tuple[Further, ...]) -> str:
+    has_pairs = any(one.poles.is_pair for one in further)
+    return f"{row_name(further)},\nreal part" if has_pairs else row_name(further)
 
 
 def _draw_further(axes: Axes, further: tuple[Further, ...], y: float) -> None:
@@ -111,7 +117,7 @@ def _draw_further(axes: Axes, further: tuple[Further, ...], y: float) -> None:
             markersize=7,
             markeredgewidth=1.4,
             alpha=FURTHER_ALPHA,
-            gid=f"{FURTHER_ROW} {mark.name}",
+            gid=mark.name,
             zorder=4,
         )
 

@@ -14,7 +14,7 @@ from fitamp.arrays import FloatArray
 from fitamp.comparison import Comparison
 from fitamp.fitting import LoopFit
 from fitamp.plots.axes import LINEAR_SHARE, signed_decades, signed_decimal
-from fitamp.plots.further import FURTHER_ALPHA, FURTHER_ROW, Further
+from fitamp.plots.further import FURTHER_ALPHA, Further, row_name
 from fitamp.plots.header import figure_with_head
 from fitamp.plots.roots import Mark
 from fitamp.plots.splane_frame import distances_hz, linear_hz, name_half_planes, point_to_infinity, reach_hz
@@ -41,8 +41,9 @@ def draw_pairs(
     """The plane with every root, its values in words above it; resonances as far as they fall into it."""
     groups = {"designed": designed, "measured": measured} if designed else {"measured": measured}
     scale = _scale_of(fit, measured, designed, further)
+    own = tuple(groups)
     if further:
-        groups[FURTHER_ROW] = tuple(_in_legend(one, scale) for one in further)
+        groups[row_name(further)] = tuple(_in_legend(one, scale) for one in further)
     columns = _columns(groups)
     legend_in = ROW_IN * max(sum(1 + len(groups[group]) for group in column) for column in columns) + 0.15
     body_in = BOTTOM_IN + HEIGHT_IN + TOP_IN + legend_in
@@ -54,8 +55,8 @@ def draw_pairs(
     axes.grid(True)
     axes.set_xlabel("s-plane over 2π: real part")
     axes.set_ylabel("imaginary part")
-    for group, marks in groups.items():
-        for mark in marks if group != FURTHER_ROW else ():
+    for group in own:
+        for mark in groups[group]:
             _draw_mark(axes, mark, group, scale.reach_hz)
     _draw_further(axes, further)
     left = LEFT_IN
@@ -181,20 +182,23 @@ def _draw_mark(axes: Axes, mark: Mark, group: str, reach: float) -> None:
 
 
 def _draw_further(axes: Axes, further: tuple[Further, ...]) -> None:
-    """Resonances, paler, each named once; the axes are not stretched for them."""
-    for mark in (mark for one in further for mark in one.marks):
-        assert mark.value_hz is not None
-        handle = _handle(FURTHER_ROW, mark)
-        handle.set_data([mark.value_hz.real] * 2, [mark.value_hz.imag, -mark.value_hz.imag])
-        handle.set_gid(f"{FURTHER_ROW} {mark.name}")
-        axes.add_line(handle)
+    """Resonances and doublets, paler, each named once; a linear plane is not stretched for them."""
     for one in further:
+        for mark in one.marks:
+            assert mark.value_hz is not None
+            places = [mark.value_hz, mark.value_hz.conjugate()] if mark.is_pair else [mark.value_hz]
+            handle = _handle(one.kind, mark)
+            handle.set_data([place.real for place in places], [place.imag for place in places])
+            handle.set_gid(mark.name)
+            axes.add_line(handle)
         assert one.poles.value_hz is not None
         axes.annotate(
-            FURTHER_ROW,
+            one.kind,
             xy=(one.poles.value_hz.real, one.poles.value_hz.imag),
-            xytext=(8, 0),
+            xytext=(8, 0) if one.poles.is_pair else (5, 9),
             textcoords="offset points",
+            rotation=0 if one.poles.is_pair else 40,
+            rotation_mode="anchor",
             va="center",
             size=SMALL_PT,
             color=PALE_INK,
@@ -211,7 +215,7 @@ def _ellipse(covariance: FloatArray) -> FloatArray:
 
 def _handle(group: str, mark: Mark) -> Line2D:
     colour = COLOURS["designed" if group == "designed" else "fitted"]
-    is_further = group == FURTHER_ROW
+    is_further = group not in {"measured", "designed"}
     return Line2D(
         [],
         [],

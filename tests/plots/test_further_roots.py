@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import pytest
 from drawn_parts import (
     comparison_of,
@@ -14,6 +16,7 @@ from drawn_parts import (
 )
 from matplotlib.figure import Figure
 
+from fitamp.fitting import LoopFit, Root
 from fitamp.plots import loop_figure, splane_figure
 from fitamp.plots.further import further_marks
 
@@ -109,3 +112,41 @@ def test_a_linear_plane_is_not_stretched_for_a_resonance_that_is_said_to_lie_bey
     assert figure.axes[0].get_yscale() == "linear"
     assert figure.axes[0].get_ylim()[1] < 10e6
     assert "40.0 MHz, Q 20 (beyond the picture)" in words_in(figure)
+
+
+def with_doublet(fit: LoopFit, zero_hz: float = -1.15e6) -> LoopFit:
+    """The fit with a pole at 1 MHz and a zero close by, as of a current mirror."""
+    pole, zero = (Root(value_hz=complex(place), covariance=None) for place in (-1e6, zero_hz))
+    return replace(fit, doublet_poles=(pole,), doublet_zeros=(zero,))
+
+
+def test_a_doublet_has_a_row_of_its_own_with_both_places() -> None:
+    fit = with_doublet(comparison_of(1300).fit)
+    figure = loop_figure(fit)
+    assert [label.get_text() for label in figure.axes[1].get_yticklabels()] == ["doublet", "measured"]
+    assert x_of(drawn_lines(figure, "doublet poles")[0])[0] == 1e6
+    assert x_of(drawn_lines(figure, "doublet zeros")[0])[0] == 1.15e6
+    assert "pole 1.00 MHz, zero 1.15 MHz" in words_in(figure)
+    (one,) = further_marks(with_doublet(fit, zero_hz=2e6))
+    assert one.words == "pole 1.00 MHz, zero 2.00 MHz (right)"
+
+
+def test_on_the_real_axis_a_doublet_stands_where_it_is() -> None:
+    figure = splane_figure(with_doublet(comparison_of(1300).fit))
+    assert x_of(drawn_lines(figure, "doublet zeros")[0])[0] == -1.15e6
+    assert "doublet" in [label.get_text() for label in figure.axes[0].get_yticklabels()]
+
+
+def test_doublets_and_resonances_share_a_row() -> None:
+    comparison = comparison_with_resonances()
+    fit = with_doublet(comparison.fit)
+    assert [one.kind for one in further_marks(fit)] == ["resonance", "doublet", "resonance"]
+    assert "further" in [label.get_text() for label in loop_figure(fit).axes[1].get_yticklabels()]
+    assert "further,\nreal part" in [label.get_text() for label in splane_figure(fit).axes[0].get_yticklabels()]
+
+
+def test_in_the_plane_a_doublet_lies_on_the_real_axis() -> None:
+    figure = splane_figure(with_doublet(fit_of_pair_with_resonance(30e6)))
+    (pole,) = drawn_lines(figure, "doublet poles")
+    assert list(y_of(pole)) == [0.0]
+    assert {"doublet", "further", "pole 1.00 MHz, zero 1.15 MHz"} <= set(words_in(figure))
