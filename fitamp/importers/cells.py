@@ -65,7 +65,7 @@ _PAIR = re.compile(rf"\(\s*([+-]?{_UNSIGNED})\s*[,;]\s*([+-]?{_UNSIGNED})\s*\)")
 _WITH_TAIL = re.compile(rf"([+-]?(?:[0-9]+[.,]?[0-9]*|[.,][0-9]+))\s?([{_LETTERS}][{_LETTERS}/]*)")
 _LETTER_AS_MARK = re.compile(r"[0-9]+[kKMGRm][0-9]+")
 _SHOWN = 30
-# No number of a double-precision sweep is as long; the patterns above need not face a megabyte.
+# Beyond plain digits no cell is as long; the patterns above need not face a megabyte.
 _LONGEST = 200
 _NO_TAILS: Mapping[str, int] = MappingProxyType({})
 
@@ -90,7 +90,7 @@ def number_from(text: str, *, decimal: str = ".", thousands: str = "", tails: Ma
     cell = _plain(text, decimal, thousands)
     if cell is not None and _NUMBER.fullmatch(cell):
         return _finite(cell, text)
-    with_tail = _WITH_TAIL.fullmatch(cell) if cell is not None and tails else None
+    with_tail = _WITH_TAIL.fullmatch(cell) if cell is not None and tails and len(cell) <= _LONGEST else None
     if with_tail and with_tail[2] in tails:
         return _finite(f"{with_tail[1]}e{tails[with_tail[2]]}", text)
     raise ValueError(_why_not(text, decimal))
@@ -112,7 +112,7 @@ def complex_from(text: str, *, decimal: str = ".") -> complex:
         As `number_from`.
     """
     cell = _plain(text, decimal)
-    if cell is None:
+    if cell is None or len(cell) > _LONGEST:
         raise ValueError(_why_not(text, decimal))
     pair = _PAIR.fullmatch(cell)
     if pair:
@@ -161,9 +161,7 @@ def grouped(decimal: str, thousands: str) -> re.Pattern[str]:
 def _plain(text: str, decimal: str, thousands: str = "") -> str | None:
     """The cell with ASCII minus and decimal point, groups closed up; None where the other mark shows up as well."""
     cell = text.strip().translate(_TO_ASCII)
-    if len(cell) > _LONGEST:
-        return None
-    if thousands and grouped(decimal, thousands).fullmatch(cell):
+    if thousands and len(cell) <= _LONGEST and grouped(decimal, thousands).fullmatch(cell):
         digits = re.match(r"[^A-Za-zµμ%°Ω]*", cell)
         end = digits.end() if digits else len(cell)
         cell = re.sub(rf"[{re.escape(GROUP_MARKS.get(thousands, thousands))}]", "", cell[:end].rstrip()) + cell[end:]
@@ -190,7 +188,7 @@ def _why_not(text: str, decimal: str) -> str:
     if not cell:
         return "the cell is empty; measure the point again or remove the row"
     if len(cell) > _LONGEST:
-        return f"{shown} has {len(cell)} characters, more than any number; check the line"
+        return f"{shown} has {len(cell)} characters and is no plain number; check the line"
     if re.fullmatch(r"[+-]?(nan|inf|infinity|#n/a|n/a|na)", cell.lower()):
         return f"{shown} is not a finite number; measure the point again or remove the row"
     if re.fullmatch(r"[+-]?[0-9.,]+[dD][+-]?[0-9]+", cell):

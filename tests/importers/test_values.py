@@ -48,7 +48,7 @@ def test_short_way_takes_what_the_long_way_takes(text: str) -> None:
         ("1e-400", "'1e-400' is too small"),
         ("1_000", "'1_000' is not a number"),
         ("1,5", "'1,5' has a comma where the decimal mark is a point"),
-        ("x" * 300, "has 300 characters, more than any number"),
+        ("x" * 300, "has 300 characters and is no plain number"),
     ],
 )
 def test_first_cell_that_is_no_number_is_named(cell: str, message: str) -> None:
