@@ -1,0 +1,110 @@
+"""The part and every sweep that could be taken of it: what any set of them will tell, and what it is worth."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+
+import numpy as np
+
+from fitamp.arrays import FloatArray
+from fitamp.design import Design
+from fitamp.elements.circuit import BENCH_DELAY, BENCH_LOAD
+from fitamp.planning.campaign import Die
+from fitamp.planning.choice import Worth
+from fitamp.planning.outlook import outlook_of
+from fitamp.planning.precision import QUANTITIES, Measure, expected, known_before, measures, standard_deviations
+from fitamp.planning.result import Criterion, Stage
+from fitamp.planning.sweeps import PlannedSweep
+
+__all__ = ["Outcomes"]
+
+ON_BENCH = (BENCH_LOAD, BENCH_DELAY)
+
+
+class Outcomes:
+    """A part and the sweeps that could be taken of it, each looked at once; a set is its indices.
+
+    parts_drawn, seed : other parts over which the worst precision is sought
+    """
+
+    def __init__(
+        self, die: Die, design: Design, sweeps: tuple[PlannedSweep, ...], *, parts_drawn: int = 0, seed: int = 1
+    ) -> None:
+        self.die, self.design, self.sweeps = die, design, sweeps
+        self.rows = measures(die, design)
+        self._triangles = [die.triangle(sweep) for sweep in sweeps]
+        self._before = known_before(self.rows, die)
+        rng = np.random.default_rng(seed)
+        least_rz_ohm = max([0.0, *(-sweep.condition.rz_added_ohm for sweep in sweeps)])
+        self._drawn: list[tuple[Die, tuple[Measure, ...], list[FloatArray]]] = []
+        for _ in range(parts_drawn):
+            part = die.drawn(rng, least_rz_ohm=least_rz_ohm)
+            self._drawn.append((part, measures(part, design), [part.triangle(sweep) for sweep in sweeps]))
+
+    def stage(self, indices: tuple[int, ...]) -> Stage:
+        """What is to be expected after the sweeps with these indices."""
+        triangles = [self._triangles[index] for index in indices]
+        sds, covariance = standard_deviations(self.rows, self.die, triangles)
+        found = expected(self.rows, self.die, sds, covariance, before=self._before, worst=self._worst(indices))
+        by_name = {one.name: one for one in found}
+        zero = next(row for row in self.rows if row.name == "zero_time_s")
+        return Stage(
+            sweeps=tuple(self.sweeps[index] for index in indices),
+            elements=tuple(one for one in found if one.name not in QUANTITIES and one.name not in ON_BENCH),
+            bench=tuple(one for one in found if one.name in ON_BENCH),
+            quantities=tuple(one for one in found if one.name in QUANTITIES),
+            outlook=outlook_of(
+                self.design, by_name, reach_s=float(np.sqrt(zero.slopes @ self.die.reach @ zero.slopes))
+            ),
+        )
+
+    def worth(self, criterion: Criterion, wanted: Mapping[str, float]) -> Worth:
+        """What a set of sweeps is worth by a criterion; smaller is better."""
+        names = self.die.circuit.names
+        block = [index for index, name in enumerate(names) if name not in ON_BENCH]
+        known: dict[tuple[int, ...], tuple[float, ...]] = {}
+
+        def log_determinant(covariance: FloatArray) -> float:
+            return float(np.linalg.slogdet(covariance[np.ix_(block, block)])[1])
+
+        def of(indices: tuple[int, ...]) -> tuple[float, ...]:
+            key = tuple(sorted(indices))
+            if key not in known:
+                known[key] = fresh([self._triangles[index] for index in key])
+            return known[key]
+
+        def fresh(triangles: list[FloatArray]) -> tuple[float, ...]:
+            if criterion is Criterion.WANTED:
+                sds, covariance = standard_deviations(self.rows, self.die, triangles)
+                by_name = {row.name: np.inf if sd is None else sd for row, sd in zip(self.rows, sds, strict=True)}
+                ratios = (by_name[name] / sd for name, sd in wanted.items())
+                return (max(1.0, *ratios), log_determinant(covariance))
+            covariance = self.die.covariance(triangles)
+            if criterion is Criterion.VARIANCE:
+                return (float((np.diag(covariance)[block] / self._squares(block)).mean()),)
+            return (log_determinant(covariance),)
+
+        return of
+
+    def _squares(self, block: list[int]) -> FloatArray:
+        """By which variances of the vector are those of relative numbers."""
+        parameters = [self.die.circuit.parameters[index] for index in block]
+        return np.array([1.0 if one.is_log else (one.prior_mean or 1.0) ** 2 for one in parameters])
+
+    def _worst(self, indices: tuple[int, ...]) -> list[float | None] | None:
+        """Largest standard deviation over the parts drawn: of a logarithm relative to the part's own value."""
+        if not self._drawn:
+            return None
+        is_log = {one.name for one in self.die.circuit.parameters if one.is_log}
+        columns = []
+        for part, rows, triangles in self._drawn:
+            sds = standard_deviations(rows, part, [triangles[index] for index in indices])[0]
+            columns.append(
+                [
+                    sd if sd is None or mine.name not in is_log else sd * (mine.value or 0.0) / (other.value or 1.0)
+                    for mine, other, sd in zip(self.rows, rows, sds, strict=True)
+                ]
+            )
+        return [
+            None if None in each else max(sd for sd in each if sd is not None) for each in zip(*columns, strict=True)
+        ]
