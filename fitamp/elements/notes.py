@@ -100,10 +100,12 @@ def _on_elements(estimate: ElementEstimate) -> Iterator[ElementNote]:
         spreads = _spreads_off(one)
         if spreads is not None and abs(spreads) > FAR_SPREADS:
             way = "above" if spreads > 0 else "below"
+            why = "its spread, or what was added, is not as stated"
+            if spreads > 0 and one.name in ("CL", "C1"):
+                why = f"there is capacitance that nobody designed, or {why}"
             yield ElementNote(
                 code=ElementNoteCode.FAR_FROM_DESIGN,
-                message=f"{one.name} comes out {abs(spreads):.1f} of its own spreads {way} the design; its spread, or "
-                "what was added, is not as stated",
+                message=f"{one.name} comes out {abs(spreads):.1f} of its own spreads {way} the design; {why}",
             )
     if estimate.solution.unbounded is not None:
         resistor = estimate.element("Rz")
