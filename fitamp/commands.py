@@ -8,11 +8,12 @@ import io
 import sys
 from collections.abc import Mapping
 from pathlib import Path
-from typing import TYPE_CHECKING, Any
+from typing import Any
 
 from fitamp.comparison import Comparison
 from fitamp.comparison import compare as compare_sweep
 from fitamp.conditioning.repeats import average_repeats
+from fitamp.delivery import STDOUT, deliver, refuse_early, write_folder
 from fitamp.design import read_design
 from fitamp.errors import FitError, InputError, UsageError
 from fitamp.fitting import LoopFit, fit_sweep
@@ -20,28 +21,23 @@ from fitamp.importers import read_sweep
 from fitamp.measured import Measured, Reading, measured
 from fitamp.report.as_json import comparison_as_dict, dumps, fit_as_dict, sweep_as_dict
 from fitamp.report.conditions import through_as_dict
-from fitamp.report.files import refuse_existing, staged_directory, write_text
+from fitamp.report.files import refuse_existing, write_text
 from fitamp.report.tables import comparison_text, fit_text, printable, sweep_text
 from fitamp.sweep import Sign, Sweep
 
-if TYPE_CHECKING:
-    from matplotlib.figure import Figure
-
 __all__ = ["compare", "demo", "fit", "read", "template"]
-
-STDOUT = "-"
 
 
 def read(args: argparse.Namespace) -> int:
     """`fitamp read FILE…`: what can be shown of the good files, and one line of error for each of the others."""
-    _refuse_early(args)
+    refuse_early(args)
     sweeps: list[Sweep] = []
     errors: list[dict[str, str]] = []
     places: list[tuple[str, ...]] = []
     reading = _reading(args)
     if reading.are_repeats:
         average = average_repeats(reading.sweeps(args.files))
-        _deliver(
+        deliver(
             args, {"schema": "fitamp/read/1", "sweeps": [sweep_as_dict(average)], "errors": []}, sweep_text(average)
         )
         return 0
@@ -59,7 +55,7 @@ def read(args: argparse.Namespace) -> int:
     record: dict[str, Any] = {"schema": "fitamp/read/1"}
     record |= {"sweeps": [sweep_as_dict(sweep) for sweep in sweeps], "errors": errors}
     if sweeps:
-        _deliver(args, record, "\n".join(sweep_text(sweep) for sweep in sweeps))
+        deliver(args, record, "\n".join(sweep_text(sweep) for sweep in sweeps))
     elif args.json == STDOUT:
         message = f"none of the {len(errors)} files can be read"
         print(dumps(record | {"schema": "fitamp/error/1", "error": {"message": message, "exit_code": code}}))
@@ -68,21 +64,21 @@ def read(args: argparse.Namespace) -> int:
 
 def fit(args: argparse.Namespace) -> int:
     """`fitamp fit FILE…`."""
-    _refuse_early(args)
+    refuse_early(args)
     taken = _measured(args)
     result = fit_sweep(taken.sweep, keep_all=args.keep_all, **taken.priors)
     record, text = fit_as_dict(result) | _through(taken), fit_text(result)
     if args.out:
         from fitamp.plots import fit_figures
 
-        _write_folder(Path(args.out), "fit", record, text, fit_figures(result), force=args.force)
-    _deliver(args, record, text)
+        write_folder(Path(args.out), "fit", record, text, fit_figures(result), force=args.force)
+    deliver(args, record, text)
     return _trusted(result)
 
 
 def compare(args: argparse.Namespace) -> int:
     """`fitamp compare FILE… --design D.toml`."""
-    _refuse_early(args)
+    refuse_early(args)
     design = read_design(args.design)
     taken = _measured(args)
     sweep, design = taken.on_bench_of(design)
@@ -90,7 +86,7 @@ def compare(args: argparse.Namespace) -> int:
     record, text = comparison_as_dict(result) | _through(taken), comparison_text(result)
     if args.out:
         _write_comparison(result, record, text, Path(args.out), force=args.force)
-    _deliver(args, record, text)
+    deliver(args, record, text)
     return _trusted(result.fit)
 
 
@@ -171,49 +167,18 @@ def _through(taken: Measured) -> dict[str, Any]:
     return {"through": None if taken.through is None else through_as_dict(taken.through)}
 
 
-def _refuse_early(args: argparse.Namespace) -> None:
-    """Say that output exists before the work is done, not after."""
-    if getattr(args, "out", None):
-        refuse_existing(Path(args.out), force=args.force)
-    if args.json and args.json != STDOUT:
-        refuse_existing(Path(args.json), force=args.force)
-
-
-def _deliver(args: argparse.Namespace, record: Mapping[str, Any], text: str) -> None:
-    if args.json == STDOUT:
-        print(dumps(record))
-        return
-    if args.json:
-        write_text(Path(args.json), dumps(record) + "\n", force=args.force)
-    sys.stdout.write(text)
-    if getattr(args, "out", None):
-        print(f"pictures and numbers: {args.out}")
-
-
 def _write_comparison(result: Comparison, record: Mapping[str, Any], text: str, folder: Path, *, force: bool) -> None:
     from fitamp.plots import comparison_figures
 
-    _write_folder(folder, "comparison", record, text, comparison_figures(result), force=force, table=_table(record))
-
-
-def _write_folder(
-    folder: Path,
-    name: str,
-    record: Mapping[str, Any],
-    text: str,
-    figures: Mapping[str, Figure],
-    *,
-    force: bool,
-    table: str | None = None,
-) -> None:
-    from fitamp.plots import save_figures
-
-    with staged_directory(folder, force=force) as staging:
-        write_text(staging / f"{name}.json", dumps(record) + "\n", force=False)
-        write_text(staging / f"{name}.txt", text, force=False)
-        if table is not None:
-            write_text(staging / f"{name}.csv", table, force=False)
-        save_figures(figures, staging)
+    write_folder(
+        folder,
+        "comparison",
+        record,
+        text,
+        comparison_figures(result),
+        force=force,
+        tables={"comparison.csv": _table(record)},
+    )
 
 
 def _table(record: Mapping[str, Any]) -> str:
