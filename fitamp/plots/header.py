@@ -5,6 +5,7 @@ What a verdict alone would hide is framed beside it: a limit that is broken, a m
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 from matplotlib.figure import Figure
@@ -25,9 +26,10 @@ from fitamp.plots.style import (
 )
 from fitamp.report.tables import zero_sentence
 
-__all__ = ["VERDICT_COLOURS", "figure_with_head"]
+__all__ = ["VERDICT_COLOURS", "figure_with_head", "figure_with_verdict"]
 
 MARGIN_IN = 0.2
+HEAD_IN = WIDTH_IN - 2 * MARGIN_IN
 LINE_IN = 0.18
 TITLE_IN = 0.36
 TITLE_PT, TAG_PT = 13.0, 10.0
@@ -68,8 +70,54 @@ class _Text:
 
 def figure_with_head(fit: LoopFit, comparison: Comparison | None, *, body_in: float) -> Figure:
     """A figure whose lower `body_in` inches are free, under a head as tall as its words need."""
-    width = WIDTH_IN - 2 * MARGIN_IN
-    rows, aside = _rows(fit, comparison, width)
+    file = inert(fit.sweep.origin.file)
+    warnings = [] if fit.adequacy.adequate else ["MODEL DOES NOT FIT"]
+    if comparison is not None:
+        return figure_with_verdict(
+            comparison.verdict.nulling,
+            warnings,
+            broken=comparison.broken_limits,
+            names=(file, comparison.design.file),
+            reason=comparison.verdict.reason,
+            advice=comparison.advice.sentence,
+            body_in=body_in,
+        )
+    title = _Text(text=shortened(file, HEAD_IN, TITLE_PT, "bold"), size_pt=TITLE_PT, weight="bold")
+    tags = _flowed([_warning(words) for words in warnings])
+    sentence = _sentence(zero_sentence(fit), "Zero: ")
+    return _figure([[title], *tags, *([_Text(text=line)] for line in wrapped(sentence, HEAD_IN))], "", body_in)
+
+
+def figure_with_verdict(
+    nulling: Nulling,
+    warnings: Sequence[str],
+    *,
+    broken: Sequence[str],
+    names: tuple[str, str],
+    reason: str,
+    advice: str,
+    body_in: float,
+) -> Figure:
+    """The same for a verdict, with what stands framed beside it, what was held against what, and two sentences."""
+    tags = [_Text(text=nulling.value.upper(), size_pt=TITLE_PT, weight="bold", frame=VERDICT_COLOURS[nulling])]
+    if broken:
+        words = f"LIMIT{'S' if len(broken) > 1 else ''} BROKEN: {', '.join(LABELS[name] for name in broken)}"
+        tags += [_warning(line) for line in wrapped(words, HEAD_IN - 0.2, TAG_PT, "bold")]
+    rows = _flowed([*tags, *map(_warning, warnings)])
+    measured, design = (inert(name) for name in names)
+    room = HEAD_IN - sum(tag.width_in + TAG_GAP_IN for tag in rows[0])
+    is_beside = room >= min(NAMES_IN, text_width_in(f"{measured} against {design}"))
+    aside = _against(measured, design, room if is_beside else HEAD_IN)
+    if not is_beside:
+        rows.append([_Text(text=aside, size_pt=SMALL_PT)])
+    rows += [[_Text(text=line)] for line in wrapped(inert(_sentence(reason)), HEAD_IN)]
+    advised = wrapped(inert(f"What to do: {advice}"), HEAD_IN, weight="bold")
+    rows += [[_Text(text=line, weight="bold")] for line in advised]
+    return _figure(rows, aside if is_beside else "", body_in)
+
+
+def _figure(rows: list[list[_Text]], aside: str, body_in: float) -> Figure:
+    """Rows of the head from the top, and what stands at the right of the first one."""
     head_in = 0.1 + sum(row[0].height_in for row in rows) + 0.08
     figure = new_figure(body_in + head_in)
     top = body_in + head_in - 0.1
@@ -95,53 +143,15 @@ def figure_with_head(fit: LoopFit, comparison: Comparison | None, *, body_in: fl
     return figure
 
 
-def _rows(fit: LoopFit, comparison: Comparison | None, width_in: float) -> tuple[list[list[_Text]], str]:
-    """Rows of the head from the top, and what stands at the right of the first one."""
-    file = inert(fit.sweep.origin.file)
-    tags = _flowed(_tags(fit, comparison), width_in)
-    if comparison is None:
-        title = _Text(text=shortened(file, width_in, TITLE_PT, "bold"), size_pt=TITLE_PT, weight="bold")
-        sentence = _sentence(zero_sentence(fit), "Zero: ")
-        return [[title], *tags, *([_Text(text=line)] for line in wrapped(sentence, width_in))], ""
-    design = inert(comparison.design.file)
-    rows = list(tags)
-    room = width_in - sum(tag.width_in + TAG_GAP_IN for tag in tags[0])
-    is_beside = room >= min(NAMES_IN, text_width_in(f"{file} against {design}"))
-    aside = _against(file, design, room if is_beside else width_in)
-    if not is_beside:
-        rows.append([_Text(text=aside, size_pt=SMALL_PT)])
-    reason = inert(_sentence(comparison.verdict.reason))
-    rows += [[_Text(text=line)] for line in wrapped(reason, width_in)]
-    advice = inert(f"What to do: {comparison.advice.sentence}")
-    rows += [[_Text(text=line, weight="bold")] for line in wrapped(advice, width_in, weight="bold")]
-    return rows, aside if is_beside else ""
-
-
-def _tags(fit: LoopFit, comparison: Comparison | None) -> list[_Text]:
-    """The verdict, and warnings that belong beside it."""
-    tags: list[_Text] = []
-    if comparison is not None:
-        nulling = comparison.verdict.nulling
-        frame = VERDICT_COLOURS[nulling]
-        tags.append(_Text(text=nulling.value.upper(), size_pt=TITLE_PT, weight="bold", frame=frame))
-        broken = [LABELS[name] for name in comparison.broken_limits]
-        if broken:
-            words = f"LIMIT{'S' if len(broken) > 1 else ''} BROKEN: {', '.join(broken)}"
-            tags += [_warning(line) for line in wrapped(words, WIDTH_IN - 2 * MARGIN_IN - 0.2, TAG_PT, "bold")]
-    if not fit.adequacy.adequate:
-        tags.append(_warning("MODEL DOES NOT FIT"))
-    return tags
-
-
 def _warning(words: str) -> _Text:
     return _Text(text=words, size_pt=TAG_PT, weight="bold", frame=COLOURS["bad"])
 
 
-def _flowed(tags: list[_Text], width_in: float) -> list[list[_Text]]:
+def _flowed(tags: list[_Text]) -> list[list[_Text]]:
     """Tags in as many rows as they need."""
     rows: list[list[_Text]] = []
     for tag in tags:
-        if rows and sum(other.width_in + TAG_GAP_IN for other in rows[-1]) + tag.width_in <= width_in:
+        if rows and sum(other.width_in + TAG_GAP_IN for other in rows[-1]) + tag.width_in <= HEAD_IN:
             rows[-1].append(tag)
         else:
             rows.append([tag])

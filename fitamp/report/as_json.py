@@ -13,7 +13,15 @@ from fitamp.fitting import LoopFit, Root
 from fitamp.report.conditions import caution_records, repeat_records
 from fitamp.sweep import NoiseLevels, Sweep
 
-__all__ = ["comparison_as_dict", "dumps", "fit_as_dict", "sweep_as_dict"]
+__all__ = [
+    "comparison_as_dict",
+    "dumps",
+    "estimate_record",
+    "finite",
+    "fit_as_dict",
+    "sweep_as_dict",
+    "sweep_record",
+]
 
 
 def dumps(record: Mapping[str, Any]) -> str:
@@ -24,14 +32,14 @@ def dumps(record: Mapping[str, Any]) -> str:
 
 def sweep_as_dict(sweep: Sweep) -> dict[str, Any]:
     """What was read (schema fitamp/read/1)."""
-    return {"schema": "fitamp/read/1", "sweep": _sweep(sweep)}
+    return {"schema": "fitamp/read/1", "sweep": sweep_record(sweep)}
 
 
 def fit_as_dict(fit: LoopFit) -> dict[str, Any]:
     """A fit (schema fitamp/fit/1)."""
     return {
         "schema": "fitamp/fit/1",
-        "sweep": _sweep(fit.sweep),
+        "sweep": sweep_record(fit.sweep),
         "model": {
             "name": fit.model_name,
             "poles": len(fit.named_poles),
@@ -39,24 +47,24 @@ def fit_as_dict(fit: LoopFit) -> dict[str, Any]:
             "resonances": len(fit.resonant_poles) // 2,
             "doublets": len(fit.doublet_poles),
             "adequate": fit.adequacy.adequate,
-            "reduced_chi_square": _finite(fit.adequacy.reduced_chi_square),
+            "reduced_chi_square": finite(fit.adequacy.reduced_chi_square),
             "residuals": fit.adequacy.sentence,
             "misfit_hz": [list(stretch) for stretch in fit.adequacy.where_hz or ()],
         },
-        "noise": _noise(fit.noise),
-        "parameters": {name: _estimate(estimate) for name, estimate in fit.parameters.items()},
+        "noise": noise_record(fit.noise),
+        "parameters": {name: estimate_record(estimate) for name, estimate in fit.parameters.items()},
         "zero": {
             "half_plane": fit.zero.half_plane.value,
-            "frequency_hz": _finite(fit.zero.frequency_hz),
-            "ci95_hz": [_finite(end) for end in fit.zero.ci95_hz],
+            "frequency_hz": finite(fit.zero.frequency_hz),
+            "ci95_hz": [finite(end) for end in fit.zero.ci95_hz],
         },
         "poles": [_root(name, root) for name, root in fit.named_poles],
         "zeros": [_root(name, root) for name, root in fit.named_zeros],
         "range_steps": [
-            {"f_hz": step.f_hz, "size_db": _estimate(step.size_db), "turn_deg": _estimate(step.turn_deg)}
+            {"f_hz": step.f_hz, "size_db": estimate_record(step.size_db), "turn_deg": estimate_record(step.turn_deg)}
             for step in fit.range_steps
         ],
-        "margins": {name: _estimate(estimate) for name, estimate in fit.margins.items()},
+        "margins": {name: estimate_record(estimate) for name, estimate in fit.margins.items()},
         "warnings": [
             *caution_records(fit.sweep),
             *({"code": warning.code.value, "message": warning.message} for warning in fit.warnings),
@@ -79,15 +87,15 @@ def comparison_as_dict(comparison: Comparison) -> dict[str, Any]:
     record["comparison"] = [
         {
             "quantity": row.quantity,
-            "designed": _finite(row.designed),
-            "designed_as_measured": _finite(row.designed_as_measured),
-            "measured": _finite(row.measured.value),
-            "stderr": _finite(row.measured.stderr),
-            "ci95": [_finite(end) for end in row.measured.ci95],
-            "deviation": _finite(row.deviation),
-            "sigma": _finite(row.sigma),
-            "low": _finite(row.low),
-            "high": _finite(row.high),
+            "designed": finite(row.designed),
+            "designed_as_measured": finite(row.designed_as_measured),
+            "measured": finite(row.measured.value),
+            "stderr": finite(row.measured.stderr),
+            "ci95": [finite(end) for end in row.measured.ci95],
+            "deviation": finite(row.deviation),
+            "sigma": finite(row.sigma),
+            "low": finite(row.low),
+            "high": finite(row.high),
             "inside": row.inside,
         }
         for row in comparison.rows
@@ -95,12 +103,12 @@ def comparison_as_dict(comparison: Comparison) -> dict[str, Any]:
     record["verdict"] = {
         "nulling": verdict.nulling.value,
         "reason": verdict.reason,
-        "zero_time_s": _estimate(verdict.zero_time_s),
-        "gm2_rz": _estimate(verdict.gm2_rz),
-        "window_s": [_finite(verdict.window.low_s), _finite(verdict.window.high_s)],
+        "zero_time_s": estimate_record(verdict.zero_time_s),
+        "gm2_rz": estimate_record(verdict.gm2_rz),
+        "window_s": [finite(verdict.window.low_s), finite(verdict.window.high_s)],
     }
     record["advice"] = {
-        "rz_change_ohm": _estimate(comparison.advice.rz_change_ohm),
+        "rz_change_ohm": estimate_record(comparison.advice.rz_change_ohm),
         "sentence": comparison.advice.sentence,
     }
     notes = [{"code": note.code.value, "message": note.message} for note in comparison.notes]
@@ -109,15 +117,16 @@ def comparison_as_dict(comparison: Comparison) -> dict[str, Any]:
     record["parasitic"] = None
     if parasitic is not None:
         record["parasitic"] = {
-            "load_total_f": _estimate(parasitic.load_total_f),
-            "load_f": _estimate(parasitic.load_f),
-            "first_stage_f": _estimate(parasitic.first_stage_f),
+            "load_total_f": estimate_record(parasitic.load_total_f),
+            "load_f": estimate_record(parasitic.load_f),
+            "first_stage_f": estimate_record(parasitic.first_stage_f),
             "sentence": parasitic.sentence,
         }
     return record
 
 
-def _sweep(sweep: Sweep) -> dict[str, Any]:
+def sweep_record(sweep: Sweep) -> dict[str, Any]:
+    """A sweep: where it comes from, and what was decided of it."""
     return {
         "file": sweep.origin.file,
         "sha256": sweep.origin.sha256,
@@ -129,7 +138,7 @@ def _sweep(sweep: Sweep) -> dict[str, Any]:
         "f_min_hz": sweep.f_min_hz,
         "f_max_hz": sweep.f_max_hz,
         "sign": sweep.sign.value,
-        "noise": None if sweep.noise is None else _noise(sweep.noise),
+        "noise": None if sweep.noise is None else noise_record(sweep.noise),
         "left_out": [{"f_hz": point.f_hz, "reason": point.reason} for point in sweep.left_out],
         "decisions": [
             {"topic": decision.topic, "choice": decision.choice, "reason": decision.reason}
@@ -138,7 +147,7 @@ def _sweep(sweep: Sweep) -> dict[str, Any]:
     }
 
 
-def _noise(noise: NoiseLevels) -> dict[str, Any]:
+def noise_record(noise: NoiseLevels) -> dict[str, Any]:
     return {
         "error_channel": noise.error_channel,
         "return_channel": noise.return_channel,
@@ -148,11 +157,12 @@ def _noise(noise: NoiseLevels) -> dict[str, Any]:
     }
 
 
-def _estimate(estimate: Estimate) -> dict[str, Any]:
+def estimate_record(estimate: Estimate) -> dict[str, Any]:
+    """One estimated number."""
     return {
-        "value": _finite(estimate.value),
-        "stderr": _finite(estimate.stderr),
-        "ci95": [_finite(end) for end in estimate.ci95],
+        "value": finite(estimate.value),
+        "stderr": finite(estimate.stderr),
+        "ci95": [finite(end) for end in estimate.ci95],
         "known": estimate.known.value,
     }
 
@@ -168,5 +178,6 @@ def _root(name: str, root: Root) -> dict[str, Any]:
     }
 
 
-def _finite(value: float | None) -> float | None:
+def finite(value: float | None) -> float | None:
+    """The number, or None for one that is not finite, which JSON does not have."""
     return None if value is None or not math.isfinite(value) else float(value)

@@ -5,7 +5,6 @@ Text from files is printed as it is, never read as markup, and control character
 
 from __future__ import annotations
 
-import io
 import math
 from collections.abc import Sequence
 from typing import TYPE_CHECKING
@@ -15,6 +14,7 @@ from fitamp.estimate import Estimate
 from fitamp.fitting import FitWarning, LoopFit
 from fitamp.fitting.result import LABELS, text_of, unit_of
 from fitamp.report.conditions import cautions, conditions
+from fitamp.report.console import new_console, print_table, printable, say, text_of_console
 from fitamp.report.further import further_sentences, model_in_words
 from fitamp.sweep import NoiseLevels, Sweep
 from fitamp.units import si, si_with_error, to_db
@@ -22,19 +22,21 @@ from fitamp.units import si, si_with_error, to_db
 if TYPE_CHECKING:
     from rich.console import Console
 
-__all__ = ["comparison_text", "fit_text", "printable", "sweep_text"]
-
-WIDTH = 100
-
-
-def printable(text: str) -> str:
-    """Text with control characters written as escapes, so that a file name cannot steer a terminal."""
-    return "".join(c if c.isprintable() else c.encode("unicode_escape").decode("ascii") for c in text)
+__all__ = [
+    "comparison_text",
+    "deviation_text",
+    "estimate_text",
+    "fit_text",
+    "interval_text",
+    "limits_text",
+    "printable",
+    "sweep_text",
+]
 
 
 def sweep_text(sweep: Sweep) -> str:
     """What was understood of a file, and why."""
-    console = _console()
+    console = new_console()
     rows = [
         ("points", f"{len(sweep)} used, {len(sweep.left_out)} left out", ""),
         ("band", f"{si(sweep.f_min_hz, 'Hz')} to {si(sweep.f_max_hz, 'Hz')}", ""),
@@ -42,79 +44,79 @@ def sweep_text(sweep: Sweep) -> str:
         *([] if sweep.noise is None else [("noise", _levels(sweep.noise), sweep.noise.source)]),
         *((decision.topic, decision.choice, decision.reason) for decision in sweep.decisions),
     ]
-    _print_table(console, printable(sweep.origin.file), ("", "understood", "why"), rows)
+    print_table(console, printable(sweep.origin.file), ("", "understood", "why"), rows)
     first = [
         (si(f, "Hz", digits=6), f"{m:.3f}", f"{p:.2f}")
         for f, m, p in zip(sweep.freq_hz[:3], sweep.magnitude_db[:3], sweep.phase_deg[:3], strict=True)
     ]
-    _print_table(console, "first points", ("frequency", "|T| (dB)", "phase (°)"), first, numbers=True)
+    print_table(console, "first points", ("frequency", "|T| (dB)", "phase (°)"), first, numbers=True)
     if sweep.left_out:
         left = [(si(point.f_hz, "Hz"), point.reason) for point in sweep.left_out[:10]]
-        _print_table(console, "left out", ("frequency", "reason"), left)
-    return _text(console)
+        print_table(console, "left out", ("frequency", "reason"), left)
+    return text_of_console(console)
 
 
 def fit_text(fit: LoopFit) -> str:
     """A fit: parameters, the zero in words, margins, what to know."""
-    console = _console()
+    console = new_console()
     rows = [
-        (LABELS[name], _estimate_text(name, estimate), _interval(name, estimate.ci95), estimate.known.value)
+        (LABELS[name], estimate_text(name, estimate), _interval(name, estimate.ci95), estimate.known.value)
         for name, estimate in fit.parameters.items()
         if name not in {"delay_s", "far_pole_s"} or estimate.stderr is not None
     ]
-    _print_table(console, printable(fit.sweep.origin.file), ("quantity", "value ± 1 σ", "95 % interval", "known"), rows)
+    print_table(console, printable(fit.sweep.origin.file), ("quantity", "value ± 1 σ", "95 % interval", "known"), rows)
     _complex_pair(console, fit)
     for sentence in further_sentences(fit):
-        _say(console, sentence)
-    _say(console, f"zero: {zero_sentence(fit)}")
+        say(console, sentence)
+    say(console, f"zero: {zero_sentence(fit)}")
     _margins(console, fit)
-    _say(
+    say(
         console,
         f"model: {model_in_words(fit)}; {fit.adequacy.sentence} (reduced chi-square "
         f"{fit.adequacy.reduced_chi_square:.3g})",
     )
-    _say(console, noise_sentence(fit))
+    say(console, noise_sentence(fit))
     _warnings(console, fit, ())
-    return _text(console)
+    return text_of_console(console)
 
 
 def comparison_text(comparison: Comparison) -> str:
     """A comparison: verdict first, then what to do, then the numbers."""
-    console = _console()
+    console = new_console()
     verdict = comparison.verdict
-    _say(console, f"{verdict.nulling.value.upper()}: {verdict.reason}", style="bold")
-    _say(console, f"what to do: {comparison.advice.sentence}")
+    say(console, f"{verdict.nulling.value.upper()}: {verdict.reason}", style="bold")
+    say(console, f"what to do: {comparison.advice.sentence}")
     if comparison.parasitic is not None:
-        _say(console, f"parasitic: {comparison.parasitic.sentence}")
+        say(console, f"parasitic: {comparison.parasitic.sentence}")
     gm2_rz = verdict.gm2_rz
     if gm2_rz.value is not None:
-        _say(
+        say(
             console,
             f"gm2·Rz: {si_with_error(gm2_rz.value, gm2_rz.stderr, '')} "
             "(1 puts the zero at infinity; with gm2 and Cc as designed)",
         )
     title = f"{printable(comparison.fit.sweep.origin.file)} against {printable(comparison.design.file)}"
     headings = ("quantity", "designed", "seen as\nmeasured", "measured ± 1 σ", "deviation", "in σ", "limits", "within")
-    _print_table(console, title, headings, _comparison_rows(comparison.rows), numbers=True)
+    print_table(console, title, headings, _comparison_rows(comparison.rows), numbers=True)
     _limits_kept(console, comparison)
     _complex_pair(console, comparison.fit)
     for sentence in further_sentences(comparison.fit):
-        _say(console, sentence)
+        say(console, sentence)
     _margins(console, comparison.fit, rows=("overshoot", "settling_s"))
-    _say(console, f"lag: {lag_sentence(comparison.fit)}")
-    _say(
+    say(console, f"lag: {lag_sentence(comparison.fit)}")
+    say(
         console,
         f"model: {comparison.fit.adequacy.sentence} (reduced chi-square "
         f"{comparison.fit.adequacy.reduced_chi_square:.3g}); {noise_sentence(comparison.fit)}",
     )
     if comparison.design.assumed_spreads:
-        _say(
+        say(
             console,
             f"assumed: a spread of 20 % for {', '.join(comparison.design.assumed_spreads)}, not stated in "
             "the design file",
         )
     _warnings(console, comparison.fit, comparison.notes)
-    return _text(console)
+    return text_of_console(console)
 
 
 def _complex_pair(console: Console, fit: LoopFit) -> None:
@@ -122,7 +124,7 @@ def _complex_pair(console: Console, fit: LoopFit) -> None:
         if root.value_hz.imag > 0:
             real, imaginary = si(root.value_hz.real, "Hz"), si(root.value_hz.imag, "Hz")
             quality = abs(root.value_hz) / abs(2 * root.value_hz.real)
-            _say(console, f"poles: a complex pair at {real} ± j {imaginary} (Q = {quality:.3g}); pole 1 is pole 2")
+            say(console, f"poles: a complex pair at {real} ± j {imaginary} (Q = {quality:.3g}); pole 1 is pole 2")
 
 
 def _limits_kept(console: Console, comparison: Comparison) -> None:
@@ -138,7 +140,7 @@ def _limits_kept(console: Console, comparison: Comparison) -> None:
     open_rows = [LABELS[row.quantity] for row in stated if row.inside is None]
     if open_rows:
         parts.append(f"not decided: {', '.join(open_rows)}")
-    _say(console, f"limits beside the zero's: {'; '.join(parts)}")
+    say(console, f"limits beside the zero's: {'; '.join(parts)}")
 
 
 def lag_sentence(fit: LoopFit) -> str:
@@ -194,25 +196,26 @@ def _comparison_row(row: Row) -> tuple[str, ...]:
     if row.quantity == "dc_gain":
         # A gain is read in dB at the bench; scripts get V/V.
         numbers = [_decibels(value) for value in (row.designed, row.designed_as_measured)]
-        measured = _estimate_text(row.quantity, row.measured)
-        limits = _limits(_as_db(row.low), _as_db(row.high), "dB")
+        measured = estimate_text(row.quantity, row.measured)
+        limits = limits_text(_as_db(row.low), _as_db(row.high), "dB")
     else:
         numbers = [si(value, unit) for value in (row.designed, row.designed_as_measured)]
-        measured, limits = _estimate_text(row.quantity, row.measured), _limits(row.low, row.high, unit)
+        measured, limits = estimate_text(row.quantity, row.measured), limits_text(row.low, row.high, unit)
         if row.quantity == "gain_margin_db" and row.measured.value is None:
             measured = "unlimited"
     return (
         LABELS[row.quantity],
         *numbers,
         measured,
-        _deviation(row.deviation, unit),
+        deviation_text(row.deviation, unit),
         "–" if row.sigma is None else _sigma(row.sigma),
         limits,
         {True: "yes", False: "NO", None: "–" if row.low is None and row.high is None else "?"}[row.inside],
     )
 
 
-def _deviation(deviation: float | None, unit: str) -> str:
+def deviation_text(deviation: float | None, unit: str) -> str:
+    """A relative deviation in percent; of degrees and dB the difference."""
     if deviation is None:
         return "–"
     if unit in {"°", "dB"}:
@@ -244,7 +247,8 @@ def _decibels(ratio: float | None) -> str:
     return si(_as_db(ratio), "dB")
 
 
-def _estimate_text(quantity: str, estimate: Estimate) -> str:
+def estimate_text(quantity: str, estimate: Estimate) -> str:
+    """Value ± standard error or a bound; a gain in dB."""
     return _gain_text(estimate) if quantity == "dc_gain" else text_of(quantity, estimate)
 
 
@@ -263,7 +267,8 @@ def _sigma(sigma: float) -> str:
     return (f"{sigma:+.1f}" if abs(sigma) < 100 else f"{sigma:+.0f}").replace("-", "−")
 
 
-def _limits(low: float | None, high: float | None, unit: str) -> str:
+def limits_text(low: float | None, high: float | None, unit: str) -> str:
+    """Limits as "≥ 60°", or a span."""
     if low is not None and high is not None and math.isfinite(low) and math.isfinite(high):
         return _span(low, high, unit)
     if low is not None and math.isfinite(low):
@@ -281,11 +286,16 @@ def _span(low: float, high: float, unit: str) -> str:
 
 
 def _interval(name: str, ci95: tuple[float | None, float | None]) -> str:
-    """Both ends, with digits enough to tell them apart."""
     low, high = ci95
     unit = unit_of(name)
     if name == "dc_gain":
         low, high, unit = _as_db(low), _as_db(high), "dB"
+    return interval_text((low, high), unit)
+
+
+def interval_text(ci95: tuple[float | None, float | None], unit: str) -> str:
+    """Both ends of an interval, with digits enough to tell them apart."""
+    low, high = ci95
     if low is None and high is None:
         return "–"
     digits = 4
@@ -305,65 +315,13 @@ def _margins(console: Console, fit: LoopFit, rows: Sequence[str] | None = None) 
             parts.append("gain margin unlimited (phase never reaches −180°)")
         else:
             parts.append(f"{LABELS[name]} {text_of(name, estimate)}")
-    _say(console, f"closed loop: {', '.join(parts)}")
+    say(console, f"closed loop: {', '.join(parts)}")
 
 
 def _warnings(console: Console, fit: LoopFit, notes: Sequence[FitWarning]) -> None:
     for condition in conditions(fit.sweep):
-        _say(console, condition)
+        say(console, condition)
     for code, sentence in cautions(fit.sweep):
-        _say(console, f"note ({code}): {sentence}", style="yellow")
+        say(console, f"note ({code}): {sentence}", style="yellow")
     for warning in (*notes, *fit.warnings):
-        _say(console, f"note ({warning.code.value}): {warning.message}", style="yellow")
-
-
-def _console() -> Console:
-    from rich.console import Console
-
-    # Not a terminal whatever the environment says (FORCE_COLOR …): the text also goes into files.
-    return Console(
-        file=io.StringIO(),
-        width=WIDTH,
-        markup=False,
-        highlight=False,
-        emoji=False,
-        no_color=True,
-        force_terminal=False,
-    )
-
-
-def _say(console: Console, text: str, style: str | None = None) -> None:
-    console.print(printable(text), style=style)
-
-
-def _print_table(
-    console: Console,
-    title: str,
-    headings: Sequence[str],
-    rows: Sequence[Sequence[str]],
-    *,
-    numbers: bool = False,
-) -> None:
-    from rich import box
-    from rich.table import Table
-    from rich.text import Text
-
-    table = Table(
-        title=Text(title),
-        title_justify="left",
-        box=box.SIMPLE_HEAD,
-        pad_edge=False,
-        padding=(0, 0),
-        show_edge=False,
-    )
-    for index, heading in enumerate(headings):
-        table.add_column(Text(heading), justify="right" if numbers and index else "left")
-    for row in rows:
-        table.add_row(*(Text(printable(cell)) for cell in row))
-    console.print(table)
-
-
-def _text(console: Console) -> str:
-    stream = console.file
-    assert isinstance(stream, io.StringIO)
-    return "\n".join(line.rstrip() for line in stream.getvalue().splitlines()) + "\n"
+        say(console, f"note ({warning.code.value}): {warning.message}", style="yellow")
