@@ -26,6 +26,7 @@ if TYPE_CHECKING:
     from fitamp.margins import closed_loop_step
     from fitamp.margins import margins as loop_margins
     from fitamp.noise import estimate_noise, simulate_bench
+    from fitamp.planning import Plan, PlannedSweep, Wanted, affordable_sweeps, plan
     from fitamp.sweep import NoiseLevels, Sign, Sweep
     from fitamp.transfer import Transfer
 
@@ -49,13 +50,17 @@ _HOME = {
     "LoopFit": "fitting",
     "NoiseLevels": "sweep",
     "Nulling": "comparison",
+    "Plan": "planning",
+    "PlannedSweep": "planning",
     "Sign": "sweep",
     "Sweep": "sweep",
     "SweepError": "errors",
     "ThroughDelay": "conditioning.through",
     "Transfer": "transfer",
     "UsageError": "errors",
+    "Wanted": "planning",
     "ZeroPlace": "fitting",
+    "affordable_sweeps": "planning",
     "average_repeats": "conditioning.repeats",
     "blame": "elements",
     "closed_loop_step": "margins",
@@ -65,6 +70,7 @@ _HOME = {
     "estimate_noise": "noise",
     "fit_sweep": "fitting",
     "loop_margins": "margins:margins",
+    "plan": "planning",
     "predict": "elements",
     "read_design": "design",
     "read_steps": "elements",
@@ -94,13 +100,17 @@ __all__ = [
     "LoopFit",
     "NoiseLevels",
     "Nulling",
+    "Plan",
+    "PlannedSweep",
     "Sign",
     "Sweep",
     "SweepError",
     "ThroughDelay",
     "Transfer",
     "UsageError",
+    "Wanted",
     "ZeroPlace",
+    "affordable_sweeps",
     "average_repeats",
     "blame",
     "closed_loop_step",
@@ -110,6 +120,7 @@ __all__ = [
     "estimate_noise",
     "fit_sweep",
     "loop_margins",
+    "plan",
     "predict",
     "read_design",
     "read_steps",

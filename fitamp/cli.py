@@ -85,6 +85,10 @@ def build_parser() -> argparse.ArgumentParser:
     _output_options(compare, folder=True)
     compare.set_defaults(action="compare")
 
+    _plan_command(
+        commands.add_parser("plan", help="the best sweeps to take, and how surely they will tell the elements")
+    )
+
     template = commands.add_parser("template", help="print a design file to fill in, with every table and key")
     template.add_argument("--out", type=_name, metavar="FILE", help="write it to a file instead")
     template.add_argument("--force", action="store_true", help="write over an existing file")
@@ -96,6 +100,50 @@ def build_parser() -> argparse.ArgumentParser:
     demo.add_argument("--force", action="store_true", help="write over what stands in the output folder")
     demo.set_defaults(action="demo")
     return parser
+
+
+def _plan_command(plan: argparse.ArgumentParser) -> None:
+    plan.add_argument("--design", required=True, metavar="D.toml", help="design file, with elements")
+    listed = plan.add_argument_group("what can be taken: every load with every resistance in every band")
+    listed.add_argument("--loads", metavar="LIST", help='added loads, as in "0, 5 pF, 10 pF" (default: by the design)')
+    listed.add_argument(
+        "--resistances", metavar="LIST", help='added in series with Rz, as in "0, 500 Ohm, -400 Ohm" (default: 0)'
+    )
+    listed.add_argument(
+        "--band",
+        nargs=2,
+        action="append",
+        metavar=("LOW", "HIGH"),
+        help='as in "1 kHz" "200 MHz"; may be given again for another band to choose from (default: by the design)',
+    )
+    listed.add_argument("--points", type=_count, default=281, metavar="N", help="points of a sweep (default 281)")
+    listed.add_argument("--averages", type=_count, default=1, metavar="N", help="averages of each sweep (default 1)")
+    listed.add_argument("--noise", metavar="LEVELS", help=f"{NOISE_HELP}; default: usual ones, which are printed")
+    choice = plan.add_argument_group("choice")
+    choice.add_argument(
+        "--sweeps", type=_count, metavar="N", help="how many to choose (default: as few as meet --want, else 3)"
+    )
+    choice.add_argument(
+        "--want",
+        action="append",
+        metavar="PRECISION",
+        help='standard deviations that shall be met, as in "gm2 1 %%, phase_margin_deg 0.5 deg"',
+    )
+    choice.add_argument(
+        "--parts", type=_count, default=0, metavar="N", help="also the worst of N parts drawn from the spreads"
+    )
+    choice.add_argument("--seed", type=_count, default=1, metavar="N", help="of the parts drawn (default 1)")
+    have = plan.add_argument_group("what was taken already")
+    have.add_argument(
+        "--have",
+        metavar="FILE",
+        help="steps file of the sweeps taken, or one sweep with nothing added; plan what is next",
+    )
+    have.add_argument("--columns", metavar="SPEC", help="as for read")
+    have.add_argument("--trace", metavar="Sij", help="as for read")
+    have.add_argument("--sign", choices=("as-read", "inverted"), help="as for read")
+    _output_options(plan, folder=True)
+    plan.set_defaults(action="plan")
 
 
 def _reading_options(parser: argparse.ArgumentParser) -> None:
@@ -206,12 +254,13 @@ def _one_line(text: str) -> str:
 
 
 def _action(name: str) -> Callable[[argparse.Namespace], int]:
-    from fitamp import commands
+    from fitamp import commands, plan_command
 
     actions: dict[str, Callable[[argparse.Namespace], int]] = {
         "read": commands.read,
         "fit": commands.fit,
         "compare": commands.compare,
+        "plan": plan_command.plan,
         "template": commands.template,
         "demo": commands.demo,
     }

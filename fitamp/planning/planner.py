@@ -97,9 +97,9 @@ def plan(
         raise UsageError("nothing is wanted; say which element shall be known how well, or choose another criterion")
     worth = outcomes.worth(by, in_si)
     everything = outcomes.stage(tuple(range(len(sweeps))))
-    beyond = tuple(name for name, sd in in_si.items() if not is_met(everything.of(name).sd, sd))
+    can_be_met = all(is_met(everything.of(name).sd, sd) for name, sd in in_si.items())
     plain = _plain(sweeps) if plain_first and have is None else ()
-    choice = _chosen(worth, len(sweeps), count, as_few_as_meet=bool(wishes) and not beyond, one_of=plain)
+    choice = _chosen(worth, len(sweeps), count, as_few_as_meet=bool(wishes) and can_be_met, one_of=plain)
     ordered = in_order(worth, choice.indices, one_of=plain)
     left = [index for index in range(len(sweeps)) if index not in ordered]
     further = min(left, key=lambda index: worth((*ordered, index)), default=None)
@@ -110,10 +110,10 @@ def plan(
         taken=0 if have is None else len(have.solution.sweeps),
         stages=tuple(outcomes.stage(ordered[:number]) for number in range(len(ordered) + 1)),
         further=None if further is None else outcomes.stage((*ordered, further)),
+        everything=everything,
         criterion=by,
         is_exhaustive=choice.is_exhaustive,
         wanted=tuple(in_si.items()),
-        out_of_reach=beyond,
         parts_drawn=parts_drawn,
     )
 

@@ -167,8 +167,9 @@ class Plan:
         centre
     stages : before any further sweep, then after each one chosen, in the order in which each adds most
     further : the last stage with the best of those left; None where none is left
+    everything : what all candidates together would tell
     criterion, is_exhaustive : how the sweeps were chosen; whether every set of that size was looked at
-    wanted : standard deviations in SI units by name; out_of_reach : those that not even all candidates meet
+    wanted : standard deviations in SI units by name
     parts_drawn : how many parts the `worst` numbers are over
     """
 
@@ -178,10 +179,10 @@ class Plan:
     taken: int
     stages: tuple[Stage, ...]
     further: Stage | None
+    everything: Stage
     criterion: Criterion
     is_exhaustive: bool
     wanted: tuple[tuple[str, float], ...]
-    out_of_reach: tuple[str, ...]
     parts_drawn: int
 
     @property
@@ -197,7 +198,15 @@ class Plan:
     @property
     def missed(self) -> tuple[str, ...]:
         """What is wanted more surely than these sweeps tell it."""
-        return tuple(name for name, sd in self.wanted if not is_met(self.last.of(name).sd, sd))
+        return self._missed_by(self.last)
+
+    @property
+    def out_of_reach(self) -> tuple[str, ...]:
+        """What is wanted more surely than all candidates together tell it."""
+        return self._missed_by(self.everything)
+
+    def _missed_by(self, stage: Stage) -> tuple[str, ...]:
+        return tuple(name for name, sd in self.wanted if not is_met(stage.of(name).sd, sd))
 
 
 def is_met(sd: float | None, wanted: float) -> bool:

@@ -69,11 +69,11 @@ class PlannedSweep:
 
     @property
     def added(self) -> str:
-        """What is added, in words: "nothing added", "+5 pF", "+5 pF −400 Ω"."""
+        """What is added, in words: "nothing added", "+5 pF", "+5 pF with −400 Ω"."""
         load_f, rz_ohm = self.condition.load_added_f, self.condition.rz_added_ohm
         parts = [_signed(load_f, "F")] if load_f else []
         parts += [_signed(rz_ohm, "Ω")] if rz_ohm else []
-        return " ".join(parts) or "nothing added"
+        return " with ".join(parts) or "nothing added"
 
     @property
     def band(self) -> str:
