@@ -23,7 +23,7 @@ from fitamp.fitting.intervals import RISE_95, estimate_by_curvature, estimate_by
 from fitamp.fitting.orders import needs_more, with_factors
 from fitamp.fitting.result import LoopFit
 from fitamp.fitting.screen import screened
-from fitamp.fitting.search import Search, lifted
+from fitamp.fitting.search import FREE_DELAY, FREE_FAR_POLE, Search, lifted
 from fitamp.fitting.statements import place_of_zero, warnings_of
 from fitamp.fitting.two_pole import DelayPrior, FarPoleCurve, FarPolePrior, Pole2Prior, Solution, solution_at
 from fitamp.sweep import NoiseLevels, Sweep
@@ -65,9 +65,10 @@ def fit_sweep(
     noise
         Noise levels; estimated from the sweep's own scatter where neither this nor ``sweep.noise`` is given.
     far_pole, delay
-        What is known of a third pole's time and of the path delay. Without them both are taken as 0 unless the sweep
-        cannot be described so and can with one of them free; the half plane of the zero is stated only as far as it
-        holds whatever they are.
+        What is known of a third pole's time and of the path delay. Where one is given, the other is unknown, and so
+        free, unless it is given, too (`FarPolePrior()` and `DelayPrior()` stand for none). Without either both are
+        taken as 0 unless the sweep cannot be described so and can with one of them free; the half plane of the zero is
+        stated only as far as it holds whatever they are.
     pole2
         Rough knowledge of pole 2. It chooses between a pole 2 and a doublet that only looks like one; what comes from
         it alone is not called measured.
@@ -101,7 +102,7 @@ def fit_sweep(
         for screening in range(SCREENINGS + 1):
             search = Search(sweep=sweep, noise=noise, known=known, delay_s=delay.mean_s if delay else 0.0, pole2=pole2)
             if lag_is_known:
-                solution = search.with_far_pole(far_pole or FarPolePrior(), delay or DelayPrior())
+                solution = search.with_far_pole(far_pole or FREE_FAR_POLE, delay or FREE_DELAY)
             else:
                 solution = search.plain()
             if keep_all or screening == SCREENINGS:
@@ -118,7 +119,7 @@ def fit_sweep(
     _check_likeness(sweep, solution)
     adequacy = judge(solution, sweep.freq_hz)
     # The noise comes from about as many second differences as there are points.
-    quantile = two_sided_95(1e9 if noise else len(sweep) - 5)
+    quantile = two_sided_95(_degrees_of_freedom(sweep, noise))
     parameters = fitted_parameters(solution, sweep, adequacy, quantile)
     if not parameters.gain_bandwidth_hz.is_measured:
         raise FitError(
@@ -153,6 +154,13 @@ def fit_sweep(
         quantile=quantile,
     )
     return replace(fit, warnings=warnings_of(fit, None if lag_is_known else strict))
+
+
+def _degrees_of_freedom(sweep: Sweep, noise: NoiseLevels | None) -> float:
+    """How well the noise is known: from second differences, from the differences of repeats, or stated."""
+    if noise is None:
+        return len(sweep) - 5
+    return 2 * len(sweep) * (noise.repeats - 1) - 4 if noise.repeats > 1 else 1e9
 
 
 def _whatever_the_lag(
@@ -196,7 +204,8 @@ def _check_likeness(sweep: Sweep, solution: Solution) -> None:
     closed, closed_fit = sweep.gain / (1 + sweep.gain), fitted / (1 + fitted)
     miss = float(np.median(np.abs(closed - closed_fit) / np.maximum(np.abs(closed), 1e-12)))
     g, q, *_ = solution.model.physical(solution.values)
-    if g < RISES * q * float(np.abs(sweep.gain).max()):
+    # Of the fit, not of the data: where the error receiver drowns, single readings may be as large as they like.
+    if g < RISES * q * float(np.abs(fitted).max()):
         raise FitError(
             f"{sweep.origin.file}: the magnitude rises from DC, as no loop gain of this kind does; check that the "
             "columns hold loop gain"

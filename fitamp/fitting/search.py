@@ -54,6 +54,9 @@ VISIBLE_TURN = 0.02
 REACH_OF_PRIOR = 5.0
 # Loop gain, or its inverse, that no loop has.
 HUGE_GAIN = 1e20
+# A pole 2 inside the band that lowers chi-square by less than this against one at the band's top was drawn there by
+# noise: with a zero beside it, noise has some ten places to choose from.
+UNPLACED = 10.0
 LN_Q, LN_B = 1, 2
 FREE_DELAY, NO_DELAY = DelayPrior(sd_s=np.inf), DelayPrior()
 FREE_FAR_POLE, NO_FAR_POLE = FarPolePrior(sd_s=np.inf), FarPolePrior()
@@ -126,7 +129,7 @@ class Search:
             )
         # By any difference: with a noise taken for too large at the start, as on exact data, all differences are small.
         winner = min(ends, key=lambda end: end.optimum.chi_square)
-        return _in_sight(self.settled(winner), self.sweep)
+        return _in_sight(_at_the_top(self.settled(winner), self.sweep), self.sweep)
 
     def vectors(self, model: TwoPole) -> list[FloatArray]:
         """The guesses as parameter vectors of a model without further factors."""
@@ -171,7 +174,7 @@ class Search:
             if np.isfinite(end.optimum.chi_square) and self.is_sane(model, end.values):
                 ends.append(end)
         winner = min(ends, key=lambda end: end.optimum.chi_square)
-        return plain if winner is plain else _in_sight(self.settled(winner), self.sweep)
+        return plain if winner is plain else _in_sight(_at_the_top(self.settled(winner), self.sweep), self.sweep)
 
     def plain_or_with_lag(self, plain: Solution) -> tuple[Solution, Solution | None]:
         """The solution `plain` without lag, or, where that is not adequate, with the simplest lag that makes it so.
@@ -266,6 +269,21 @@ def _in_sight(solution: Solution, sweep: Sweep) -> Solution:
             if held.optimum.converged and held.optimum.chi_square < solution.optimum.chi_square + FREE_OF_CHARGE:
                 solution = solution_at(solution.model, sweep, solution.noise, held.values)
                 break
+    return solution
+
+
+def _at_the_top(solution: Solution, sweep: Sweep) -> Solution:
+    """The same solution with a pole 2 that noise alone has drawn into the band put back to the band's top.
+
+    A zero on pole 2 makes them both invisible: such a pair may be found anywhere, and looks measured there.
+    """
+    model = solution.model
+    top = float(np.log(1 / (2 * np.pi * sweep.f_max_hz)))
+    if model.pole2 is not None or model.factors or solution.values[LN_B] <= top:
+        return solution
+    held = solve(model, sweep, solution.noise, solution.values, hold=(LN_B, top), tolerance=RACE_TOLERANCE)
+    if held.optimum.converged and held.optimum.chi_square < solution.optimum.chi_square + UNPLACED:
+        return solution_at(model, sweep, solution.noise, held.values)
     return solution
 
 

@@ -180,6 +180,7 @@ def _third_pole() -> Scenario:
         priors=(GaussianPrior(weights={"far_pole_s": 1.0, "zero_time_s": -slope}, sd=sd_s),),
         draw=lambda rng: {"far_pole_s": here_s + sd_s * rng.standard_normal()},
         far_pole=fitamp.FarPolePrior(intercept_s=here_s - slope * zero_time_s, slope=slope, sd_s=sd_s),
+        delay=fitamp.DelayPrior(),
         real_poles=3,
     )
 
@@ -230,6 +231,7 @@ def _scenarios() -> tuple[Scenario, ...]:
             truth=_truth(LEFT_S, delay_s=0.5e-9),
             free=(*CORE, "delay_s"),
             delay=fitamp.DelayPrior(sd_s=math.inf),
+            far_pole=fitamp.FarPolePrior(),
         ),
         _third_pole(),
         replace(

@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
-from fitamp import FarPolePrior, simulate_bench
+from fitamp import DelayPrior, FarPolePrior, simulate_bench
 from fitamp.arrays import ComplexArray, FloatArray
 from fitamp.conditioning.spurs import find_spurs, without_spurs
 from fitamp.fitting import fit_sweep
@@ -80,7 +80,7 @@ def test_a_single_bad_reading_is_left_out_with_its_frequency_and_the_fit_is_as_w
 def test_a_known_lag_does_not_keep_bad_points_in() -> None:
     gain = measured(loop(), 6).gain.copy()
     gain[210] *= 1.3
-    found = fit_sweep(Sweep(freq_hz=FREQ_HZ, gain=gain), far_pole=FarPolePrior())
+    found = fit_sweep(Sweep(freq_hz=FREQ_HZ, gain=gain), far_pole=FarPolePrior(), delay=DelayPrior())
     assert [point.f_hz for point in found.sweep.left_out] == [FREQ_HZ[210]]
 
 
