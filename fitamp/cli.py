@@ -68,6 +68,7 @@ def build_parser() -> argparse.ArgumentParser:
     )
     _reading_options(read)
     _output_options(read, folder=False)
+    read.add_argument("--plot", action="store_true", help="draw magnitude and phase in characters, too")
     read.set_defaults(action="read")
 
     fit = commands.add_parser("fit", help="fit two poles and one zero to a sweep or its repeats")

@@ -22,7 +22,8 @@ from fitamp.measured import Measured, Reading, measured
 from fitamp.report.as_json import comparison_as_dict, dumps, fit_as_dict, sweep_as_dict
 from fitamp.report.conditions import through_as_dict
 from fitamp.report.files import refuse_existing, write_text
-from fitamp.report.tables import comparison_text, fit_text, printable, sweep_text
+from fitamp.report.reading import sweep_text
+from fitamp.report.tables import comparison_text, fit_text, printable
 from fitamp.sweep import Sign, Sweep
 
 __all__ = ["compare", "demo", "fit", "read", "template"]
@@ -38,7 +39,9 @@ def read(args: argparse.Namespace) -> int:
     if reading.are_repeats:
         average = average_repeats(reading.sweeps(args.files))
         deliver(
-            args, {"schema": "fitamp/read/1", "sweeps": [sweep_as_dict(average)], "errors": []}, sweep_text(average)
+            args,
+            {"schema": "fitamp/read/1", "sweeps": [sweep_as_dict(average)], "errors": []},
+            sweep_text(average, plot=args.plot),
         )
         return 0
     for file in args.files:
@@ -55,7 +58,7 @@ def read(args: argparse.Namespace) -> int:
     record: dict[str, Any] = {"schema": "fitamp/read/1"}
     record |= {"sweeps": [sweep_as_dict(sweep) for sweep in sweeps], "errors": errors}
     if sweeps:
-        deliver(args, record, "\n".join(sweep_text(sweep) for sweep in sweeps))
+        deliver(args, record, "\n".join(sweep_text(sweep, plot=args.plot) for sweep in sweeps))
     elif args.json == STDOUT:
         message = f"none of the {len(errors)} files can be read"
         print(dumps(record | {"schema": "fitamp/error/1", "error": {"message": message, "exit_code": code}}))

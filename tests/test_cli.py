@@ -71,6 +71,14 @@ def test_read_says_what_was_understood(capsys: Captured) -> None:
     assert out.index(PART_A.name) < out.index(PART_B.name)
 
 
+def test_read_draws_the_sweep_on_request(capsys: Captured) -> None:
+    _, plain, _ = called(capsys, "read", PART_A)
+    code, drawn, err = called(capsys, "read", PART_A, "--plot")
+    assert (code, err) == (0, "")
+    assert drawn.startswith(plain)
+    assert drawn[len(plain) :].split("\n")[1] == "|T| (dB)"
+
+
 def test_fit_prints_parameters_and_margins(capsys: Captured) -> None:
     code, out, err = called(capsys, "fit", PART_A)
     assert (code, err) == (0, "")

@@ -132,6 +132,7 @@ def sweep_record(sweep: Sweep) -> dict[str, Any]:
         "sha256": sweep.origin.sha256,
         "form": sweep.origin.form,
         "trace": sweep.origin.trace,
+        "notes": list(sweep.origin.notes),
         "repeats": repeat_records(sweep),
         "points": len(sweep) + len(sweep.left_out),
         "points_used": len(sweep),

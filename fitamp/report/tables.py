@@ -16,7 +16,7 @@ from fitamp.fitting.result import LABELS, text_of, unit_of
 from fitamp.report.conditions import cautions, conditions
 from fitamp.report.console import new_console, print_table, printable, say, text_of_console
 from fitamp.report.further import further_sentences, model_in_words
-from fitamp.sweep import NoiseLevels, Sweep
+from fitamp.report.reading import levels_text
 from fitamp.units import si, si_with_error, to_db
 
 if TYPE_CHECKING:
@@ -30,30 +30,7 @@ __all__ = [
     "interval_text",
     "limits_text",
     "printable",
-    "sweep_text",
 ]
-
-
-def sweep_text(sweep: Sweep) -> str:
-    """What was understood of a file, and why."""
-    console = new_console()
-    rows = [
-        ("points", f"{len(sweep)} used, {len(sweep.left_out)} left out", ""),
-        ("band", f"{si(sweep.f_min_hz, 'Hz')} to {si(sweep.f_max_hz, 'Hz')}", ""),
-        ("loop gain", f"{sweep.magnitude_db[0]:.1f} dB to {sweep.magnitude_db[-1]:.1f} dB", "low end to high end"),
-        *([] if sweep.noise is None else [("noise", _levels(sweep.noise), sweep.noise.source)]),
-        *((decision.topic, decision.choice, decision.reason) for decision in sweep.decisions),
-    ]
-    print_table(console, printable(sweep.origin.file), ("", "understood", "why"), rows)
-    first = [
-        (si(f, "Hz", digits=6), f"{m:.3f}", f"{p:.2f}")
-        for f, m, p in zip(sweep.freq_hz[:3], sweep.magnitude_db[:3], sweep.phase_deg[:3], strict=True)
-    ]
-    print_table(console, "first points", ("frequency", "|T| (dB)", "phase (°)"), first, numbers=True)
-    if sweep.left_out:
-        left = [(si(point.f_hz, "Hz"), point.reason) for point in sweep.left_out[:10]]
-        print_table(console, "left out", ("frequency", "reason"), left)
-    return text_of_console(console)
 
 
 def fit_text(fit: LoopFit) -> str:
@@ -172,14 +149,7 @@ def zero_sentence(fit: LoopFit) -> str:
 
 def noise_sentence(fit: LoopFit) -> str:
     """The three noise numbers in words."""
-    return f"noise: {_levels(fit.noise)} ({fit.noise.source})"
-
-
-def _levels(noise: NoiseLevels) -> str:
-    return (
-        f"error channel {noise.error_channel:.2g}, return channel {noise.return_channel:.2g}, "
-        f"relative {noise.relative:.2g}"
-    )
+    return f"noise: {levels_text(fit.noise)} ({fit.noise.source})"
 
 
 def _comparison_rows(rows: Sequence[Row]) -> list[tuple[str, ...]]:

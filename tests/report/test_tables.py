@@ -11,7 +11,8 @@ from rich.cells import cell_len
 
 from fitamp.comparison import Comparison
 from fitamp.design import Limit
-from fitamp.report.tables import comparison_text, fit_text, printable, sweep_text
+from fitamp.report.reading import sweep_text
+from fitamp.report.tables import comparison_text, fit_text, printable
 
 
 def texts_of(comparison: Comparison) -> Iterator[str]:
