@@ -22,7 +22,7 @@ if TYPE_CHECKING:
     from fitamp.errors import DesignError, FitampError, FitError, InputError, SweepError, UsageError
     from fitamp.estimate import Estimate, Known
     from fitamp.fitting import DelayPrior, FarPolePrior, LoopFit, ZeroPlace, fit_sweep
-    from fitamp.importers import read_sweep, write_sweep
+    from fitamp.importers import read_sweep, read_sweeps, write_sweep
     from fitamp.margins import closed_loop_step
     from fitamp.margins import margins as loop_margins
     from fitamp.noise import estimate_noise, simulate_bench
@@ -75,6 +75,7 @@ _HOME = {
     "read_design": "design",
     "read_steps": "elements",
     "read_sweep": "importers",
+    "read_sweeps": "importers",
     "simulate_bench": "noise",
     "through_delay": "conditioning.through",
     "write_design": "design",
@@ -125,6 +126,7 @@ __all__ = [
     "read_design",
     "read_steps",
     "read_sweep",
+    "read_sweeps",
     "simulate_bench",
     "through_delay",
     "write_design",

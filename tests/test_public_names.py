@@ -56,6 +56,7 @@ PUBLIC = {
     "read_design",
     "read_steps",
     "read_sweep",
+    "read_sweeps",
     "simulate_bench",
     "through_delay",
     "write_design",
