@@ -38,6 +38,7 @@ REPEATED_HELP = (
     "CSV or Touchstone sweep of the loop gain; several must be repeats of one sweep, of the same part at the same "
     "frequencies and settings, in the order in which they were taken, and are averaged"
 )
+REPEATS_HELP = "the files, and all sweeps in each of them, are repeats of one sweep: average them"
 DELAY_HELP = (
     'delay that the bench adds to the loop: "0.4 ns", "0.4 ns +- 0.02 ns" with its standard deviation, or free where '
     "nothing is known of it"
@@ -86,6 +87,9 @@ def build_parser() -> argparse.ArgumentParser:
     _output_options(compare, folder=True)
     compare.set_defaults(action="compare")
 
+    _elements_command(
+        commands.add_parser("elements", help="which element of a part moved, by how much, and what to change")
+    )
     _plan_command(
         commands.add_parser("plan", help="the best sweeps to take, and how surely they will tell the elements")
     )
@@ -101,6 +105,41 @@ def build_parser() -> argparse.ArgumentParser:
     demo.add_argument("--force", action="store_true", help="write over what stands in the output folder")
     demo.set_defaults(action="demo")
     return parser
+
+
+def _elements_command(elements: argparse.ArgumentParser) -> None:
+    elements.add_argument(
+        "files",
+        nargs="*",
+        metavar="FILE",
+        help="CSV or Touchstone sweep of the loop gain, with nothing added unless --steps says so; all of one part",
+    )
+    elements.add_argument("--design", required=True, metavar="D.toml", help="design file, with elements")
+    elements.add_argument(
+        "--steps",
+        type=_name,
+        metavar="S.csv",
+        help="what was added in which sweep, a CSV with the columns file, load_added_F, rz_added_ohm, temp_C and note; "
+        "its sweeps are taken beside those named",
+    )
+    elements.add_argument(
+        "--under-test",
+        type=_name,
+        metavar="NAMES",
+        help='elements whose designed value shall count nothing, as in "CL gm2"',
+    )
+    elements.add_argument(
+        "--margin-wanted",
+        metavar="ANGLE",
+        help='phase margin to keep, as in "60 deg": which loads and resistors do (default: the design\'s limit)',
+    )
+    _reading_options(elements, repeats="the sweeps in each file are repeats of one sweep: average them")
+    _bench_options(elements, unstated="as the design file states it")
+    _output_options(elements, folder=True)
+    elements.add_argument(
+        "--design-out", type=_name, metavar="NEW.toml", help="write the part as estimated as a design file"
+    )
+    elements.set_defaults(action="elements")
 
 
 def _plan_command(plan: argparse.ArgumentParser) -> None:
@@ -131,7 +170,11 @@ def _plan_command(plan: argparse.ArgumentParser) -> None:
         help='standard deviations that shall be met, as in "gm2 1 %%, phase_margin_deg 0.5 deg"',
     )
     choice.add_argument(
-        "--parts", type=_count, default=0, metavar="N", help="also the worst of N parts drawn from the spreads"
+        "--parts",
+        type=_count,
+        default=30,
+        metavar="N",
+        help="parts drawn from the spreads beside the centre (default 30)",
     )
     choice.add_argument("--seed", type=_count, default=1, metavar="N", help="of the parts drawn (default 1)")
     have = plan.add_argument_group("what was taken already")
@@ -147,17 +190,13 @@ def _plan_command(plan: argparse.ArgumentParser) -> None:
     plan.set_defaults(action="plan")
 
 
-def _reading_options(parser: argparse.ArgumentParser) -> None:
+def _reading_options(parser: argparse.ArgumentParser, *, repeats: str = REPEATS_HELP) -> None:
     group = parser.add_argument_group("reading")
     group.add_argument("--columns", metavar="SPEC", help=COLUMNS_HELP)
     group.add_argument("--trace", metavar="Sij", help="trace of a Touchstone file (default S11 of one port, else S21)")
     group.add_argument("--sign", choices=("as-read", "inverted"), help="sign of the read-out, where it is not plain")
     group.add_argument("--sweep", type=_count, metavar="N", help="which sweep of a CSV that holds several, from 1")
-    group.add_argument(
-        "--repeats",
-        action="store_true",
-        help="the files, and all sweeps in each of them, are repeats of one sweep: average them",
-    )
+    group.add_argument("--repeats", action="store_true", help=repeats)
 
 
 def _bench_options(parser: argparse.ArgumentParser, *, unstated: str) -> None:
@@ -255,12 +294,13 @@ def _one_line(text: str) -> str:
 
 
 def _action(name: str) -> Callable[[argparse.Namespace], int]:
-    from fitamp import commands, plan_command
+    from fitamp import commands, elements_command, plan_command
 
     actions: dict[str, Callable[[argparse.Namespace], int]] = {
         "read": commands.read,
         "fit": commands.fit,
         "compare": commands.compare,
+        "elements": elements_command.elements,
         "plan": plan_command.plan,
         "template": commands.template,
         "demo": commands.demo,

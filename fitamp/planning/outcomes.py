@@ -24,7 +24,7 @@ ON_BENCH = (BENCH_LOAD, BENCH_DELAY)
 class Outcomes:
     """A part and the sweeps that could be taken of it, each looked at once; a set is its indices.
 
-    parts_drawn, seed : other parts over which the worst precision is sought
+    parts_drawn, seed : other parts over which precision is averaged and the worst is sought
     """
 
     def __init__(
@@ -45,7 +45,8 @@ class Outcomes:
         """What is to be expected after the sweeps with these indices."""
         triangles = [self._triangles[index] for index in indices]
         sds, covariance = standard_deviations(self.rows, self.die, triangles)
-        found = expected(self.rows, self.die, sds, covariance, before=self._before, worst=self._worst(indices))
+        mean, worst = self._over_parts(indices)
+        found = expected(self.rows, self.die, sds, covariance, before=self._before, over_parts=mean, worst=worst)
         by_name = {one.name: one for one in found}
         zero = next(row for row in self.rows if row.name == "zero_time_s")
         return Stage(
@@ -91,20 +92,25 @@ class Outcomes:
         parameters = [self.die.circuit.parameters[index] for index in block]
         return np.array([1.0 if one.is_log else (one.prior_mean or 1.0) ** 2 for one in parameters])
 
-    def _worst(self, indices: tuple[int, ...]) -> list[float | None] | None:
-        """Largest standard deviation over the parts drawn: of a logarithm relative to the part's own value."""
-        if not self._drawn:
-            return None
+    def _over_parts(self, indices: tuple[int, ...]) -> tuple[list[float | None], list[float | None]]:
+        """Root mean square and largest standard deviation over the parts drawn.
+
+        Of a logarithm relative to the part's own value.
+        """
         is_log = {one.name for one in self.die.circuit.parameters if one.is_log}
-        columns = []
+        parts = []
         for part, rows, triangles in self._drawn:
             sds = standard_deviations(rows, part, [triangles[index] for index in indices])[0]
-            columns.append(
-                [
-                    sd if sd is None or mine.name not in is_log else sd * (mine.value or 0.0) / (other.value or 1.0)
-                    for mine, other, sd in zip(self.rows, rows, sds, strict=True)
-                ]
-            )
-        return [
-            None if None in each else max(sd for sd in each if sd is not None) for each in zip(*columns, strict=True)
-        ]
+            at_mine = [
+                (mine.value or 0.0) / (other.value or 1.0) if mine.name in is_log else 1.0
+                for mine, other in zip(self.rows, rows, strict=True)
+            ]
+            parts.append([np.nan if sd is None else sd * share for sd, share in zip(sds, at_mine, strict=True)])
+        if not parts:
+            return [None] * len(self.rows), [None] * len(self.rows)
+        found = np.array(parts)
+        return _or_none(np.sqrt((found**2).mean(axis=0))), _or_none(found.max(axis=0))
+
+
+def _or_none(values: FloatArray) -> list[float | None]:
+    return [None if np.isnan(value) else float(value) for value in values]

@@ -34,7 +34,7 @@ def plan(
     have: ElementEstimate | None = None,
     under_test: Iterable[str] = (),
     plain_first: bool = True,
-    parts_drawn: int = 0,
+    parts_drawn: int = 30,
     seed: int = 1,
 ) -> Plan:
     """Choose the best sweeps from a list, before they are taken, and say what they will tell.
@@ -64,7 +64,8 @@ def plan(
         yet: it shows the part as it is, and a comparison takes it.
     parts_drawn, seed
         Precision depends on where the part lies. So many parts are drawn from the design's spreads (with `have`, from
-        what is known of the part), and the worst standard deviation over them is given, too.
+        what is known of the part); root mean square and largest of the standard deviations at each of them are given
+        beside those of the centre.
 
     Returns
     -------

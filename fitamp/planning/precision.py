@@ -100,7 +100,8 @@ def expected(
     covariance: FloatArray,
     *,
     before: Sequence[float | None],
-    worst: Sequence[float | None] | None,
+    over_parts: Sequence[float | None],
+    worst: Sequence[float | None],
 ) -> tuple[Expected, ...]:
     """The measures with what is to be expected of them."""
     shares = dict(zip(die.circuit.names, informed_shares(die.circuit, covariance), strict=True))
@@ -112,9 +113,10 @@ def expected(
             sd=sd,
             before=first,
             informed=float(shares[row.name]) if row.name in shares else None if row.name in QUANTITIES else 0.0,
+            over_parts=mean,
             worst=last,
         )
-        for row, sd, first, last in zip(rows, sds, before, worst or [None] * len(rows), strict=True)
+        for row, sd, first, mean, last in zip(rows, sds, before, over_parts, worst, strict=True)
     )
 
 

@@ -59,7 +59,8 @@ class Expected:
     sd : standard deviation to be expected; None where the number stays as good as unknown, 0 where it is held
     before : the same before any further sweep; of a quantity over the parts that the plan is for
     informed : of an element, the share of what will be known that comes from sweeps, 0 to 1; None for a quantity
-    worst : largest standard deviation over the parts drawn; None where none were, or where it is unknown in one
+    over_parts, worst : root mean square and largest of the standard deviations over the parts drawn, at each of them;
+        None where none were, or where it is unknown in one
     """
 
     name: str
@@ -68,22 +69,13 @@ class Expected:
     sd: float | None
     before: float | None
     informed: float | None = None
+    over_parts: float | None = None
     worst: float | None = None
 
     @property
     def relative(self) -> float | None:
         """Standard deviation over the value; None where either is missing or the value is 0."""
         return None if self.sd is None or not self.value else self.sd / abs(self.value)
-
-    @property
-    def relative_before(self) -> float | None:
-        """The same before any further sweep."""
-        return None if self.before is None or not self.value else self.before / abs(self.value)
-
-    @property
-    def relative_worst(self) -> float | None:
-        """The same over the parts drawn."""
-        return None if self.worst is None or not self.value else self.worst / abs(self.value)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -170,7 +162,7 @@ class Plan:
     everything : what all candidates together would tell
     criterion, is_exhaustive : how the sweeps were chosen; whether every set of that size was looked at
     wanted : standard deviations in SI units by name
-    parts_drawn : how many parts the `worst` numbers are over
+    parts_drawn : how many parts `over_parts` and `worst` are over
     """
 
     design: Design

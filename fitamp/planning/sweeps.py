@@ -78,7 +78,7 @@ class PlannedSweep:
     @property
     def band(self) -> str:
         """The band in words: "1 kHz to 200 MHz"."""
-        return f"{si_exact(self.f_min_hz, 'Hz')} to {si_exact(self.f_max_hz, 'Hz')}"
+        return f"{_short(self.f_min_hz, 'Hz')} to {_short(self.f_max_hz, 'Hz')}"
 
 
 def affordable_sweeps(
@@ -160,4 +160,9 @@ def _round_number(value: float) -> float:
 
 
 def _signed(value: float, unit: str) -> str:
-    return f"{'+' if value > 0 else '−'}{si_exact(abs(value), unit)}"
+    return f"{'+' if value > 0 else '−'}{_short(abs(value), unit)}"
+
+
+def _short(value: float, unit: str) -> str:
+    """Six digits, without zeros at their end."""
+    return si_exact(float(f"{value:.6g}"), unit)

@@ -86,6 +86,7 @@ def _expected(one: Expected) -> dict[str, Any]:
         "relative_sd": one.relative,
         "before_sd": one.before,
         "informed": one.informed,
+        "over_parts_sd": one.over_parts,
         "worst_sd": one.worst,
     }
 

@@ -61,8 +61,8 @@ def _elements(console: Console, plan: Plan) -> None:
         ),
     ]
     if plan.parts_drawn:
-        worst = (precision(one, one.worst) for one in plan.last.elements)
-        rows.append((f"worst of {plan.parts_drawn} parts", *worst))
+        rows.append((f"over {plan.parts_drawn} parts", *(precision(one, one.over_parts) for one in plan.last.elements)))
+        rows.append(("worst of them", *(precision(one, one.worst) for one in plan.last.elements)))
     if plan.further is not None:
         rows.append(_row(f"next: {label_of(plan, plan.further.sweeps[-1])}", plan.further))
     title = f"standard deviation to be expected after each sweep, {printable(plan.design.file)}"
@@ -80,11 +80,11 @@ def _quantities(console: Console, plan: Plan) -> None:
     rows = []
     for index, one in enumerate(plan.last.quantities):
         cells = [_absolute(stage.quantities[index], stage.quantities[index].sd) for stage in after]
-        worst = [_absolute(one, one.worst)] if plan.parts_drawn else []
-        rows.append((name_of(one), si(one.value, _unit(one)), _absolute(one, one.before), *cells, *worst))
+        drawn = [_absolute(one, one.over_parts), _absolute(one, one.worst)] if plan.parts_drawn else []
+        rows.append((name_of(one), si(one.value, _unit(one)), _absolute(one, one.before), *cells, *drawn))
     headings = ["quantity", "  of the part", "  ± so far" if plan.taken else "  ± over such parts"]
     headings += [f"  ± after {number}" for number in numbers]
-    headings += [f"  worst of {plan.parts_drawn}"] if plan.parts_drawn else []
+    headings += [f"  over {plan.parts_drawn} parts", "  worst of them"] if plan.parts_drawn else []
     print_table(console, "what the verdict is made of", headings, rows, numbers=True)
 
 
