@@ -14,7 +14,16 @@ from fitamp.estimate import Estimate, Known
 from fitamp.fitting import LoopFit
 from fitamp.margins import margins
 
-__all__ = ["comparison_rows", "designed_poles_hz", "designed_values", "pole2_may_be_hidden"]
+__all__ = [
+    "QUANTITIES",
+    "comparison_rows",
+    "designed_poles_hz",
+    "designed_values",
+    "deviation_from",
+    "is_inside",
+    "limits_on",
+    "pole2_may_be_hidden",
+]
 
 QUANTITIES = (
     "dc_gain",
@@ -79,9 +88,9 @@ def comparison_rows(
     rows = []
     for quantity in QUANTITIES:
         reference = as_measured[quantity].value if quantity in as_measured else None
-        low, high = _limits(quantity, design, window)
+        low, high = limits_on(quantity, design, window)
         estimate = measured[quantity]
-        deviation, sigma = _deviation(quantity, estimate, reference)
+        deviation, sigma = deviation_from(quantity, estimate, reference)
         if quantity == "zero_time_s" and abs(reference or 0.0) <= design.small_zero_time_s:
             deviation = None  # percents of next to nothing say nothing
         rows.append(
@@ -100,14 +109,16 @@ def comparison_rows(
     return tuple(rows)
 
 
-def _limits(quantity: str, design: Design, window: Window) -> tuple[float | None, float | None]:
+def limits_on(quantity: str, design: Design, window: Window) -> tuple[float | None, float | None]:
+    """Limits on a quantity; of the zero time its window."""
     if quantity == "zero_time_s":
         return window.low_s, window.high_s
     limit = design.limits.get(quantity)
     return (None, None) if limit is None else (limit.low, limit.high)
 
 
-def _deviation(quantity: str, estimate: Estimate, reference: float | None) -> tuple[float | None, float | None]:
+def deviation_from(quantity: str, estimate: Estimate, reference: float | None) -> tuple[float | None, float | None]:
+    """Deviation as a row has it, and in standard errors of the estimate."""
     if estimate.value is None or reference is None:
         return None, None
     difference = estimate.value - reference
@@ -119,7 +130,7 @@ def _deviation(quantity: str, estimate: Estimate, reference: float | None) -> tu
 
 def _is_inside(fit: LoopFit, quantity: str, estimate: Estimate, low: float | None, high: float | None) -> bool | None:
     if quantity != "gain_margin_db" or estimate.value is not None or (low is None and high is None):
-        return _inside(estimate, low, high)
+        return is_inside(estimate, low, high)
     # Without a value the phase does not reach −180°, or not for sure; where it does not, the margin has no limit.
     start, end = -math.inf if low is None else low, math.inf if high is None else high
     found = {start <= margin_db <= end for margin_db in _gain_margins_db(fit)}
@@ -143,7 +154,8 @@ def _gain_margins_db(fit: LoopFit) -> list[float]:
     return found
 
 
-def _inside(estimate: Estimate, low: float | None, high: float | None) -> bool | None:
+def is_inside(estimate: Estimate, low: float | None, high: float | None) -> bool | None:
+    """Whether an estimate is inside its limits; None where there are none, or its interval does not agree."""
     if (low is None and high is None) or estimate.known is Known.UNDETERMINED:
         return None
     start = float("-inf") if low is None else low

@@ -6,6 +6,7 @@ On that line the zero passes through infinity at 0 without a jump, so every verd
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import replace
 
 import numpy as np
@@ -19,7 +20,15 @@ from fitamp.fitting import LoopFit
 from fitamp.fitting.result import LABELS, text_of
 from fitamp.units import si, si_with_error
 
-__all__ = ["advise", "describes", "judge_nulling", "nulling_product", "window_of"]
+__all__ = [
+    "advise",
+    "decided_sentence",
+    "describes",
+    "judge_nulling",
+    "nulling_product",
+    "open_sentence",
+    "window_of",
+]
 
 # Window of a design without limits: 95 % of parts built with the design's own spreads.
 WINDOW_QUANTILE = 1.96
@@ -133,15 +142,26 @@ def describes(fit: LoopFit) -> bool:
 def _reason(
     nulling: Nulling, zero_time: Estimate, window: Window, *, touched: list[Nulling], design: Design, fit: LoopFit
 ) -> str:
+    if nulling is Nulling.UNDECIDED:
+        return f"{open_sentence(zero_time, touched, window=window, design=design)}; {_what_settles(fit, design)}"
+    return decided_sentence(nulling, zero_time, window=window, design=design)
+
+
+def open_sentence(zero_time: Estimate, touched: Sequence[Nulling], *, window: Window, design: Design) -> str:
+    """Into which regions an interval reaches that is not in a single one."""
+    names = ", ".join(verdict.value for verdict in touched)
+    into = "every region" if len(touched) == len(regions_of(design, window)) else names
+    return f"the 95 % interval of the zero time, {_ends(zero_time)}, reaches into {into}"
+
+
+def decided_sentence(nulling: Nulling, zero_time: Estimate, *, window: Window, design: Design) -> str:
+    """Why a zero time belongs to the region that all of its interval is in."""
     place = "" if zero_time.value is None else f" ({place_of(zero_time.value)})"
     seen = f"zero time {text_of('zero_time_s', zero_time)}{place}"
     allowed = f"{span_of(window.low_s, window.high_s)}, from {window.source}"
     small = si(design.small_zero_time_s, "s")
-    if nulling is Nulling.UNDECIDED:
-        names = ", ".join(verdict.value for verdict in touched)
-        into = "every region" if len(touched) == len(regions_of(design, window)) else names
-        reach = f"the 95 % interval of the zero time, {_ends(zero_time)}, reaches into {into}"
-        return f"{reach}; {_what_settles(fit, design)}"
+    if nulling is Nulling.TOO_LITTLE and design.half_plane is not HalfPlane.LEFT:
+        return f"{seen} lies short of the window {allowed}"
     sentences = {
         Nulling.AS_DESIGNED: f"{seen} lies in the window {allowed}",
         Nulling.TOO_LITTLE: f"{seen} gives less lead than the window {allowed}",
@@ -150,8 +170,6 @@ def _reason(
         Nulling.AT_INFINITY: f"{seen} is within ±{small}, so far out that it neither helps nor harms; "
         f"designed was {place_of(design.zero_time_s)}",
     }
-    if nulling is Nulling.TOO_LITTLE and design.half_plane is not HalfPlane.LEFT:
-        sentences[nulling] = f"{seen} lies short of the window {allowed}"
     return sentences[nulling]
 
 
