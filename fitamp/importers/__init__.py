@@ -18,8 +18,8 @@ from fitamp.importers.choice import ColumnChoice, ColumnRef
 from fitamp.importers.csv_table import read_csv, read_csv_sweeps
 from fitamp.importers.fault import LineError, attach_excerpt
 from fitamp.importers.quantity import Quantity, Unit
-from fitamp.importers.source import Source, load_source
-from fitamp.importers.text import lines_of
+from fitamp.importers.source import CALLED, Source, load_source
+from fitamp.importers.text import line_of
 from fitamp.importers.touchstone import read_touchstone
 from fitamp.importers.write import write_sweep
 from fitamp.sweep import Sign, Sweep
@@ -110,7 +110,7 @@ def _showing_lines(source: Source) -> Iterator[None]:
     try:
         yield
     except LineError as error:
-        attach_excerpt(error, lines_of(source))
+        attach_excerpt(error, line_of(source, error.line))
         raise
 
 
@@ -124,14 +124,20 @@ def _opened(
         if choice is not None:
             raise UsageError(f"{source.file}: --columns is for text tables; a Touchstone file takes --trace")
         return source, None, True
+    if source.file == CALLED and choice is None and _is_touchstone(source):
+        return source, None, True
     _refuse_touchstone_content(source)
     if trace is not None:
         raise UsageError(f"{source.file}: --trace is for Touchstone files; a text table takes --columns")
     return source, choice, False
 
 
+def _is_touchstone(source: Source) -> bool:
+    return bool(_TOUCHSTONE_CONTENT.search(source.data, 0, _LONGEST_PREAMBLE))
+
+
 def _refuse_touchstone_content(source: Source) -> None:
-    if _TOUCHSTONE_CONTENT.search(source.data, 0, _LONGEST_PREAMBLE):
+    if _is_touchstone(source):
         raise SweepError(
             f"{source.file}: the content is Touchstone, but the name does not say for how many ports; "
             "rename it to end in .s1p or .s2p"

@@ -6,19 +6,24 @@ import re
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
 
+from fitamp.errors import SweepError
 from fitamp.importers.cells import is_number_like, show
 from fitamp.importers.dialect import Block, is_comment, split_cells
 from fitamp.importers.fault import LineError, at_line, quote_span, span_of
 from fitamp.importers.header import is_header_row
 from fitamp.importers.readings import is_no_reading
+from fitamp.importers.several import MAX_SWEEPS
 from fitamp.importers.text import Line
 
-__all__ = ["Table", "find_tables"]
+__all__ = ["MAX_CELLS", "Table", "find_tables"]
 
 # A row of numbers shows by its first character; anything else needs a closer look.
 _STARTS_AS_NUMBER = re.compile(r"\s*[-+(]?[0-9.]")
 # What instruments write under a table.
 _CLOSING = re.compile(r"(?:end|ende|fin|eof)\b[^0-9]*", re.IGNORECASE)
+
+# More are no sweep of a bench.
+MAX_CELLS = 10_000_000
 
 _Row = tuple[Line, tuple[str, ...]]
 
@@ -61,8 +66,14 @@ def find_tables(file: str, block: Block, lines: Sequence[Line]) -> tuple[Table, 
     Raises
     ------
     SweepError
-        For words among the rows that are no header, and for a row with another number of cells.
+        For words among the rows that are no header, for a row with another number of cells, and for more rows or
+        tables than a file may have.
     """
+    if len(block.rows) * block.width > MAX_CELLS:
+        raise SweepError(
+            f"{file}: {len(block.rows)} rows of {block.width} columns are more than the {MAX_CELLS} cells that a table "
+            "may have; export the columns of the sweep alone"
+        )
     titles = {line.text.strip() for line in block.above}
     tables: list[list[_Row]] = [[]]
     words: list[_Row] = []
@@ -72,6 +83,8 @@ def find_tables(file: str, block: Block, lines: Sequence[Line]) -> tuple[Table, 
             continue
         if words and any(_is_header(line, cells, block, titles) for line, cells in words) and tables[-1]:
             tables.append([])
+            if len(tables) > MAX_SWEEPS:
+                raise SweepError(f"{file}: more than the {MAX_SWEEPS} sweeps that a file may hold; split it")
         elif words:
             tables[-1] += _as_rows(file, words, block)
         words = []

@@ -26,8 +26,9 @@ _BARE_PAIR = re.compile(r"(^|[,;\s])\s*(\([^()\"]*[,;][^()\"]*\))")
 # A no-break space stands inside a number, not between two.
 _SPACED = re.compile(r"[^ \t\v\f]+")
 _SPACED_OR_QUOTED = re.compile(r'"[^"]*"|[^ \t\v\f"]+')
-# Separator and first row are told from this many lines; no preamble is longer.
+# Separator and first row are told from this many lines, of so many characters; no preamble is longer.
 _SAMPLE = 5000
+_SAMPLE_LENGTH = 500_000
 
 
 class Separator(Enum):
@@ -115,8 +116,9 @@ def find_block(file: str, lines: Sequence[Line]) -> Block:
         When there are no rows of numbers.
     """
     used = [line for line in lines if line.text.strip() and not is_comment(line.text)]
-    separator = _find_separator(file, used[:_SAMPLE])
-    start = _find_start(used[:_SAMPLE], separator)
+    sample = _sample(used)
+    separator = _find_separator(file, sample)
+    start = _find_start(sample, separator)
     trailing = _all_end_with(used[start:], separator)
     rows = tuple(
         Line(number=line.number, text=line.text.rstrip(" ")[:-1] if trailing else line.text) for line in used[start:]
@@ -125,11 +127,21 @@ def find_block(file: str, lines: Sequence[Line]) -> Block:
     return Block(
         separator=separator,
         rows=rows,
-        width=_usual_width(rows[:_SAMPLE], separator),
+        width=_usual_width(_sample(rows), separator),
         above=tuple(line for line in lines if line.number < first),
         comments=sum(is_comment(line.text) for line in lines if line.number > first),
         trailing=trailing,
     )
+
+
+def _sample(lines: Sequence[Line]) -> Sequence[Line]:
+    """The first lines, as many as layout is told from."""
+    length = 0
+    for index, line in enumerate(lines[:_SAMPLE]):
+        length += len(line.text)
+        if length > _SAMPLE_LENGTH:
+            return lines[: max(index, 1)]
+    return lines[:_SAMPLE]
 
 
 def _find_separator(file: str, lines: Sequence[Line]) -> Separator:

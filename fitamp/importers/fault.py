@@ -67,17 +67,8 @@ def quote_span(text: str) -> Span:
     return (start, start + 1)
 
 
-def attach_excerpt(error: LineError, lines: Sequence[str]) -> None:
-    """Give an error the line that it is about, as `excerpt` shows it.
-
-    Parameters
-    ----------
-    lines
-        All lines of the file.
-    """
-    if not 1 <= error.line <= len(lines):
-        return
-    text = lines[error.line - 1]
+def attach_excerpt(error: LineError, text: str) -> None:
+    """Give an error the line that it is about, as `excerpt` shows it."""
     span, start = error.span, text.find(error.cell) if error.cell else -1
     if span is None and start >= 0:
         span = (start, start + len(error.cell))
@@ -87,7 +78,7 @@ def attach_excerpt(error: LineError, lines: Sequence[str]) -> None:
 def excerpt(number: int, text: str, span: Span | None) -> tuple[str, str]:
     """A line with its number, and the marks under it; control characters as escapes, long lines cut round the fault."""
     start, end = span if span is not None else (len(text) - len(text.lstrip()), len(text.rstrip()))
-    fault = _cut(_escaped(text[start:end]), _WIDTH // 2)
+    fault = _cut(_escaped(text[start : min(end, start + _WIDTH)]), _WIDTH // 2)
     room = _WIDTH - _width(fault)
     # Enough of what is before for orientation; escapes are cut from their front end, which does not matter here.
     before = _cut(_escaped(text[max(start - room, 0) : start])[::-1], room // 2)[::-1]

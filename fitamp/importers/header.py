@@ -19,6 +19,9 @@ __all__ = ["Header", "find_header", "is_header_row"]
 # Cells of a units row that say "no unit".
 _NO_UNIT = frozenset({"", "-", "–", "[-]", "[1]", "(-)", "[]", "()", "v/v", "[v/v]", "(v/v)"})
 
+# A header stands within so many lines above the rows.
+_NEAR = 300
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Header:
@@ -46,7 +49,10 @@ def find_header(file: str, block: Block) -> Header:
     above = [line for line in block.above if line.text.strip()]
     plain = [line for line in above if not is_comment(line.text) and not is_rule(line.text)]
     comments = [line for line in above if is_comment(line.text)]
-    names, units = _plain_header(file, plain, block)
+    for line in plain:
+        _refuse_numbers(file, line, block, nearest=line is plain[-1])
+    plain, comments = plain[-_NEAR:], comments[-_NEAR:]
+    names, units = _plain_header(plain, block)
     others: tuple[int, ...] = ()
     reason = "the line above the numbers"
     if names is not None and not _speaks(names):
@@ -91,10 +97,8 @@ def is_header_row(row: Line, block: Block) -> bool:
 _Cells = tuple[int, tuple[str, ...]]
 
 
-def _plain_header(file: str, plain: Sequence[Line], block: Block) -> tuple[_Cells | None, _Cells | None]:
+def _plain_header(plain: Sequence[Line], block: Block) -> tuple[_Cells | None, _Cells | None]:
     """Header and units row among the lines that are no comments."""
-    for line in plain:
-        _refuse_numbers(file, line, block, nearest=line is plain[-1])
     last = _cells_of(plain[-1].text, block) if plain else None
     if last is None:
         return None, None
@@ -123,7 +127,7 @@ def _header_farther_up(
         if cells is None or not _is_header(cells):
             continue
         others.append(plain[end - 1].number)
-        names, units = _plain_header(file, plain[:end], block)
+        names, units = _plain_header(plain[:end], block)
         if names is not None and _is_complete(file, names, units):
             complete.append((names, units))
     if len(complete) == 1:

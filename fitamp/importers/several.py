@@ -10,11 +10,13 @@ from numpy.typing import NDArray
 from fitamp.arrays import FloatArray
 from fitamp.importers.cells import show
 
-__all__ = ["by_label", "by_restart"]
+__all__ = ["MAX_SWEEPS", "by_label", "by_restart"]
 
 # Repeats cover the same band, within this part of it at either end.
 _SAME_BAND = 0.01
 _LEAST_POINTS = 3
+# More are no sweeps of a bench, but something else that repeats.
+MAX_SWEEPS = 1000
 
 _Rows = NDArray[np.intp]
 
@@ -24,7 +26,7 @@ def by_label(labels: Sequence[str]) -> list[tuple[str, _Rows]]:
     rows: dict[str, list[int]] = {}
     for row, label in enumerate(labels):
         rows.setdefault(label, []).append(row)
-    if len(rows) < 2 or min(map(len, rows.values())) < _LEAST_POINTS:
+    if not 2 <= len(rows) <= MAX_SWEEPS or min(map(len, rows.values())) < _LEAST_POINTS:
         return []
     return [(show(label), np.array(own, dtype=np.intp)) for label, own in rows.items()]
 
@@ -36,6 +38,8 @@ def by_restart(freq_hz: FloatArray) -> list[_Rows]:
     if len(step) < 2 * _LEAST_POINTS - 1 or abs(step.sum()) == len(step):
         return whole
     starts = _starts(step)
+    if len(starts) >= MAX_SWEEPS:
+        return whole
     runs = np.split(whole[0], starts)
     ends = np.array([sorted((freq_hz[run[0]], freq_hz[run[-1]])) for run in runs])
     same = np.abs(ends - ends[0]) <= _SAME_BAND * np.abs(ends[0])

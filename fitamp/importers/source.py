@@ -18,14 +18,14 @@ from fitamp.errors import SweepError
 from fitamp.importers.unpack import GZIP_MARK, unpacked
 from fitamp.sweep import Decision
 
-__all__ = ["MAX_BYTES", "STANDARD_INPUT", "Source", "load_source"]
+__all__ = ["CALLED", "MAX_BYTES", "STANDARD_INPUT", "Source", "load_source"]
 
 # A sweep of a million points is about 60 MB of text; beyond this it is some other kind of file.
-MAX_BYTES = 250_000_000
+MAX_BYTES = 100_000_000
 
 # The name that stands for standard input, as of old.
 STANDARD_INPUT = "-"
-_CALLED = "standard input"
+CALLED = "standard input"
 _PIECE = 1 << 20
 
 # First bytes of files that people pass by mistake, with what to do instead.
@@ -80,7 +80,7 @@ def load_source(path: str | os.PathLike[str], *, max_bytes: int = MAX_BYTES) -> 
         raise SweepError("the name of the sweep file is empty; name one CSV or Touchstone file")
     try:
         if file == STANDARD_INPUT:
-            file, stored = _CALLED, _from_standard_input(max_bytes)
+            file, stored = CALLED, _from_standard_input(max_bytes)
         else:
             stored = _from_file(file, Path(file), max_bytes)
     except (OSError, ValueError) as error:
@@ -130,7 +130,7 @@ def _from_file(file: str, path: Path, max_bytes: int) -> bytes:
 
 
 def _from_standard_input(max_bytes: int) -> bytes:
-    return _limited(_CALLED, sys.stdin.buffer, max_bytes, expected=_PIECE)
+    return _limited(CALLED, sys.stdin.buffer, max_bytes, expected=_PIECE)
 
 
 def _limited(file: str, stream: BinaryIO, max_bytes: int, *, expected: int) -> bytes:

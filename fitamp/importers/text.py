@@ -5,6 +5,7 @@ from __future__ import annotations
 import codecs
 import re
 from dataclasses import dataclass
+from itertools import islice
 
 from fitamp.errors import SweepError
 from fitamp.importers.fault import at_cell, at_line
@@ -12,7 +13,7 @@ from fitamp.importers.source import Source
 from fitamp.importers.words import JAPANESE
 from fitamp.sweep import Decision
 
-__all__ = ["MAX_LINES", "MAX_LINE_LENGTH", "Line", "Text", "decode", "lines_of"]
+__all__ = ["MAX_LINES", "MAX_LINE_LENGTH", "Line", "Text", "decode", "line_of"]
 
 _UTF32_MARKS = (codecs.BOM_UTF32_LE, codecs.BOM_UTF32_BE)
 _LINE_END = re.compile(r"\r\n|\n|\r")
@@ -61,7 +62,7 @@ def decode(source: Source) -> Text:
     content = content.rstrip(_CTRL_Z)
     binary = _BINARY.search(content)
     if binary:
-        number = len(_LINE_END.findall(content, 0, binary.start())) + 1
+        number = _line_number(content, binary.start())
         text = (
             f"this is a binary file, not text (control character 0x{ord(binary[0]):02x}); export the sweep as CSV or "
             "Touchstone"
@@ -81,13 +82,23 @@ def decode(source: Source) -> Text:
     return Text(lines=lines, line_count=len(lines), encoding=encoding, decisions=decisions)
 
 
-def lines_of(source: Source) -> list[str]:
-    """The lines of a file to look at, also of one that is not text."""
+def line_of(source: Source, number: int) -> str:
+    """One line of a file to look at, also of one that is not text."""
     try:
         content = _decode(source)[0]
     except SweepError:
         content = source.data.decode("latin-1")
-    return _LINE_END.split(content)
+    start = 0
+    for end in islice(_LINE_END.finditer(content), number - 1):
+        start = end.end()
+    stop = _LINE_END.search(content, start)
+    return content[start : stop.start() if stop else len(content)]
+
+
+def _line_number(content: str, place: int) -> int:
+    """The line on which a character stands, counted from 1."""
+    before = (content.count(end, 0, place) for end in ("\n", "\r", "\r\n"))
+    return next(before) + next(before) - next(before) + 1
 
 
 def _decode(source: Source) -> tuple[str, str, str]:
@@ -110,8 +121,7 @@ def _decode(source: Source) -> tuple[str, str, str]:
     try:
         return data.decode("utf-8"), "UTF-8", "all bytes are valid UTF-8"
     except UnicodeDecodeError as error:
-        number = len(_LINE_END.findall(data[: error.start].decode("latin-1"))) + 1
-        return _not_unicode(data, number)
+        return _not_unicode(data, _line_number(data.decode("latin-1"), error.start))
 
 
 def _not_unicode(data: bytes, number: int) -> tuple[str, str, str]:

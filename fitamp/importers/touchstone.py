@@ -14,8 +14,8 @@ import numpy as np
 from fitamp.errors import SweepError, UsageError
 from fitamp.importers.notes import notes_among
 from fitamp.importers.points import Points, finish
-from fitamp.importers.source import Source
-from fitamp.importers.text import decode
+from fitamp.importers.source import CALLED, Source
+from fitamp.importers.text import Text, decode
 from fitamp.importers.touchstone_file import Scan
 from fitamp.importers.touchstone_scan import scan
 from fitamp.sweep import Decision, Origin, Sweep
@@ -23,6 +23,8 @@ from fitamp.sweep import Decision, Origin, Sweep
 __all__ = ["read_touchstone"]
 
 _TRACE = re.compile(r"[sS](?:([1-9])([1-9])|([1-9][0-9]*),([1-9][0-9]*)|\(([1-9][0-9]*),([1-9][0-9]*)\))")
+# The numbers of larger ones would take a gigabyte.
+MAX_TOUCHSTONE_BYTES = 50_000_000
 _FORM_WORDS = {"ri": "real and imaginary", "ma": "linear magnitude and degrees", "db": "dB and degrees"}
 
 
@@ -41,13 +43,19 @@ def read_touchstone(source: Source, *, trace: str | None = None) -> Sweep:
     UsageError
         When the trace is malformed or not in the file, or is needed and not given.
     """
+    if len(source.data) > MAX_TOUCHSTONE_BYTES:
+        raise SweepError(
+            f"{source.file}: {len(source.data) / 1e6:.0f} MB is more than the {MAX_TOUCHSTONE_BYTES / 1e6:.0f} MB that "
+            "a Touchstone file may have; export fewer ports or points"
+        )
     text = decode(source)
     if text.encoding.startswith("UTF-16"):
         raise SweepError(f"{source.file}: the file is {text.encoding}; Touchstone is plain text, save it as UTF-8")
     suffix = re.fullmatch(r"\.s([0-9]{1,3})p", source.suffix)
     if suffix and int(suffix[1]) == 0:
         raise SweepError(f"{source.file}: the file name says 0 ports; name it .s1p or .s2p")
-    found = scan(source.file, text.lines, int(suffix[1]) if suffix else None)
+    ports = int(suffix[1]) if suffix else _ports_by_rows(source, text)
+    found = scan(source.file, text.lines, ports)
     row, column, reason = _pick_trace(source.file, trace, found.ports)
     name = f"S{row}{column}" if found.ports < 10 else f"S{row},{column}"
     freq_hz, gain = _parse(found, row - 1, column - 1)
@@ -56,6 +64,15 @@ def read_touchstone(source: Source, *, trace: str | None = None) -> Sweep:
     points = Points(lines=tuple(found.row_lines), freq_hz=freq_hz, gain=gain)
     origin = Origin(file=source.file, form="touchstone", trace=name, sha256=source.sha256, notes=notes)
     return finish(points, origin=origin, decisions=tuple(decisions), may_fall=False)
+
+
+def _ports_by_rows(source: Source, text: Text) -> int | None:
+    """Ports of a file that has no name: rows of one and of two ports stand on one line each, by the specification."""
+    if source.file != CALLED:
+        return None
+    rows = (line.text.split("!", 1)[0].split() for line in text.lines)
+    first = next((row for row in rows if row and row[0][0] not in "#["), [])
+    return {3: 1, 9: 2}.get(len(first))
 
 
 def _parse(found: Scan, row: int, column: int) -> tuple[np.ndarray, np.ndarray]:

@@ -45,6 +45,14 @@ def test_line_that_says_the_table_ends_is_taken_off() -> None:
     assert len(table.rows) == 3
 
 
+def test_more_rows_or_tables_than_a_file_may_have_are_refused() -> None:
+    with pytest.raises(SweepError, match="more than the 1000 sweeps that a file may hold; split it"):
+        tables_of((HEADER + ROWS) * 1001)
+    wide = "1," * 20_000 + "1\n"
+    with pytest.raises(SweepError, match="500 rows of 20001 columns are more than the 10000000 cells that a table may"):
+        tables_of(wide * 500)
+
+
 @pytest.mark.parametrize(
     ("text", "message"),
     [

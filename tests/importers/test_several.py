@@ -36,6 +36,14 @@ def test_anything_else_stays_one_table(freq_hz: list[float]) -> None:
     assert runs(freq_hz) == [list(range(len(freq_hz)))]
 
 
+def test_thousands_of_sweeps_are_none() -> None:
+    assert len(by_restart(np.tile([1.0, 2.0, 4.0], 1000))) == 1000
+    assert len(by_restart(np.tile([1.0, 2.0, 4.0], 1001))) == 1
+    labels = [str(k) for k in range(1001)] * 3
+    assert by_label(labels) == []
+    assert len(by_label([label for label in labels if label != "7"])) == 1000
+
+
 def test_labels_number_sweeps_also_row_by_row() -> None:
     assert [(name, rows.tolist()) for name, rows in by_label(list("ababab"))] == [
         ("'a'", [0, 2, 4]),

@@ -6,7 +6,7 @@ import pytest
 
 from fitamp.errors import SweepError
 from fitamp.importers.source import Source
-from fitamp.importers.text import decode
+from fitamp.importers.text import decode, line_of
 
 CONTENT = "Phase (°), µV\n1,2\n"
 
@@ -48,6 +48,16 @@ def test_older_encodings_are_taken_where_they_show(text: str, codec: str, encodi
     decoded = decode(source(text.encode(codec)))
     assert decoded.encoding == encoding
     assert "\n".join(line.text for line in decoded.lines) == text
+
+
+@pytest.mark.parametrize("end", ["\n", "\r\n", "\r"])
+def test_one_line_can_be_had_also_of_what_is_no_text(end: str) -> None:
+    data = source(end.join(["a", "", "b\x00c", "d"]).encode())
+    assert [line_of(data, number) for number in (1, 2, 3, 4)] == ["a", "", "b\x00c", "d"]
+    with pytest.raises(SweepError, match="line 3: this is a binary file"):
+        decode(data)
+    assert line_of(source(b"a\n\xff\xfe\xff"), 2) == "ÿþÿ"
+    assert line_of(source(b"\xef\xbb\xbfa\n\xff"), 2) == "ÿ"
 
 
 def test_latin_1_decision_names_the_first_line_that_shows_it() -> None:
