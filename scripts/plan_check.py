@@ -16,7 +16,6 @@ from __future__ import annotations
 
 import argparse
 from collections.abc import Sequence
-from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
@@ -36,6 +35,8 @@ SETS = {
     "0/−400/+400 Ω": ((0.0,), (0.0, -400.0, 400.0)),
 }
 TOPS_HZ = (100e6, 1e9)
+# Over so many parts of its own the plan takes the mean.
+PARTS = 200
 # What a plan is held against, and the unit in which both are printed.
 QUANTITIES = {"zero_time_s": ("zero time", 1e-12, "ps"), "pole2_hz": ("pole 2", 1e3, "kHz")}
 QUANTITIES |= {"gm2_rz": ("gm2·Rz", 1e-3, "1e-3"), "phase_margin_deg": ("phase margin", 1e-3, "m°")}
@@ -103,38 +104,32 @@ def errors_of(estimate: fitamp.ElementEstimate, circuit: Circuit, values: np.nda
 
 
 def print_campaigns(design: fitamp.Design, plan: fitamp.Plan, runs: int, seed: int, *, centre: bool) -> None:
-    """A line a number: promised, scattered, their ratio with its own standard error, and the same for a promise made
-    at each part instead of the design's centre.
+    """A line a number: promised at the design's centre and over its parts, scattered, and the ratios.
+
+    Each ratio is uncertain by chance as a standard deviation of so many normal deviates is.
     """
     circuit = Circuit.from_design(design)
     conditions = [sweep.condition for sweep in plan.sweeps]
     errors: dict[str, list[float]] = {name: [] for name in (*ELEMENTS, *QUANTITIES)}
-    there: dict[str, list[float]] = {name: [] for name in errors}
     for run in range(runs):
         rng = np.random.default_rng([seed, run])
         values = circuit.designed if centre else drawn(circuit, design, rng)
         estimate = fitamp.estimate_elements(swept(circuit, values, plan.sweeps, rng), design, conditions=conditions)
         for name, error in errors_of(estimate, circuit, values).items():
             errors[name].append(error)
-        part = replace(design, elements=circuit.elements(values))
-        stage = expected_precision(part, plan.sweeps)
-        for name in errors:
-            one = stage.of(name)
-            shares = one.sd / (circuit.nominal.Rz if name == "Rz" else one.value)
-            there[name].append(shares if name in ELEMENTS else one.sd)
-    print(
-        f"{'':<14}{'expected':>13}{'scatter':>13}{'ratio':>7}{'± chance':>10}{'mean/scatter':>14}{'at each part':>14}"
-    )
+    chance = 1 / np.sqrt(2 * runs)
+    print(f"ratios are uncertain by ±{chance:.1%} (one standard deviation) by chance")
+    print(f"{'':<14}{'at centre':>13}{'over parts':>13}{'scatter':>13}{'to centre':>11}{'to parts':>10}{'mean/sd':>9}")
     for name, those in errors.items():
         one = plan.last.of(name)
-        expected = one.relative if name in ELEMENTS else one.sd
+        share = one.value if name in ELEMENTS else 1.0
         label, scale, unit = (name, 0.01, "%") if name in ELEMENTS else QUANTITIES[name]
         scatter, mean = float(np.sqrt(np.mean(np.square(those)))), float(np.mean(those))
-        own = float(np.sqrt(np.mean(np.square(there[name]))))
-        chance = 1 / np.sqrt(2 * runs)
+        at_centre, over_parts = one.sd / share, one.over_parts / share
         print(
-            f"{label:<14}{expected / scale:>8.4g} {unit:<4}{scatter / scale:>8.4g} {unit:<4}{scatter / expected:>7.3f}"
-            f"{chance:>10.1%}{mean / scatter:>+14.2f}{scatter / own:>14.3f}"
+            f"{label:<14}{at_centre / scale:>8.4g} {unit:<4}{over_parts / scale:>8.4g} {unit:<4}"
+            f"{scatter / scale:>8.4g} {unit:<4}{scatter / at_centre:>11.3f}{scatter / over_parts:>10.3f}"
+            f"{mean / scatter:>+9.2f}"
         )
 
 
@@ -149,7 +144,7 @@ def main() -> None:
     design = fitamp.read_design(DESIGN_FILE)
     print_sets(design)
     candidates = fitamp.affordable_sweeps(design, loads_f=LOADS_F, resistances_ohm=RESISTANCES_OHM)
-    plan = fitamp.plan(design, candidates, count=args.sweeps)
+    plan = fitamp.plan(design, candidates, count=args.sweeps, parts_drawn=PARTS, seed=args.seed + 1)
     if args.runs:
         parts = "of the designed part" if args.centre else "of parts drawn from the design's spreads"
         print(f"\n{args.runs} campaigns {parts}, seed {args.seed}: {', '.join(sweep.added for sweep in plan.sweeps)}")

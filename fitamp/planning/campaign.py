@@ -6,14 +6,16 @@ well and what they do not tell at all would not fit into one matrix of doubles.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
+from enum import Enum
 
 import numpy as np
 
 from fitamp.arrays import FloatArray
 from fitamp.design import Design
-from fitamp.elements import Circuit, ElementEstimate
+from fitamp.elements import Circuit, Condition, ElementEstimate
+from fitamp.elements.circuit import BENCH_LOAD
 from fitamp.elements.residual import loop_equation, stacked
 from fitamp.elements.search import floored
 from fitamp.errors import UsageError
@@ -22,7 +24,14 @@ from fitamp.planning.sweeps import PlannedSweep, averaged
 from fitamp.sweep import NoiseLevels
 from fitamp.units import si
 
-__all__ = ["Die", "designed_die", "measured_die"]
+__all__ = ["Added", "Die", "designed_die", "measured_die"]
+
+
+class Added(Enum):
+    """What is added to a part for a sweep."""
+
+    LOADS = "loads"
+    RESISTANCES = "resistances"
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -32,6 +41,7 @@ class Die:
     circuit, values : the model and its vector, shape (p,)
     noise : levels of one sweep that is yet to be taken
     taken : triangle of the sweeps already taken, shape (r, p); no rows where there are none
+    taken_pulls : of those sweeps, as `pull`; none where there are none
     reach : covariance of where such parts lie, shape (p, p): the design's spreads, also of what is under test, or the
         covariance of an estimate
     """
@@ -40,6 +50,7 @@ class Die:
     values: FloatArray
     noise: NoiseLevels
     taken: FloatArray
+    taken_pulls: Mapping[Added, FloatArray]
     reach: FloatArray
 
     def triangle(self, sweep: PlannedSweep) -> FloatArray:
@@ -59,6 +70,20 @@ class Die:
         gain, slopes = self.circuit.gain_and_derivatives(self.values, sweep.freq_hz, sweep.condition)
         noise = floored(averaged(self.noise, sweep.averages))
         return triangle_of(interleaved(loop_equation(gain, slopes, gain, noise)[1]))
+
+    def pull(self, added: Added, sweeps: Sequence[PlannedSweep], triangles: Sequence[FloatArray]) -> FloatArray | None:
+        """What pulls the vector, shape (p,), where all that is added is larger than stated by its own size.
+
+        Times the covariance and a relative error it is the shift of the vector. What is added moves the loop gain as
+        the element beside it does, so the pull of a sweep is a column of its information. None where that is held.
+        """
+        index = _beside(self.circuit, added)
+        if index is None:
+            return None
+        total = self.taken_pulls.get(added, np.zeros(len(self.values)))
+        for sweep, triangle in zip(sweeps, triangles, strict=True):
+            total = total + _pull(self.circuit, self.values, index, _amount(added, sweep.condition), triangle)
+        return total
 
     def covariance(self, triangles: Sequence[FloatArray] = (), *, without_prior_of: int | None = None) -> FloatArray:
         """Covariance of the vector to be expected after sweeps with these triangles, shape (p, p).
@@ -98,6 +123,7 @@ def designed_die(design: Design, noise: NoiseLevels, *, under_test: Sequence[str
         values=circuit.designed,
         noise=noise,
         taken=np.zeros((0, len(circuit.names))),
+        taken_pulls={},
         reach=np.diag(_spreads(circuit, design) ** 2),
     )
 
@@ -105,14 +131,41 @@ def designed_die(design: Design, noise: NoiseLevels, *, under_test: Sequence[str
 def measured_die(estimate: ElementEstimate, noise: NoiseLevels) -> Die:
     """The part of which sweeps were taken already, where they put it."""
     solution = estimate.solution
-    rows = stacked(solution.circuit, solution.values, solution.sweeps)[1]
+    circuit, values = solution.circuit, solution.values
+    rows = stacked(circuit, values, solution.sweeps)[1]
+    pulls = {}
+    for added in Added:
+        index = _beside(circuit, added)
+        if index is not None:
+            pulls[added] = sum(
+                (
+                    _pull(circuit, values, index, _amount(added, one.condition), rows[solution.rows_of(which)])
+                    for which, one in enumerate(solution.sweeps)
+                ),
+                np.zeros(len(values)),
+            )
     return Die(
-        circuit=solution.circuit,
-        values=solution.values,
+        circuit=circuit,
+        values=values,
         noise=noise,
         taken=triangle_of(rows[: 2 * solution.points]),
+        taken_pulls=pulls,
         reach=estimate.covariance,
     )
+
+
+def _beside(circuit: Circuit, added: Added) -> int | None:
+    """The number of the vector that acts as what is added does."""
+    names = ("CL", BENCH_LOAD) if added is Added.LOADS else ("Rz",)
+    return next((index for name in names if (index := circuit.index(name)) is not None), None)
+
+
+def _amount(added: Added, condition: Condition) -> float:
+    return condition.load_added_f if added is Added.LOADS else condition.rz_added_ohm
+
+
+def _pull(circuit: Circuit, values: FloatArray, index: int, amount: float, rows: FloatArray) -> FloatArray:
+    return np.asarray(rows.T @ rows[:, index] * (amount / circuit.parameters[index].slope(float(values[index]))))
 
 
 def _spreads(circuit: Circuit, design: Design) -> FloatArray:

@@ -9,7 +9,7 @@ import numpy as np
 from fitamp.arrays import FloatArray
 from fitamp.design import Design
 from fitamp.elements.circuit import BENCH_DELAY, BENCH_LOAD
-from fitamp.planning.campaign import Die
+from fitamp.planning.campaign import Added, Die
 from fitamp.planning.choice import Worth
 from fitamp.planning.outlook import outlook_of
 from fitamp.planning.precision import QUANTITIES, Measure, expected, known_before, measures, standard_deviations
@@ -44,13 +44,24 @@ class Outcomes:
     def stage(self, indices: tuple[int, ...]) -> Stage:
         """What is to be expected after the sweeps with these indices."""
         triangles = [self._triangles[index] for index in indices]
-        sds, covariance = standard_deviations(self.rows, self.die, triangles)
+        sweeps = tuple(self.sweeps[index] for index in indices)
+        sds, covariances = standard_deviations(self.rows, self.die, triangles)
+        pulls = {added: self.die.pull(added, sweeps, triangles) for added in Added}
         mean, worst = self._over_parts(indices)
-        found = expected(self.rows, self.die, sds, covariance, before=self._before, over_parts=mean, worst=worst)
+        found = expected(
+            self.rows,
+            self.die,
+            sds,
+            covariances,
+            pulls=pulls,
+            before=self._before,
+            over_parts=mean,
+            worst=worst,
+        )
         by_name = {one.name: one for one in found}
         zero = next(row for row in self.rows if row.name == "zero_time_s")
         return Stage(
-            sweeps=tuple(self.sweeps[index] for index in indices),
+            sweeps=sweeps,
             elements=tuple(one for one in found if one.name not in QUANTITIES and one.name not in ON_BENCH),
             bench=tuple(one for one in found if one.name in ON_BENCH),
             quantities=tuple(one for one in found if one.name in QUANTITIES),
@@ -76,10 +87,10 @@ class Outcomes:
 
         def fresh(triangles: list[FloatArray]) -> tuple[float, ...]:
             if criterion is Criterion.WANTED:
-                sds, covariance = standard_deviations(self.rows, self.die, triangles)
+                sds, covariances = standard_deviations(self.rows, self.die, triangles)
                 by_name = {row.name: np.inf if sd is None else sd for row, sd in zip(self.rows, sds, strict=True)}
                 ratios = (by_name[name] / sd for name, sd in wanted.items())
-                return (max(1.0, *ratios), log_determinant(covariance))
+                return (max(1.0, *ratios), log_determinant(covariances.vector))
             covariance = self.die.covariance(triangles)
             if criterion is Criterion.VARIANCE:
                 return (float((np.diag(covariance)[block] / self._squares(block)).mean()),)

@@ -15,13 +15,14 @@ from fitamp.elements import Circuit, informed_shares
 from fitamp.elements.circuit import BENCH_DELAY, BENCH_LOAD, MIRROR_POLE, UNITS
 from fitamp.elements.intervals import UNDETERMINED_SD
 from fitamp.elements.quantities import Quantity, by_vector, quantities_and_slopes
-from fitamp.planning.campaign import Die
+from fitamp.planning.campaign import Added, Die
 from fitamp.planning.result import Expected
 
 __all__ = [
     "MAY_BE_ZERO",
     "PARASITIC",
     "QUANTITIES",
+    "Covariances",
     "Measure",
     "expected",
     "known_before",
@@ -69,15 +70,35 @@ def measures(die: Die, design: Design) -> tuple[Measure, ...]:
     return (*found, *_quantities(circuit, values, design))
 
 
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Covariances:
+    """Of the vector, shape (p, p); and where CL has no prior, by which a parasitic load is judged.
+
+    What nobody designed has no prior: with the design's spread it would be drawn towards none.
+    """
+
+    vector: FloatArray
+    without_load_prior: FloatArray
+
+    @classmethod
+    def after(cls, die: Die, triangles: Sequence[FloatArray]) -> Covariances:
+        """After sweeps with these triangles."""
+        covariance = die.covariance(triangles)
+        index = die.circuit.index("CL")
+        free = covariance if index is None else die.covariance(triangles, without_prior_of=index)
+        return cls(vector=covariance, without_load_prior=free)
+
+    def of(self, row: Measure) -> FloatArray:
+        """The one that a measure is judged by."""
+        return self.without_load_prior if row.name == PARASITIC else self.vector
+
+
 def standard_deviations(
     rows: Sequence[Measure], die: Die, triangles: Sequence[FloatArray]
-) -> tuple[list[float | None], FloatArray]:
-    """Standard deviation of each measure after sweeps with these triangles, and the covariance of the vector."""
-    covariance = die.covariance(triangles)
-    index = die.circuit.index("CL")
-    # What nobody designed has no prior: with the design's spread it would be drawn towards none.
-    free = covariance if index is None else die.covariance(triangles, without_prior_of=index)
-    return [_sd(row, free if row.name == PARASITIC else covariance) for row in rows], covariance
+) -> tuple[list[float | None], Covariances]:
+    """Standard deviation of each measure after sweeps with these triangles, and the covariances behind them."""
+    covariances = Covariances.after(die, triangles)
+    return [_sd(row, covariances.of(row)) for row in rows], covariances
 
 
 def known_before(rows: Sequence[Measure], die: Die) -> list[float | None]:
@@ -97,14 +118,15 @@ def expected(
     rows: Sequence[Measure],
     die: Die,
     sds: Sequence[float | None],
-    covariance: FloatArray,
+    covariances: Covariances,
     *,
+    pulls: Mapping[Added, FloatArray | None],
     before: Sequence[float | None],
     over_parts: Sequence[float | None],
     worst: Sequence[float | None],
 ) -> tuple[Expected, ...]:
-    """The measures with what is to be expected of them."""
-    shares = dict(zip(die.circuit.names, informed_shares(die.circuit, covariance), strict=True))
+    """The measures with what is to be expected of them; `pulls` as `Die.pull`."""
+    shares = dict(zip(die.circuit.names, informed_shares(die.circuit, covariances.vector), strict=True))
     return tuple(
         Expected(
             name=row.name,
@@ -115,9 +137,15 @@ def expected(
             informed=float(shares[row.name]) if row.name in shares else None if row.name in QUANTITIES else 0.0,
             over_parts=mean,
             worst=last,
+            by_loads=_shift(row, sd, covariances, pulls[Added.LOADS]),
+            by_resistances=_shift(row, sd, covariances, pulls[Added.RESISTANCES]),
         )
         for row, sd, first, mean, last in zip(rows, sds, before, over_parts, worst, strict=True)
     )
+
+
+def _shift(row: Measure, sd: float | None, covariances: Covariances, pull: FloatArray | None) -> float | None:
+    return None if sd is None or pull is None else float(row.slopes @ covariances.of(row) @ pull)
 
 
 def _sd(row: Measure, covariance: FloatArray) -> float | None:

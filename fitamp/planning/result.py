@@ -61,6 +61,8 @@ class Expected:
     informed : of an element, the share of what will be known that comes from sweeps, 0 to 1; None for a quantity
     over_parts, worst : root mean square and largest of the standard deviations over the parts drawn, at each of them;
         None where none were, or where it is unknown in one
+    by_loads, by_resistances : shift of the estimate over the relative error of all added loads, or resistances, where
+        they are larger than stated; None where the number, or what the shift would do, is unknown
     """
 
     name: str
@@ -71,6 +73,8 @@ class Expected:
     informed: float | None = None
     over_parts: float | None = None
     worst: float | None = None
+    by_loads: float | None = None
+    by_resistances: float | None = None
 
     @property
     def relative(self) -> float | None:

@@ -8,7 +8,7 @@ from dataclasses import dataclass
 
 from matplotlib.axes import Axes
 from matplotlib.figure import Figure
-from matplotlib.ticker import FuncFormatter, NullFormatter
+from matplotlib.ticker import FuncFormatter, LogLocator, NullFormatter
 
 from fitamp.planning import Expected, Plan, Stage
 from fitamp.plots.style import (
@@ -26,8 +26,12 @@ from fitamp.report.plan_words import label_of, name_of, precision, summary, verd
 
 __all__ = ["plan_figure"]
 
-MARGIN_IN, LEFT_IN, RIGHT_IN, BOTTOM_IN, HEIGHT_IN = 0.2, 0.85, 1.95, 1.0, 4.3
-TITLE_IN, LINE_IN = 0.3, 0.19
+MARGIN_IN, LEFT_IN, RIGHT_IN, HEIGHT_IN = 0.2, 0.85, 1.95, 4.3
+LINE_IN = 0.19
+# Below the axes: the axis label, and each line of the names of the sweeps.
+BELOW_IN, TICK_LINE_IN = 0.45, 0.16
+# With fewer decades than this, ticks stand at 2 and 5 as well.
+FEW_DECADES = 2.0
 LABEL_SPACING_IN = 0.2
 # Share of the lines' height that is left free above them.
 ROOM = 0.06
@@ -71,11 +75,13 @@ def plan_figure(plan: Plan) -> Figure:
         head = [inert(line) for line in wrapped(_sentence(summary(plan)), WIDTH_IN - 2 * MARGIN_IN, weight="bold")]
         below = [inert(line) for line in wrapped(f"Verdict: {verdict_sentence(plan)}.", WIDTH_IN - 2 * MARGIN_IN)]
         head_in = 0.15 + LINE_IN * (len(head) + len(below)) + 0.2
-        figure = new_figure(BOTTOM_IN + HEIGHT_IN + head_in)
+        names = _names(plan)
+        bottom = BELOW_IN + TICK_LINE_IN * max(1 + name.count("\n") for name in names)
+        figure = new_figure(bottom + HEIGHT_IN + head_in)
         _write_head(figure, head, below)
         width = WIDTH_IN - LEFT_IN - RIGHT_IN
-        axes = place_axes(figure, left=LEFT_IN, bottom=BOTTOM_IN, width=width, height=HEIGHT_IN)
-        _set_scales(axes, plan, lines)
+        axes = place_axes(figure, left=LEFT_IN, bottom=bottom, width=width, height=HEIGHT_IN)
+        _set_scales(axes, names, lines)
         for line in lines:
             _draw(axes, line)
         _name_lines(axes, lines, len(plan.sweeps))
@@ -113,26 +119,29 @@ def _write_head(figure: Figure, head: Sequence[str], below: Sequence[str]) -> No
         y -= LINE_IN
 
 
-def _set_scales(axes: Axes, plan: Plan, lines: Sequence[_Line]) -> None:
+def _set_scales(axes: Axes, names: Sequence[str], lines: Sequence[_Line]) -> None:
     shown = [share for line in lines for share in (*line.shares, line.wanted) if share]
     low, high = (min(shown), max(shown)) if shown else (0.01, 0.1)
     axes.set_yscale("log")
     axes.set_ylim(low / 1.6, high * 1.6 * (high / low) ** ROOM)
+    few = math.log10(high / low) < FEW_DECADES
+    axes.yaxis.set_major_locator(LogLocator(subs=(1.0, 2.0, 5.0) if few else (1.0,)))
     axes.yaxis.set_major_formatter(FuncFormatter(lambda value, _: f"{100 * value:.6g} %"))
     axes.yaxis.set_minor_formatter(NullFormatter())
     axes.set_ylabel("standard deviation, share of the value")
     axes.grid(visible=True, which="major", axis="y")
-    count = len(plan.sweeps)
-    axes.set_xlim(-0.35, count + 0.25)
-    first = f"{plan.taken} taken\nso far" if plan.taken else "design\nalone"
-    names = [
-        first,
-        *(f"{number}\n{_broken(label_of(plan, sweep))}" for number, sweep in enumerate(plan.sweeps, start=1)),
-    ]
-    axes.set_xticks(range(count + 1), names)
+    axes.set_xlim(-0.35, len(names) - 0.75)
+    axes.set_xticks(range(len(names)), names)
     axes.set_xlabel("sweeps, one after another, and what is added for each")
     for side in ("top", "right"):
         axes.spines[side].set_visible(False)
+
+
+def _names(plan: Plan) -> list[str]:
+    """What stands below each place along the axis."""
+    first = f"{plan.taken} taken\nso far" if plan.taken else "design\nalone"
+    numbered = enumerate(plan.sweeps, start=1)
+    return [first, *(f"{number}\n{_broken(label_of(plan, sweep))}" for number, sweep in numbered)]
 
 
 def _broken(words: str) -> str:

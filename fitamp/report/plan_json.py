@@ -88,6 +88,8 @@ def _expected(one: Expected) -> dict[str, Any]:
         "informed": one.informed,
         "over_parts_sd": one.over_parts,
         "worst_sd": one.worst,
+        "by_loads": one.by_loads,
+        "by_resistances": one.by_resistances,
     }
 
 

@@ -16,6 +16,7 @@ from fitamp.report.plan_words import (
     name_of,
     notes,
     precision,
+    shift,
     summary,
     verdict_sentence,
     way_sentence,
@@ -63,10 +64,22 @@ def _elements(console: Console, plan: Plan) -> None:
     if plan.parts_drawn:
         rows.append((f"over {plan.parts_drawn} parts", *(precision(one, one.over_parts) for one in plan.last.elements)))
         rows.append(("worst of them", *(precision(one, one.worst) for one in plan.last.elements)))
+    rows += _wrong(plan)
     if plan.further is not None:
         rows.append(_row(f"next: {label_of(plan, plan.further.sweeps[-1])}", plan.further))
     title = f"standard deviation to be expected after each sweep, {printable(plan.design.file)}"
     print_table(console, title, ("sweep", *(f" {name}" for name in names)), rows, numbers=True)
+
+
+def _wrong(plan: Plan) -> list[tuple[str, ...]]:
+    """What wrong loads and resistances do, where some are added."""
+    elements = plan.last.elements
+    rows = []
+    if any(one.by_loads for one in elements):
+        rows.append(("if loads are +1 %", *(shift(one, one.by_loads) for one in elements)))
+    if any(one.by_resistances for one in elements):
+        rows.append(("if resistances are +1 %", *(shift(one, one.by_resistances) for one in elements)))
+    return rows
 
 
 def _row(label: str, stage: Stage) -> tuple[str, ...]:

@@ -18,6 +18,7 @@ __all__ = [
     "name_of",
     "notes",
     "precision",
+    "shift",
     "summary",
     "verdict_sentence",
     "way_sentence",
@@ -34,6 +35,7 @@ NAMES = LABELS | {
 ORDINALS = ("first", "second", "third", "fourth", "fifth", "sixth", "seventh", "eighth", "ninth", "tenth")
 # A sweep is said to add to an element where it brings its error down by this factor, and to so many at the most.
 ADDS, MOST_NAMED = 1.5, 3
+NO_ELEMENT = "no element's error falls by a third"
 # Sweeps fix an element where they halve its error.
 FIXES = 2.0
 CRITERIA = {
@@ -51,6 +53,14 @@ def precision(one: Expected, sd: float | None) -> str:
         return si(sd, "°" if one.unit == "deg" else one.unit, digits=2)
     share = 100 * sd / abs(one.value)
     return f"{share:.0f} %" if share >= 9.95 else f"{share:#.2g} %"
+
+
+def shift(one: Expected, by: float | None) -> str:
+    """What 1 % of error of all that is added does to an element, with its sign."""
+    if by is None:
+        return "–"
+    moved = 0.01 * by
+    return f"{'−' if moved < 0 else '+'}{precision(one, abs(moved))}"
 
 
 def and_list(words: Sequence[str]) -> str:
@@ -90,9 +100,9 @@ def _what(sweeps: Sequence[PlannedSweep]) -> str:
 
 
 def label_of(plan: Plan, sweep: PlannedSweep) -> str:
-    """A sweep by what is added, and by its band where there are several to choose from."""
-    has_bands = len({one.band for one in plan.candidates}) > 1
-    return f"{sweep.added}, {sweep.band}" if has_bands else sweep.added
+    """A sweep by what is added, and by its band where those of the plan differ."""
+    named = plan.sweeps if plan.further is None else plan.further.sweeps
+    return f"{sweep.added}, {sweep.band}" if len({one.band for one in named}) > 1 else sweep.added
 
 
 def name_of(one: Expected) -> str:
@@ -102,23 +112,38 @@ def name_of(one: Expected) -> str:
 
 def adding_sentences(plan: Plan) -> Iterator[str]:
     """What each sweep from the second on adds to those before it, and what the best of those left would."""
+    little: list[str] = []
     for number in range(2, len(plan.stages)):
         before, after = plan.stages[number - 1], plan.stages[number]
         ordinal = ORDINALS[number - 1] if number <= len(ORDINALS) else f"{number}th"
-        yield f"the {ordinal}, {label_of(plan, after.sweeps[-1])}, {_adds(before, after)}"
+        adds = _adds(before, after)
+        if adds is None:
+            little.append(f"the {ordinal}, {label_of(plan, after.sweeps[-1])}")
+            continue
+        yield from _little(little)
+        little = []
+        yield f"the {ordinal}, {label_of(plan, after.sweeps[-1])}, brings {adds}"
+    yield from _little(little)
     if plan.further is not None:
-        label = label_of(plan, plan.further.sweeps[-1])
-        yield f"the best of those left, {label}, {_adds(plan.last, plan.further, would=True)}"
+        adds = _adds(plan.last, plan.further)
+        would = f"would add little: {NO_ELEMENT}" if adds is None else f"would bring {adds}"
+        yield f"the best of those left, {label_of(plan, plan.further.sweeps[-1])}, {would}"
 
 
-def _adds(before: Stage, after: Stage, *, would: bool = False) -> str:
+def _little(labels: Sequence[str]) -> Iterator[str]:
+    if labels:
+        yield f"{and_list(labels)} {'adds' if len(labels) == 1 else 'add'} little: {NO_ELEMENT}"
+
+
+def _adds(before: Stage, after: Stage) -> str | None:
+    """What a sweep adds most to; None where that is little for every element."""
     pairs = [(_factor(old, new), old, new) for old, new in zip(before.elements, after.elements, strict=True)]
     most = sorted((pair for pair in pairs if pair[0] >= ADDS), key=lambda pair: -pair[0])[:MOST_NAMED]
-    verb = "would bring" if would else "brings"
     if not most:
-        return f"{'would add' if would else 'adds'} little: no element's error falls by a third"
-    parts = [f"{name_of(new)} from {precision(old, old.sd)} to {precision(new, new.sd)}" for _, old, new in most]
-    return f"{verb} {and_list(parts)}"
+        return None
+    return and_list(
+        [f"{name_of(new)} from {precision(old, old.sd)} to {precision(new, new.sd)}" for _, old, new in most]
+    )
 
 
 def _factor(old: Expected, new: Expected) -> float:
@@ -183,7 +208,10 @@ def notes(plan: Plan) -> Iterator[str]:
     if plan.design.assumed_spreads:
         yield f"a spread of 20 % is assumed for {', '.join(plan.design.assumed_spreads)}, not stated in the design file"
     if any(sweep.condition.load_added_f or sweep.condition.rz_added_ohm for sweep in plan.sweeps):
-        yield "what is added counts as exact: elements come out as right as the added loads and resistances are"
+        yield (
+            "what is added counts as exact; by how much elements come out wrong where all added loads, or all added "
+            "resistances, are 1 % larger than stated, is in rows of their own"
+        )
     yield from _bench_notes(plan)
     if not any(sweep.condition.rz_added_ohm for sweep in plan.candidates):
         yield (

@@ -10,7 +10,7 @@ from planned_parts import DESIGN, NOMINAL, OWN_SPREADS, added
 
 from fitamp.amplifier import Elements
 from fitamp.design import Design
-from fitamp.elements import estimate_elements
+from fitamp.elements import Condition, estimate_elements
 from fitamp.margins import margins
 from fitamp.noise import simulate_bench
 from fitamp.planning import DEFAULT_NOISE, expected_precision
@@ -86,6 +86,39 @@ def test_promises_are_the_errors_that_an_estimate_gives_itself() -> None:
     for name, stderr in stderrs.items():
         # The estimate stands a few standard errors off, and weighs with what was measured.
         assert stage.of(name).sd == pytest.approx(stderr, rel=0.03), name
+
+
+@pytest.mark.parametrize("wrong", ["loads", "resistances"])
+def test_wrong_additions_shift_an_estimate_as_promised(wrong: str) -> None:
+    sweeps = [added(), added(10.0), added(0.0, -400.0), added(20.0, 500.0)]
+    circuit = designed_die(OWN_SPREADS, DEFAULT_NOISE).circuit
+    taken = []
+    for sweep in sweeps:
+        # Truly 0.1 % more than stated; no noise, so that nothing else shifts.
+        load_f = sweep.condition.load_added_f * (1.001 if wrong == "loads" else 1.0)
+        rz_ohm = sweep.condition.rz_added_ohm * (1.001 if wrong == "resistances" else 1.0)
+        part = circuit.loaded(circuit.designed, Condition(load_added_f=load_f, rz_added_ohm=rz_ohm))
+        taken.append(Sweep(freq_hz=sweep.freq_hz, gain=part.transfer().evaluate(sweep.freq_hz)))
+    conditions = [sweep.condition for sweep in sweeps]
+    estimate = estimate_elements(taken, OWN_SPREADS, conditions=conditions, noise=DEFAULT_NOISE)
+    stage = expected_precision(OWN_SPREADS, sweeps)
+    for name in ("gm1", "C1", "gm2", "Cc", "Rz"):
+        one, found = stage.of(name), estimate.element(name).estimate.value
+        by = one.by_loads if wrong == "loads" else one.by_resistances
+        assert one.value is not None
+        assert found is not None
+        assert by is not None
+        assert (found / one.value - 1) / 1e-3 == pytest.approx(by / one.value, rel=0.03, abs=0.01), name
+
+
+def test_nothing_added_cannot_be_wrong() -> None:
+    stage = expected_precision(OWN_SPREADS, [added()])
+    assert {(one.by_loads, one.by_resistances) for one in stage.elements} == {(0.0, 0.0)}
+    held = Design.from_elements(
+        NOMINAL, spreads={**OWN_SPREADS.spreads, "CL": 0.0, "Rz": 0.0}, under_test=(), bench=DESIGN.bench
+    )
+    gm2 = expected_precision(held, [added(10.0, 500.0)]).of("gm2")
+    assert (gm2.by_loads, gm2.by_resistances) == (None, None)
 
 
 def test_what_is_under_test_is_unknown_until_it_is_seen() -> None:
