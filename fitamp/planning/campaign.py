@@ -115,9 +115,13 @@ def designed_die(design: Design, noise: NoiseLevels, *, under_test: Sequence[str
     Raises
     ------
     UsageError
-        When the design gives roots, or an element under test is unknown.
+        When the design gives roots or no spreads, or an element under test is unknown.
     """
     circuit = Circuit.from_design(design, under_test=under_test)
+    if not circuit.names:
+        raise UsageError(
+            f"{design.file}: every element is held by a spread of 0, so that sweeps have nothing to tell; give spreads"
+        )
     return Die(
         circuit=circuit,
         values=circuit.designed,

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 
 import numpy as np
 
@@ -36,18 +36,19 @@ class Outcomes:
         self._before = known_before(self.rows, die)
         rng = np.random.default_rng(seed)
         least_rz_ohm = max([0.0, *(-sweep.condition.rz_added_ohm for sweep in sweeps)])
-        self._drawn: list[tuple[Die, tuple[Measure, ...], list[FloatArray]]] = []
-        for _ in range(parts_drawn):
-            part = die.drawn(rng, least_rz_ohm=least_rz_ohm)
-            self._drawn.append((part, measures(part, design), [part.triangle(sweep) for sweep in sweeps]))
+        parts = (die.drawn(rng, least_rz_ohm=least_rz_ohm) for _ in range(parts_drawn))
+        # Of a part drawn only the sweeps that are chosen are looked at, when they are.
+        self._drawn: list[tuple[Die, tuple[Measure, ...], dict[int, FloatArray]]] = [
+            (part, measures(part, design), {}) for part in parts
+        ]
 
-    def stage(self, indices: tuple[int, ...]) -> Stage:
-        """What is to be expected after the sweeps with these indices."""
+    def stage(self, indices: tuple[int, ...], *, over_parts: bool = True) -> Stage:
+        """What is to be expected after the sweeps with these indices, with or without the parts drawn."""
         triangles = [self._triangles[index] for index in indices]
         sweeps = tuple(self.sweeps[index] for index in indices)
         sds, covariances = standard_deviations(self.rows, self.die, triangles)
         pulls = {added: self.die.pull(added, sweeps, triangles) for added in Added}
-        mean, worst = self._over_parts(indices)
+        mean, worst = self._over_parts(indices, self._drawn if over_parts else [])
         found = expected(
             self.rows,
             self.die,
@@ -103,14 +104,19 @@ class Outcomes:
         parameters = [self.die.circuit.parameters[index] for index in block]
         return np.array([1.0 if one.is_log else (one.prior_mean or 1.0) ** 2 for one in parameters])
 
-    def _over_parts(self, indices: tuple[int, ...]) -> tuple[list[float | None], list[float | None]]:
+    def _over_parts(
+        self, indices: tuple[int, ...], drawn: Sequence[tuple[Die, tuple[Measure, ...], dict[int, FloatArray]]]
+    ) -> tuple[list[float | None], list[float | None]]:
         """Root mean square and largest standard deviation over the parts drawn.
 
         Of a logarithm relative to the part's own value.
         """
         is_log = {one.name for one in self.die.circuit.parameters if one.is_log}
         parts = []
-        for part, rows, triangles in self._drawn:
+        for part, rows, triangles in drawn:
+            for index in indices:
+                if index not in triangles:
+                    triangles[index] = part.triangle(self.sweeps[index])
             sds = standard_deviations(rows, part, [triangles[index] for index in indices])[0]
             at_mine = [
                 (mine.value or 0.0) / (other.value or 1.0) if mine.name in is_log else 1.0

@@ -97,7 +97,7 @@ def plan(
     if by is Criterion.WANTED and not wishes:
         raise UsageError("nothing is wanted; say which element shall be known how well, or choose another criterion")
     worth = outcomes.worth(by, in_si)
-    everything = outcomes.stage(tuple(range(len(sweeps))))
+    everything = outcomes.stage(tuple(range(len(sweeps))), over_parts=False)
     can_be_met = all(is_met(everything.of(name).sd, sd) for name, sd in in_si.items())
     plain = _plain(sweeps) if plain_first and have is None else ()
     choice = _chosen(worth, len(sweeps), count, as_few_as_meet=bool(wishes) and can_be_met, one_of=plain)
@@ -109,6 +109,7 @@ def plan(
         noise=levels,
         candidates=sweeps,
         taken=0 if have is None else len(have.solution.sweeps),
+        cautions=() if have is None or have.is_trustworthy else tuple(note.message for note in have.notes),
         stages=tuple(outcomes.stage(ordered[:number]) for number in range(len(ordered) + 1)),
         further=None if further is None else outcomes.stage((*ordered, further)),
         everything=everything,

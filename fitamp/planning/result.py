@@ -161,6 +161,7 @@ class Plan:
     candidates : what was to choose from
     taken : how many sweeps were taken already; then the plan is for the part where they put it, else for the design's
         centre
+    cautions : what is to know of an estimate from them that is not trustworthy, weightiest first
     stages : before any further sweep, then after each one chosen, in the order in which each adds most
     further : the last stage with the best of those left; None where none is left
     everything : what all candidates together would tell
@@ -173,6 +174,7 @@ class Plan:
     noise: NoiseLevels
     candidates: tuple[PlannedSweep, ...]
     taken: int
+    cautions: tuple[str, ...]
     stages: tuple[Stage, ...]
     further: Stage | None
     everything: Stage

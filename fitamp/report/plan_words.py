@@ -197,6 +197,8 @@ def _sigmas(sigma: float) -> str:
 
 def notes(plan: Plan) -> Iterator[str]:
     """What to know about the numbers."""
+    for caution in plan.cautions[:1]:
+        yield f"the sweeps taken do not settle where the part is, and the plan leans on them: {caution}"
     reach = set(plan.out_of_reach)
     for name in plan.missed:
         one = (plan.everything if name in reach else plan.last).of(name)

@@ -9,6 +9,7 @@ import pytest
 from numpy.testing import assert_allclose
 from planned_parts import DESIGN, NOMINAL, OWN_SPREADS, added
 
+from fitamp.amplifier import ELEMENT_NAMES
 from fitamp.arrays import FloatArray
 from fitamp.design import Design, HalfPlane, Roots
 from fitamp.elements import information
@@ -131,6 +132,14 @@ def test_parts_are_drawn_from_the_spreads_also_of_what_is_under_test() -> None:
     assert resistors.min() == pytest.approx(1000.0)
     assert np.median(resistors) == pytest.approx(1300.0, rel=0.02)
     assert np.percentile(resistors, 84) == pytest.approx(1300 * 1.12, rel=0.02)
+
+
+def test_a_design_that_holds_everything_leaves_nothing_to_tell() -> None:
+    held = Design.from_elements(
+        NOMINAL, spreads=dict.fromkeys(ELEMENT_NAMES, 0.0), under_test=(), bench=DESIGN.bench, file="held.toml"
+    )
+    with pytest.raises(UsageError, match=r"held\.toml: every element is held by a spread of 0"):
+        designed_die(held, DEFAULT_NOISE)
 
 
 def test_a_design_by_roots_has_no_elements_to_plan_for() -> None:

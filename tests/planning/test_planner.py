@@ -200,6 +200,18 @@ def test_with_sweeps_taken_the_plan_is_for_the_part_that_they_show() -> None:
     assert "nothing added" not in [sweep.added for sweep in found.sweeps]
 
 
+def test_sweeps_that_contradict_one_another_are_a_caution() -> None:
+    have = _estimate(OWN_SPREADS, [added(), added(10.0)])
+    assert plan(OWN_SPREADS, LIST[3:4], have=have).cautions == ()
+    # The third is of another part.
+    other = _estimate(OWN_SPREADS, [added(20.0)], gm2=2.2e-3)
+    conditions = [*have.conditions, *other.conditions]
+    mixed = estimate_elements(
+        [*have.sweeps, *other.sweeps], OWN_SPREADS, conditions=conditions, noise=DEFAULT_NOISE, keep_all=True
+    )
+    assert any("do not show the same part" in caution for caution in plan(OWN_SPREADS, LIST[3:4], have=mixed).cautions)
+
+
 def test_sweeps_taken_count_as_much_as_planned_ones() -> None:
     have = _estimate(OWN_SPREADS, [added(), added(10.0)])
     after = plan(OWN_SPREADS, [added(0.0, -400.0)], count=1, have=have).last

@@ -141,6 +141,13 @@ def test_notes_say_what_the_numbers_rest_on() -> None:
     assert not any("assumed; state" in note for note in notes(given))
 
 
+def test_an_estimate_that_cannot_be_leaned_on_is_said_first() -> None:
+    doubtful = replace(plan_of(), taken=2, cautions=("step2.csv does not show the same part", "and more"))
+    first, *others = notes(doubtful)
+    assert first.endswith("the plan leans on them: step2.csv does not show the same part")
+    assert not any("and more" in note for note in others)
+
+
 def test_wishes_that_are_missed_come_first() -> None:
     assert DESIGN.elements is not None
     first, second = list(notes(plan_with_wishes()))[:2]
