@@ -18,6 +18,14 @@ from fitamp.sweep import Sweep
 __all__ = ["Start", "excess_delay", "more_starts", "starts", "vector_fit_roots"]
 
 
+# So many points are enough for a start. 100 a decade over a wide band.
+ENOUGH = 800
+# A common factor of the pair changes no root; with this one scikit-rf's guard against the trivial solution is light.
+PAIR_SIZE = 10.0
+# Vector fitting moves its poles until they stand, relatively, or so often: a pole too many wanders about in the noise.
+POLES_SETTLED, RELOCATIONS, RELOCATIONS_FROM_NEAR, MOST_RELOCATIONS = 1e-3, 10, 5, 100
+
+
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Start:
     """A guess of the loop: g = T(0)/a1, q = 1/a1 (1/s), b = a2/a1, zero time, far-pole time a3/a2, delay (s)."""
@@ -32,11 +40,14 @@ class Start:
 
 def starts(sweep: Sweep, delay_s: float = 0.0) -> tuple[Start, ...]:
     """Candidate starting values with a path delay of `delay_s` taken off, the likelier first."""
+    sweep = _thinned(sweep)
     if delay_s:
         turned_back = sweep.gain * np.exp(2j * np.pi * sweep.freq_hz * delay_s)
         sweep = Sweep(freq_hz=sweep.freq_hz, gain=turned_back, origin=sweep.origin)
-    found = [guess for count in (2, 3) for guess in _from_vector_fit(sweep, count)]
-    return tuple(replace(guess, delay_s=delay_s) for guess in (*found, _from_straight_lines(sweep)))
+    two = _fit_pair(sweep, 2)
+    three = None if two is None else _fit_pair(sweep, 3, near=two[0], relocations=RELOCATIONS_FROM_NEAR)
+    found = (*_from_pair_fit(two), *_from_pair_fit(three), _from_straight_lines(sweep))
+    return tuple(replace(guess, delay_s=delay_s) for guess in found)
 
 
 def excess_delay(sweep: Sweep) -> float:
@@ -45,6 +56,7 @@ def excess_delay(sweep: Sweep) -> float:
     A minimum-phase response turns by 90° for each decade per decade of its slope (H. W. Bode, Network Analysis and
     Feedback Amplifier Design, 1945). What is left falls in proportion to frequency for a delay.
     """
+    sweep = _thinned(sweep)
     log_f = np.log(sweep.freq_hz)
     slope = np.gradient(np.log(np.maximum(np.abs(sweep.gain), 1e-300)), log_f)
     width = max(len(slope) // 12, 1)
@@ -52,6 +64,15 @@ def excess_delay(sweep: Sweep) -> float:
     excess = np.unwrap(np.angle(sweep.gain)) - np.pi / 2 * smooth
     delay_s = -float(excess @ sweep.freq_hz) / (2 * np.pi * float(sweep.freq_hz @ sweep.freq_hz))
     return max(delay_s, 0.0)
+
+
+def _thinned(sweep: Sweep) -> Sweep:
+    """The sweep, or of a dense one the points nearest to `ENOUGH` frequencies spaced by their logarithm."""
+    if len(sweep) <= ENOUGH:
+        return sweep
+    wanted_hz = np.geomspace(sweep.f_min_hz, sweep.f_max_hz, ENOUGH)
+    chosen = np.unique(np.searchsorted(sweep.freq_hz, wanted_hz).clip(max=len(sweep) - 1))
+    return Sweep(freq_hz=sweep.freq_hz[chosen], gain=sweep.gain[chosen], origin=sweep.origin)
 
 
 def _from_straight_lines(sweep: Sweep) -> Start:
@@ -82,7 +103,7 @@ def vector_fit_roots(sweep: Sweep, real: int, pairs: int) -> tuple[ComplexArray,
 
     None where the fit failed. They are guesses: unweighted, some fitted to noise, unstable closed-loop poles mirrored.
     """
-    model = _fit_pair(sweep, real, pairs)
+    model = _fit_pair(sweep, real, pairs, relocations=MOST_RELOCATIONS)
     if model is None:
         return None
     pole_matrix, residues, constant = model
@@ -90,12 +111,11 @@ def vector_fit_roots(sweep: Sweep, real: int, pairs: int) -> tuple[ComplexArray,
     return poles, zeros
 
 
-def _from_vector_fit(sweep: Sweep, poles: int) -> tuple[Start, ...]:
-    """Guesses from a pair fit with `poles` poles: its two lowest poles, and its three lowest where there are three."""
-    model = _fit_pair(sweep, poles)
-    if model is None:
+def _from_pair_fit(pair_fit: PairFit | None) -> tuple[Start, ...]:
+    """Guesses from a pair fit: its two lowest poles, and its three lowest where there are three."""
+    if pair_fit is None:
         return ()
-    pole_matrix, residues, constant = model
+    pole_matrix, residues, constant = pair_fit
     loop_zeros, loop_poles = (_zeros(pole_matrix, residues[i], constant[i]) for i in range(2))
     loop_poles = loop_poles[np.argsort(np.abs(loop_poles))]
     dc = _dc_gain(pole_matrix, residues, constant)
@@ -121,24 +141,52 @@ def _guess(dc_gain: float, poles: ComplexArray, zero_time_s: float) -> Start | N
     )
 
 
-def _fit_pair(sweep: Sweep, poles: int, pairs: int = 0) -> tuple[ComplexArray, ComplexArray, FloatArray] | None:
-    import skrf
+@dataclass(frozen=True, slots=True, kw_only=True)
+class _Pair:
+    """What vector fitting asks of a network; a real one takes as long to build as to fit.
+
+    s : shape (n, 2, 2)
+    """
+
+    f: FloatArray
+    s: ComplexArray
+    nports: int = 2
+
+    def is_passive(self) -> bool:
+        """A start need not be passive, and is not tested for it."""
+        return False
+
+
+PairFit = tuple[ComplexArray, ComplexArray, FloatArray]  # poles (p,), residues (2, p), constants (2,)
+
+
+def _fit_pair(
+    sweep: Sweep,
+    real: int,
+    pairs: int = 0,
+    *,
+    near: ComplexArray | None = None,
+    relocations: int = RELOCATIONS,
+) -> PairFit | None:
+    """Pair fit with so many real poles and complex pairs; or from the poles `near`, and one at the top of the band."""
     from skrf.vectorFitting import VectorFitting
 
     through = 1 + sweep.gain
     pair = np.zeros((len(sweep), 2, 2), dtype=complex)
-    # A common factor changes no root; ten times too large to be passive, the pair is spared scikit-rf's passivity test.
-    pair[:, 0, 0] = pair[:, 1, 1] = 10 * sweep.gain / through
-    pair[:, 0, 1] = pair[:, 1, 0] = 10 / through
+    pair[:, 0, 0] = pair[:, 1, 1] = PAIR_SIZE * sweep.gain / through
+    pair[:, 0, 1] = pair[:, 1, 0] = PAIR_SIZE / through
     with warnings.catch_warnings(), np.errstate(all="ignore"):
         # scikit-rf warns where the fit is poor or not passive; a start may be either, and the end is judged later.
         warnings.simplefilter("ignore")
-        fit = VectorFitting(skrf.Network(f=sweep.freq_hz, f_unit="Hz", s=pair))
+        fit = VectorFitting(_Pair(f=sweep.freq_hz, s=pair))
+        fit.max_tol, fit.max_iterations = POLES_SETTLED, relocations
+        if near is not None:
+            fit.poles = np.append(near[near.imag >= 0], -2 * np.pi * sweep.f_max_hz)
         try:
             fit.vector_fit(
-                n_poles_real=poles,
+                n_poles_real=real,
                 n_poles_cmplx=pairs,
-                init_pole_spacing="log",
+                init_pole_spacing="log" if near is None else "custom",
                 fit_constant=True,
                 fit_proportional=False,
                 enforce_dc=False,

@@ -2,14 +2,15 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import replace
 
 import numpy as np
 import pytest
 from bench_loops import FREQ_HZ, STANDARD, Loop
 
-from fitamp.arrays import ComplexArray
-from fitamp.fitting.start import Start, starts
+from fitamp.arrays import ComplexArray, FloatArray
+from fitamp.fitting.start import ENOUGH, Start, excess_delay, starts, vector_fit_roots
 from fitamp.sweep import NoiseLevels, Sweep
 
 
@@ -76,3 +77,35 @@ def test_odd_sweeps_still_give_usable_numbers(name: str) -> None:
 
 def test_the_last_points_of_a_short_sweep_are_enough() -> None:
     assert starts(STANDARD.exact(np.geomspace(10.0, 100e6, 12)))
+
+
+@pytest.mark.parametrize("spacing", [np.geomspace, np.linspace])
+def test_a_dense_sweep_starts_as_near_as_a_thin_one_whatever_its_spacing(
+    spacing: Callable[[float, float, int], FloatArray],
+) -> None:
+    dense = STANDARD.exact(spacing(10.0, 100e6, 20 * ENOUGH))
+    assert min(near(start, STANDARD) for start in starts(dense)) < 1.05
+
+
+def test_the_delay_that_the_phase_shows_does_not_depend_on_the_number_of_points() -> None:
+    # 5 ns turn the top of the band by half a turn.
+    rough = []
+    for points in (281, 20 * ENOUGH):
+        freq_hz = np.geomspace(10.0, 100e6, points)
+        turned = STANDARD.gain(freq_hz) * np.exp(-2j * np.pi * freq_hz * 5e-9)
+        rough.append(excess_delay(Sweep(freq_hz=freq_hz, gain=turned)))
+    assert rough == pytest.approx([5e-9, 5e-9], rel=0.3)
+    assert rough[0] == pytest.approx(rough[1], rel=0.02)
+
+
+def test_a_pair_fit_of_higher_order_finds_resonant_roots_too() -> None:
+    # Poles at 30 MHz and zeros 2 % above, Q 20, beside the standard two poles and zero.
+    s = 2j * np.pi * FREQ_HZ
+    below, above = 2 * np.pi * 30e6, 2 * np.pi * 30.6e6
+    pair = (1 + s / above / 20 + (s / above) ** 2) / (1 + s / below / 20 + (s / below) ** 2)
+    found = vector_fit_roots(Sweep(freq_hz=FREQ_HZ, gain=STANDARD.gain() * pair), 2, 1)
+    assert found is not None
+    for roots, expected in zip(found, (below, above), strict=True):
+        upper = roots[np.argmax(roots.imag)]
+        assert abs(upper) == pytest.approx(expected, rel=1e-6)
+        assert -abs(upper) / (2 * upper.real) == pytest.approx(20.0, rel=1e-5)
