@@ -18,6 +18,7 @@ from fitamp.arrays import ComplexArray, FloatArray
 from fitamp.conditioning.steps import step_at
 from fitamp.fitting.adequacy import judge
 from fitamp.fitting.factors import Doublet, Factor, RangeStep, Resonance
+from fitamp.fitting.naming import named
 from fitamp.fitting.scan import scanned_starts
 from fitamp.fitting.search import (
     FREE_DELAY,
@@ -31,7 +32,7 @@ from fitamp.fitting.search import (
     lifted,
 )
 from fitamp.fitting.start import vector_fit_roots
-from fitamp.fitting.two_pole import Solution, solve
+from fitamp.fitting.two_pole import Solution, solution_at, solve
 
 __all__ = ["needs_more", "with_factors"]
 
@@ -62,7 +63,9 @@ Start = tuple[Factor, FloatArray]
 def needs_more(solution: Solution) -> bool:
     """Whether the residuals are inadequate, or stand out over a few neighbours, as of a resonance taken for noise."""
     energy = np.convolve(np.abs(solution.residuals) ** 2 / 2, np.full(5, 0.2), mode="valid")
-    return not judge(solution).adequate or bool(energy.max(initial=0.0) > STANDS_OUT)
+    adequacy = judge(solution)
+    unlike_noise = not adequacy.adequate and not adequacy.noise_too_large
+    return unlike_noise or bool(energy.max(initial=0.0) > STANDS_OUT)
 
 
 def with_factors(search: Search, solution: Solution, any_lag: Solution | None) -> tuple[Solution, Solution | None]:
@@ -162,26 +165,46 @@ def _without_idle(search: Search, solution: Solution) -> Solution:
 
 def _one_more(search: Search, solution: Solution) -> list[Solution]:
     """Solutions with one factor more, the best of each kind of factor, the likeliest first."""
-    starts = list(_starts(search, solution))
-    ends = [end for factor, start in starts if (end := _raced(search, solution, solution.values, (factor, start)))]
-    if not solution.model.factors and not any(judge(end).adequate for end in ends):
+    ends = _raced_from(search, solution)
+    if not any(judge(end).adequate for end in ends):
         # What was fitted without the factor may be far off because of it.
-        bases = search.vectors(solution.model)
-        ends += [end for base in bases for start in starts if (end := _raced(search, solution, base, start))]
+        for other in _elsewhere(search, solution):
+            ends += _raced_from(search, other)
+            if any(judge(end).adequate for end in ends):
+                break
     best: dict[type, Solution] = {}
     for end in sorted(ends, key=lambda end: end.optimum.chi_square + _price(search, end.model.factors[-1])):
         best.setdefault(type(end.model.factors[-1]), end)
-    settled = (_named_by_nearness(search, search.settled(_stepped(search, end))) for end in best.values())
+    settled = (named(search.settled(_stepped(search, end)), search.sweep) for end in best.values())
     return [end for end in settled if _is_likely(search, end) and _shows_its_step(search, end)]
 
 
-def _raced(search: Search, solution: Solution, base: FloatArray, start: Start) -> Solution | None:
-    """The solution with a further factor, fitted roughly from these values; None where it ends as something else."""
-    factor, values = start
-    return _raced_as(search, solution, (*solution.model.factors, factor), np.concatenate([base, values]))
+def _raced_from(search: Search, solution: Solution) -> list[Solution]:
+    """Rough fits with one factor more that start from a solution."""
+    raced = (
+        _raced(search, solution, (*solution.model.factors, factor), np.concatenate([solution.values, values]))
+        for factor, values in _starts(search, solution)
+    )
+    return [end for end in raced if end is not None]
 
 
-def _raced_as(search: Search, solution: Solution, factors: tuple[Factor, ...], start: FloatArray) -> Solution | None:
+def _elsewhere(search: Search, solution: Solution) -> Iterator[Solution]:
+    """The same factors on the first starts, and with pole 2 where the design has it; under the same noise."""
+    model = solution.model
+    own = np.concatenate([[], *model.factor_values(solution.values)])
+    bases = search.vectors(model)
+    if model.pole2 is not None:
+        g, q, *_ = model.physical(solution.values)
+        if g and q:
+            bases.insert(0, model.vector(g=g, q=q, b=model.pole2.time_s, zero_time_s=0.0))
+    for base in bases:
+        values = np.concatenate([base, own])
+        if search.is_sane(model, values):
+            yield solution_at(model, search.sweep, solution.noise, values)
+
+
+def _raced(search: Search, solution: Solution, factors: tuple[Factor, ...], start: FloatArray) -> Solution | None:
+    """The solution with these factors, fitted roughly; None where one of them ends as something else."""
     model = replace(solution.model, factors=factors)
     end = solve(model, search.sweep, solution.noise, start, tolerance=RACE_TOLERANCE, max_steps=RACE_STEPS)
     return end if _is_likely(search, end, BEYOND) else None
@@ -198,7 +221,7 @@ def _stepped(search: Search, solution: Solution) -> Solution:
     for way in (1, -1):
         for index in range(at + way, len(edges_hz) if way > 0 else -1, way):
             other = RangeStep(f_hz=float(edges_hz[index]))
-            moved = _raced_as(search, best, (*best.model.factors[:-1], other), best.values)
+            moved = _raced(search, best, (*best.model.factors[:-1], other), best.values)
             if moved is not None and moved.optimum.chi_square < best.optimum.chi_square:
                 best = moved
             elif abs(index - at) > FARTHEST_BESIDE:
@@ -265,41 +288,3 @@ def _is_likely(search: Search, solution: Solution, beyond: float = 1.0) -> bool:
             for factor, own in zip(model.factors, model.factor_values(solution.values), strict=True)
         )
     )
-
-
-def _named_by_nearness(search: Search, solution: Solution) -> Solution:
-    """The same response with the doublet made of the pole and the zero that are closest together.
-
-    Without a design the likelihood cannot tell which pole is pole 2: what nearly cancels is taken for what was added.
-    """
-    model = solution.model
-    doublets = [index for index, factor in enumerate(model.factors) if isinstance(factor, Doublet)]
-    if model.pole2 is not None or model.far_pole.sd_s or not doublets:
-        return solution
-    index = doublets[0]
-    doublet = model.factors[index]
-    assert isinstance(doublet, Doublet)
-    g, q, b, zero_time_s, _, delay_s = model.physical(solution.values)
-    # Pole times of q + s + b s²: their sum is 1/q, their product b/q.
-    if not (q and b) or 4 * b * q >= 1:
-        return solution
-    time1_s = (1 + np.sqrt(1 - 4 * b * q)) / (2 * q)
-    time2_s = b / q / time1_s
-    scale = doublet.time_s
-    own = list(model.factor_values(solution.values))
-    zero_s, pole_s = own[index] * scale
-    choices = [(z, p) for z in (zero_s, zero_time_s) for p in (pole_s, time2_s) if z * p > 0]
-    if not choices:
-        return solution
-    near_zero_s, near_pole_s = min(choices, key=lambda pair: abs(np.log(pair[0] / pair[1])))
-    if (near_zero_s, near_pole_s) == (zero_s, pole_s):
-        return solution
-    left_zero_s = zero_s + zero_time_s - near_zero_s
-    left_time_s = pole_s + time2_s - near_pole_s
-    new_q = 1 / (time1_s + left_time_s)
-    base = model.vector(
-        g=g / q * new_q, q=new_q, b=time1_s * left_time_s * new_q, zero_time_s=left_zero_s, delay_s=delay_s
-    )
-    own[index] = np.array([near_zero_s, near_pole_s]) / scale
-    renamed = solve(model, search.sweep, solution.noise, np.concatenate([base, *own]))
-    return renamed if renamed.optimum.converged and _is_likely(search, renamed) else solution

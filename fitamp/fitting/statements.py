@@ -18,6 +18,7 @@ from fitamp.fitting.result import (
     WarningCode,
     ZeroPlace,
     ZeroSeen,
+    text_of,
 )
 from fitamp.sweep import Sweep
 from fitamp.units import si
@@ -188,8 +189,8 @@ def _range_steps(fit: LoopFit) -> list[FitWarning]:
     found = []
     for step in fit.range_steps:
         message = (
-            f"at {si(step.f_hz, 'Hz')} all that was read jumps by {step.size_db.value:+.3f} ± "
-            f"{step.size_db.stderr:.3f} dB and {step.turn_deg.value:+.2f} ± {step.turn_deg.stderr:.2f}°, as where a "
+            f"at {si(step.f_hz, 'Hz')} all that was read jumps by {text_of('size_db', step.size_db)} and "
+            f"{text_of('turn_deg', step.turn_deg)}, as where a "
             "receiver changes its range; the jump was fitted, the points below it are taken as right: fix the range, "
             "or calibrate"
         )

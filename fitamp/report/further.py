@@ -6,6 +6,7 @@ import math
 from collections.abc import Iterator
 
 from fitamp.fitting import LoopFit, Root
+from fitamp.fitting.result import text_of
 from fitamp.units import si, si_with_error
 
 __all__ = ["further_sentences", "model_in_words"]
@@ -19,11 +20,8 @@ def further_sentences(fit: LoopFit) -> Iterator[str]:
     for pole, zero in zip(fit.doublet_poles, fit.doublet_zeros, strict=True):
         yield f"doublet: pole at {_distance(pole)}, zero at {_distance(zero)}"
     for step in fit.range_steps:
-        turn, stderr = step.turn_deg.value, step.turn_deg.stderr
-        yield (
-            f"range step: at {si(step.f_hz, 'Hz')} {step.size_db.value:+.3f} ± {step.size_db.stderr:.3f} dB and "
-            f"{turn:+.2f} ± {stderr:.2f}°, taken off above it"
-        )
+        size, turn = text_of("size_db", step.size_db), text_of("turn_deg", step.turn_deg)
+        yield f"range step: at {si(step.f_hz, 'Hz')} by {size} and {turn}, taken off above it"
 
 
 def model_in_words(fit: LoopFit) -> str:

@@ -8,7 +8,7 @@ import numpy as np
 import pytest
 
 from fitamp.arrays import ComplexArray
-from fitamp.fitting import LoopFit, WarningCode, fit_sweep
+from fitamp.fitting import DelayPrior, FarPolePrior, LoopFit, Pole2Prior, WarningCode, fit_sweep
 from fitamp.noise import simulate_bench
 from fitamp.sweep import NoiseLevels, Sweep
 from fitamp.transfer import Transfer
@@ -115,3 +115,15 @@ def test_nothing_is_added_to_a_clean_sweep() -> None:
         fit = fitted(loop().evaluate(FREQ_HZ), 100 + seed)
         assert not fit.solution.model.factors
         assert fit.model_name == "two-pole-one-zero"
+
+
+def test_with_a_design_the_doublet_below_pole_2_is_not_taken_for_it() -> None:
+    """Nearness alone would take 4 MHz for pole 2; rough knowledge of pole 2 says otherwise."""
+    true = loop((-4e6,), (-8e6,))
+    sweep = Sweep(freq_hz=FREQ_HZ, gain=simulate_bench(true.evaluate(FREQ_HZ), NOISE, np.random.default_rng(8)))
+    prior = Pole2Prior(time_s=1 / (2 * np.pi * 50e6), ln_sd=np.log(2))
+    fit = fit_sweep(sweep, pole2=prior, far_pole=FarPolePrior(), delay=DelayPrior())
+    poles = {name: abs(root.value_hz) for name, root in fit.named_poles}
+    assert poles["pole 2"] == pytest.approx(58e6, rel=0.02)
+    assert poles["doublet"] == pytest.approx(4e6, rel=0.02)
+    check_roots(fit, true)
