@@ -94,9 +94,10 @@ def find_tables(file: str, block: Block, lines: Sequence[Line]) -> tuple[Table, 
     if len(closing) != len(words):
         tables[-1] += _as_rows(file, words, block)
         closing = ()
-    return tuple(
-        _table(block, rows, lines, before, closing) for before, rows in zip([None, *tables[:-1]], tables, strict=True)
+    *first, last = (
+        _table(block, rows, lines, before) for before, rows in zip([None, *tables[:-1]], tables, strict=True)
     )
+    return (*first, replace(last, closing=closing))
 
 
 def _split(file: str, block: Block) -> Iterator[_Row]:
@@ -144,9 +145,7 @@ def _refuse_other_width(file: str, row: _Row, block: Block) -> None:
         )
 
 
-def _table(
-    block: Block, rows: Sequence[_Row], lines: Sequence[Line], before: Sequence[_Row] | None, closing: tuple[Line, ...]
-) -> Table:
+def _table(block: Block, rows: Sequence[_Row], lines: Sequence[Line], before: Sequence[_Row] | None) -> Table:
     """One table with the lines above it: those of the file, or those since the table before."""
     first, last = rows[0][0].number, rows[-1][0].number
     above = block.above
@@ -154,4 +153,4 @@ def _table(
         above = tuple(lines[before[-1][0].number : first - 1])  # lines count from 1
     comments = sum(is_comment(line.text) for line in lines[first:last])
     own = replace(block, rows=tuple(line for line, _ in rows), above=above, comments=comments)
-    return Table(block=own, cells=tuple(cells for _, cells in rows), closing=closing)
+    return Table(block=own, cells=tuple(cells for _, cells in rows))

@@ -96,9 +96,8 @@ def _numbers(data: bytes, first: int, table: Table, understood: Understood) -> l
         return None
     exact: dict[str, Any] = {}
     if tuple(map(int, re.findall(r"\d+", pd.__version__)[:2])) < _EXACT_PANDAS:
-        if decimal == ",":
-            return None
-        exact = {"float_precision": "round_trip"}
+        exact = {"float_precision": "round_trip"}  # which knows the decimal point alone
+        data, decimal = data.replace(decimal.encode(), b"."), "."
     stream = io.BytesIO(data)
     stream.seek(start)
     try:

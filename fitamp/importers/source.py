@@ -80,7 +80,8 @@ def load_source(path: str | os.PathLike[str], *, max_bytes: int = MAX_BYTES) -> 
         raise SweepError("the name of the sweep file is empty; name one CSV or Touchstone file")
     try:
         if file == STANDARD_INPUT:
-            file, stored = CALLED, _from_standard_input(max_bytes)
+            file = CALLED
+            stored = _from_standard_input(max_bytes)
         else:
             stored = _from_file(file, Path(file), max_bytes)
     except (OSError, ValueError) as error:
@@ -130,6 +131,8 @@ def _from_file(file: str, path: Path, max_bytes: int) -> bytes:
 
 
 def _from_standard_input(max_bytes: int) -> bytes:
+    if sys.stdin is None:  # as under a program without a console
+        raise OSError("there is none")
     return _limited(CALLED, sys.stdin.buffer, max_bytes, expected=_PIECE)
 
 

@@ -130,7 +130,6 @@ class Sorter:
         if value.lower() not in ("full", "lower", "upper"):
             raise self.found.refuse(number, f"[Matrix Format] {show(value)}; expected Full, Lower or Upper")
         self.found.matrix = value.lower()
-        self.found.kept.append(f"[Matrix Format] {value}")
 
     def _reference(self, number: int, value: str) -> None:
         if not self.found.ports:

@@ -90,6 +90,22 @@ def _check_rows(found: Scan, network: Sequence[Data]) -> None:
             )
     if have != wanted:
         raise _incomplete(found, have)
+    if found.matrix != "full":
+        first = len(found.kept) - len(found.row_lines)
+        found.kept[first:] = [_in_full(row, found) for row in found.kept[first:]]
+
+
+def _in_full(row: str, found: Scan) -> str:
+    """A row of half a matrix with the other half by symmetry: scikit-rf 1 leaves that half as it finds the memory."""
+    frequency, *numbers = row.split()
+    ports = range(found.ports)
+    if found.matrix == "lower":
+        cells = [(i, j) for i in ports for j in ports if j <= i]
+    else:
+        cells = [(i, j) for i in ports for j in ports if j >= i]
+    pairs = dict(zip(cells, zip(numbers[::2], numbers[1::2], strict=True), strict=True))
+    whole = (pairs.get((i, j)) or pairs[j, i] for i in ports for j in ports)
+    return " ".join([frequency, *(number for pair in whole for number in pair)])
 
 
 def _incomplete(found: Scan, have: int) -> SweepError:

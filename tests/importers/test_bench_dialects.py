@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import gzip
+import io
 import re
 from pathlib import Path
 
@@ -220,6 +221,41 @@ def test_a_table_that_is_chosen_does_not_need_the_others_to_be_sound(tmp_path: P
     assert_same(read_sweep(path, sweep=1))
     with pytest.raises(SweepError, match="line 27: the header names a magnitude but no phase"):
         read_sweep(path, sweep=2)
+
+
+def test_channels_between_words_for_begin_and_end(tmp_path: Path) -> None:
+    # The way of several network analysers (common practice, no source).
+    body = "".join(",".join(row) + "\n" for row in cells("dB deg"))
+    channels = [f"BEGIN CH{k}\nFreq(Hz),S21(DB),S21(DEG)\n{body}END\n" for k in (1, 2)]
+    first, second = read_sweeps(file_of(tmp_path, "!Invented analyser\n" + "\n".join(channels)))
+    assert_same(first)
+    assert_same(second)
+    assert first.origin.notes == ("Invented analyser", "BEGIN CH1")
+    assert second.origin.notes == ("END", "BEGIN CH2")
+    assert "last line" not in choices(first)
+    assert choices(second)["last line"] == "line 58 left aside"
+
+
+def test_touchstone_from_standard_input_says_its_ports_by_its_rows(monkeypatch: pytest.MonkeyPatch) -> None:
+    one = "# Hz S RI R 50\n" + "".join(" ".join(row) + "\n" for row in cells("re im"))
+    two = "# Hz S RI R 50\n" + "".join(f"{f} 0 0 {re} {im} 0 0 0 0\n" for f, re, im in cells("re im"))
+    for content in (one, two):
+        monkeypatch.setattr("sys.stdin", Console(content.encode()))
+        sweep = read_sweep("-")
+        assert_same(sweep)
+        assert (sweep.origin.file, sweep.origin.form) == ("standard input", "touchstone")
+    monkeypatch.setattr("sys.stdin", Console(b"# Hz S RI\n1 2\n"))
+    with pytest.raises(SweepError, match="standard input: the number of ports is not known; name the file"):
+        read_sweep("-")
+    monkeypatch.setattr("sys.stdin", Console(table(COLUMNS, cells("re im"), separator=",").encode()))
+    assert_same(read_sweep("-"))
+
+
+class Console:
+    """Standard input as far as its bytes are concerned."""
+
+    def __init__(self, data: bytes) -> None:
+        self.buffer = io.BytesIO(data)
 
 
 def test_gzip_files_of_both_kinds(tmp_path: Path) -> None:

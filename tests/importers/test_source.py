@@ -172,6 +172,12 @@ def test_standard_input_is_read_under_a_name_of_its_own(monkeypatch: pytest.Monk
     assert (source.file, source.data) == ("standard input", b"abc")
 
 
+def test_program_without_standard_input_says_so(monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr(sys, "stdin", None)
+    with pytest.raises(SweepError, match=r"standard input: cannot be read \(there is none\)"):
+        load_source("-")
+
+
 def test_endless_standard_input_is_refused_at_the_limit(monkeypatch: pytest.MonkeyPatch) -> None:
     endless = Endless()
     monkeypatch.setattr(sys, "stdin", Console(endless))

@@ -94,6 +94,19 @@ def test_lower_matrix_of_version_2_is_completed_by_symmetry(tmp_path: Path) -> N
     assert_same(read_sweep(path, trace="S12"), "S12")
 
 
+def test_half_a_matrix_of_three_ports_stands_row_by_row(tmp_path: Path) -> None:
+    # Touchstone 2.0, [Matrix Format]: lower is N11, N21 N22, N31 N32 N33; upper is N11 N12 N13, N22 N23, N33.
+    for matrix, order in (("Lower", "11 21 22 31 32 33"), ("Upper", "11 21 31 22 32 33")):
+        body = [f"{f} " + " ".join(f"{cell} -{cell}" for cell in order.split()) for f in (1, 2)]
+        text = (
+            version_2("RI", "Hz", "12_21", body, matrix=matrix).replace("Ports] 2", "Ports] 3").replace("75", "75 75")
+        )
+        text = text.replace("[Two-Port Data Order] 12_21\n", "")
+        path = file_of(tmp_path, text, "a.s3p")
+        for trace, expected in (("S11", 11), ("S21", 21), ("S12", 21), ("S23", 32), ("S31", 31), ("S33", 33)):
+            assert read_sweep(path, trace=trace, sign=Sign.UNKNOWN).gain[0] == expected * (1 - 1j)
+
+
 def test_comments_that_look_like_port_impedances_change_nothing(tmp_path: Path) -> None:
     body = "\n! Port Impedance 50 0\n".join(rows("RI", "Hz", "one"))
     assert_same(read_sweep(file_of(tmp_path, f"! Gamma\n# Hz S RI R 50\n{body}", "a.s1p")), "S11")
