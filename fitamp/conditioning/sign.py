@@ -137,7 +137,10 @@ def _recognise(sweep: Sweep) -> tuple[Sign, str]:
     if (size > 1).sum() < _LEAST_ASKED:
         few = "its magnitude exceeds 1 at fewer than three points; below, a zero or delay may look like an inversion"
         return Sign.UNKNOWN, few
-    band = _band(sweep.freq_hz[size > 0], sweep.gain[size > 0])
+    freq_hz, gain = sweep.freq_hz, sweep.gain
+    if not size.all():
+        freq_hz, gain, size = freq_hz[size > 0], gain[size > 0], size[size > 0]
+    band = _band(freq_hz, gain, np.flatnonzero(size > 1))
     steady = band.scatter < _MAX_SCATTER
     least = max(_LEAST_ASKED, _STEADY_SHARE * len(steady))
     if steady.sum() < least:
@@ -197,9 +200,8 @@ def _lower_half(log_f: FloatArray) -> int:
     return max(int((log_f <= (log_f[0] + log_f[-1]) / 2).sum()), _HANDFUL)
 
 
-def _band(freq_hz: FloatArray, gain: ComplexArray) -> _Band:
-    """The points with |T| above 1, thinned out, each with the lines through its surroundings."""
-    above = np.flatnonzero(np.abs(gain) > 1)
+def _band(freq_hz: FloatArray, gain: ComplexArray, above: NDArray[np.intp]) -> _Band:
+    """The points `above` 1, thinned out, each with the lines through its surroundings."""
     above = above[np.unique(np.linspace(0, len(above) - 1, _MOST_ASKED).astype(int))]
     reach = 10**_HALF_WINDOW_DECADES
     local = []

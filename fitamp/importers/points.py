@@ -47,13 +47,11 @@ def finish(
         For a negative or repeated frequency, or frequencies in no order; the message has the line.
     """
     file, lines, freq_hz, gain = origin.file, points.lines, points.freq_hz, points.gain
-    negative = freq_hz < 0
-    if negative.any():
-        row = int(np.argmax(negative))
+    if len(freq_hz) and freq_hz.min() < 0:
+        row = int(np.argmax(freq_hz < 0))
         text = f"frequency {freq_hz[row]:g} Hz is negative; remove the row or check the columns"
         raise at_line(file, lines[row], text)
-    step = np.diff(freq_hz)
-    if may_fall and len(step) and (step < 0).sum() > (step > 0).sum():
+    if may_fall and _mostly_falls(freq_hz):
         freq_hz, gain, lines = freq_hz[::-1], gain[::-1], lines[::-1]
         reason = f"the file starts at {freq_hz[-1]:g} Hz and falls to {freq_hz[0]:g} Hz"
         decisions = (*decisions, Decision(topic="order", choice="reversed", reason=reason))
@@ -68,8 +66,19 @@ def finish(
     return Sweep(freq_hz=freq_hz, gain=gain, origin=origin, decisions=decisions, left_out=left_out)
 
 
+def _rises(freq_hz: FloatArray) -> bool:
+    return bool((freq_hz[1:] > freq_hz[:-1]).all())
+
+
+def _mostly_falls(freq_hz: FloatArray) -> bool:
+    if _rises(freq_hz):
+        return False
+    step = np.diff(freq_hz)
+    return bool((step < 0).sum() > (step > 0).sum())
+
+
 def _refuse_disorder(file: str, lines: Sequence[int], freq_hz: FloatArray) -> None:
-    if (np.diff(freq_hz) > 0).all():
+    if _rises(freq_hz):
         return
     same = np.unique(freq_hz, return_counts=True)
     repeated = same[0][same[1] > 1]

@@ -39,7 +39,6 @@ def is_no_reading(text: str) -> bool:
 
 def without_reading(values: FloatArray) -> NDArray[np.bool_]:
     """Where numbers are the ones that stand for no reading, shape as `values`."""
-    size = np.abs(values)
-    if not (size >= min(SCPI_NO_READING)).any():
+    if not len(values) or max(values.max(), -values.min()) < min(SCPI_NO_READING):
         return np.zeros(len(values), dtype=bool)
-    return np.isin(size, SCPI_NO_READING)
+    return np.isin(np.abs(values), SCPI_NO_READING)
