@@ -19,12 +19,12 @@ from fitamp.fitting.derive import (
     fitted_roots,
 )
 from fitamp.fitting.factors import Doublet, Resonance
-from fitamp.fitting.intervals import RISE_95, estimate_by_curvature, estimate_by_profile, hull, profile
+from fitamp.fitting.intervals import RISE_95, estimate_by_curvature, hull, is_excluded
 from fitamp.fitting.orders import needs_more, with_factors
 from fitamp.fitting.result import LoopFit
 from fitamp.fitting.screen import screened
 from fitamp.fitting.search import FREE_DELAY, FREE_FAR_POLE, Search, lifted
-from fitamp.fitting.statements import place_of_zero, warnings_of
+from fitamp.fitting.statements import place_of_zero, small_zero_time_s, warnings_of
 from fitamp.fitting.two_pole import DelayPrior, FarPoleCurve, FarPolePrior, Pole2Prior, Solution, solution_at
 from fitamp.sweep import NoiseLevels, Sweep
 from fitamp.transfer import Transfer
@@ -44,6 +44,8 @@ RISES = 1 / 30
 # So many standard errors from 0 the misfit at 0 is large too, though a quartic valley makes it a quarter of what the
 # curvature promises.
 CURVED_SIGMA = 10.0
+# An interval that is not known to end before a small zero time reaches at least so much farther.
+BEYOND_SMALL = 1.01
 
 
 def fit_sweep(
@@ -134,7 +136,14 @@ def fit_sweep(
     # With priors the lag is in the estimate already; without, what may be said must hold for any.
     strict = parameters.zero_time_s
     if not lag_is_known:
-        strict = _whatever_the_lag(any_lag, solution, parameters.zero_time_s, sweep, quantile)
+        strict = _whatever_the_lag(
+            any_lag,
+            solution,
+            parameters.zero_time_s,
+            sweep,
+            quantile=quantile,
+            small_s=small_zero_time_s(parameters, margins),
+        )
     fit = LoopFit(
         sweep=sweep,
         response=solution.model.whole_response(solution.values),
@@ -164,11 +173,11 @@ def _degrees_of_freedom(sweep: Sweep, noise: NoiseLevels | None) -> float:
 
 
 def _whatever_the_lag(
-    any_lag: Solution | None, solution: Solution, zero_time: Estimate, sweep: Sweep, quantile: float
+    any_lag: Solution | None, solution: Solution, zero_time: Estimate, sweep: Sweep, *, quantile: float, small_s: float
 ) -> Estimate:
     """Zero time with third pole and delay free; undetermined where that has no solution or an inadequate one.
 
-    A zero far out and a delay act alike to first order: near there the curvature says nothing, and a profile has to.
+    A zero far out and a delay act alike to first order: near there the curvature says nothing, and refits have to.
     That valley has branches; the one in which `solution` lies belongs to the interval if it is as good.
     """
     if any_lag is None or not (any_lag.optimum.converged and judge(any_lag).adequate):
@@ -180,10 +189,33 @@ def _whatever_the_lag(
 
     strict = estimate_by_curvature(quantity, any_lag.values, any_lag.covariance, quantile=quantile, positive=False)
     if strict.value is None or strict.stderr is None or abs(strict.value) < CURVED_SIGMA * strict.stderr:
-        strict = estimate_by_profile(quantity, any_lag, profile(any_lag, sweep, ZERO), rising=True)
+        strict = _as_far_as_asked(strict, any_lag, sweep, small_s)
     without = solution_at(model, sweep, any_lag.noise, lifted(solution, model))
     as_good = without.optimum.chi_square < any_lag.optimum.chi_square + RISE_95
     return hull(strict, zero_time) if as_good else strict
+
+
+def _as_far_as_asked(curved: Estimate, any_lag: Solution, sweep: Sweep, small_s: float) -> Estimate:
+    """Zero time with an interval that is right about 0 and about ±`small_s`, which are all that is asked of it.
+
+    In a valley that bends, a whole profile takes hundreds of steps for every point, most of them where nothing depends
+    on it.
+    """
+    if curved.value is None or curved.stderr is None:
+        return NOT_KNOWN
+    scale_s, value_s = any_lag.model.time_s, curved.value
+    low_s, high_s = curved.ci95
+    assert low_s is not None
+    assert high_s is not None
+    if is_excluded(any_lag, sweep, ZERO, 0.0):
+        low_s, high_s = (max(low_s, 0.0), high_s) if value_s > 0 else (low_s, min(high_s, 0.0))
+        return Estimate(value=value_s, stderr=curved.stderr, ci95=(low_s, high_s))
+    ends_s = []
+    for side, own_s in ((-1, low_s), (1, high_s)):
+        inside = abs(value_s) < small_s and is_excluded(any_lag, sweep, ZERO, side * small_s / scale_s)
+        ends_s.append(side * (small_s if inside else max(side * own_s, BEYOND_SMALL * small_s)))
+    stderr = (ends_s[1] - ends_s[0]) / (2 * np.sqrt(RISE_95))
+    return Estimate(value=value_s, stderr=float(stderr), ci95=(ends_s[0], ends_s[1]))
 
 
 def _check_points(sweep: Sweep) -> None:

@@ -26,6 +26,7 @@ __all__ = [
     "estimates_by_curvature",
     "gradient",
     "hull",
+    "is_excluded",
     "profile",
 ]
 
@@ -146,26 +147,43 @@ def hull(one: Estimate, other: Estimate) -> Estimate:
     return Estimate(value=one.value, stderr=stderr, ci95=(low, high), known=one.known)
 
 
+def is_excluded(solution: Solution, sweep: Sweep, index: int, value: float) -> bool:
+    """Whether the 95 % interval of a parameter ends before `value`, all others being refitted."""
+    return _refit(solution, sweep, (index, value), solution.values, RISE_95)[0]
+
+
+def _refit(
+    solution: Solution, sweep: Sweep, hold: tuple[int, float], start: FloatArray, rise: float
+) -> tuple[bool, FloatArray]:
+    """Whether the held value is excluded, and the rest fitted to it; what will not converge excludes nothing."""
+    enough = solution.optimum.chi_square + rise
+    values = start
+    for steps in (REFIT_STEPS, MAX_STEPS):
+        held = solve(
+            solution.model,
+            sweep,
+            solution.noise,
+            values,
+            hold=hold,
+            tolerance=REFIT_TOLERANCE,
+            max_steps=steps,
+            enough=enough,
+        )
+        values = held.values
+        if held.optimum.chi_square < enough:
+            return False, values
+        if held.optimum.converged:
+            return True, values
+    return False, values
+
+
 def _edge(solution: Solution, sweep: Sweep, index: int, side: int, rise: float) -> FloatArray | None:
-    best = solution.optimum.chi_square
     centre = float(solution.values[index])
     stderr = float(np.sqrt(solution.covariance[index, index]))
     start = solution.values
 
     def refit(offset: float) -> tuple[bool, FloatArray]:
-        """Whether the held value is excluded, and the rest fitted to it; what will not converge excludes nothing."""
-        values = start
-        for steps in (REFIT_STEPS, MAX_STEPS):
-            hold = (index, centre + side * offset)
-            held = solve(
-                solution.model, sweep, solution.noise, values, hold=hold, tolerance=REFIT_TOLERANCE, max_steps=steps
-            )
-            values = held.values
-            if held.optimum.chi_square < best + rise:
-                return False, values
-            if held.optimum.converged:
-                return True, values
-        return False, values
+        return _refit(solution, sweep, (index, centre + side * offset), start, rise)
 
     inner, step = 0.0, min(max(1.5 * stderr, LEAST_STEP), 1.0)
     outer = step

@@ -76,6 +76,7 @@ def minimise(
     jacobian: Jacobian | None = None,
     tolerance: float = TOLERANCE,
     max_steps: int = MAX_STEPS,
+    enough: float = 0.0,
 ) -> Optimum:
     """Minimise the sum of squared residuals from `start` with lmfit's Levenberg–Marquardt (MINPACK).
 
@@ -92,6 +93,8 @@ def minimise(
         our own.
     max_steps
         Evaluations (times p + 1 where the derivatives are differences) after which to give up.
+    enough
+        Chi-square below which our own descent ends at once, not converged.
 
     Returns
     -------
@@ -101,7 +104,7 @@ def minimise(
     names = tuple(names)
     covariance = None
     if jacobian is not None and tolerance >= COARSE:
-        values, settled = descend(residual, jacobian, start, tolerance=tolerance, max_steps=max_steps)
+        values, settled = descend(residual, jacobian, start, tolerance=tolerance, max_steps=max_steps, enough=enough)
     else:
         values, settled, covariance = _by_lmfit(
             residual, start, names=names, jacobian=jacobian, tolerance=tolerance, max_steps=max_steps

@@ -34,8 +34,11 @@ def descend(
     *,
     tolerance: float,
     max_steps: int,
+    enough: float = 0.0,
 ) -> tuple[FloatArray, bool]:
     """Go down from `start` until a step promises or gains no more than `tolerance` of chi-square.
+
+    Or until chi-square is below `enough`, where it is left unsettled.
 
     Returns
     -------
@@ -67,7 +70,7 @@ def descend(
             continue
         values = trial
         matrix, gradient, chi = normal_equations(jacobian(values), residuals)
-        if not np.isfinite(matrix).all():
+        if not np.isfinite(matrix).all() or chi < enough:
             return values, False
         if max(gained, promised) <= tolerance * chi:
             return values, True

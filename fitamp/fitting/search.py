@@ -57,6 +57,7 @@ HUGE_GAIN = 1e20
 # A pole 2 inside the band that lowers chi-square by less than this against one at the band's top was drawn there by
 # noise: with a zero beside it, noise has some ten places to choose from.
 UNPLACED = 10.0
+PLACED_LN = 0.1
 LN_Q, LN_B = 1, 2
 FREE_DELAY, NO_DELAY = DelayPrior(sd_s=np.inf), DelayPrior()
 FREE_FAR_POLE, NO_FAR_POLE = FarPolePrior(sd_s=np.inf), FarPolePrior()
@@ -280,6 +281,9 @@ def _at_the_top(solution: Solution, sweep: Sweep) -> Solution:
     model = solution.model
     top = float(np.log(1 / (2 * np.pi * sweep.f_max_hz)))
     if model.pole2 is not None or model.factors or solution.values[LN_B] <= top:
+        return solution
+    # What is seen at three standard deviations is not placed to a tenth.
+    if solution.covariance[LN_B, LN_B] < PLACED_LN**2:
         return solution
     held = solve(model, sweep, solution.noise, solution.values, hold=(LN_B, top), tolerance=RACE_TOLERANCE)
     if held.optimum.converged and held.optimum.chi_square < solution.optimum.chi_square + UNPLACED:

@@ -23,7 +23,7 @@ from fitamp.fitting.result import (
 from fitamp.sweep import Sweep
 from fitamp.units import si
 
-__all__ = ["place_of_zero", "warnings_of"]
+__all__ = ["place_of_zero", "small_zero_time_s", "warnings_of"]
 
 # Without a design, a zero ten times farther out than both pole 2 and crossover counts as gone.
 SMALL_AGAINST_REST = 0.1
@@ -47,7 +47,7 @@ def place_of_zero(
     """
     plain = parameters.zero_time_s
     lag_free = not (_is_fitted(parameters.delay_s) or _is_fitted(parameters.far_pole_s))
-    small_s = _small_s(parameters, margins)
+    small_s = small_zero_time_s(parameters, margins)
     if plain.known is Known.UNDETERMINED:
         place = ZeroPlace.UNDECIDED
     elif strict.is_within(-small_s, small_s):
@@ -70,7 +70,8 @@ def _is_fitted(lag: Estimate) -> bool:
     return lag.value is None or lag.stderr is not None
 
 
-def _small_s(parameters: FittedParameters, margins: FittedMargins) -> float:
+def small_zero_time_s(parameters: FittedParameters, margins: FittedMargins) -> float:
+    """Zero time, in s, below which a zero counts as gone where no design says what it should be; 0 for none."""
     farthest_hz = max(parameters.pole2_hz.value or 0.0, margins.crossover_hz.value or 0.0)
     return SMALL_AGAINST_REST / (2 * math.pi * farthest_hz) if parameters.pole2_hz.value else 0.0
 

@@ -275,8 +275,12 @@ def solve(
     hold: tuple[int, float] | None = None,
     tolerance: float = TOLERANCE,
     max_steps: int = MAX_STEPS,
+    enough: float = 0.0,
 ) -> Solution:
-    """Fit the model by weighted least squares from `start`; `hold` = (index, value) keeps one parameter there."""
+    """Fit the model by weighted least squares from `start`; `hold` = (index, value) keeps one parameter there.
+
+    `enough` : a chi-square below which nobody needs to know more; a coarse fit ends there, not converged.
+    """
     free = [i for i in range(len(start)) if hold is None or i != hold[0]]
     template = np.array(start, dtype=float)
     if hold is not None:
@@ -287,14 +291,24 @@ def solve(
         values[free] = partial
         return values
 
+    # Slopes are asked for where the residuals just were: both come from one evaluation.
+    latest: list[tuple[bytes, FloatArray, FloatArray]] = []
+
+    def both(partial: FloatArray) -> tuple[FloatArray, FloatArray]:
+        key = np.asarray(partial).tobytes()
+        if not latest or latest[0][0] != key:
+            values = full(partial)
+            rows, slopes = loop_equation(model, values, sweep, noise)
+            priors, prior_slopes = model.prior_rows(values)
+            residuals = np.concatenate([interleaved(rows), priors])
+            latest[:] = [(key, residuals, np.vstack([interleaved(slopes), prior_slopes])[:, free])]
+        return latest[0][1], latest[0][2]
+
     def residual(partial: FloatArray) -> FloatArray:
-        values = full(partial)
-        return np.concatenate([interleaved(loop_equation(model, values, sweep, noise)[0]), model.prior_rows(values)[0]])
+        return both(partial)[0]
 
     def jacobian(partial: FloatArray) -> FloatArray:
-        values = full(partial)
-        rows = np.vstack([interleaved(loop_equation(model, values, sweep, noise)[1]), model.prior_rows(values)[1]])
-        return np.asarray(rows[:, free])
+        return both(partial)[1]
 
     # An iterate that overflows costs one step, not a warning: the residual is not finite there and MINPACK turns back.
     with np.errstate(over="ignore", invalid="ignore", divide="ignore"):
@@ -305,6 +319,7 @@ def solve(
             jacobian=jacobian,
             tolerance=tolerance,
             max_steps=max_steps,
+            enough=enough,
         )
     return Solution(
         model=model, optimum=_completed(optimum, model, full(optimum.values), free), noise=noise, points=len(sweep)
