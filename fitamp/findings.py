@@ -33,6 +33,7 @@ __all__ = ["ElementFindings", "ResistorRange", "findings_of"]
 LEAST_LOAD, MOST_LOAD = 0.4, 2.5
 PAST_END, FARTHEST_LOAD = 1.3, 5.0
 POINTS = 25
+SAMPLES = 60
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -84,7 +85,9 @@ class ElementFindings:
         return tuple(row.quantity for row in self.rows if row.inside is False and row.quantity != "zero_time_s")
 
 
-def findings_of(estimate: ElementEstimate, *, wanted_deg: float | None = None, curves: bool = True) -> ElementFindings:
+def findings_of(
+    estimate: ElementEstimate, *, wanted_deg: float | None = None, curves: bool = True, samples: int = SAMPLES
+) -> ElementFindings:
     """Gather what an estimate says.
 
     Parameters
@@ -93,6 +96,8 @@ def findings_of(estimate: ElementEstimate, *, wanted_deg: float | None = None, c
         Phase margin that is wanted; the lower limit on it in the design where None.
     curves
         Predict over loads and resistors, too, which takes longer than all the rest.
+    samples
+        For the bands of overshoot and settling.
 
     Raises
     ------
@@ -106,7 +111,7 @@ def findings_of(estimate: ElementEstimate, *, wanted_deg: float | None = None, c
     shares, restoring = blame(estimate), restoring_resistor(estimate)
     restored_margin_deg = _margin_with(estimate, restoring)
     loads = None if wanted_deg is None else load_range(estimate, phase_margin_deg=wanted_deg)
-    over_resistor = predict(estimate, rz_ohm=resistors_about(estimate)) if curves else None
+    over_resistor = predict(estimate, rz_ohm=_resistors_about(estimate, restoring), samples=samples) if curves else None
     return ElementFindings(
         estimate=estimate,
         verdict=verdict,
@@ -126,7 +131,7 @@ def findings_of(estimate: ElementEstimate, *, wanted_deg: float | None = None, c
         wanted_deg=wanted_deg,
         loads=loads,
         resistors=None if wanted_deg is None or over_resistor is None else _resistors(over_resistor, wanted_deg),
-        over_load=predict(estimate, load_f=_loads_about(estimate, loads)) if curves else None,
+        over_load=predict(estimate, load_f=_loads_about(estimate, loads), samples=samples) if curves else None,
         over_resistor=over_resistor,
     )
 
@@ -144,13 +149,21 @@ def _margin_with(estimate: ElementEstimate, restoring: RestoringResistor) -> Est
 
 
 def _loads_about(estimate: ElementEstimate, loads: LoadRange | None) -> FloatArray:
-    """Whole loads to predict over, evenly spaced, with the part's own on the bench and the designed one inside."""
+    """Whole loads to predict over: evenly spaced, with the part's own on the bench, the designed one, and the ends."""
     own_f, designed_f = (estimate.circuit.loaded(v).CL for v in (estimate.vector, estimate.circuit.designed))
     most_f = MOST_LOAD * max(own_f, designed_f)
-    for end in () if loads is None else (loads.low_f, loads.high_f):
-        if end is not None and end.value is not None and PAST_END * end.value < FARTHEST_LOAD * own_f:
-            most_f = max(most_f, PAST_END * end.value)
-    return np.linspace(LEAST_LOAD * min(own_f, designed_f), most_f, POINTS)
+    ends = [] if loads is None else [end.value for end in (loads.low_f, loads.high_f) if end is not None and end.value]
+    near = [end_f for end_f in ends if PAST_END * end_f < FARTHEST_LOAD * own_f]
+    most_f = max(most_f, *(PAST_END * end_f for end_f in near), 0.0)
+    even = np.linspace(LEAST_LOAD * min(own_f, designed_f), most_f, POINTS)
+    return np.unique([*even, own_f, designed_f, *(end_f for end_f in near if end_f > even[0])])
+
+
+def _resistors_about(estimate: ElementEstimate, restoring: RestoringResistor) -> FloatArray:
+    """Resistors to predict over, with the part's own, the designed one, and the one that restores the zero."""
+    even = resistors_about(estimate)
+    special = [estimate.amplifier.Rz, estimate.circuit.nominal.Rz, restoring.rz_ohm.value or 0.0]
+    return np.unique([*even, *(ohm for ohm in special if even[0] <= ohm <= even[-1])])
 
 
 def _resistors(over: Prediction, wanted_deg: float) -> ResistorRange:

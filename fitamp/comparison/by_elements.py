@@ -18,7 +18,7 @@ from fitamp.elements import ElementEstimate, RestoringResistor
 from fitamp.elements.attribution import Blame
 from fitamp.elements.quantities import Quantity
 from fitamp.estimate import NOT_KNOWN, Estimate, Known
-from fitamp.fitting.result import LABELS, text_of
+from fitamp.fitting.result import LABELS
 from fitamp.margins import margins
 from fitamp.units import si_with_error
 
@@ -27,6 +27,8 @@ __all__ = ["advise_on_elements", "element_rows", "judge_elements"]
 # A contribution is named where it is at least this share of the largest one.
 WORTH_NAMING = 0.3
 MOST_NAMED = 3
+# Below this share from the data, blame on an element is no more than likely.
+SURELY_TOLD = 0.95
 NAMES = {"bench_load_f": "the bench's load"}
 
 
@@ -120,9 +122,9 @@ def advise_on_elements(
     if not broken:
         return advice
     parts = [_outside(row, blame) for row in broken]
-    sentence = f"{advice.sentence}; {' and '.join(parts)}"
+    sentence = f"{advice.sentence}; {', and '.join(parts)}"
     if verdict.nulling is Nulling.AS_DESIGNED:
-        sentence = f"Rz needs no change, but {' and '.join(parts)}"
+        sentence = f"Rz needs no change, but {', and '.join(parts)}"
     return replace(advice, sentence=sentence)
 
 
@@ -144,7 +146,7 @@ def _advise_on_resistor(verdict: Verdict, restoring: RestoringResistor, margin_d
         way = "raise" if change.value > 0 else "lower"
         sentence = f"{way} Rz by {amount} to put the zero at the designed place"
         if margin_deg.value is not None:
-            sentence += f" (phase margin then {text_of('phase_margin_deg', margin_deg)})"
+            sentence += f" (phase margin then {margin_deg.value:.1f}°)"
     return Advice(rz_change_ohm=change, sentence=sentence)
 
 
@@ -157,15 +159,19 @@ def _outside(row: Row, blame: Blame) -> str:
         return name
     toward = [one for one in shares.contributions if (one.share.value or 0.0) * shares.change.value > 0]
     largest = max((abs(one.share.value or 0.0) for one in toward), default=0.0)
+    shown = [one for one in toward[:MOST_NAMED] if abs(one.share.value or 0.0) >= WORTH_NAMING * largest]
+    # What leans on the design's spreads is as right as they are.
     named = [
-        f"{NAMES.get(one.name, one.name)} ({_relative(one.designed, one.estimated)})"
-        for one in toward[:MOST_NAMED]
-        if abs(one.share.value or 0.0) >= WORTH_NAMING * largest
+        f"{'' if one.informed >= SURELY_TOLD else 'most likely '}by {NAMES.get(one.name, one.name)} "
+        f"({_relative(one.designed, one.estimated)})"
+        for one in shown
     ]
-    return f"{name}, moved there by {' and '.join(named)}" if named else name
+    return f"{name}, moved there {' and '.join(named)}" if named else name
 
 
 def _relative(designed: float, estimated: float) -> str:
     if not designed:
         return "none designed"
+    if estimated >= 2 * designed:
+        return f"× {estimated / designed:.3g}"
     return f"{100 * (estimated / designed - 1):+.1f} %".replace("-", "−")

@@ -196,11 +196,12 @@ def deviation_text(deviation: float | None, unit: str) -> str:
 
 def _zero_row(row: Row) -> tuple[str, ...]:
     """The zero time once more, as a frequency with its half plane."""
-    places = [_zero_place(value) for value in (row.designed, row.designed_as_measured, row.measured.value)]
+    places = [zero_place(value) for value in (row.designed, row.designed_as_measured, row.measured.value)]
     return ("as a zero at", *places, "", "", "", "")
 
 
-def _zero_place(zero_time_s: float | None) -> str:
+def zero_place(zero_time_s: float | None) -> str:
+    """A zero time as a frequency with its half plane: "131 MHz L"."""
     if zero_time_s is None:
         return "–"
     if zero_time_s == 0:
