@@ -10,6 +10,7 @@ free under a Gaussian prior: they are the two things that pass for a right-half-
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable
 from dataclasses import dataclass
 from itertools import pairwise
@@ -17,8 +18,9 @@ from itertools import pairwise
 import numpy as np
 
 from fitamp.arrays import ComplexArray, FloatArray, frozen_float
+from fitamp.fitting.equation import Grid, LoopEquation
 from fitamp.fitting.factors import Factor
-from fitamp.fitting.leastsq import MAX_STEPS, TOLERANCE, Optimum, covariance_of, interleaved, minimise
+from fitamp.fitting.leastsq import MAX_STEPS, TOLERANCE, Optimum, covariance_of, minimise
 from fitamp.sweep import NoiseLevels, Sweep
 from fitamp.transfer import Transfer
 
@@ -110,12 +112,12 @@ class TwoPole:
 
     def physical(self, values: FloatArray) -> tuple[float, float, float, float, float, float]:
         """(g, q, b, τz, τ3, τd) in SI units of a parameter vector."""
-        with np.errstate(over="ignore", under="ignore"):
-            g, q, b = np.exp(values[:3])
-        by_name = dict(zip(self.names, values, strict=True))
-        far_pole_s = by_name["far_pole"] * self.time_s if "far_pole" in by_name else self.far_pole.intercept_s
-        delay_s = by_name["delay"] * self.time_s if "delay" in by_name else self.delay.mean_s
-        return float(g), float(q), float(b), float(values[3] * self.time_s), float(far_pole_s), float(delay_s)
+        numbers = values.tolist()
+        g, q, b = (_exp(logarithm) for logarithm in numbers[:3])
+        free_far_pole = bool(self.far_pole.sd_s)
+        far_pole_s = numbers[4] * self.time_s if free_far_pole else self.far_pole.intercept_s
+        delay_s = numbers[4 + free_far_pole] * self.time_s if self.delay.sd_s else self.delay.mean_s
+        return g, q, b, numbers[3] * self.time_s, far_pole_s, delay_s
 
     def vector(
         self,
@@ -142,30 +144,39 @@ class TwoPole:
 
     def gain_and_derivatives(self, values: FloatArray, freq_hz: FloatArray) -> tuple[ComplexArray, ComplexArray]:
         """Loop gain, shape (n,), and its derivatives by the parameters, shape (n, p)."""
+        gain, log_slopes = self.gain_and_log_slopes(values, Grid.over(freq_hz, self.known))
+        return gain, np.ascontiguousarray((gain * log_slopes).T)
+
+    def gain_and_log_slopes(self, values: FloatArray, grid: Grid) -> tuple[ComplexArray, ComplexArray]:
+        """Loop gain, shape (n,), and the derivatives of its logarithm by the parameters, shape (p, n)."""
         g, q, b, zero_time_s, far_pole_s, delay_s = self.physical(values)
-        s = np.asarray(2j * np.pi * freq_hz, dtype=np.complex128)
-        denominator = q + s + b * s**2 + b * far_pole_s * s**3
-        outer = np.exp(-s * delay_s) * g / denominator
-        if self.known is not None:
-            outer = outer * self.known.evaluate(freq_hz)
-        log_slopes: list[ComplexArray] = []
-        for factor, own in zip(self.factors, self.factor_values(values), strict=True):
-            times, slopes = factor.factor_and_derivatives(own, s)
-            outer = outer * times
-            log_slopes.extend(slopes.T)
-        gain = outer * (1 + s * zero_time_s)
-        columns = [
-            gain,
-            -gain * q / denominator,
-            -gain * (b * s**2 + b * far_pole_s * s**3) / denominator,
-            outer * s * self.time_s,
-        ]
+        s = grid.s
+        beyond = b * grid.s2 + (b * far_pole_s) * grid.s3 if far_pole_s else b * grid.s2
+        inverse = 1 / (q + s + beyond)
+        lead = 1 + s * zero_time_s
+        gain = g * lead * inverse
+        if delay_s:
+            gain = gain * np.exp(-s * delay_s)
+        if grid.known is not None:
+            gain = gain * grid.known
+        slopes = np.empty((len(values), len(s)), dtype=np.complex128)
+        slopes[0] = 1.0
+        slopes[1] = -q * inverse
+        slopes[2] = -beyond * inverse
+        slopes[3] = self.time_s * s / lead
+        row = 4
         if self.far_pole.sd_s:
-            columns.append(-gain * b * s**3 / denominator * self.time_s)
+            slopes[row] = (-b * self.time_s) * grid.s3 * inverse
+            row += 1
         if self.delay.sd_s:
-            columns.append(-s * gain * self.time_s)
-        columns.extend(gain * slope for slope in log_slopes)
-        return gain, np.stack(columns, axis=1)
+            slopes[row] = -self.time_s * s
+            row += 1
+        for factor, own in zip(self.factors, self.factor_values(values), strict=True):
+            times, log_slopes = factor.factor_and_derivatives(own, s)
+            gain = gain * times
+            slopes[row : row + len(own)] = log_slopes.T
+            row += len(own)
+        return gain, slopes
 
     def prior_rows(self, values: FloatArray) -> tuple[FloatArray, FloatArray]:
         """Residuals of the priors in standard deviations, shape (r,), and their derivatives, shape (r, p)."""
@@ -208,6 +219,14 @@ class TwoPole:
         return whole
 
 
+def _exp(logarithm: float) -> float:
+    """The exponential, infinite where it overflows."""
+    try:
+        return math.exp(logarithm)
+    except OverflowError:
+        return math.inf
+
+
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Solution:
     """A model fitted to a sweep: the optimum, and the noise it was weighted with."""
@@ -242,28 +261,11 @@ class Solution:
 def loop_equation(
     model: TwoPole, values: FloatArray, sweep: Sweep, noise: NoiseLevels
 ) -> tuple[ComplexArray, ComplexArray]:
-    """Residuals (n,) of the loop equation in standard deviations per component, and derivatives (n, p).
-
-    With drive 1 the receivers see error = 1/(1+T) and return = T/(1+T), each with its own floor, so
-    (T_meas − M)/(1 + T_meas) has the variance n_r² + |M|² n_e² + rel² |T/(1+T)|², and ratio²/|1+T|² where the loop gain
-    has a floor of its own. M stays in that variance and is
-    differentiated with it; weights frozen at the data bias the low end (errors in variables: R. Pintelon and
-    J. Schoukens, System Identification: A Frequency Domain Approach).
-    """
-    gain, slopes = model.gain_and_derivatives(values, sweep.freq_hz)
-    through = 1 + sweep.gain
-    variance = (
-        noise.return_channel**2
-        + np.abs(gain) ** 2 * noise.error_channel**2
-        + noise.relative**2 * np.abs(sweep.gain / through) ** 2
-        + noise.ratio**2 / np.abs(through) ** 2
-    )
-    # Divided by 1 + T with its phase: where the error channel drowns, that phase is noise, and would leave a pattern.
-    weight = np.sqrt(2 / variance) / through
-    residual = (sweep.gain - gain) * weight
-    variance_slopes = 2 * noise.error_channel**2 * (np.conj(gain)[:, np.newaxis] * slopes).real
-    derivatives = -slopes * weight[:, np.newaxis] - 0.5 * (residual / variance)[:, np.newaxis] * variance_slopes
-    return residual, derivatives
+    """Residuals (n,) of the loop equation in standard deviations per component, and derivatives (n, p)."""
+    equation = LoopEquation(model, sweep, noise)
+    rows, slopes = equation.residuals(values), equation.slopes(values)
+    real, imag = slice(0, 2 * len(sweep), 2), slice(1, 2 * len(sweep), 2)
+    return np.asarray(rows[real] + 1j * rows[imag]), np.asarray(slopes[real] + 1j * slopes[imag])
 
 
 def solve(
@@ -291,32 +293,14 @@ def solve(
         values[free] = partial
         return values
 
-    # Slopes are asked for where the residuals just were: both come from one evaluation.
-    latest: list[tuple[bytes, FloatArray, FloatArray]] = []
-
-    def both(partial: FloatArray) -> tuple[FloatArray, FloatArray]:
-        key = np.asarray(partial).tobytes()
-        if not latest or latest[0][0] != key:
-            values = full(partial)
-            rows, slopes = loop_equation(model, values, sweep, noise)
-            priors, prior_slopes = model.prior_rows(values)
-            residuals = np.concatenate([interleaved(rows), priors])
-            latest[:] = [(key, residuals, np.vstack([interleaved(slopes), prior_slopes])[:, free])]
-        return latest[0][1], latest[0][2]
-
-    def residual(partial: FloatArray) -> FloatArray:
-        return both(partial)[0]
-
-    def jacobian(partial: FloatArray) -> FloatArray:
-        return both(partial)[1]
-
+    equation = LoopEquation(model, sweep, noise)
     # An iterate that overflows costs one step, not a warning: the residual is not finite there and MINPACK turns back.
     with np.errstate(over="ignore", invalid="ignore", divide="ignore"):
         optimum = minimise(
-            residual,
+            lambda partial: equation.residuals(full(partial)),
             template[free],
             names=[model.names[i] for i in free],
-            jacobian=jacobian,
+            jacobian=lambda partial: equation.slopes(full(partial))[:, free],
             tolerance=tolerance,
             max_steps=max_steps,
             enough=enough,
@@ -328,13 +312,12 @@ def solve(
 
 def solution_at(model: TwoPole, sweep: Sweep, noise: NoiseLevels, values: FloatArray) -> Solution:
     """These very values as a solution, with the covariance that the curvature there gives."""
-    rows, slopes = loop_equation(model, values, sweep, noise)
-    priors, prior_slopes = model.prior_rows(values)
-    residuals = np.concatenate([interleaved(rows), priors])
+    equation = LoopEquation(model, sweep, noise)
+    residuals = equation.residuals(values)
     optimum = Optimum(
         names=model.names,
         values=frozen_float(values),
-        covariance=frozen_float(covariance_of(np.vstack([interleaved(slopes), prior_slopes]))),
+        covariance=frozen_float(covariance_of(equation.slopes(values))),
         chi_square=float(residuals @ residuals),
         residuals=frozen_float(residuals),
         converged=bool(np.isfinite(residuals).all()),
