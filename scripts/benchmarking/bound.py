@@ -96,9 +96,7 @@ def cramer_rao(
     return np.array(bounds)
 
 
-def _information(
-    freq_hz: np.ndarray, truth: Truth, noise: fitamp.NoiseLevels, free: Sequence[str]
-) -> np.ndarray:
+def _information(freq_hz: np.ndarray, truth: Truth, noise: fitamp.NoiseLevels, free: Sequence[str]) -> np.ndarray:
     """Fisher information of the free names, shape (p, p), from the loop equation (T_meas − T)/(1 + T)."""
     loop = loop_gain(freq_hz, truth)
     variance = noise.return_channel**2 + np.abs(loop * noise.error_channel) ** 2
