@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import cmath
 import math
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -18,7 +18,7 @@ from fitamp.arrays import ComplexArray, FloatArray
 from fitamp.roots import EPSILON, clusters, polynomial_roots
 from fitamp.transfer import TWO_PI, Transfer
 
-__all__ = ["StepResponse", "bracketed_root", "closed_loop_poles_hz", "closed_loop_step"]
+__all__ = ["StepResponse", "bracketed_root", "closed_loop_poles_hz", "closed_loop_step", "step_error"]
 
 # Order of the Padé approximation of a delay. It rounds off the kink that a delayed step has: with 33° of phase margin
 # behind one pole and a delay, order 5 misses the overshoot by 2e-4, order 7 by 5e-5 of the final value.
@@ -44,12 +44,14 @@ class StepResponse:
     """Unit step of the closed loop T/(1 + T), final value T0/(1 + T0).
 
     overshoot : largest excess over the final value, as a fraction of it; 0 for none, None when unstable
+    peak_s : instant of that; None without one
     settling_s : time from which on the response stays within ±band of its final value; None when unstable
     stable : whether every closed-loop pole is in the left half plane
     band : settling band as a fraction of the final value
     """
 
     overshoot: float | None
+    peak_s: float | None
     settling_s: float | None
     stable: bool
     band: float
@@ -87,9 +89,17 @@ def closed_loop_step(response: Transfer, *, band: float = 0.01) -> StepResponse:
     # Where T → −1 at high frequency a closed-loop pole is lost at infinity: such a loop cannot be closed.
     lost = len(poles) < len(response.poles_hz)
     if lost or any(pole.real >= -LEAST_DAMPING * abs(pole) for pole in poles):
-        return StepResponse(overshoot=None, settling_s=None, stable=False, band=band)
+        return StepResponse(overshoot=None, peak_s=None, settling_s=None, stable=False, band=band)
     course = _course(response, poles, band)
-    return StepResponse(overshoot=_overshoot(course), settling_s=_settling(course), stable=True, band=band)
+    overshoot, peak_s = _overshoot(course)
+    return StepResponse(overshoot=overshoot, peak_s=peak_s, settling_s=_settling(course), stable=True, band=band)
+
+
+def step_error(response: Transfer, times_s: Sequence[float]) -> tuple[tuple[float, float], ...]:
+    """Relative error y(t)/y(∞) − 1 of the closed loop's unit step and its slope (1/s), at some instants."""
+    rates, weights = _modes(response, _spread(_closed_loop_poles(response)))
+    curve = _curve(rates, weights)
+    return tuple(curve(time_s) for time_s in times_s)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -110,21 +120,26 @@ class _Course:
 
     def curve(self, order: int = 0) -> Curve:
         """Error, or its derivative of that order, with its slope, at one instant."""
-        terms = [(complex(s), complex(w * s**order)) for s, w in zip(self.rates, self.weights, strict=True)]
-
-        def curve(time_s: float) -> tuple[float, float]:
-            value = slope = 0.0
-            for rate, weight in terms:
-                term = weight * cmath.exp(rate * time_s)
-                value += term.real
-                slope += (rate * term).real
-            return value, slope
-
-        return curve
+        return _curve(self.rates, self.weights * self.rates**order)
 
     def turning_point(self, index: int) -> float:
         """Instant of the turning point after a grid point."""
         return bracketed_root(self.curve(order=1), float(self.times[index]), float(self.times[index + 1]))
+
+
+def _curve(rates: ComplexArray, weights: ComplexArray) -> Curve:
+    """Σ Re(w·exp(s·t)) with its slope."""
+    terms = list(zip(rates.tolist(), weights.tolist(), strict=True))
+
+    def curve(time_s: float) -> tuple[float, float]:
+        value = slope = 0.0
+        for rate, weight in terms:
+            term = weight * cmath.exp(rate * time_s)
+            value += term.real
+            slope += (rate * term).real
+        return value, slope
+
+    return curve
 
 
 def _course(response: Transfer, poles: tuple[complex, ...], band: float) -> _Course:
@@ -236,14 +251,18 @@ def _times(rates: ComplexArray, weights: ComplexArray, band: float) -> FloatArra
     return np.unique(np.concatenate(grids))
 
 
-def _overshoot(course: _Course) -> float:
-    """Largest error above the final value, or 0."""
-    best = float(course.error.max())
+def _overshoot(course: _Course) -> tuple[float, float | None]:
+    """Largest error above the final value, and when; or 0."""
+    first = int(np.argmax(course.error))
+    best, at_s = float(course.error[first]), float(course.times[first])
     peaks = np.maximum(course.error[course.turns], course.error[course.turns + 1])
     # The highest peak may lie between points that are lower than those of another.
     for index in course.turns[(peaks > 0) & (peaks > PEAK_AT_GRID * best)][:MOST_PEAKS]:
-        best = max(best, course.curve()(course.turning_point(index))[0])
-    return max(best, 0.0)
+        turn_s = course.turning_point(index)
+        height = course.curve()(turn_s)[0]
+        if height > best:
+            best, at_s = height, turn_s
+    return (best, at_s) if best > 0 else (0.0, None)
 
 
 def _settling(course: _Course) -> float:

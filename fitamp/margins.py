@@ -17,7 +17,7 @@ from fitamp.closed_loop import StepResponse, bracketed_root, closed_loop_poles_h
 from fitamp.roots import EPSILON, polynomial_roots
 from fitamp.transfer import TWO_PI, Transfer
 
-__all__ = ["Margins", "StepResponse", "closed_loop_poles_hz", "closed_loop_step", "margins"]
+__all__ = ["Margins", "StepResponse", "closed_loop_poles_hz", "closed_loop_step", "log_gain", "margins"]
 
 # Phase grid: fine enough that a real root turns the phase by 2 degrees at most from point to point.
 PHASE_POINTS_PER_DECADE = 40
@@ -53,12 +53,12 @@ def margins(response: Transfer) -> Margins:
     crossover = _gain_crossover(response)
     phase_margin = None
     if crossover is not None:
-        phase_margin = 180 + math.degrees(_log_gain(response, crossover)[0].imag)
+        phase_margin = 180 + math.degrees(log_gain(response, crossover)[0].imag)
         phase_margin -= 360 * math.ceil(max(phase_margin - 180, 0) / 360)
     phase_crossover = _phase_crossover(response, crossover, safe=phase_margin is None or phase_margin > 0)
     gain_margin = None
     if phase_crossover is not None:
-        gain_margin = -20 / math.log(10) * _log_gain(response, phase_crossover)[0].real
+        gain_margin = -20 / math.log(10) * log_gain(response, phase_crossover)[0].real
     return Margins(
         crossover_hz=crossover,
         phase_margin_deg=phase_margin,
@@ -67,7 +67,7 @@ def margins(response: Transfer) -> Margins:
     )
 
 
-def _log_gain(response: Transfer, freq_hz: float) -> tuple[complex, complex]:
+def log_gain(response: Transfer, freq_hz: float) -> tuple[complex, complex]:
     """ln T and its derivative with respect to ln f; the imaginary part is the phase, continuous from DC.
 
     Each factor 1 − jf/root starts at 1 and never meets the negative real axis (unless the root is on the imaginary
@@ -104,7 +104,7 @@ def _gain_crossover(response: Transfer) -> float | None:
 def _polish_crossover(response: Transfer, log_f: float) -> float | None:
     """Newton's method on ln |T| over ln f."""
     for _ in range(8):
-        value, slope = _log_gain(response, math.exp(log_f))
+        value, slope = log_gain(response, math.exp(log_f))
         if slope.real == 0 or abs(value.real) < EPSILON:
             break
         step = value.real / slope.real
@@ -114,7 +114,7 @@ def _polish_crossover(response: Transfer, log_f: float) -> float | None:
         if abs(step) < EPSILON * abs(log_f):
             break
     freq_hz = math.exp(log_f)
-    return freq_hz if abs(_log_gain(response, freq_hz)[0].real) < SOLVED else None
+    return freq_hz if abs(log_gain(response, freq_hz)[0].real) < SOLVED else None
 
 
 def _squared(roots_hz: tuple[complex, ...]) -> FloatArray:
@@ -133,7 +133,7 @@ def _phase_crossover(response: Transfer, crossover: float | None, *, safe: bool)
     """Choose among the frequencies where the continuous phase is −180°."""
 
     def excess(log_f: float) -> tuple[float, float]:
-        value, slope = _log_gain(response, math.exp(log_f))
+        value, slope = log_gain(response, math.exp(log_f))
         return value.imag + math.pi, slope.imag
 
     grid = _phase_grid(response)
@@ -151,7 +151,7 @@ def _phase_crossover(response: Transfer, crossover: float | None, *, safe: bool)
     if not found:
         return None
     if crossover is None:  # |T| never meets 1: the crossing that comes nearest to it
-        return min(found, key=lambda freq_hz: abs(_log_gain(response, freq_hz)[0].real))
+        return min(found, key=lambda freq_hz: abs(log_gain(response, freq_hz)[0].real))
     above = [freq_hz for freq_hz in found if freq_hz > crossover]
     below = [freq_hz for freq_hz in found if freq_hz <= crossover]
     if safe:

@@ -12,6 +12,7 @@ import pytest
 from scipy import linalg, optimize, signal
 
 from fitamp.amplifier import Elements
+from fitamp.closed_loop import step_error
 from fitamp.margins import Margins, closed_loop_poles_hz, closed_loop_step, margins
 from fitamp.transfer import Transfer
 
@@ -227,6 +228,11 @@ def test_second_order_step_is_that_of_the_textbook(damping: float, band: float) 
     step = closed_loop_step(response, band=band)
     beta = math.sqrt(1 - damping**2)
     assert step.overshoot == pytest.approx(math.exp(-math.pi * damping / beta), rel=1e-8)
+    # Textbook: the first peak is half a period of the damped frequency after the step.
+    assert step.peak_s == pytest.approx(math.pi / (beta * natural), rel=1e-8)
+    error_at_peak, slope_at_peak = step_error(response, [math.pi / (beta * natural)])[0]
+    assert error_at_peak == pytest.approx(step.overshoot, rel=1e-8)
+    assert slope_at_peak == pytest.approx(0.0, abs=1e-8 * natural)
     x = np.linspace(0, 10 / damping, 400_001)
     error = -np.exp(-damping * x) * (np.cos(beta * x) + damping / beta * np.sin(beta * x))
     last = np.flatnonzero(np.abs(error) > band)[-1]
@@ -355,6 +361,7 @@ def test_gain_that_stays_steps_at_once() -> None:
     step = closed_loop_step(response)
     rate = TWO_PI * abs(closed_loop_poles_hz(response)[0])
     assert step.overshoot == 0
+    assert step.peak_s is None
     assert step.settling_s == pytest.approx(math.log((1 - 0.75 / 0.9) / 0.01) / rate, rel=1e-9)
     # The other way round it starts above its final value.
     lead = Transfer(dc_gain=9.0, poles_hz=(-3e3,), zeros_hz=(-1e3,))

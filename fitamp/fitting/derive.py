@@ -13,7 +13,6 @@ from fitamp.fitting.adequacy import Adequacy
 from fitamp.fitting.factors import Factor, RangeStep
 from fitamp.fitting.intervals import (
     Profile,
-    estimate_by_curvature,
     estimate_by_profile,
     estimates_by_curvature,
     gradient,
@@ -21,9 +20,9 @@ from fitamp.fitting.intervals import (
 )
 from fitamp.fitting.result import FittedMargins, FittedParameters, FittedStep, Root
 from fitamp.fitting.two_pole import Solution, TwoPole
-from fitamp.margins import closed_loop_step, margins
 from fitamp.sweep import Sweep
 from fitamp.transfer import Transfer
+from fitamp.vicinity import Vicinity
 
 __all__ = ["fitted_factor_roots", "fitted_margins", "fitted_parameters", "fitted_range_steps", "fitted_roots"]
 
@@ -31,8 +30,11 @@ __all__ = ["fitted_factor_roots", "fitted_margins", "fitted_parameters", "fitted
 QUADRATIC_LN = 0.15
 DB_PER_NEPER = 20 / math.log(10)
 LN_Q, LN_B, ZERO = 1, 2, 3
+DC_GAIN, POLE1, POLE2, ZERO_TIME = 0, 2, 3, 4  # among `_quantities`
 # An error no smaller than this share of the prior's is the prior, not a measurement.
 HANDED_BACK = 0.5
+
+RootFinder = Callable[[TwoPole, FloatArray], tuple[complex, ...]]
 
 
 def fitted_parameters(solution: Solution, sweep: Sweep, adequacy: Adequacy, quantile: float) -> FittedParameters:
@@ -41,58 +43,50 @@ def fitted_parameters(solution: Solution, sweep: Sweep, adequacy: Adequacy, quan
     covariance = solution.covariance * adequacy.inflation
     deviations = np.sqrt(np.diag(covariance))
 
-    def curved(quantity: Callable[[FloatArray], float | None], *, positive: bool) -> Estimate:
-        return estimate_by_curvature(quantity, solution.values, covariance, quantile=quantile, positive=positive)
-
     def profiled(index: int) -> Profile:
         return profile(solution, sweep, index, inflation=adequacy.inflation)
 
     def extra(name: str, held_s: float) -> Estimate:
         return _extra(name, held_s, solution=solution, deviations=deviations, quantile=quantile, profiled=profiled)
 
-    def dc_gain(values: FloatArray) -> float | None:
-        g, q, *_ = model.physical(values)
-        return g / q if q else None
+    def quantity(index: int) -> Callable[[FloatArray], float | None]:
+        return lambda values: _quantities(model, values)[index]
 
+    gain, gain_bandwidth, first, second, zero, split = estimates_by_curvature(
+        lambda values: _quantities(model, values),
+        solution.values,
+        covariance,
+        quantile=quantile,
+        positive=(True, True, True, True, False, False),
+    )
     if deviations[LN_Q] > QUADRATIC_LN:
         edges = profiled(LN_Q)
-        gain = estimate_by_profile(dc_gain, solution, edges, rising=False)
-        first = estimate_by_profile(lambda v: _pole_distance(model, v, 0), solution, edges, rising=True)
-    else:
-        gain = curved(dc_gain, positive=True)
-        first = curved(lambda v: _pole_distance(model, v, 0), positive=True)
+        gain = estimate_by_profile(quantity(DC_GAIN), solution, edges, rising=False)
+        first = estimate_by_profile(quantity(POLE1), solution, edges, rising=True)
     if deviations[LN_B] > QUADRATIC_LN:
-        second = estimate_by_profile(lambda v: _pole_distance(model, v, 1), solution, profiled(LN_B), rising=False)
-    else:
-        second = curved(lambda v: _pole_distance(model, v, 1), positive=True)
+        second = estimate_by_profile(quantity(POLE2), solution, profiled(LN_B), rising=False)
     if model.pole2 is not None and deviations[LN_B] > HANDED_BACK * model.pole2.ln_sd:
         second = Estimate(value=None, stderr=None, ci95=second.ci95, known=Known.UNDETERMINED)
     # A delay and a far-out zero act alike to first order: with a lag that nothing else holds, curvature is no guide.
     unbounded_lag = math.inf in {model.delay.sd_s, model.far_pole.sd_s}
     if deviations[LN_B] > QUADRATIC_LN or unbounded_lag:
-        zero = estimate_by_profile(lambda v: model.physical(v)[3], solution, profiled(ZERO), rising=True)
-    else:
-        zero = curved(lambda v: model.physical(v)[3], positive=False)
+        zero = estimate_by_profile(quantity(ZERO_TIME), solution, profiled(ZERO), rising=True)
     return FittedParameters(
         dc_gain=gain,
-        gain_bandwidth_hz=curved(lambda v: _gain_bandwidth_hz(model, v), positive=True),
+        gain_bandwidth_hz=gain_bandwidth,
         pole1_hz=first,
         pole2_hz=second,
         zero_time_s=zero,
         delay_s=extra("delay", model.delay.mean_s),
         far_pole_s=extra("far_pole", model.far_pole.intercept_s),
-        zero_pole2_split_s=curved(lambda v: model.physical(v)[3] - model.physical(v)[2], positive=False),
+        zero_pole2_split_s=split,
     )
 
 
 def fitted_roots(solution: Solution, covariance: FloatArray) -> tuple[tuple[Root, ...], tuple[Root, ...]]:
     """Poles and zeros of the fitted response, each with the covariance of (re, im) where its error is not larger."""
     model, values = solution.model, solution.values
-    response = model.response(values)
-    return (
-        tuple(_root(model, values, covariance, index, _sorted_poles) for index in range(len(response.poles_hz))),
-        tuple(_root(model, values, covariance, index, _zeros) for index in range(len(response.zeros_hz))),
-    )
+    return _roots(model, values, covariance, _sorted_poles), _roots(model, values, covariance, _zeros)
 
 
 def fitted_factor_roots(
@@ -100,7 +94,7 @@ def fitted_factor_roots(
 ) -> tuple[tuple[Root, ...], tuple[Root, ...]]:
     """Poles and zeros of the further factors of one kind, the upper half of a pair first, with their covariances."""
 
-    def roots_of(which: int, side: int) -> Callable[[TwoPole, FloatArray], tuple[complex, ...]]:
+    def roots_of(which: int, side: int) -> RootFinder:
         def roots(model: TwoPole, values: FloatArray) -> tuple[complex, ...]:
             found = model.factors[which].roots_hz(model.factor_values(values)[which])[side]
             return tuple(sorted(found, key=lambda root: -root.imag))
@@ -110,11 +104,7 @@ def fitted_factor_roots(
     model, values = solution.model, solution.values
     chosen = [index for index, factor in enumerate(model.factors) if isinstance(factor, kind)]
     poles, zeros = (
-        tuple(
-            _root(model, values, covariance, index, roots_of(which, side))
-            for which in chosen
-            for index in range(len(roots_of(which, side)(model, values)))
-        )
+        tuple(root for which in chosen for root in _roots(model, values, covariance, roots_of(which, side)))
         for side in range(2)
     )
     return poles, zeros
@@ -148,10 +138,11 @@ def fitted_margins(
         response = model.whole_response(values)
         return response if extra is None else response.cascade(extra)
 
+    vicinity = Vicinity(response=loop(solution.values))
+
     def quantities(values: FloatArray) -> tuple[float | None, ...]:
-        response = loop(values)
-        seen, step = margins(response), closed_loop_step(response)
-        return (seen.crossover_hz, seen.phase_margin_deg, seen.gain_margin_db, step.overshoot, step.settling_s)
+        found = vicinity.figures(loop(values))
+        return (found.crossover_hz, found.phase_margin_deg, found.gain_margin_db, found.overshoot, found.settling_s)
 
     crossover, phase_margin, gain_margin, overshoot, settling = estimates_by_curvature(
         quantities, solution.values, covariance, quantile=quantile, positive=(True, False, False, False, True)
@@ -209,33 +200,30 @@ def _zeros(model: TwoPole, values: FloatArray) -> tuple[complex, ...]:
     return model.response(values).zeros_hz
 
 
-def _pole_distance(model: TwoPole, values: FloatArray, index: int) -> float | None:
-    poles = _sorted_poles(model, values)
-    return abs(poles[index]) if index < len(poles) else None
+def _quantities(model: TwoPole, values: FloatArray) -> tuple[float | None, ...]:
+    """T(0), gain-bandwidth, pole 1 and pole 2 (Hz), zero time and the split τz − a2/a1 (s)."""
+    g, q, b, zero_time_s, *_ = model.physical(values)
+    first, second, *_ = (*(abs(pole) for pole in _sorted_poles(model, values)), None, None)
+    dc_gain = g / q if q else None
+    gain_bandwidth_hz = None if first is None or dc_gain is None else dc_gain * first
+    return dc_gain, gain_bandwidth_hz, first, second, zero_time_s, zero_time_s - b
 
 
-def _gain_bandwidth_hz(model: TwoPole, values: FloatArray) -> float | None:
-    g, q, *_ = model.physical(values)
-    pole1_hz = _pole_distance(model, values, 0)
-    return None if pole1_hz is None else g / q * pole1_hz
+def _roots(model: TwoPole, values: FloatArray, covariance: FloatArray, roots: RootFinder) -> tuple[Root, ...]:
+    """Each root with the covariance of (re, im), where its error is not larger than itself."""
+    found = roots(model, values)
+    if not found:
+        return ()
 
+    def parts(vector: FloatArray) -> list[float | None]:
+        near = [part for root in roots(model, vector) for part in (root.real, root.imag)]
+        return [*near, *[None] * (2 * len(found))][: 2 * len(found)]
 
-def _root(
-    model: TwoPole,
-    values: FloatArray,
-    covariance: FloatArray,
-    index: int,
-    roots: Callable[[TwoPole, FloatArray], tuple[complex, ...]],
-) -> Root:
-    def parts(vector: FloatArray) -> tuple[float | None, float | None]:
-        found = roots(model, vector)
-        return (found[index].real, found[index].imag) if index < len(found) else (None, None)
-
-    value = roots(model, values)[index]
-    jacobian = gradient(parts, values)
-    spread = jacobian @ covariance @ jacobian.T
-    # Also true where a difference did not exist (NaN), or where rounding of a huge variance left a negative one: then
-    # the root is there, its error is not.
-    if not 0 <= np.trace(spread) < abs(value) ** 2:
-        return Root(value_hz=value, covariance=None)
-    return Root(value_hz=value, covariance=frozen_float(spread))
+    slopes = gradient(parts, values)
+    spreads = [half @ covariance @ half.T for half in np.split(slopes, len(found))]
+    # A trace that is no number: a difference did not exist; below 0: rounding of a huge variance. Then the root is
+    # there, its error is not.
+    return tuple(
+        Root(value_hz=root, covariance=frozen_float(spread) if 0 <= np.trace(spread) < abs(root) ** 2 else None)
+        for root, spread in zip(found, spreads, strict=True)
+    )
