@@ -16,6 +16,7 @@ from fitamp.conditioning.repeats import average_repeats
 from fitamp.delivery import STDOUT, deliver, refuse_early, write_folder
 from fitamp.design import read_design
 from fitamp.errors import FitError, InputError, UsageError
+from fitamp.findings import ElementFindings
 from fitamp.fitting import LoopFit, fit_sweep
 from fitamp.importers import read_sweep
 from fitamp.measured import Measured, Reading, measured
@@ -107,23 +108,39 @@ def template(args: argparse.Namespace) -> int:
 
 def demo(args: argparse.Namespace) -> int:
     """`fitamp demo`: the main job on every example part, with its pictures."""
+    from fitamp.elements_command import findings_of_steps, write_findings
+    from fitamp.report.elements_json import elements_as_dict
+    from fitamp.report.elements_text import elements_text
+
     examples = _examples(args.examples)
     out = Path(args.out)
     design = read_design(examples / "line_buffer.toml")
     parts = sorted(path for path in examples.iterdir() if path.name.startswith("part_") and path.is_file())
-    for part in parts:
+    stepped = sorted(path.parent for path in examples.glob("part_*/steps.csv"))
+    for part in (*parts, *stepped):
         refuse_existing(out / part.stem, force=args.force)
     print("Invented parts of an invented chip, each held against its design file.\n")
     for part in parts:
         result = compare_sweep(read_sweep(part), design)
         record, text = comparison_as_dict(result), comparison_text(result)
         _write_comparison(result, record, text, out / part.stem, force=args.force)
-        print(f"{part.name}\n  {result.verdict.nulling.value}: {result.verdict.reason}")
-        print(f"  what to do: {result.advice.sentence}\n")
+        _say_verdict(part.name, result)
+    for part in stepped:
+        findings = findings_of_steps(part / "steps.csv", design)
+        record, text = elements_as_dict(findings) | {"through": None}, elements_text(findings)
+        write_findings(findings, record, text, out / part.stem, force=args.force)
+        _say_verdict(part.name, findings)
     print(f"Pictures and numbers of each part are in {out.resolve()}")
     for part in parts:
         print(f"  {Path(out.name) / part.stem / 'loop.png'}")
+    for part in stepped:
+        print(f"  {Path(out.name) / part.stem / 'elements.png'}")
     return 0
+
+
+def _say_verdict(name: str, result: Comparison | ElementFindings) -> None:
+    print(f"{printable(name)}\n  {result.verdict.nulling.value}: {result.verdict.reason}")
+    print(f"  what to do: {result.advice.sentence}\n")
 
 
 def _trusted(result: LoopFit) -> int:

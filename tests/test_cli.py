@@ -30,6 +30,8 @@ COMPARE_OUTPUT = PICTURES | {
     "comparison.txt",
     "comparison.csv",
 }
+ELEMENTS_OUTPUT = {f"{name}.{form}" for name in ("elements", "blame", "lines", "what-if") for form in ("png", "svg")}
+ELEMENTS_OUTPUT |= {"elements.json", "elements.txt", "elements.csv"}
 
 Captured = pytest.CaptureFixture[str]
 
@@ -431,18 +433,24 @@ def test_compare_leaves_its_files_and_nothing_else(capsys: Captured, tmp_path: P
 
 
 def test_demo_runs_on_every_part(capsys: Captured, tmp_path: Path) -> None:
-    # Two of the parts, so that the test stays short.
+    # Two of the parts, and two sweeps of the stepped one, so that the test stays short.
     folder = tmp_path / "examples"
-    folder.mkdir()
+    stepped = folder / "part_f_stepped"
+    stepped.mkdir(parents=True)
     for path in (DESIGN, PART_A, PART_B):
         shutil.copy(path, folder)
+    for name in ("base.csv", "rz_plus_500.csv"):
+        shutil.copy(DESIGN.parent / "part_f_stepped" / name, stepped)
+    (stepped / "steps.csv").write_text("file,rz_added_ohm\nbase.csv,0\nrz_plus_500.csv,500\n", encoding="utf-8")
     out = tmp_path / "out"
     code, printed, err = called(capsys, "demo", "--examples", folder, "--out", out)
     assert (code, err) == (0, "")
     assert "as-designed: " in printed
     assert "wrong-side: " in printed
     parts = {PART_A.stem, PART_B.stem}
-    assert names_in(out) == parts | {f"{part}/{name}" for part in parts for name in COMPARE_OUTPUT}
+    assert "part_f_stepped\n  too-little: " in printed
+    estimated = {"part_f_stepped"} | {f"part_f_stepped/{name}" for name in ELEMENTS_OUTPUT}
+    assert names_in(out) == parts | {f"{part}/{name}" for part in parts for name in COMPARE_OUTPUT} | estimated
     assert "exists already" in refused(capsys, 2, "demo", "--examples", folder, "--out", out)
 
 

@@ -122,9 +122,9 @@ def sweeps_name(findings: ElementFindings) -> str:
     files = [check.file for check in findings.estimate.checks]
     if len(files) == 1:
         return files[0]
-    folders = {str(PurePath(file).parent) for file in files}
-    folder = folders.pop() if len(folders) == 1 else "several folders"
-    return f"{len(files)} sweeps" if folder == "." else f"{len(files)} sweeps in {folder}"
+    folders = {PurePath(file).parent for file in files}
+    folder = folders.pop().name if len(folders) == 1 else "several folders"
+    return f"{len(files)} sweeps in {folder}" if folder else f"{len(files)} sweeps"
 
 
 def _listed(words: Sequence[str]) -> str:

@@ -101,7 +101,7 @@ def test_the_stepped_example_says_what_is_true_of_it(stepped_example: ElementFin
     load, first_stage = parasitic_sentences(stepped_example)
     assert load.endswith("beyond the designed and the bench's 2.00 pF")
     assert first_stage.startswith("first stage 18.1 ± 1.0 fF")
-    assert sweeps_name(stepped_example).startswith("5 sweeps in ")
+    assert sweeps_name(stepped_example) == "5 sweeps in part_f_stepped"
     assert load_sentence(stepped_example).startswith("65° are kept up to 8.42")
     assert load_sentence(stepped_example).endswith("pF more than on the bench")
     words = resistor_sentence(stepped_example)
