@@ -73,6 +73,9 @@ def with_factors(search: Search, solution: Solution, any_lag: Solution | None) -
 
     Without priors (`any_lag` given) the lag may be needed as well.
     """
+    if any_lag is None and _contradicts_the_delay(search, solution):
+        # No factor is to make up for a wrong statement: the misfit is left, and said.
+        return solution, None
     best = _risen(search, solution)
     if any_lag is None:
         return best, None
@@ -92,6 +95,16 @@ def with_factors(search: Search, solution: Solution, any_lag: Solution | None) -
         good = (end for end in freed if judge(end).adequate and is_lag(end))
         best = min((best, *good), key=_criterion) if judge(best).adequate else next(good, best)
     return best, freed[-1]
+
+
+def _contradicts_the_delay(search: Search, solution: Solution) -> bool:
+    """Whether another path delay than stated is all that the sweep asks for."""
+    model = solution.model
+    if model.delay.sd_s == np.inf:
+        return False
+    freed = replace(model, delay=FREE_DELAY)
+    other = search.settled(solve(freed, search.sweep, solution.noise, lifted(solution, freed)))
+    return judge(other).adequate and is_lag(other)
 
 
 def is_free(solution: Solution) -> bool:
