@@ -149,7 +149,8 @@ def _set_height(axes: Axes, band: Band, *, from_zero: bool) -> None:
         return
     bottom, top = (0.0, float(seen.max())) if from_zero else (float(seen.min()), float(seen.max()))
     height = (top - bottom) or 1.0
-    axes.set_ylim(bottom - 0.07 * height, top + 0.1 * height)
+    # Below the margin's curves is room for words.
+    axes.set_ylim(bottom - (0.07 if from_zero else 0.3) * height, top + 0.1 * height)
 
 
 def _on(curve: FloatArray, at: FloatArray, place: float) -> float:
@@ -197,7 +198,7 @@ def _write_places(axes: Axes, column: _Column, wanted_deg: float | None) -> None
         if at[0] < end < at[-1]:
             axes.axvline(end, color=COLOURS["good"], linewidth=1.4, zorder=1.8, gid="end")
             clutter.add_line([end, end], [bottom, top])
-            named.append(((end, bottom + 0.1 * (top - bottom)), f"kept {word}\n{si(end, unit, digits=3)}"))
+            named.insert(0, ((end, bottom + 0.08 * (top - bottom)), f"kept {word}\n{si(end, unit, digits=3)}"))
     for place, _ in named:
         clutter.add_disc(*place, DISC_IN)
     for place, words in named:
