@@ -144,6 +144,12 @@ def _elements_command(elements: argparse.ArgumentParser) -> None:
 
 def _plan_command(plan: argparse.ArgumentParser) -> None:
     plan.add_argument("--design", required=True, metavar="D.toml", help="design file, with elements")
+    plan.add_argument(
+        "--under-test",
+        type=_name,
+        metavar="NAMES",
+        help='elements whose designed value shall count nothing, as in "CL gm2"',
+    )
     listed = plan.add_argument_group("what can be taken: every load with every resistance in every band")
     listed.add_argument("--loads", metavar="LIST", help='added loads, as in "0, 5 pF, 10 pF" (default: by the design)')
     listed.add_argument(
@@ -158,7 +164,7 @@ def _plan_command(plan: argparse.ArgumentParser) -> None:
     )
     listed.add_argument("--points", type=_count, default=281, metavar="N", help="points of a sweep (default 281)")
     listed.add_argument("--averages", type=_count, default=1, metavar="N", help="averages of each sweep (default 1)")
-    listed.add_argument("--noise", metavar="LEVELS", help=f"{NOISE_HELP}; default: usual ones, which are printed")
+    listed.add_argument("--noise", metavar="LEVELS", help=f"{NOISE_HELP}; default: usual ones, or those of --have")
     choice = plan.add_argument_group("choice")
     choice.add_argument(
         "--sweeps", type=_count, metavar="N", help="how many to choose (default: as few as meet --want, else 3)"

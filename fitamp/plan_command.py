@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import argparse
+from collections.abc import Sequence
 from pathlib import Path
 
 from fitamp.delivery import deliver, refuse_early, write_folder
@@ -33,7 +34,8 @@ def plan(args: argparse.Namespace) -> int:
     bands = [parse_band(words) for words in args.band or ()]
     loads = usual_loads_f(design) if args.loads is None else parse_list(args.loads, "F", option="--loads")
     resistances = (0.0,) if args.resistances is None else parse_list(args.resistances, "Ω", option="--resistances")
-    have = None if args.have is None else _have(args, design, noise)
+    under_test = [] if args.under_test is None else args.under_test.replace(",", " ").split()
+    have = None if args.have is None else _have(args, design, noise, under_test)
     if have is not None and not bands:
         freq_hz = have.sweeps[0].freq_hz
         bands = [(float(freq_hz[0]), float(freq_hz[-1]))]
@@ -61,6 +63,7 @@ def plan(args: argparse.Namespace) -> int:
         wanted=wanted,
         noise=noise,
         have=have,
+        under_test=under_test if have is None else (),
         parts_drawn=args.parts,
         seed=args.seed,
     )
@@ -76,15 +79,19 @@ def plan(args: argparse.Namespace) -> int:
     return 0
 
 
-def _have(args: argparse.Namespace, design: Design, noise: NoiseLevels | None) -> ElementEstimate:
+def _have(
+    args: argparse.Namespace, design: Design, noise: NoiseLevels | None, under_test: Sequence[str]
+) -> ElementEstimate:
     """Elements from the sweeps already taken: those of a steps file, or one sweep with nothing added."""
     sign = Sign(args.sign) if args.sign else None
     reading = Reading(columns=args.columns, trace=args.trace, sign=sign)
     if not _is_steps_file(Path(args.have)):
-        return estimate_elements(reading.sweeps([args.have]), design, conditions=[Condition()], noise=noise)
-    steps = read_steps(args.have)
-    sweeps = reading.sweeps([str(step.path) for step in steps])
-    return estimate_elements(sweeps, design, conditions=[step.condition for step in steps], noise=noise)
+        sweeps, conditions = reading.sweeps([args.have]), [Condition()]
+    else:
+        steps = read_steps(args.have)
+        sweeps = reading.sweeps([str(step.path) for step in steps])
+        conditions = [step.condition for step in steps]
+    return estimate_elements(sweeps, design, conditions=conditions, noise=noise, under_test=under_test)
 
 
 def _is_steps_file(path: Path) -> bool:

@@ -90,6 +90,14 @@ def test_one_sweep_taken_already_is_planned_on(capsys: Captured) -> None:
     assert all(one["load_added_f"] or one["rz_added_ohm"] for one in record["choice"]["candidates"])
 
 
+def test_what_is_under_test_has_no_prior(capsys: Captured) -> None:
+    _, out, _ = called(capsys, *LIST, "--under-test", "CL, gm2", "--sweeps", "1", "--json", "-")
+    first = json.loads(out)["stages"][0]["elements"]
+    assert [name for name, one in first.items() if one["sd"] is None] == ["gm2", "CL", "Rz"]
+    _, out, _ = called(capsys, *LIST[:4], "--under-test", "CL", "--have", PART_A, "--sweeps", "1", "--json", "-")
+    assert json.loads(out)["stages"][0]["elements"]["CL"]["informed"] == 1.0
+
+
 def test_the_sweeps_of_a_steps_file_are_planned_on(capsys: Captured) -> None:
     code, out, _ = called(capsys, "--loads", "0, 10 pF", "--have", STEPS, "--sweeps", "1", "--json", "-")
     record = json.loads(out)
