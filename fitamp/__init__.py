@@ -18,9 +18,21 @@ if TYPE_CHECKING:
     from fitamp.conditioning.repeats import average_repeats
     from fitamp.conditioning.through import ThroughDelay, divided_by_through, through_delay
     from fitamp.design import Design, HalfPlane, read_design, write_design
-    from fitamp.elements import Condition, ElementEstimate, blame, estimate_elements, predict, read_steps
+    from fitamp.elements import (
+        Condition,
+        ElementEstimate,
+        blame,
+        estimate_elements,
+        line_fits,
+        load_range,
+        predict,
+        read_steps,
+        restoring_resistor,
+        write_estimated_design,
+    )
     from fitamp.errors import DesignError, FitampError, FitError, InputError, SweepError, UsageError
     from fitamp.estimate import Estimate, Known
+    from fitamp.findings import ElementFindings, findings_of
     from fitamp.fitting import DelayPrior, FarPolePrior, LoopFit, ZeroPlace, fit_sweep
     from fitamp.importers import read_sweep, read_sweeps, write_sweep
     from fitamp.margins import closed_loop_step
@@ -39,6 +51,7 @@ _HOME = {
     "Design": "design",
     "DesignError": "errors",
     "ElementEstimate": "elements",
+    "ElementFindings": "findings",
     "Elements": "amplifier",
     "Estimate": "estimate",
     "FarPolePrior": "fitting",
@@ -68,7 +81,10 @@ _HOME = {
     "divided_by_through": "conditioning.through",
     "estimate_elements": "elements",
     "estimate_noise": "noise",
+    "findings_of": "findings",
     "fit_sweep": "fitting",
+    "line_fits": "elements",
+    "load_range": "elements",
     "loop_margins": "margins:margins",
     "plan": "planning",
     "predict": "elements",
@@ -76,9 +92,11 @@ _HOME = {
     "read_steps": "elements",
     "read_sweep": "importers",
     "read_sweeps": "importers",
+    "restoring_resistor": "elements",
     "simulate_bench": "noise",
     "through_delay": "conditioning.through",
     "write_design": "design",
+    "write_estimated_design": "elements",
     "write_sweep": "importers",
 }
 
@@ -90,6 +108,7 @@ __all__ = [
     "Design",
     "DesignError",
     "ElementEstimate",
+    "ElementFindings",
     "Elements",
     "Estimate",
     "FarPolePrior",
@@ -119,7 +138,10 @@ __all__ = [
     "divided_by_through",
     "estimate_elements",
     "estimate_noise",
+    "findings_of",
     "fit_sweep",
+    "line_fits",
+    "load_range",
     "loop_margins",
     "plan",
     "predict",
@@ -127,9 +149,11 @@ __all__ = [
     "read_steps",
     "read_sweep",
     "read_sweeps",
+    "restoring_resistor",
     "simulate_bench",
     "through_delay",
     "write_design",
+    "write_estimated_design",
     "write_sweep",
 ]
 

@@ -112,7 +112,7 @@ def short_names(files: Sequence[str]) -> tuple[str, ...]:
         return tuple(files)
     try:
         common = os.path.commonpath([PurePath(file).parent for file in files])
-        return tuple(str(PurePath(file).relative_to(common)) for file in files)
+        return tuple(PurePath(file).relative_to(common).as_posix() for file in files)
     except ValueError:  # on different drives, or some absolute and some not
         return tuple(files)
 
