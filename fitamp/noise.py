@@ -13,7 +13,7 @@ import numpy as np
 
 from fitamp.arrays import ComplexArray, FloatArray
 from fitamp.sweep import NoiseLevels, Sweep
-from fitamp.tall import normal_equations, product
+from fitamp.tall import product
 
 __all__ = ["FLOOR", "estimate_noise", "simulate_bench", "variance_components"]
 
@@ -28,7 +28,7 @@ TINY = 1e-12
 SETTLED, ROUGHLY_SETTLED = 1e-7, 1e-3
 # Steps by expected information suit any start and converge well where the law holds; after so many of them, by the
 # observed one, which converges anywhere near the end.
-EXPECTED_STEPS, MOST_STEPS, HALVINGS = 4, 100, 30
+EXPECTED_STEPS, MOST_STEPS, HALVINGS = 2, 100, 30
 # Share of its diagonal added to an information matrix, which two levels that look alike leave singular.
 RIDGE = 1e-12
 # A second difference so many times its mean square is no noise: it comes once in 160 000 times, and without it the mean
@@ -122,22 +122,24 @@ def _gamma_regression(
     level = float(observed.mean())
     if not level > 0:
         return np.zeros(design.shape[1])
-    columns, target = design / scale, np.maximum(observed / level, TINY)
+    columns, target = np.ascontiguousarray((design / scale).T), np.maximum(observed / level, TINY)
     if start is None:
         # Each component explains what is largest in its own stretch of the band, to begin with.
-        now = np.array([np.average(target, weights=column**2) for column in columns.T / columns.max(axis=1)])
+        weights = (columns / columns.max(axis=0)) ** 2
+        now = product(weights.T, target) / weights.sum(axis=1)
     else:
         now = start * scale / level
-    means = columns @ now
+    means = now @ columns
     worth = _log_likelihood(target, means)
     for step in range(MOST_STEPS):
-        better = _newton_step(target, columns, means, now) if step >= EXPECTED_STEPS else None
-        if better is None or not _log_likelihood(target, columns @ better) >= worth:
-            better = _scoring_step(target, columns, means, now, worth)
-        if better is None:
+        towards = [_towards_by_scoring] if step < EXPECTED_STEPS else [_towards_by_newton, _towards_by_scoring]
+        found = None
+        for method in towards:
+            found = found or _upwards(target, columns, now, worth, towards=method(target, columns, means, now))
+        if found is None:
             break
-        before, now, means = means, better, columns @ better
-        worth = _log_likelihood(target, means)
+        before = means
+        now, means, worth = found
         if np.abs(means / before - 1).max() <= tolerance:
             break
     return np.asarray(now * level / scale, dtype=float)
@@ -148,34 +150,57 @@ def _log_likelihood(target: FloatArray, means: FloatArray) -> float:
     return -float((target / means + np.log(means)).sum()) if means.min() > 0 else -math.inf
 
 
-def _scoring_step(
-    target: FloatArray, columns: FloatArray, means: FloatArray, now: FloatArray, worth: float
-) -> FloatArray | None:
-    """Fisher's scoring: least squares weighted by the present means; None where no step leads up."""
-    from scipy.optimize import nnls
-
-    information, score, _ = normal_equations(columns / means[:, np.newaxis], target / means)
-    information[np.diag_indices_from(information)] *= 1 + RIDGE
-    if not np.isfinite(information).all():
+def _upwards(
+    target: FloatArray, columns: FloatArray, now: FloatArray, worth: float, *, towards: FloatArray | None
+) -> tuple[FloatArray, FloatArray, float] | None:
+    """A point on the way that is at least as likely, with its means and likelihood; None where there is none."""
+    if towards is None:
         return None
-    triangle = np.linalg.cholesky(information)
-    step = nnls(triangle.T, np.linalg.solve(triangle, score))[0] - now
     for halvings in range(HALVINGS):
-        better = now + step * 0.5**halvings
-        if _log_likelihood(target, columns @ better) >= worth:
-            return np.asarray(better, dtype=float)
+        better = now + (towards - now) * 0.5**halvings if halvings else towards
+        means = better @ columns
+        likelihood = _log_likelihood(target, means)
+        if likelihood >= worth:
+            return better, means, likelihood
     return None
 
 
-def _newton_step(target: FloatArray, columns: FloatArray, means: FloatArray, now: FloatArray) -> FloatArray | None:
+def _towards_by_scoring(
+    target: FloatArray, columns: FloatArray, means: FloatArray, now: FloatArray
+) -> FloatArray | None:
+    """Fisher's scoring: least squares weighted by the present means, within θ ≥ 0."""
+    weighted = columns / means
+    information = product(weighted.T, weighted.T)
+    score = product(weighted.T, target / means)
+    if not np.isfinite(information).all():
+        return None
+    information.flat[:: len(now) + 1] *= 1 + RIDGE
+    free = np.ones(len(now), dtype=bool)
+    answer = np.linalg.solve(information, score)
+    while free.any() and (answer[free] < 0).any():
+        free &= answer >= 0
+        answer = np.zeros(len(now))
+        answer[free] = np.linalg.solve(information[free][:, free], score[free])
+    # A component that was dropped too early would be wanted back.
+    if (score - information @ answer)[~free].max(initial=0.0) > 0:
+        from scipy.optimize import nnls
+
+        triangle = np.linalg.cholesky(information)
+        answer = nnls(triangle.T, np.linalg.solve(triangle, score))[0]
+    return np.asarray(answer, dtype=float)
+
+
+def _towards_by_newton(
+    target: FloatArray, columns: FloatArray, means: FloatArray, now: FloatArray
+) -> FloatArray | None:
     """Newton's method for the components that are not held at 0."""
     ratio = target / means
-    weighted = columns / means[:, np.newaxis]
-    gradient = product(weighted, (1 - ratio)[:, np.newaxis])[:, 0]
+    weighted = columns / means
+    gradient = product(weighted.T, 1 - ratio)
     free = (now > 0) | (gradient < 0)
-    curvature = product(weighted * (2 * ratio - 1)[:, np.newaxis], weighted)
+    curvature = product((weighted * (2 * ratio - 1)).T, weighted.T)
     try:
-        step = np.linalg.solve(curvature[np.ix_(free, free)], gradient[free])
+        step = np.linalg.solve(curvature[free][:, free], gradient[free])
     except np.linalg.LinAlgError:
         return None
     better = now.copy()

@@ -10,13 +10,13 @@ import numpy as np
 
 from fitamp.arrays import FloatArray
 
-__all__ = ["normal_equations", "product"]
+__all__ = ["normal_equations", "product", "sum_of_squares"]
 
 BLOCK_ROWS = 4096
 
 
 def product(left: FloatArray, right: FloatArray) -> FloatArray:
-    """left' right, shape (p, q), of arrays of shapes (m, p) and (m, q)."""
+    """left' right, shape (p, q) or (p,), of arrays of shapes (m, p) and (m, q) or (m,)."""
     total = left[:BLOCK_ROWS].T @ right[:BLOCK_ROWS]
     for first in range(BLOCK_ROWS, len(left), BLOCK_ROWS):
         rows = slice(first, first + BLOCK_ROWS)
@@ -29,3 +29,8 @@ def normal_equations(slopes: FloatArray, residuals: FloatArray) -> tuple[FloatAr
     both = np.column_stack([slopes, residuals])
     gram = product(both, both)
     return gram[:-1, :-1], gram[:-1, -1], float(gram[-1, -1])
+
+
+def sum_of_squares(values: FloatArray) -> float:
+    """v'v of values of shape (m,)."""
+    return sum(float(rows @ rows) for rows in np.split(values, range(BLOCK_ROWS, len(values), BLOCK_ROWS)))

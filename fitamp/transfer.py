@@ -160,11 +160,12 @@ def _checked_roots(name: str, roots: Iterable[complex]) -> tuple[complex, ...]:
     return in_order(kept)
 
 
-def _coefficients(name: str, values: ArrayLike) -> FloatArray:
+def _coefficients(name: str, values: ArrayLike) -> list[float]:
     array = np.asarray(values, dtype=float)
-    if array.ndim != 1 or len(array) == 0 or not np.all(np.isfinite(array)) or array[0] == 0:
+    row = array.tolist() if array.ndim == 1 else []
+    if not row or not all(map(math.isfinite, row)) or row[0] == 0:
         raise ValueError(f"{name} must be a row of finite coefficients, the first not 0, but is {values!r}")
-    return array
+    return row
 
 
 def _expand(roots_hz: tuple[complex, ...]) -> FloatArray:

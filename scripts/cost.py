@@ -5,8 +5,9 @@
 
 The plain fit is the benchmark's: four parameters, logarithms, no noise model, one start. The whole analysis is start,
 noise, search, lags, intervals, margins and verdict on the residuals; the case "design" fits with what a design file
-expects, "compare" is all of `fitamp compare` but reading and writing. Both are timed in turn on the same noisy sweeps;
-medians are compared. `--profile` shows instead where each case spends its time.
+expects, "compare" is all of `fitamp compare` but reading and writing. Both are timed in turn on the same noisy sweeps
+by the processor's clock, which others on the machine hardly move; medians are compared. `--profile` shows instead where
+each case spends its time.
 """
 
 from __future__ import annotations
@@ -86,12 +87,12 @@ def medians(case: Case, runs: int) -> tuple[float, float]:
 
 
 def milliseconds(work: Callable[[], object]) -> float:
-    """Wall time of some work; what a plain fit warns of is not what is measured here."""
+    """Processor time of some work, of all threads; what a plain fit warns of is not what is measured here."""
     with warnings.catch_warnings(), np.errstate(all="ignore"):
         warnings.simplefilter("ignore")
-        start = time.perf_counter()
+        start = time.process_time()
         work()
-        return 1e3 * (time.perf_counter() - start)
+        return 1e3 * (time.process_time() - start)
 
 
 def print_ratios(cases: Sequence[Case], runs: int) -> None:

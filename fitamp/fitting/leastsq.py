@@ -20,6 +20,7 @@ import numpy as np
 
 from fitamp.arrays import ComplexArray, FloatArray, frozen_float
 from fitamp.fitting.racing import Jacobian, Residual, descend
+from fitamp.tall import sum_of_squares
 
 __all__ = ["Optimum", "covariance_of", "interleaved", "minimise", "triangle_of"]
 
@@ -28,6 +29,8 @@ __all__ = ["Optimum", "covariance_of", "interleaved", "minimise", "triangle_of"]
 TOLERANCE = 1e-15
 # From this tolerance on the end is not reported, but weighed against others.
 COARSE = 1e-9
+# Eigenvalues of the scaled J'J above this share of the largest leave its inverse nine digits.
+WELL_CONDITIONED = 1e-7
 # Singular values of the scaled Jacobian below this share of the largest carry rounding, not information.
 RANK_RTOL = 1e-12
 UNDETERMINED_VARIANCE = 1e30
@@ -102,23 +105,22 @@ def minimise(
         `converged` is False when the descent gave up or the end point is not finite; it proves no global minimum.
     """
     names = tuple(names)
-    covariance = None
     if jacobian is not None and tolerance >= COARSE:
-        values, settled = descend(residual, jacobian, start, tolerance=tolerance, max_steps=max_steps, enough=enough)
+        end = descend(residual, jacobian, start, tolerance=tolerance, max_steps=max_steps, enough=enough)
+        values, settled, covariance = end.values, end.settled, _inverse(end.matrix)
     else:
         values, settled, covariance = _by_lmfit(
             residual, start, names=names, jacobian=jacobian, tolerance=tolerance, max_steps=max_steps
         )
     residuals = residual(values)
-    if jacobian is not None:
-        covariance = covariance_of(jacobian(values))
-    elif covariance is None:
-        covariance = np.diag(np.full(len(names), UNDETERMINED_VARIANCE))
+    if covariance is None:
+        nothing = np.diag(np.full(len(names), UNDETERMINED_VARIANCE))
+        covariance = nothing if jacobian is None else covariance_of(jacobian(values))
     return Optimum(
         names=names,
         values=frozen_float(values),
         covariance=frozen_float(covariance),
-        chi_square=float(residuals @ residuals),
+        chi_square=sum_of_squares(residuals),
         residuals=frozen_float(residuals),
         converged=settled and bool(np.isfinite(residuals).all()),
     )
@@ -133,7 +135,7 @@ def _by_lmfit(
     tolerance: float,
     max_steps: int,
 ) -> tuple[FloatArray, bool, FloatArray | None]:
-    """Where lmfit ended, whether it says that it is there, and its covariance if it has one."""
+    """Where lmfit ended, whether it says that it is there, and its covariance, where there is no Jacobian for one."""
     import lmfit
 
     class Minimizer(lmfit.Minimizer):  # type: ignore[misc]  # lmfit has no types
@@ -159,7 +161,19 @@ def _by_lmfit(
         result = minimizer.leastsq(**options)
     # MINPACK's codes 1-4 are convergence, 6-8 say that the tolerance asked for is below rounding: both are the end.
     settled = result.ier in {1, 2, 3, 4, 6, 7, 8}
-    return values_of(result.params), settled, None if result.covar is None else np.asarray(result.covar, dtype=float)
+    own = None if jacobian is not None or result.covar is None else np.asarray(result.covar, dtype=float)
+    return values_of(result.params), settled, own
+
+
+def _inverse(matrix: FloatArray) -> FloatArray | None:
+    """Inverse of J'J; None where it is so nearly singular that the Jacobian itself has to be looked at."""
+    if not np.isfinite(matrix).all() or not (np.diag(matrix) > 0).all():
+        return None
+    scale = np.sqrt(np.diag(matrix))
+    eigenvalues, vectors = np.linalg.eigh(matrix / np.outer(scale, scale))
+    if eigenvalues[0] < WELL_CONDITIONED * eigenvalues[-1]:
+        return None
+    return np.asarray((vectors / eigenvalues) @ vectors.T / np.outer(scale, scale), dtype=float)
 
 
 def covariance_of(jacobian: FloatArray) -> FloatArray:

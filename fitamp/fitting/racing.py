@@ -9,13 +9,14 @@ a race needs no more; what wins is finished by `leastsq.minimise`.
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
+from dataclasses import dataclass
 
 import numpy as np
 
 from fitamp.arrays import FloatArray
-from fitamp.tall import normal_equations
+from fitamp.tall import normal_equations, sum_of_squares
 
-__all__ = ["Jacobian", "Residual", "descend"]
+__all__ = ["Descent", "Jacobian", "Residual", "descend"]
 
 Residual = Callable[[FloatArray], FloatArray]
 Jacobian = Callable[[FloatArray], FloatArray]
@@ -27,6 +28,20 @@ FIRST_DAMPING, NEWTON, LEAST_DAMPING, HOPELESS = 1e-2, 1e-6, 1e-13, 1e13
 WORTHWHILE = 1e-4
 
 
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Descent:
+    """Where a descent ended.
+
+    values : shape (p,)
+    matrix : J'J there, shape (p, p)
+    settled : False when there were not enough steps, or where residuals or slopes are not finite
+    """
+
+    values: FloatArray
+    matrix: FloatArray
+    settled: bool
+
+
 def descend(
     residual: Residual,
     jacobian: Jacobian,
@@ -35,23 +50,19 @@ def descend(
     tolerance: float,
     max_steps: int,
     enough: float = 0.0,
-) -> tuple[FloatArray, bool]:
+) -> Descent:
     """Go down from `start` until a step promises or gains no more than `tolerance` of chi-square.
 
-    Or until chi-square is below `enough`, where it is left unsettled.
-
-    Returns
-    -------
-    values : shape (p,)
-    settled : False when `max_steps` evaluations were not enough, or where residuals or slopes are not finite
+    Or until chi-square is below `enough`, where it is left unsettled; or for `max_steps` evaluations.
     """
     values = np.array(start, dtype=float)
     residuals = residual(values)
     matrix, gradient, chi = normal_equations(jacobian(values), residuals)
     if not (np.isfinite(matrix).all() and np.isfinite(chi)):
-        return values, False
+        return Descent(values=values, matrix=matrix, settled=False)
     longest = np.zeros(len(values))
     damping, growth = FIRST_DAMPING, 2.0
+    settled = False
     for _ in range(max_steps - 1):
         longest = np.maximum(longest, np.diag(matrix))
         scale = np.sqrt(np.where(longest > 0, longest, 1.0))
@@ -59,21 +70,24 @@ def descend(
         step = np.linalg.solve(scaled + damping * np.eye(len(values)), -slope)
         promised = float(-(2 * slope + scaled @ step) @ step)
         if promised <= tolerance * chi and damping <= NEWTON:
-            return values, True
+            settled = True
+            break
         trial = values + step / scale
         residuals = residual(trial)
-        gained = chi - float(residuals @ residuals)
+        gained = chi - sum_of_squares(residuals)
         if not gained > WORTHWHILE * promised:  # also where it is not a number
             damping, growth = damping * growth, 2 * growth
             if damping > HOPELESS:
-                return values, True
+                settled = True
+                break
             continue
         values = trial
         matrix, gradient, chi = normal_equations(jacobian(values), residuals)
         if not np.isfinite(matrix).all() or chi < enough:
-            return values, False
+            break
         if max(gained, promised) <= tolerance * chi:
-            return values, True
+            settled = True
+            break
         damping = max(damping * max(1 / 10, 1 - (2 * gained / promised - 1) ** 3), LEAST_DAMPING)
         growth = 2.0
-    return values, False
+    return Descent(values=values, matrix=matrix, settled=settled)

@@ -16,15 +16,15 @@ from fitamp.fitting.racing import descend
 def test_certified_residual_sums_are_reached_from_both_starts(name: str, start: int) -> None:
     # NIST/ITL Statistical Reference Datasets.
     certified, model = read_set(name), MODELS[name]
-    values, settled = descend(
+    end = descend(
         lambda b: model(b, certified.x) - certified.y,
         complex_step(model, certified.x),
         certified.starts[start],
         tolerance=1e-9,
         max_steps=2000,
     )
-    assert settled
-    residuals = model(values, certified.x) - certified.y
+    assert end.settled
+    residuals = model(end.values, certified.x) - certified.y
     assert residuals @ residuals == pytest.approx(certified.residual_sum, rel=1e-6)
 
 
@@ -59,20 +59,20 @@ def test_columns_that_depend_on_each_other_run_alike_every_time() -> None:
     ends = set()
     for seed in range(20):
         litter = [np.random.default_rng(seed).standard_normal(50 * seed + k) for k in range(5)]
-        values, settled = descend(residual, slopes, [0.3, 0.3, 1.0], tolerance=1e-9, max_steps=200)
-        assert settled
-        ends.add(values.tobytes())
+        end = descend(residual, slopes, [0.3, 0.3, 1.0], tolerance=1e-9, max_steps=200)
+        assert end.settled
+        ends.add(end.values.tobytes())
         del litter
     assert len(ends) == 1
 
 
 def test_a_parameter_without_effect_stays() -> None:
     x = np.arange(1.0, 6.0)
-    values, settled = descend(
+    end = descend(
         lambda b: (b[0] - 3) * x, lambda _: np.stack([x, 0 * x], axis=1), [1.0, 7.0], tolerance=1e-9, max_steps=50
     )
-    assert settled
-    assert values == pytest.approx([3.0, 7.0], rel=1e-6)
+    assert end.settled
+    assert end.values == pytest.approx([3.0, 7.0], rel=1e-6)
 
 
 def test_a_start_or_a_slope_that_is_no_number_is_not_settled() -> None:
@@ -85,28 +85,28 @@ def test_a_start_or_a_slope_that_is_no_number_is_not_settled() -> None:
         def slopes(_: FloatArray, numbers: FloatArray = numbers) -> FloatArray:
             return np.asarray(numbers[1][:, np.newaxis])
 
-        values, settled = descend(residual, slopes, [1.0], tolerance=1e-7, max_steps=50)
-        assert not settled
-        assert values.tolist() == [1.0]
+        end = descend(residual, slopes, [1.0], tolerance=1e-7, max_steps=50)
+        assert not end.settled
+        assert end.values.tolist() == [1.0]
 
 
 def test_a_trial_beyond_the_range_of_floats_is_turned_back_from() -> None:
     # The first step from far on the flat side of the exponential overshoots to where it overflows.
     with np.errstate(over="ignore", invalid="ignore"):
-        values, settled = descend(
+        end = descend(
             lambda b: np.exp(b) - 3.0, lambda b: np.exp(b)[:, np.newaxis], [-9.0], tolerance=1e-9, max_steps=200
         )
-    assert settled
-    assert values[0] == pytest.approx(np.log(3.0), rel=1e-6)
+    assert end.settled
+    assert end.values[0] == pytest.approx(np.log(3.0), rel=1e-6)
 
 
 def test_too_few_steps_are_not_the_end() -> None:
     certified, model = read_set("MGH09"), MODELS["MGH09"]
-    _, settled = descend(
+    end = descend(
         lambda b: model(b, certified.x) - certified.y,
         complex_step(model, certified.x),
         certified.starts[0],
         tolerance=1e-9,
         max_steps=5,
     )
-    assert not settled
+    assert not end.settled
