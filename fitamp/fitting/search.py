@@ -2,13 +2,14 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 
 from fitamp.arrays import FloatArray
 from fitamp.errors import FitError
 from fitamp.fitting.adequacy import judge
+from fitamp.fitting.leastsq import TOLERANCE
 from fitamp.fitting.start import Start, excess_delay, more_starts, starts
 from fitamp.fitting.two_pole import (
     DelayPrior,
@@ -41,6 +42,8 @@ CURVE_ROUNDS = 3
 # To tell which start ends lowest, chi-square to seven digits is enough, and who is still far off after so many steps
 # does not win.
 RACE_TOLERANCE = 1e-7
+# Before the noise is estimated once more, nothing is gained by more digits than this.
+ON_THE_WAY = 1e-9
 RACE_STEPS = 100
 # A lag below zero by no more than this many standard errors is a lag of about zero.
 NEGATIVE_LAG_SIGMA = 3.0
@@ -99,10 +102,8 @@ class Search:
             return self.guesses
         return (*self.guesses, *starts(bare, seen_s), *starts(bare, (seen_s + self.delay_s) / 2))
 
-    def best(
-        self, far_pole: FarPolePrior, delay: DelayPrior, *, also: Solution | None = None, elsewhere: bool = True
-    ) -> Solution:
-        """The solution of least chi-square from all starts (unless not `elsewhere`) and from the solution `also`.
+    def best(self, far_pole: FarPolePrior, delay: DelayPrior, *, also: Solution | None = None) -> Solution:
+        """The solution of least chi-square from all starts and from the solution `also`.
 
         Raises
         ------
@@ -110,7 +111,7 @@ class Search:
             When no start converges.
         """
         model = TwoPole(time_s=self._time_s(), known=self.known, far_pole=far_pole, delay=delay, pole2=self.pole2)
-        vectors = self.vectors(model) if elsewhere else []
+        vectors = self.vectors(model)
         if also is not None:
             vectors.insert(0, lifted(also, model))
         vectors = [vector for vector in vectors if self.is_sane(model, vector)]
@@ -184,8 +185,7 @@ class Search:
         None where the sweep does not determine them at all.
         """
         if judge(plain).adequate:
-            # Only from there: elsewhere the two more parameters would find a doublet in the noise.
-            return plain, self._best_or_none(FREE_FAR_POLE, FREE_DELAY, also=plain, elsewhere=False)
+            return plain, self._with_any_lag(plain)
         any_lag = self._best_or_none(FREE_FAR_POLE, FREE_DELAY, also=plain)
         for far_pole, delay in ((NO_FAR_POLE, FREE_DELAY), (FREE_FAR_POLE, NO_DELAY)):
             with_lag = self._best_or_none(far_pole, delay, also=plain)
@@ -195,19 +195,32 @@ class Search:
             return any_lag, any_lag
         return plain, any_lag
 
-    def _best_or_none(
-        self, far_pole: FarPolePrior, delay: DelayPrior, *, also: Solution, elsewhere: bool = True
-    ) -> Solution | None:
+    def _with_any_lag(self, plain: Solution) -> Solution | None:
+        """An adequate solution with third pole and delay set free under the same noise; None where that leads astray.
+
+        Only from there: elsewhere the two more parameters would find a doublet in the noise. What comes of it is an
+        interval, for which seven digits of chi-square will do.
+        """
+        model = replace(plain.model, far_pole=FREE_FAR_POLE, delay=FREE_DELAY)
+        end = solve(model, self.sweep, plain.noise, lifted(plain, model), tolerance=RACE_TOLERANCE)
+        if not (np.isfinite(end.optimum.chi_square) and self.is_sane(model, end.values)):
+            return None
+        return _in_sight(_at_the_top(end, self.sweep), self.sweep)
+
+    def _best_or_none(self, far_pole: FarPolePrior, delay: DelayPrior, *, also: Solution) -> Solution | None:
         try:
-            return self.best(far_pole, delay, also=also, elsewhere=elsewhere)
+            return self.best(far_pole, delay, also=also)
         except FitError:
             return None
 
     def settled(self, solution: Solution) -> Solution:
         """Finish what won the race: alternate noise and fit until both stand, or fit once where the noise is given."""
-        for _ in range(1 if self.noise else NOISE_ROUNDS - 1):
+        rounds = 1 if self.noise else NOISE_ROUNDS - 1
+        for left in reversed(range(rounds)):
             noise = self.noise or estimate_noise(self.sweep, solution.model.gain(solution.values, self.sweep.freq_hz))
-            again = solve(solution.model, self.sweep, noise, solution.values)
+            again = solve(
+                solution.model, self.sweep, noise, solution.values, tolerance=ON_THE_WAY if left else TOLERANCE
+            )
             if not again.optimum.converged:
                 # Down an endless valley of a parameter that the sweep does not see, seven digits have to do.
                 again = solve(solution.model, self.sweep, noise, again.values, tolerance=RACE_TOLERANCE)
