@@ -19,11 +19,10 @@ from fitamp.fitting.derive import (
     fitted_roots,
 )
 from fitamp.fitting.factors import Doublet, Resonance
+from fitamp.fitting.finding import HOPELESS_SCATTER, found_by
 from fitamp.fitting.intervals import RISE_95, estimate_by_curvature, hull, is_excluded
-from fitamp.fitting.orders import needs_more, with_factors
 from fitamp.fitting.result import LoopFit
-from fitamp.fitting.screen import screened
-from fitamp.fitting.search import FREE_DELAY, FREE_FAR_POLE, Search, lifted
+from fitamp.fitting.search import Search, lifted
 from fitamp.fitting.statements import place_of_zero, small_zero_time_s, warnings_of
 from fitamp.fitting.two_pole import DelayPrior, FarPoleCurve, FarPolePrior, Pole2Prior, Solution, solution_at
 from fitamp.sweep import NoiseLevels, Sweep
@@ -33,12 +32,8 @@ __all__ = ["MIN_POINTS", "fit_sweep"]
 
 # Four parameters and three noise levels out of two numbers a point, with something left to judge the fit by.
 MIN_POINTS = 12
-# A search without bad points may show more of them; so often at most.
-SCREENINGS = 3
 # A fit whose residuals are this large against the response does not describe the sweep at all.
 UNLIKE_LOOP = 0.3
-# Relative scatter beyond which a sweep is too coarse or too noisy to hold a shape.
-HOPELESS_SCATTER = 0.5
 # A loop gain whose largest magnitude is so many times that at DC (a resonance is allowed) has no two poles and a zero.
 RISES = 1 / 30
 # So many standard errors from 0 the misfit at 0 is large too, though a quartic valley makes it a quarter of what the
@@ -97,27 +92,11 @@ def fit_sweep(
     _check_points(sweep)
     noise = noise or sweep.noise
     lag_is_known = far_pole is not None or delay is not None
-    any_lag = None
-    whole = sweep
+    search = Search(sweep=sweep, noise=noise, known=known, delay_s=delay.mean_s if delay else 0.0, pole2=pole2)
     # A start that overflows loses by its chi-square; that is no news.
     with np.errstate(over="ignore", invalid="ignore", divide="ignore"):
-        for screening in range(SCREENINGS + 1):
-            search = Search(sweep=sweep, noise=noise, known=known, delay_s=delay.mean_s if delay else 0.0, pole2=pole2)
-            if lag_is_known:
-                solution = search.with_far_pole(far_pole or FREE_FAR_POLE, delay or FREE_DELAY)
-            else:
-                solution = search.plain()
-            if keep_all or screening == SCREENINGS:
-                break
-            rest = screened(sweep, solution, noise, whole=whole, fewest=MIN_POINTS)
-            if rest is sweep:
-                break
-            # If too many would go, all stay.
-            keep_all, sweep = rest is whole, rest
-        if not lag_is_known:
-            solution, any_lag = search.plain_or_with_lag(solution)
-        if solution.noise.relative <= HOPELESS_SCATTER and needs_more(solution):
-            solution, any_lag = with_factors(search, solution, any_lag)
+        found = found_by(search, far_pole, delay, keep_all=keep_all, fewest=MIN_POINTS)
+    sweep, solution, any_lag = found.sweep, found.solution, found.any_lag
     _check_likeness(sweep, solution)
     adequacy = judge(solution, sweep.freq_hz)
     # The noise comes from about as many second differences as there are points.

@@ -52,6 +52,8 @@ PAIR_FITS = ((2, 1), (4, 0))
 # What is found as a doublet may turn out to be pole 2 and zero, which may lie above the band.
 BEYOND = 4.0
 
+# Share of the misfit that may be left by factors that do not make the model adequate.
+WORTH_SHOWING = 0.1
 # Points beside the place of a step over which chi-square may rise before it falls.
 FARTHEST_BESIDE = 3
 # A step that the whole sweep asks for must also be seen by the points around it: two components exceed this in 1 of 90.
@@ -122,7 +124,9 @@ def _risen(search: Search, solution: Solution) -> Solution:
         if judge(ends[-1]).adequate and len(ends[-1].model.factors) == 1:
             break
     good = [end for end in ends if judge(end).adequate]
-    return min(good or ends, key=_criterion, default=solution)
+    # Factors that explain little of a misfit and leave the rest only hide where it is.
+    better = [end for end in ends if end.reduced_chi_square < WORTH_SHOWING * solution.reduced_chi_square]
+    return min(good or better, key=_criterion, default=solution)
 
 
 def _climbed(search: Search, solution: Solution) -> Solution:

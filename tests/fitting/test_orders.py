@@ -127,3 +127,15 @@ def test_with_a_design_the_doublet_below_pole_2_is_not_taken_for_it() -> None:
     assert poles["pole 2"] == pytest.approx(58e6, rel=0.02)
     assert poles["doublet"] == pytest.approx(4e6, rel=0.02)
     check_roots(fit, true)
+
+
+def test_points_on_a_resonance_come_back_once_it_is_known() -> None:
+    """Before the resonance is in the model its flank stands apart from the neighbours, as bad points do."""
+    true = Transfer(dc_gain=1.2e4, poles_hz=(-1.1e3, -40e6, *pair(40e6, 15)), zeros_hz=(-131e6, *pair(43e6, 15)))
+    freq_hz = np.geomspace(10, 300e6, 301)
+    gain = simulate_bench(true.evaluate(freq_hz), NOISE, np.random.default_rng(1))
+    glitch = 40
+    gain[glitch] *= 5
+    fit = fit_sweep(Sweep(freq_hz=freq_hz, gain=gain))
+    assert [point.f_hz for point in fit.sweep.left_out] == [freq_hz[glitch]]
+    check_roots(fit, true)
