@@ -11,7 +11,7 @@ from dataclasses import replace
 
 import numpy as np
 
-from fitamp.comparison.result import Advice, Nulling, Row, Verdict
+from fitamp.comparison.result import Advice, Nulling, Route, Row, Verdict
 from fitamp.comparison.rows import QUANTITIES, designed_values, deviation_from, is_inside, limits_on
 from fitamp.comparison.verdict import decided_sentence, open_sentence, regions_of, window_of
 from fitamp.elements import ElementEstimate, RestoringResistor
@@ -51,7 +51,9 @@ def judge_elements(estimate: ElementEstimate) -> Verdict:
     else:
         where = open_sentence(zero_time, touched, window=window, design=design)
         reason = f"{where}; sweeps with an added resistance narrow it, and so does a measured delay"
-    return Verdict(nulling=nulling, reason=reason, zero_time_s=zero_time, gm2_rz=product, window=window)
+    return Verdict(
+        nulling=nulling, reason=reason, route=Route.CIRCUIT, zero_time_s=zero_time, gm2_rz=product, window=window
+    )
 
 
 def element_rows(estimate: ElementEstimate) -> tuple[Row, ...]:

@@ -7,7 +7,8 @@ from collections.abc import Iterator
 from dataclasses import replace
 
 from fitamp.comparison.expectation import expectation
-from fitamp.comparison.result import Row, Verdict
+from fitamp.comparison.result import Route, Row, Verdict
+from fitamp.comparison.verdict import nulling_product
 from fitamp.design import Design
 from fitamp.errors import FitError
 from fitamp.fitting import DelayPrior, FitWarning, LoopFit, WarningCode, fit_sweep
@@ -21,16 +22,34 @@ FAR_OFF = 5.0
 CLEARLY = 3.0
 
 
-def comparison_notes(fit: LoopFit, design: Design, rows: tuple[Row, ...], verdict: Verdict) -> tuple[FitWarning, ...]:
-    """Notes on this comparison, in the order of their weight."""
+def comparison_notes(
+    fit: LoopFit, design: Design, rows: tuple[Row, ...], verdict: Verdict, *, doubt: str | None = None
+) -> tuple[FitWarning, ...]:
+    """Notes on this comparison, in the order of their weight.
+
+    doubt : why the verdict does not rest on the circuit; None where it does, or there is none
+    """
     return tuple(
         FitWarning(code=code, message=message)
-        for notes in (_on_delay(fit, design), _on_distance(rows), _on_product(verdict))
+        for notes in (
+            _on_delay(fit, design, verdict),
+            _on_distance(rows),
+            _on_product(verdict, design),
+            _on_route(doubt),
+        )
         for code, message in notes
     )
 
 
-def _on_delay(fit: LoopFit, design: Design) -> Iterator[tuple[WarningCode, str]]:
+def _on_route(doubt: str | None) -> Iterator[tuple[WarningCode, str]]:
+    if doubt is not None:
+        yield (
+            WarningCode.CIRCUIT_SET_ASIDE,
+            f"zero time and verdict rest on {Route.BEHAVIOUR.phrase}, not on the circuit's elements: {doubt}",
+        )
+
+
+def _on_delay(fit: LoopFit, design: Design, verdict: Verdict) -> Iterator[tuple[WarningCode, str]]:
     bench, delay = design.bench, fit.parameters.delay_s
     if bench.delay_s is None:
         yield (
@@ -39,7 +58,7 @@ def _on_delay(fit: LoopFit, design: Design) -> Iterator[tuple[WarningCode, str]]
             "it passes for a zero farther right",
         )
         return
-    if fit.adequacy.adequate:
+    if fit.adequacy.adequate or verdict.route is Route.CIRCUIT:
         return
     wanted = _with_free_delay(fit, design)
     if wanted is None or wanted.adequacy.reduced_chi_square > 0.5 * fit.adequacy.reduced_chi_square:
@@ -75,11 +94,15 @@ def _on_distance(rows: tuple[Row, ...]) -> Iterator[tuple[WarningCode, str]]:
             )
 
 
-def _on_product(verdict: Verdict) -> Iterator[tuple[WarningCode, str]]:
-    product = verdict.gm2_rz
-    if product.value is not None and product.stderr is not None and product.value < -CLEARLY * product.stderr:
-        yield (
-            WarningCode.PRODUCT_NEGATIVE,
-            f"gm2·Rz comes out at {si(product.value, '', digits=3)}, which no resistor gives: gm2 or Cc is not as "
-            "designed, and what is derived with them (change of Rz, load) cannot be trusted",
-        )
+def _on_product(verdict: Verdict, design: Design) -> Iterator[tuple[WarningCode, str]]:
+    product = nulling_product(verdict.zero_time_s, design)
+    if product.value is None or product.stderr is None or product.value >= -CLEARLY * product.stderr:
+        return
+    found = f"with gm2 and Cc as designed, gm2·Rz would be {si(product.value, '', digits=3)}, which no resistor gives"
+    if verdict.route is Route.CIRCUIT:
+        yield WarningCode.PRODUCT_NEGATIVE, f"{found}: gm2 or Cc is not as designed"
+        return
+    yield (
+        WarningCode.PRODUCT_NEGATIVE,
+        f"{found}: gm2 or Cc is not as designed, and what is derived with them (change of Rz, load) cannot be trusted",
+    )

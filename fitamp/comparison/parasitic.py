@@ -23,7 +23,7 @@ from fitamp.estimate import NOT_KNOWN, Estimate, Known
 from fitamp.fitting import LoopFit
 from fitamp.units import si, si_with_error
 
-__all__ = ["parasitics"]
+__all__ = ["SEEN_BY_DATA", "load_sentence", "parasitics"]
 
 ASSUMED_KNOWN = ("gm2", "Cc", "C1", "R1", "R2")
 # The third pole counts as seen by the sweep when the data shrink its prior's variance to less than this.
@@ -59,7 +59,10 @@ def parasitics(fit: LoopFit, design: Design) -> Parasitic | None:
         both = _propagate(_load_and_first_stage, fit, design, ("gm2", "Cc", "R1", "R2"))
         first_stage = _shifted(both[1], design.elements.C1, 0.0)
     return Parasitic(
-        load_total_f=load, load_f=extra, first_stage_f=first_stage, sentence=_sentence(load, extra, first_stage, design)
+        load_total_f=load,
+        load_f=extra,
+        first_stage_f=first_stage,
+        sentence=load_sentence(load, extra, first_stage, design),
     )
 
 
@@ -169,7 +172,8 @@ def _third_pole_seen(fit: LoopFit) -> bool:
     return far_pole.stderr**2 < SEEN_BY_DATA * model.far_pole.sd_s**2
 
 
-def _sentence(load: Estimate, extra: Estimate, first_stage: Estimate, design: Design) -> str:
+def load_sentence(load: Estimate, extra: Estimate, first_stage: Estimate, design: Design) -> str:
+    """Total load, what of it nobody designed, and the same of the first stage, in words."""
     elements = design.elements
     assert elements is not None
     if load.value is None or load.stderr is None or extra.value is None or extra.stderr is None:

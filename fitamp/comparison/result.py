@@ -7,10 +7,11 @@ from dataclasses import dataclass
 from enum import StrEnum
 
 from fitamp.design import Design
+from fitamp.elements import ElementEstimate
 from fitamp.estimate import Estimate
 from fitamp.fitting import FitWarning, LoopFit
 
-__all__ = ["Advice", "Comparison", "Nulling", "Parasitic", "Row", "Verdict", "Window"]
+__all__ = ["Advice", "Comparison", "Nulling", "Parasitic", "Route", "Row", "Verdict", "Window"]
 
 
 class Nulling(StrEnum):
@@ -22,6 +23,20 @@ class Nulling(StrEnum):
     WRONG_SIDE = "wrong-side"
     AT_INFINITY = "at-infinity"
     UNDECIDED = "undecided"
+
+
+class Route(StrEnum):
+    """From what the zero time comes that a verdict rests on."""
+
+    CIRCUIT = "circuit"
+    BEHAVIOUR = "behaviour"
+
+    @property
+    def phrase(self) -> str:
+        """The same in words."""
+        if self is Route.CIRCUIT:
+            return "the elements of the exact circuit, fitted within the design's spreads"
+        return "two poles and a zero, with the third pole as the design expects it"
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -57,10 +72,14 @@ class Window:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Verdict:
-    """Verdict on the nulling resistor, with its reason in one sentence and the quantity that decides it."""
+    """Verdict on the nulling resistor, with its reason in one sentence and the quantity that decides it.
+
+    route : from what the zero time and gm2·Rz come
+    """
 
     nulling: Nulling
     reason: str
+    route: Route
     zero_time_s: Estimate
     gm2_rz: Estimate
     window: Window
@@ -92,17 +111,26 @@ class Parasitic:
 class Comparison:
     """A sweep fitted and held against its design.
 
+    elements : those behind the sweep, with the design's spreads, whichever route decided; None for a design without
+        elements, or where no circuit could be fitted. The verdict's zero time is from the same circuit with its load
+        free by a factor of two
     notes : contradictions between sweep, design and bench, beside the fit's own warnings
     """
 
     design: Design
     fit: LoopFit
     designed_fit: LoopFit | None
+    elements: ElementEstimate | None
     rows: tuple[Row, ...]
     verdict: Verdict
     advice: Advice
     parasitic: Parasitic | None
     notes: tuple[FitWarning, ...]
+
+    @property
+    def is_described(self) -> bool:
+        """Whether the model that decided describes the sweep."""
+        return self.verdict.route is Route.CIRCUIT or self.fit.adequacy.adequate
 
     @property
     def broken_limits(self) -> tuple[str, ...]:
@@ -123,7 +151,11 @@ class Comparison:
         raise KeyError(quantity)
 
     def __str__(self) -> str:
-        lines = [f"verdict  {self.verdict.nulling.value}: {self.verdict.reason}", f"advice   {self.advice.sentence}"]
+        lines = [
+            f"verdict  {self.verdict.nulling.value}: {self.verdict.reason}",
+            f"route    {self.verdict.route.value}: {self.verdict.route.phrase}",
+            f"advice   {self.advice.sentence}",
+        ]
         if self.parasitic is not None:
             lines.append(f"load     {self.parasitic.sentence}")
         return "\n".join(lines)

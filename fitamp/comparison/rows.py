@@ -20,6 +20,7 @@ __all__ = [
     "designed_poles_hz",
     "designed_values",
     "deviation_from",
+    "is_far_beyond",
     "is_inside",
     "limits_on",
     "pole2_may_be_hidden",
@@ -53,7 +54,12 @@ def designed_poles_hz(design: Design) -> tuple[float, ...]:
 def pole2_may_be_hidden(fit: LoopFit, design: Design) -> bool:
     """Whether what was found as pole 2 may be the third pole, with the zero on the true pole 2."""
     pole2_hz = fit.parameters.pole2_hz.value
-    return pole2_hz is not None and pole2_hz > HIDDEN_POLE_RATIO * designed_poles_hz(design)[1]
+    return pole2_hz is not None and is_far_beyond(pole2_hz, design)
+
+
+def is_far_beyond(pole2_hz: float, design: Design) -> bool:
+    """Whether a second pole lies farther out than elements can move it."""
+    return pole2_hz > HIDDEN_POLE_RATIO * designed_poles_hz(design)[1]
 
 
 def designed_values(design: Design) -> dict[str, float | None]:
@@ -80,14 +86,29 @@ def measured_values(fit: LoopFit) -> dict[str, Estimate]:
 
 
 def comparison_rows(
-    fit: LoopFit, designed_fit: LoopFit | None, design: Design, window: Window, *, trusted: bool = True
+    fit: LoopFit,
+    designed_fit: LoopFit | None,
+    design: Design,
+    window: Window,
+    *,
+    trusted: bool = True,
+    zero_time: Estimate | None = None,
 ) -> tuple[Row, ...]:
-    """One row a quantity, in a fixed order; of a fit that is not trusted none is said to be inside or outside."""
+    """One row a quantity, in a fixed order; of a fit that is not trusted none is said to be inside or outside.
+
+    zero_time : by the circuit, where that decides. The circuit is exact, and measures the designed zero as designed
+    """
     exact, measured = designed_values(design), measured_values(fit)
-    as_measured = measured_values(designed_fit) if designed_fit else {}
+    as_measured = (
+        {} if designed_fit is None else {name: one.value for name, one in measured_values(designed_fit).items()}
+    )
+    sure = {name for name in QUANTITIES if trusted}
+    if zero_time is not None:
+        measured["zero_time_s"], as_measured["zero_time_s"] = zero_time, design.zero_time_s
+        sure.add("zero_time_s")
     rows = []
     for quantity in QUANTITIES:
-        reference = as_measured[quantity].value if quantity in as_measured else None
+        reference = as_measured.get(quantity)
         low, high = limits_on(quantity, design, window)
         estimate = measured[quantity]
         deviation, sigma = deviation_from(quantity, estimate, reference)
@@ -103,7 +124,7 @@ def comparison_rows(
                 sigma=sigma,
                 low=low,
                 high=high,
-                inside=_is_inside(fit, quantity, estimate, low, high) if trusted else None,
+                inside=_is_inside(fit, quantity, estimate, low, high) if quantity in sure else None,
             )
         )
     return tuple(rows)

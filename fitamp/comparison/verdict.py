@@ -11,9 +11,9 @@ from dataclasses import replace
 
 import numpy as np
 
-from fitamp.comparison.mirror import mirror_moved
-from fitamp.comparison.result import Advice, Nulling, Row, Verdict, Window
-from fitamp.comparison.rows import designed_poles_hz, pole2_may_be_hidden
+from fitamp.comparison.result import Advice, Nulling, Route, Row, Verdict, Window
+from fitamp.comparison.rows import pole2_may_be_hidden
+from fitamp.comparison.settling import hidden_pole, what_settles
 from fitamp.design import Design, HalfPlane
 from fitamp.estimate import NOT_KNOWN, Estimate, Known
 from fitamp.fitting import LoopFit
@@ -21,13 +21,17 @@ from fitamp.fitting.result import LABELS, text_of
 from fitamp.units import si, si_with_error
 
 __all__ = [
+    "advice_of_change",
     "advise",
     "decided_sentence",
     "describes",
     "judge_nulling",
     "nulling_product",
     "open_sentence",
+    "place_among",
+    "regions_of",
     "window_of",
+    "with_broken_limits",
 ]
 
 # Window of a design without limits: 95 % of parts built with the design's own spreads.
@@ -97,31 +101,41 @@ def regions_of(design: Design, window: Window) -> Regions:
     return tuple(tile for tile in tiles if tile[1] < tile[2])
 
 
+def place_among(zero_time: Estimate, design: Design, window: Window) -> tuple[Nulling, tuple[Nulling, ...]]:
+    """The region that all of an interval is in, undecided where there is none; and all that it reaches into."""
+    tiles = regions_of(design, window)
+    whole = [verdict for verdict, start, to in tiles if zero_time.is_within(start, to)]
+    touched = tuple(verdict for verdict, start, to in tiles if zero_time.touches(start, to))
+    return (whole[0] if whole else Nulling.UNDECIDED), touched
+
+
 def judge_nulling(fit: LoopFit, design: Design) -> Verdict:
     """Verdict of a fit made with the design's priors."""
     window = window_of(design)
     zero_time = fit.parameters.zero_time_s
-    tiles = regions_of(design, window)
     if not describes(fit):
-        return Verdict(
-            nulling=Nulling.UNDECIDED,
-            reason="two poles, a zero, the designed third pole and the bench's delay do not describe this sweep: "
-            f"{fit.adequacy.sentence}; no verdict can be leaned on before that is explained",
-            zero_time_s=zero_time,
-            gm2_rz=nulling_product(zero_time, design),
-            window=window,
+        nulling = Nulling.UNDECIDED
+        reason = (
+            "two poles, a zero, the designed third pole and the bench's delay do not describe this sweep: "
+            f"{fit.adequacy.sentence}; no verdict can be leaned on before that is explained"
         )
-    if zero_time.known is Known.UNDETERMINED:
-        nulling, reason = Nulling.UNDECIDED, f"the sweep does not determine the zero; {_what_settles(fit, design)}"
+    elif zero_time.known is Known.UNDETERMINED:
+        nulling, reason = Nulling.UNDECIDED, f"the sweep does not determine the zero; {what_settles(fit, design)}"
     elif pole2_may_be_hidden(fit, design):
-        nulling, reason, zero_time = Nulling.UNDECIDED, _hidden_pole(fit, design), NOT_KNOWN
+        nulling, reason, zero_time = Nulling.UNDECIDED, hidden_pole(fit, design), NOT_KNOWN
     else:
-        whole = [verdict for verdict, start, to in tiles if zero_time.is_within(start, to)]
-        touched = [verdict for verdict, start, to in tiles if zero_time.touches(start, to)]
-        nulling = whole[0] if whole else Nulling.UNDECIDED
-        reason = _reason(nulling, zero_time, window, touched=touched, design=design, fit=fit)
+        nulling, touched = place_among(zero_time, design, window)
+        if nulling is Nulling.UNDECIDED:
+            reason = f"{open_sentence(zero_time, touched, window=window, design=design)}; {what_settles(fit, design)}"
+        else:
+            reason = decided_sentence(nulling, zero_time, window=window, design=design)
     return Verdict(
-        nulling=nulling, reason=reason, zero_time_s=zero_time, gm2_rz=nulling_product(zero_time, design), window=window
+        nulling=nulling,
+        reason=reason,
+        route=Route.BEHAVIOUR,
+        zero_time_s=zero_time,
+        gm2_rz=nulling_product(zero_time, design),
+        window=window,
     )
 
 
@@ -137,14 +151,6 @@ def describes(fit: LoopFit) -> bool:
     above = sweep.freq_hz > DECIDING_BAND * (fit.margins.crossover_hz.value or 0.0)
     miss = np.abs(sweep.gain / fitted - 1)[above]
     return bool(len(miss) and np.sqrt(np.mean(miss**2)) < NEAR_ENOUGH)
-
-
-def _reason(
-    nulling: Nulling, zero_time: Estimate, window: Window, *, touched: list[Nulling], design: Design, fit: LoopFit
-) -> str:
-    if nulling is Nulling.UNDECIDED:
-        return f"{open_sentence(zero_time, touched, window=window, design=design)}; {_what_settles(fit, design)}"
-    return decided_sentence(nulling, zero_time, window=window, design=design)
 
 
 def open_sentence(zero_time: Estimate, touched: Sequence[Nulling], *, window: Window, design: Design) -> str:
@@ -209,45 +215,6 @@ def nulling_product(zero_time: Estimate, design: Design) -> Estimate:
     )
 
 
-def _hidden_pole(fit: LoopFit, design: Design) -> str:
-    found, designed = si(fit.parameters.pole2_hz.value, "Hz"), si(designed_poles_hz(design)[1], "Hz")
-    return (
-        f"pole 2 shows at {found}, designed was {designed}: it moved that far, or the zero lies on it and hides it, "
-        "and what shows is the third pole; repeat the sweep with a known extra load, which parts pole 2 from the zero"
-    )
-
-
-def _what_settles(fit: LoopFit, design: Design) -> str:
-    """The measurement that would shrink the larger part of the zero time's variance."""
-    if fit.parameters.pole2_hz.known is not Known.MEASURED:
-        wanted = si(3 * designed_poles_hz(design)[1], "Hz", digits=2)
-        return f"the band does not determine pole 2: sweep up to a few times pole 2, about {wanted}"
-    model, zero_time = fit.solution.model, fit.parameters.zero_time_s
-    without_mirror = float(fit.covariance[3, 3]) * model.time_s**2
-    if mirror_moved(design) and zero_time.stderr is not None and zero_time.stderr**2 > 2 * without_mirror:
-        return "the mirror pole decides: state a tighter spread for mirror_pole, or end the sweep farther below it"
-    names = model.names
-    information = np.linalg.pinv(fit.covariance)
-    total = float(fit.covariance[3, 3])
-
-    def variance_without(fixed: set[str]) -> float:
-        kept = [index for index, name in enumerate(names) if name not in fixed]
-        return float(np.linalg.pinv(information[np.ix_(kept, kept)])[kept.index(3), kept.index(3)])
-
-    delay_share = 1 - variance_without({"delay"}) / total if "delay" in names else 0.0
-    far_pole_share = 1 - variance_without({"far_pole"}) / total if "far_pole" in names else 0.0
-    if max(delay_share, far_pole_share) < 0.5:
-        return (
-            "the noise decides: average more, or use a denser sweep with the top of the band a few times above pole 2"
-        )
-    if delay_share >= far_pole_share:
-        return "the path delay decides: measure it with a through sweep and state it under [bench]"
-    return (
-        "the third pole decides: state tighter spreads for C1, CL, Cc and gm2 (or pole3), or sweep up to where "
-        "the third pole shows"
-    )
-
-
 def advise(verdict: Verdict, design: Design, designed_zero_s: float, *, fit: LoopFit, rows: tuple[Row, ...]) -> Advice:
     """Change of Rz that would put the zero at the designed place, (τz_designed − τz)/Cc; other broken limits."""
     if not describes(fit):
@@ -256,8 +223,12 @@ def advise(verdict: Verdict, design: Design, designed_zero_s: float, *, fit: Loo
             sentence="change nothing yet; the residuals show where the sweep is not what the model says: look there "
             "for a delay or pole that is not stated, a resonance, or bad points",
         )
+    return with_broken_limits(_advise_on_resistor(verdict, design, designed_zero_s), verdict, rows)
+
+
+def with_broken_limits(advice: Advice, verdict: Verdict, rows: tuple[Row, ...]) -> Advice:
+    """Advice on Rz that also names what else is outside its limits."""
     broken = [LABELS[row.quantity] for row in rows if row.inside is False and row.quantity != "zero_time_s"]
-    advice = _advise_on_resistor(verdict, design, designed_zero_s)
     if not broken:
         return advice
     outside = f"{' and '.join(broken)} {'is' if len(broken) == 1 else 'are'} outside the limits"
@@ -289,9 +260,15 @@ def _advise_on_resistor(verdict: Verdict, design: Design, designed_zero_s: float
         None if high is None else change - math.hypot(change - change_to(high), own_spread),
         None if low is None else change + math.hypot(change_to(low) - change, own_spread),
     )
+    return advice_of_change(verdict, Estimate(value=change, stderr=stderr, ci95=ends))
+
+
+def advice_of_change(verdict: Verdict, change: Estimate) -> Advice:
+    """Advice to change Rz by so much."""
+    if change.value is None or change.stderr is None:
+        return Advice(rz_change_ohm=NOT_KNOWN, sentence=f"no change of Rz can be advised; {verdict.reason}")
     return Advice(
-        rz_change_ohm=Estimate(value=change, stderr=stderr, ci95=ends),
-        sentence=_advice_sentence(verdict.nulling, change, stderr, ends),
+        rz_change_ohm=change, sentence=_advice_sentence(verdict.nulling, change.value, change.stderr, change.ci95)
     )
 
 

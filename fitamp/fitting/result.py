@@ -63,6 +63,7 @@ class WarningCode(StrEnum):
     DELAY_CONTRADICTED = "delay-contradicted"
     FAR_FROM_DESIGN = "far-from-design"
     PRODUCT_NEGATIVE = "product-negative"
+    CIRCUIT_SET_ASIDE = "circuit-set-aside"
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

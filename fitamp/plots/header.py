@@ -71,7 +71,8 @@ class _Text:
 def figure_with_head(fit: LoopFit, comparison: Comparison | None, *, body_in: float) -> Figure:
     """A figure whose lower `body_in` inches are free, under a head as tall as its words need."""
     file = inert(fit.sweep.origin.file)
-    warnings = [] if fit.adequacy.adequate else ["MODEL DOES NOT FIT"]
+    is_described = fit.adequacy.adequate if comparison is None else comparison.is_described
+    warnings = [] if is_described else ["MODEL DOES NOT FIT"]
     if comparison is not None:
         return figure_with_verdict(
             comparison.verdict.nulling,

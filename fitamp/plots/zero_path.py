@@ -12,7 +12,7 @@ from matplotlib.ticker import FuncFormatter
 
 from fitamp.amplifier import Elements
 from fitamp.comparison import Comparison, Nulling
-from fitamp.comparison.verdict import WINDOW_QUANTILE, regions_of
+from fitamp.comparison.verdict import WINDOW_QUANTILE, nulling_product, regions_of
 from fitamp.plots.free_spot import Clutter, words_at
 from fitamp.plots.header import VERDICT_COLOURS, figure_with_head
 from fitamp.plots.style import COLOURS, SMALL_PT, drawing_style, place_axes
@@ -78,7 +78,8 @@ def _zero_time_s(elements: Elements, resistor_ohm: float) -> float:
 
 
 def _measured(comparison: Comparison, elements: Elements) -> _Place | None:
-    zero_time, product = comparison.verdict.zero_time_s, comparison.verdict.gm2_rz
+    zero_time = comparison.verdict.zero_time_s
+    product = nulling_product(zero_time, comparison.design)
     low, high = zero_time.ci95
     if zero_time.value is None or low is None or high is None:
         return None

@@ -103,6 +103,7 @@ def comparison_as_dict(comparison: Comparison) -> dict[str, Any]:
     record["verdict"] = {
         "nulling": verdict.nulling.value,
         "reason": verdict.reason,
+        "route": verdict.route.value,
         "zero_time_s": estimate_record(verdict.zero_time_s),
         "gm2_rz": estimate_record(verdict.gm2_rz),
         "window_s": [finite(verdict.window.low_s), finite(verdict.window.high_s)],

@@ -9,7 +9,7 @@ import math
 from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
-from fitamp.comparison import Comparison, Row
+from fitamp.comparison import Comparison, Route, Row
 from fitamp.estimate import Estimate
 from fitamp.fitting import FitWarning, LoopFit
 from fitamp.fitting.result import LABELS, text_of, unit_of
@@ -69,9 +69,11 @@ def comparison_text(comparison: Comparison) -> str:
     if gm2_rz.value is not None:
         say(
             console,
-            f"gm2·Rz: {si_with_error(gm2_rz.value, gm2_rz.stderr, '')} "
-            "(1 puts the zero at infinity; with gm2 and Cc as designed)",
+            f"gm2·Rz: {si_with_error(gm2_rz.value, gm2_rz.stderr, '')} (1 puts the zero at infinity; with gm2 and Cc "
+            f"{'as sweep and design tell them' if verdict.route is Route.CIRCUIT else 'as designed'})",
         )
+    if comparison.design.elements is not None:
+        say(console, f"route: {verdict.route.value}; zero time and verdict rest on {verdict.route.phrase}")
     title = f"{printable(comparison.fit.sweep.origin.file)} against {printable(comparison.design.file)}"
     headings = ("quantity", "designed", "seen as\nmeasured", "measured ± 1 σ", "deviation", "in σ", "limits", "within")
     print_table(console, title, headings, _comparison_rows(comparison.rows), numbers=True)

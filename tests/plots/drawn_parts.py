@@ -13,7 +13,7 @@ from matplotlib.text import Text
 
 from fitamp.amplifier import Elements
 from fitamp.arrays import ComplexArray, FloatArray
-from fitamp.comparison import Comparison, Nulling, compare
+from fitamp.comparison import Comparison, Nulling, Route, compare
 from fitamp.design import Design, HalfPlane, Limit, Roots
 from fitamp.fitting import FitWarning, LoopFit, WarningCode, fit_sweep
 from fitamp.noise import simulate_bench
@@ -64,7 +64,8 @@ def comparison_in_trouble() -> Comparison:
         for name in ("one", "two", "three")
     )
     fit = replace(found.fit, adequacy=replace(found.fit.adequacy, level=50.0, structure=50.0), warnings=warnings)
-    return replace(found, fit=fit, verdict=replace(found.verdict, nulling=Nulling.UNDECIDED), notes=())
+    verdict = replace(found.verdict, nulling=Nulling.UNDECIDED, route=Route.BEHAVIOUR)
+    return replace(found, fit=fit, verdict=verdict, notes=())
 
 
 def covered(text: Text, points: FloatArray) -> int:

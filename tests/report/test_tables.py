@@ -88,7 +88,7 @@ def test_printable_leaves_plain_text_alone() -> None:
 
 def test_the_verdict_comes_first_then_what_to_do(compared_examples: dict[str, Comparison]) -> None:
     lines = comparison_text(compared_examples["b"]).splitlines()
-    assert lines[0].startswith("WRONG-SIDE: zero time −1.05")
+    assert lines[0].startswith("WRONG-SIDE: by the circuit, zero time −1.05")
     assert any(line.startswith("what to do: raise Rz by 1.2") for line in lines[1:4])
 
 
