@@ -42,8 +42,8 @@ MOST_FACTORS = 3
 MOST_TRIALS = 2
 # So many points that gain most by a factor do not count for it.
 WORST = 2
-# Mean of five exponential variables that chance exceeds somewhere among 281 points once in 50 sweeps.
-STANDS_OUT = 3.6
+# Residuals over so many neighbours stand out where chance does so in one of 50 sweeps.
+NEIGHBOURS, STANDS_OUT = 5, 0.02
 # Beyond what the criterion asks for: odds of e^5 and better.
 CLEARLY_BETTER = 10.0
 # Orders of the pair fits from which starts are taken: real poles and complex pole pairs.
@@ -64,10 +64,14 @@ Start = tuple[Factor, FloatArray]
 
 def needs_more(solution: Solution) -> bool:
     """Whether the residuals are inadequate, or stand out over a few neighbours, as of a resonance taken for noise."""
-    energy = np.convolve(np.abs(solution.residuals) ** 2 / 2, np.full(5, 0.2), mode="valid")
+    from scipy.special import gammainccinv
+
     adequacy = judge(solution)
-    unlike_noise = not adequacy.adequate and not adequacy.noise_too_large
-    return unlike_noise or bool(energy.max(initial=0.0) > STANDS_OUT)
+    if not adequacy.adequate and not adequacy.noise_too_large:
+        return True
+    # Half the squared residuals of NEIGHBOURS points add up to a Gamma variable of that order.
+    energy = np.convolve(np.abs(solution.residuals) ** 2 / 2, np.ones(NEIGHBOURS), mode="valid")
+    return bool(energy.max(initial=0.0) > gammainccinv(NEIGHBOURS, STANDS_OUT / solution.points))
 
 
 def with_factors(search: Search, solution: Solution, any_lag: Solution | None) -> tuple[Solution, Solution | None]:
