@@ -14,9 +14,11 @@ import numpy as np
 
 from fitamp.arrays import FloatArray
 from fitamp.estimate import NOT_KNOWN, Estimate, Known
+from fitamp.fitting.equation import LoopEquation
 from fitamp.fitting.leastsq import MAX_STEPS
 from fitamp.fitting.two_pole import Solution, solve
 from fitamp.sweep import Sweep
+from fitamp.tall import sum_of_squares
 
 __all__ = [
     "RISE_95",
@@ -42,8 +44,17 @@ REACH = 14.0
 # its neighbour and takes long only where it slides down a valley that leads nowhere.
 REFIT_TOLERANCE = 1e-7
 REFIT_STEPS = 200
-# First step of a profile, in logarithms or scaled units, at the least.
-LEAST_STEP = 1e-12
+# First step of a profile, in logarithms or scaled units, at the least and at the most.
+LEAST_STEP, FIRST_STEP = 1e-12, 1.0
+# Factor from one step of a profile to the next while chi-square has not risen enough, and where it ends.
+LEAST_GROWTH, LARGEST_GROWTH, FARTHEST = 1.5, 3.0, 1.5 * REACH
+# An interval's end need not be known better than this, relatively.
+CLOSE = 2e-3
+# A rise up to here times the root of what is asked for is still that of the same parabola.
+ALIKE = 3.0
+# Below this share of the rise asked for, a refit has nothing to find out any more.
+WELL_INSIDE = 0.9
+MOST_REFITS = 60
 
 
 def gradient(quantities: Quantities, values: FloatArray) -> FloatArray:
@@ -149,15 +160,13 @@ def hull(one: Estimate, other: Estimate) -> Estimate:
 
 def is_excluded(solution: Solution, sweep: Sweep, index: int, value: float) -> bool:
     """Whether the 95 % interval of a parameter ends before `value`, all others being refitted."""
-    return _refit(solution, sweep, (index, value), solution.values, RISE_95)[0]
+    held = _refit(solution, sweep, (index, value), solution.values, enough=RISE_95)
+    return held.optimum.converged and held.optimum.chi_square >= solution.optimum.chi_square + RISE_95
 
 
-def _refit(
-    solution: Solution, sweep: Sweep, hold: tuple[int, float], start: FloatArray, rise: float
-) -> tuple[bool, FloatArray]:
-    """Whether the held value is excluded, and the rest fitted to it; what will not converge excludes nothing."""
-    enough = solution.optimum.chi_square + rise
-    values = start
+def _refit(solution: Solution, sweep: Sweep, hold: tuple[int, float], start: FloatArray, *, enough: float) -> Solution:
+    """One parameter held, the rest fitted until chi-square has converged, or is less than `enough` above the best."""
+    held, values = solution, start
     for steps in (REFIT_STEPS, MAX_STEPS):
         held = solve(
             solution.model,
@@ -167,40 +176,80 @@ def _refit(
             hold=hold,
             tolerance=REFIT_TOLERANCE,
             max_steps=steps,
-            enough=enough,
+            enough=solution.optimum.chi_square + enough,
         )
         values = held.values
-        if held.optimum.chi_square < enough:
-            return False, values
-        if held.optimum.converged:
-            return True, values
-    return False, values
+        if held.optimum.converged or held.optimum.chi_square < solution.optimum.chi_square + enough:
+            break
+    return held
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class _Held:
+    """A refit with the parameter so far from its best value.
+
+    excess : root of the rise of chi-square less that of the rise asked for, which for a parabola grows in proportion
+        to `offset`; not a number where the refit did not converge, and so excludes nothing
+    """
+
+    offset: float
+    values: FloatArray
+    excess: float
 
 
 def _edge(solution: Solution, sweep: Sweep, index: int, side: int, rise: float) -> FloatArray | None:
-    centre = float(solution.values[index])
-    stderr = float(np.sqrt(solution.covariance[index, index]))
-    start = solution.values
-
-    def refit(offset: float) -> tuple[bool, FloatArray]:
-        return _refit(solution, sweep, (index, centre + side * offset), start, rise)
-
-    inner, step = 0.0, min(max(1.5 * stderr, LEAST_STEP), 1.0)
-    outer = step
-    while True:
-        excluded, values = refit(outer)
-        if excluded:
-            break
-        if outer > REACH:
-            return None
-        inner, start, step = outer, values, 2 * step
-        outer += step
-    # Bisection to 2 % of the offset: an interval's end needs no more.
-    while outer - inner > 0.02 * outer:
-        middle = 0.5 * (inner + outer)
-        excluded, middle_values = refit(middle)
-        if excluded:
-            outer, values = middle, middle_values
+    """Parameters where chi-square has risen by `rise`, by the rule of false position; None on an open side."""
+    asked = np.sqrt(rise)
+    inner, outer = _Held(offset=0.0, values=solution.values, excess=-asked), None
+    offset = float(np.clip(asked * np.sqrt(solution.covariance[index, index]), LEAST_STEP, FIRST_STEP))
+    for count in range(MOST_REFITS):
+        hold = (index, float(solution.values[index]) + side * offset)
+        far = None if outer is None or outer.excess > ALIKE * asked else outer
+        start = _predicted(solution, sweep, hold, inner, far)
+        # Well inside, nobody needs to know how far.
+        end = _refit(solution, sweep, hold, start, enough=WELL_INSIDE * rise)
+        risen = max(end.optimum.chi_square - solution.optimum.chi_square, 0.0)
+        known = end.optimum.converged or risen < WELL_INSIDE * rise
+        held = _Held(offset=offset, values=end.values, excess=float(np.sqrt(risen) - asked) if known else np.nan)
+        if abs(held.excess) <= CLOSE * asked:
+            return held.values
+        if held.excess > 0:
+            outer = held
         else:
-            inner, start = middle, middle_values
-    return values
+            inner = held
+        if outer is None:
+            if offset > REACH:
+                return None
+            growth = 1.05 * asked / max(held.excess + asked, 0.1 * asked) if known else LARGEST_GROWTH
+            offset = min(offset * float(np.clip(growth, LEAST_GROWTH, LARGEST_GROWTH)), FARTHEST)
+        elif outer.offset - inner.offset <= CLOSE * outer.offset:
+            break
+        else:
+            share = -inner.excess / (outer.excess - inner.excess)
+            # Where the curve is none of a parabola, halving is faster.
+            parabolic = np.isfinite(share) and outer.excess < ALIKE * asked and count % 4 < 3
+            share = float(np.clip(share, 0.05, 0.95)) if parabolic else 0.5
+            offset = inner.offset + share * (outer.offset - inner.offset)
+    return None if outer is None else outer.values
+
+
+def _predicted(
+    solution: Solution, sweep: Sweep, hold: tuple[int, float], inner: _Held, outer: _Held | None
+) -> FloatArray:
+    """Where the rest will go when a parameter is held: on the line through what is known."""
+    index, value = hold
+    best, behind = solution.values, inner.values
+    if outer is not None:
+        along = (outer.values - behind) / (outer.values[index] - behind[index])
+    elif inner.offset:
+        along = (behind - best) / (behind[index] - best[index])
+    else:
+        along = solution.covariance[index] / solution.covariance[index, index]
+    starts = [behind + slope * (value - behind[index]) for slope in (along, 0.0)]
+    for start in starts:
+        start[index] = value
+    # A valley that bends leads off the line.
+    equation = LoopEquation(solution.model, sweep, solution.noise)
+    with np.errstate(over="ignore", invalid="ignore", divide="ignore"):
+        squares = [sum_of_squares(equation.residuals(start)) for start in starts]
+    return np.asarray(starts[0] if squares[0] <= squares[1] else starts[1])

@@ -24,6 +24,8 @@ Jacobian = Callable[[FloatArray], FloatArray]
 # Damping relative to the scaled normal matrix: first; so small that a step is Gauss and Newton's; at the least, which
 # keeps directions without information still; and so large that no step would be seen.
 FIRST_DAMPING, NEWTON, LEAST_DAMPING, HOPELESS = 1e-2, 1e-6, 1e-13, 1e13
+# The pace is that of so many steps; so many times as many will not be waited for.
+PACE, PATIENCE = 20, 50
 # A step counts that gains this share of what was promised.
 WORTHWHILE = 1e-4
 
@@ -53,7 +55,8 @@ def descend(
 ) -> Descent:
     """Go down from `start` until a step promises or gains no more than `tolerance` of chi-square.
 
-    Or until chi-square is below `enough`, where it is left unsettled; or for `max_steps` evaluations.
+    Or until chi-square is below `enough`, where it is left unsettled, or will not come there at its present pace, which
+    settles it too; or for `max_steps` evaluations.
     """
     values = np.array(start, dtype=float)
     residuals = residual(values)
@@ -62,7 +65,7 @@ def descend(
         return Descent(values=values, matrix=matrix, settled=False)
     longest = np.zeros(len(values))
     damping, growth = FIRST_DAMPING, 2.0
-    settled = False
+    settled, taken, landmark = False, 0, chi
     for _ in range(max_steps - 1):
         longest = np.maximum(longest, np.diag(matrix))
         scale = np.sqrt(np.where(longest > 0, longest, 1.0))
@@ -85,7 +88,11 @@ def descend(
         matrix, gradient, chi = normal_equations(jacobian(values), residuals)
         if not np.isfinite(matrix).all() or chi < enough:
             break
-        if max(gained, promised) <= tolerance * chi:
+        taken += 1
+        if taken % PACE == 0:
+            landmark, pace = chi, landmark - chi
+            settled = enough > 0 and PATIENCE * pace < chi - enough
+        if settled or max(gained, promised) <= tolerance * chi:
             settled = True
             break
         damping = max(damping * max(1 / 10, 1 - (2 * gained / promised - 1) ** 3), LEAST_DAMPING)

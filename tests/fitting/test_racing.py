@@ -110,3 +110,32 @@ def test_too_few_steps_are_not_the_end() -> None:
         max_steps=5,
     )
     assert not end.settled
+
+
+def test_a_descent_ends_where_enough_is_reached_and_where_it_cannot_be() -> None:
+    # Two circles' worth of residual: (x² + y² − 1, 10) has the least square sum 100.
+    def residual(b: FloatArray) -> FloatArray:
+        return np.array([b[0] ** 2 + b[1] ** 2 - 1, 10.0])
+
+    def slopes(b: FloatArray) -> FloatArray:
+        return np.array([[2 * b[0], 2 * b[1]], [0.0, 0.0]])
+
+    early = descend(residual, slopes, [3.0, 4.0], tolerance=1e-9, max_steps=100, enough=150.0)
+    assert not early.settled
+    assert 100 < float(residual(early.values) @ residual(early.values)) < 150
+    whole = descend(residual, slopes, [3.0, 4.0], tolerance=1e-9, max_steps=100, enough=50.0)
+    assert whole.settled
+    assert float(whole.values @ whole.values) == pytest.approx(1.0, rel=1e-4)
+
+
+def test_a_pace_that_leads_nowhere_is_settled_only_for_who_asks_for_enough() -> None:
+    # The millesimal root falls for ever, by some hundredths a step, and from 10 000 never to 9000.
+    def residual(b: FloatArray) -> FloatArray:
+        return np.array([float(b[0]) ** -0.001, 100.0])
+
+    def slopes(b: FloatArray) -> FloatArray:
+        return np.array([[-0.001 * float(b[0]) ** -1.001], [0.0]])
+
+    for enough, settled in ((0.0, False), (9000.0, True)):
+        end = descend(residual, slopes, [1.0], tolerance=1e-300, max_steps=50, enough=enough)
+        assert end.settled == settled
