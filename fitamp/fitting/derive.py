@@ -190,7 +190,7 @@ def _extra(
 def _sorted_poles(model: TwoPole, values: FloatArray) -> tuple[complex, ...]:
     try:
         response = model.response(values)
-    except (ValueError, ZeroDivisionError):
+    except (ValueError, ArithmeticError):
         # Far out on a profile a coefficient can leave the range of floats: no response is left there.
         return ()
     return tuple(sorted(response.poles_hz, key=lambda pole: (abs(pole), pole.imag)))
