@@ -14,7 +14,7 @@ from fitamp.noise import simulate_bench
 from fitamp.sweep import Sweep
 
 
-@pytest.mark.parametrize("seed", range(4))
+@pytest.mark.parametrize("seed", [0, 3, 6])
 def test_a_zero_on_pole_2_leaves_bounds_however_far_out_they_lie(seed: int) -> None:
     # Both act by their difference alone; on the profile of one the other runs through hundreds of decades.
     on_pole2 = replace(STANDARD, zero_time_s=1 / (2 * np.pi * 58e6))
