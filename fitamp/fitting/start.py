@@ -18,8 +18,8 @@ from fitamp.sweep import Sweep
 __all__ = ["Start", "excess_delay", "more_starts", "starts", "vector_fit_roots"]
 
 
-# So many points are enough for a start. 100 a decade over a wide band.
-ENOUGH = 800
+# So many points are enough for a start; with more, the linear algebra would wake its threads, which take longer.
+ENOUGH = 300
 # A common factor of the pair changes no root; with this one scikit-rf's guard against the trivial solution is light.
 PAIR_SIZE = 10.0
 # Vector fitting moves its poles until they stand, relatively, or so often: a pole too many wanders about in the noise.
