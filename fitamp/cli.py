@@ -15,6 +15,7 @@ from typing import NoReturn
 
 from fitamp import __version__
 from fitamp.errors import FitampError, InputError, UsageError
+from fitamp.loop_options import add_loop_options
 
 __all__ = ["build_parser", "main", "run"]
 
@@ -92,6 +93,12 @@ def build_parser() -> argparse.ArgumentParser:
     )
     _plan_command(
         commands.add_parser("plan", help="the best sweeps to take, and how surely they will tell the elements")
+    )
+
+    add_loop_options(
+        commands.add_parser("loop", help="make the loop gain from raw records: receivers, injections, a two-port"),
+        name=_name,
+        count=_count,
     )
 
     template = commands.add_parser("template", help="print a design file to fill in, with every table and key")
@@ -300,13 +307,14 @@ def _one_line(text: str) -> str:
 
 
 def _action(name: str) -> Callable[[argparse.Namespace], int]:
-    from fitamp import commands, elements_command, plan_command
+    from fitamp import commands, elements_command, loop_command, plan_command
 
     actions: dict[str, Callable[[argparse.Namespace], int]] = {
         "read": commands.read,
         "fit": commands.fit,
         "compare": commands.compare,
         "elements": elements_command.elements,
+        "loop": loop_command.loop,
         "plan": plan_command.plan,
         "template": commands.template,
         "demo": commands.demo,

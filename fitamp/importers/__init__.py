@@ -21,7 +21,7 @@ from fitamp.importers.quantity import Quantity, Unit
 from fitamp.importers.source import CALLED, Source, load_source
 from fitamp.importers.text import line_of
 from fitamp.importers.touchstone import read_touchstone
-from fitamp.importers.write import write_sweep
+from fitamp.importers.write import with_own_sign, write_sweep
 from fitamp.sweep import Sign, Sweep
 
 __all__ = ["ColumnChoice", "ColumnRef", "Quantity", "Unit", "read_sweep", "read_sweeps", "write_sweep"]
@@ -82,7 +82,7 @@ def read_sweep(
     with _showing_lines(source):
         if is_touchstone:
             return settle_sign(read_touchstone(source, trace=trace), sign)
-        return settle_sign(read_csv(source, columns=choice, sweep=sweep), sign)
+        return settle_sign(with_own_sign(read_csv(source, columns=choice, sweep=sweep)), sign)
 
 
 def read_sweeps(
@@ -101,7 +101,7 @@ def read_sweeps(
     with _showing_lines(source):
         if is_touchstone:
             return (settle_sign(read_touchstone(source, trace=trace), sign),)
-        return tuple(settle_sign(one, sign) for one in read_csv_sweeps(source, columns=choice))
+        return tuple(settle_sign(with_own_sign(one), sign) for one in read_csv_sweeps(source, columns=choice))
 
 
 @contextmanager

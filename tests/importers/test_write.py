@@ -11,8 +11,9 @@ from bench_tables import FREQ_HZ, GAIN
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from fitamp.errors import UsageError
+from fitamp.errors import SweepError, UsageError
 from fitamp.importers import read_sweep, write_sweep
+from fitamp.importers.write import sweep_csv
 from fitamp.sweep import Origin, Sign, Sweep
 
 SIZES = st.floats(min_value=-1e12, max_value=1e12, allow_nan=False)
@@ -48,6 +49,30 @@ def test_file_is_plain_csv_with_the_loop_gain_in_it(tmp_path: Path) -> None:
 def test_sign_of_a_written_sweep_is_recognised_again(tmp_path: Path) -> None:
     write_sweep(Sweep(freq_hz=FREQ_HZ, gain=GAIN), tmp_path / "a.csv")
     assert read_sweep(tmp_path / "a.csv").sign is Sign.AS_READ
+
+
+def test_sign_that_was_settled_stays_so_where_the_band_does_not_show_it(tmp_path: Path) -> None:
+    inverted = Sweep(freq_hz=FREQ_HZ[-3:], gain=GAIN[-3:], sign=Sign.INVERTED)
+    write_sweep(inverted, tmp_path / "a.csv")
+    read = read_sweep(tmp_path / "a.csv")
+    assert read.sign is Sign.AS_READ
+    assert read.gain.tolist() == inverted.gain.tolist()
+    assert "the comments say that it is T" in {decision.reason for decision in read.decisions}
+    assert read_sweep(tmp_path / "a.csv", sign=Sign.INVERTED).gain.tolist() == (-inverted.gain).tolist()
+
+
+def test_sign_that_was_left_open_is_asked_for_again(tmp_path: Path) -> None:
+    write_sweep(Sweep(freq_hz=FREQ_HZ[-3:], gain=GAIN[-3:]), tmp_path / "a.csv")
+    with pytest.raises(SweepError, match="give --sign as-read"):
+        read_sweep(tmp_path / "a.csv")
+
+
+def test_comments_stay_on_their_lines_and_are_notes_again(tmp_path: Path) -> None:
+    content = sweep_csv(ONE_POINT, ["a\nb\x1b[0m", "=cmd(), 1, 2"])
+    assert content.splitlines()[3:6] == ["# a b [0m", "# =cmd(), 1, 2", "freq_hz,real,imag"]
+    path = tmp_path / "a.csv"
+    path.write_text(content, encoding="utf-8")
+    assert read_sweep(path, sign=Sign.UNKNOWN).origin.notes[3:] == ("a b [0m", "=cmd(), 1, 2")
 
 
 def test_existing_file_is_kept_unless_told_otherwise(tmp_path: Path) -> None:
