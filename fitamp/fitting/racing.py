@@ -1,6 +1,6 @@
 """A plain Levenberg–Marquardt descent, for fits whose end is compared and not reported.
 
-Normal equations with columns scaled by their largest norm so far (J. J. Moré, Lecture Notes in Mathematics 630, 1978)
+Normal equations with columns scaled by their largest norm so far (J. J. Moré in Numerical Analysis, Springer 1978)
 and the damping of H. B. Nielsen (K. Madsen, H. B. Nielsen and O. Tingleff, Methods for Non-Linear Least Squares
 Problems, 2nd ed. 2004, sec. 3.2). They square the condition of the problem and so leave seven digits or so, of which
 a race needs no more; what wins is finished by `leastsq.minimise`.
