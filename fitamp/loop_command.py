@@ -44,9 +44,9 @@ def loop(args: argparse.Namespace) -> int:
     """`fitamp loop FILE --out T.csv`, or with `--voltage` and `--current` in place of the file."""
     _refuse_mixed(args)
     outputs = [Path(name) for name in (args.out, args.json) if name and name != STDOUT]
+    _refuse_own_input(args, outputs)
     for path in outputs:
         refuse_existing(path, force=args.force)
-    _refuse_own_input(args, outputs)
     made = _made(args)
     write_text(Path(args.out), sweep_csv(made.sweep, _comments(made.sweep)), force=args.force)
     record = _record(made, args.out)
@@ -90,6 +90,8 @@ def _refuse_mixed(args: argparse.Namespace) -> None:
     if bool(args.file) == bool(args.voltage):
         have = "a file as well as --voltage and --current" if args.file else "no record"
         raise UsageError(f"{have}; name one file, or two with --voltage and --current")
+    if args.voltage and Path(args.voltage).resolve() == Path(args.current).resolve():
+        raise UsageError(f"{args.voltage}: is named for both injections; name the record of each")
     is_two_port = bool(args.file) and _is_two_port(args.file)
     if (args.load or args.source) and not is_two_port:
         raise UsageError("--load and --source are for the opened loop as a two-port (.s2p)")
@@ -109,6 +111,8 @@ def _refuse_mixed(args: argparse.Namespace) -> None:
 
 def _refuse_own_input(args: argparse.Namespace, outputs: list[Path]) -> None:
     """With --force, too: a record that is written over is lost."""
+    if args.out == STDOUT:
+        raise UsageError("--out is for a file; name one, such as T.csv")
     inputs = {Path(file).resolve() for file in (args.file, args.voltage, args.current) if file}
     seen: set[Path] = set()
     for path in outputs:

@@ -180,6 +180,11 @@ def test_record_is_never_written_over(receivers: Path, tmp_path: Path, capsys: C
     [
         ([], "no record; name one file, or two with --voltage and --current"),
         (["a.csv", "--voltage", "v.csv", "--current", "i.csv"], "a file as well as --voltage and --current"),
+        (
+            ["--voltage", "v.csv", "--current", "./v.csv"],
+            "v.csv: is named for both injections; name the record of each",
+        ),
+        (["a.csv", "--columns", RECEIVERS, "--out", "-"], "--out is for a file; name one"),
         (["--voltage", "v.csv"], "double injection needs both records; name the other one with --current"),
         (["--current", "i.csv"], "name the other one with --voltage"),
         (["a.csv"], 'a.csv: say where the error and the return receiver are, as in --columns "f=1:Hz error_mag=2:dB'),
@@ -198,7 +203,7 @@ def test_record_is_never_written_over(receivers: Path, tmp_path: Path, capsys: C
 def test_words_that_do_not_go_together_are_refused(
     words: list[str], told: str, tmp_path: Path, capsys: Captured
 ) -> None:
-    assert told in refused(capsys, 2, *words, "--out", tmp_path / "T.csv")
+    assert told in refused(capsys, 2, "--out", tmp_path / "T.csv", *words)
     assert not list(tmp_path.iterdir())
 
 

@@ -19,7 +19,9 @@ from numpy.typing import ArrayLike
 from fitamp.arrays import FloatArray
 from fitamp.conditioning.sign import settle_sign
 from fitamp.errors import SweepError, UsageError
-from fitamp.importers import ColumnChoice, read_sweep
+from fitamp.importers.choice import ColumnChoice
+from fitamp.importers.csv_table import read_csv
+from fitamp.importers.source import load_source
 from fitamp.loopgain.pairs import paired
 from fitamp.sweep import Concern, Decision, Origin, Sign, Sweep
 from fitamp.units import si
@@ -28,6 +30,7 @@ __all__ = ["RECEIVER_EXAMPLE", "ReceiverColumns", "loop_from_receivers", "read_r
 
 RECEIVER_EXAMPLE = '"f=1:Hz error_mag=2:dB error_phase=3:deg return_mag=4:dB return_phase=5:deg"'
 _RECEIVERS = ("error", "return")
+_TOUCHSTONE_SUFFIX = re.compile(r"\.(s[0-9]+p|ts)")
 _ITEM = re.compile(r"""\s*(?P<key>[A-Za-z_]+)\s*(?P<rest>=\s*(?:'[^']*'|"[^"]*"|[^\s:'"]+)(?::\S+)?)(?=\s|$)""")
 # One noise number describes a receiver only where the drive is about the same all along; a factor of 2 is 6 dB.
 _STEADY_DRIVE = 2.0
@@ -134,11 +137,17 @@ def read_receivers(
     SweepError
         When the table cannot be read without guessing; what `loop_from_receivers` refuses.
     UsageError
-        When the columns are malformed.
+        When the columns are malformed, or the file is Touchstone.
     """
     chosen = ReceiverColumns.parse(columns) if isinstance(columns, str) else columns
-    error = read_sweep(path, columns=chosen.error, sign=Sign.UNKNOWN, sweep=sweep)
-    returned = read_sweep(path, columns=chosen.returned, sign=Sign.UNKNOWN, sweep=sweep)
+    # Once for both, because standard input cannot be read again.
+    source = load_source(path)
+    if _TOUCHSTONE_SUFFIX.fullmatch(source.suffix):
+        raise UsageError(
+            f"{source.file}: receivers come as a text table; of Touchstone, only .s2p of an opened loop is read"
+        )
+    error = read_csv(source, columns=chosen.error, sweep=sweep)
+    returned = read_csv(source, columns=chosen.returned, sweep=sweep)
     return _ratio(error, returned, sign)
 
 

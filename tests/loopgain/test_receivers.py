@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import io
 from pathlib import Path
 
 import numpy as np
@@ -123,6 +124,19 @@ def test_columns_of_both_receivers_are_understood() -> None:
 def test_columns_that_do_not_say_it_are_refused(columns: str, told: str) -> None:
     with pytest.raises(UsageError, match=told):
         ReceiverColumns.parse(columns)
+
+
+def test_standard_input_is_read_once_for_both(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    content = table(tmp_path, ri_rows(ERROR, RETURN)).read_bytes()
+    monkeypatch.setattr("sys.stdin", io.TextIOWrapper(io.BytesIO(content)))
+    np.testing.assert_allclose(read_receivers("-", columns=RI).gain, GAIN, rtol=1e-11)
+
+
+def test_touchstone_holds_no_receivers(tmp_path: Path) -> None:
+    path = tmp_path / "a.s1p"
+    path.write_text("# Hz S RI R 50\n1 2 3\n", encoding="utf-8")
+    with pytest.raises(UsageError, match=r"a\.s1p: receivers come as a text table"):
+        read_receivers(path, columns=RI)
 
 
 def test_fit_agrees_with_that_of_the_loop_gain_itself() -> None:
