@@ -34,7 +34,8 @@ __all__ = ["read_two_port_loop", "voltage_gain"]
 
 _SUFFIX = ".s2p"
 _TRACES = ("S11", "S12", "S21", "S22")
-# Below this ratio of its roots the loop's own termination is the same after some ten rounds, to a part in 1000.
+# Forward times backward gain, S12·S21/u², is the ratio of the roots; below this the loop's own termination is the same
+# after some ten rounds, to a part in 1000.
 _APART = 0.5
 
 
@@ -154,11 +155,11 @@ def _explained(sweep: Sweep, s: ComplexArray, load: Termination, source: Termina
     larger = _larger_root(s)
     closeness = np.abs(s[:, 0, 1] * s[:, 1, 0] / larger**2)
     if (load.is_loop or source.is_loop) and closeness.max() > _APART:
-        worst = float(sweep.freq_hz[int(np.argmax(closeness))])
+        worst = int(np.argmax(closeness))
         return sweep.with_decision(
             "two-port",
-            "as much goes backward through the loop as forward",
-            f"at {si(worst, 'Hz')} its own termination is not plain; state one with --load",
+            f"forward times backward gain is {closeness[worst]:.2g} at {si(float(sweep.freq_hz[worst]), 'Hz')}",
+            "what the loop itself ends in is not plain where that is near 1; state a termination with --load",
             concern=Concern.CAUTION,
         )
     return sweep

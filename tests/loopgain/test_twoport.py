@@ -154,12 +154,15 @@ def test_inverting_loop_is_turned_round(tmp_path: Path) -> None:
     np.testing.assert_allclose(sweep.gain, expected, rtol=1e-9)
 
 
-def test_as_much_backward_as_forward_is_a_caution(tmp_path: Path) -> None:
+def test_backward_gain_that_counts_is_a_caution(tmp_path: Path) -> None:
     s = scattering((75.0, 75.0), back=3e-5)
     cautions = [
         d for d in read_two_port_loop(written(tmp_path, s), sign=Sign.AS_READ).decisions if d.topic == "two-port"
     ]
     assert [d.concern for d in cautions] == [Concern.CAUTION]
+    assert cautions[0].choice.startswith("forward times backward gain is ")
+    small = read_two_port_loop(written(tmp_path, scattering((75.0, 75.0), back=1e-10)))
+    assert not [d for d in small.decisions if d.concern is Concern.CAUTION]
 
 
 def test_other_files_are_refused(tmp_path: Path) -> None:
