@@ -28,7 +28,7 @@ TINY = 1e-12
 SETTLED, ROUGHLY_SETTLED = 1e-7, 1e-3
 # Steps by expected information suit any start and converge well where the law holds; after so many of them, by the
 # observed one, which converges anywhere near the end.
-EXPECTED_STEPS, MOST_STEPS, HALVINGS = 2, 100, 30
+EXPECTED_STEPS, MOST_STEPS, HALVINGS = 2, 100, 12
 # Share of its diagonal added to an information matrix, which two levels that look alike leave singular.
 RIDGE = 1e-12
 # A second difference so many times its mean square is no noise: it comes once in 160 000 times, and without it the mean
@@ -132,10 +132,14 @@ def _gamma_regression(
     means = now @ columns
     worth = _log_likelihood(target, means)
     for step in range(MOST_STEPS):
-        towards = [_towards_by_scoring] if step < EXPECTED_STEPS else [_towards_by_newton, _towards_by_scoring]
         found = None
-        for method in towards:
-            found = found or _upwards(target, columns, now, worth, towards=method(target, columns, means, now))
+        if step >= EXPECTED_STEPS:
+            found = _upwards(
+                target, columns, now, worth, towards=_towards_by_newton(target, columns, means, now), most=1
+            )
+        if found is None:
+            towards = _towards_by_scoring(target, columns, means, now)
+            found = _upwards(target, columns, now, worth, towards=towards, most=HALVINGS)
         if found is None:
             break
         before = means
@@ -151,12 +155,12 @@ def _log_likelihood(target: FloatArray, means: FloatArray) -> float:
 
 
 def _upwards(
-    target: FloatArray, columns: FloatArray, now: FloatArray, worth: float, *, towards: FloatArray | None
+    target: FloatArray, columns: FloatArray, now: FloatArray, worth: float, *, towards: FloatArray | None, most: int
 ) -> tuple[FloatArray, FloatArray, float] | None:
-    """A point on the way that is at least as likely, with its means and likelihood; None where there is none."""
+    """A point on the way that is at least as likely, with its means and likelihood; None after `most` trials."""
     if towards is None:
         return None
-    for halvings in range(HALVINGS):
+    for halvings in range(most):
         better = now + (towards - now) * 0.5**halvings if halvings else towards
         means = better @ columns
         likelihood = _log_likelihood(target, means)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, field, replace
+from operator import itemgetter
 
 import numpy as np
 
@@ -45,6 +46,8 @@ RACE_TOLERANCE = 1e-7
 # Before the noise is estimated once more, nothing is gained by more digits than this.
 ON_THE_WAY = 1e-9
 RACE_STEPS = 100
+# Relative distance from a sweep at nearly all points within which a solution is near enough to tell its noise.
+NEAR, NEARLY_ALL = 0.2, 0.9
 # A lag below zero by no more than this many standard errors is a lag of about zero.
 NEGATIVE_LAG_SIGMA = 3.0
 # A logarithm known no better than this is one that the sweep does not see.
@@ -118,7 +121,9 @@ class Search:
         ends: list[Solution] = []
         if vectors:
             # One noise for all, or their chi-squares could not be compared.
-            common = self.noise or min((self._noise_about(model, vector) for vector in vectors), key=self._variance)
+            common = self.noise or (also.noise if also is not None and self._is_near(also) else None)
+            if common is None:
+                common = min((self._noise_about(model, vector) for vector in vectors), key=itemgetter(0))[1]
             ends = [
                 solve(model, self.sweep, common, vector, tolerance=RACE_TOLERANCE, max_steps=RACE_STEPS)
                 for vector in vectors
@@ -229,15 +234,24 @@ class Search:
             solution = again
         return solution
 
-    def _noise_about(self, model: TwoPole, values: FloatArray) -> NoiseLevels:
-        return estimate_noise(self.sweep, model.gain(values, self.sweep.freq_hz), set_aside=False)
+    def _is_near(self, solution: Solution) -> bool:
+        """Whether a solution runs along the sweep, so that the scatter about it is the sweep's own."""
+        miss = np.abs(solution.model.gain(solution.values, self.sweep.freq_hz) - self.sweep.gain)
+        return bool(np.quantile(miss / np.abs(self.sweep.gain), NEARLY_ALL) < NEAR)
 
-    def _variance(self, noise: NoiseLevels) -> float:
-        """Typical variance of the loop equation: a start that is far off has its own curvature in the scatter."""
-        gain = self.sweep.gain
-        through = np.abs(1 + gain) ** 2
-        channels = noise.return_channel**2 + np.abs(gain * noise.error_channel) ** 2
-        return float(np.median(channels + (np.abs(gain * noise.relative) ** 2 + noise.ratio**2) / through))
+    def _noise_about(self, model: TwoPole, values: FloatArray) -> tuple[float, NoiseLevels]:
+        """Noise of the scatter about a start, before it minus twice the logarithm of the start's likelihood with it.
+
+        The quietest noise would not do: about a start that is nothing like the sweep it may come out as small as it
+        likes.
+        """
+        gain = model.gain(values, self.sweep.freq_hz)
+        noise = estimate_noise(self.sweep, gain, set_aside=False)
+        measured = self.sweep.gain
+        through = np.abs(1 + measured) ** 2
+        variance = noise.return_channel**2 + np.abs(gain * noise.error_channel) ** 2
+        variance = variance + (np.abs(measured * noise.relative) ** 2 + noise.ratio**2) / through
+        return 2 * float((np.abs(measured - gain) ** 2 / through / variance + np.log(variance)).sum()), noise
 
     def is_sane(self, model: TwoPole, values: FloatArray) -> bool:
         """Whether this can be a loop: in size, and without a far pole on the right nearer than pole 2.
