@@ -15,8 +15,8 @@ from fitamp.elements.result import DerivedQuantities, ElementParasitics
 from fitamp.elements.solving import CircuitSolution
 from fitamp.estimate import NOT_KNOWN, Estimate
 from fitamp.fitting.intervals import DIFFERENCE_STEP, gradient
-from fitamp.margins import closed_loop_step, margins
 from fitamp.transfer import Transfer
+from fitamp.vicinity import Vicinity
 
 __all__ = ["derived_quantities", "element_parasitics"]
 
@@ -37,11 +37,13 @@ def derived_quantities(
     if index is not None:
         # Differences need a resistor on both sides.
         inside[index] = max(inside[index], 2 * DIFFERENCE_STEP)
-    slopes = gradient(lambda vector: _quantities(circuit, vector), inside)
+    near = Vicinity(response=circuit.loaded(inside).transfer())
+    slopes = gradient(lambda vector: _quantities(circuit, vector, near), inside)
     stderrs = np.sqrt(np.maximum(np.einsum("ki,ij,kj->k", slopes, covariance, slopes), 0.0))
+    here = near if np.array_equal(inside, values) else Vicinity(response=circuit.loaded(values).transfer())
     found = {
         name: _estimate(value, float(stderr), quantile, positive=name in POSITIVE)
-        for name, value, stderr in zip(NAMES, _quantities(circuit, values), stderrs, strict=True)
+        for name, value, stderr in zip(NAMES, _quantities(circuit, values, here), stderrs, strict=True)
     }
     for name in NOT_NEGATIVE:
         low, high = found[name].ci95
@@ -58,7 +60,7 @@ def _estimate(value: float | None, stderr: float, quantile: float, *, positive: 
     return Estimate.gaussian(value, stderr, quantile=quantile)
 
 
-def _quantities(circuit: Circuit, values: FloatArray) -> tuple[float | None, ...]:
+def _quantities(circuit: Circuit, values: FloatArray, near: Vicinity) -> tuple[float | None, ...]:
     found = circuit.physical(values)
     gm2, Cc, Rz, Cgd = (found[name] for name in ("gm2", "Cc", "Rz", "Cgd"))
     elements = circuit.loaded(values)
@@ -67,7 +69,7 @@ def _quantities(circuit: Circuit, values: FloatArray) -> tuple[float | None, ...
     numerator, denominator = coefficients(**arguments, beta=elements.beta)
     poles = [abs(pole) for pole in Transfer.from_polynomials(numerator[:1], denominator).poles_hz]
     dc_gain = float(numerator[0])
-    seen, step = margins(response), closed_loop_step(response)
+    seen = near.figures(response)
     return (
         Cc * (Rz - 1 / gm2) - Cgd / gm2,
         gm2 * Rz,
@@ -79,8 +81,8 @@ def _quantities(circuit: Circuit, values: FloatArray) -> tuple[float | None, ...
         seen.crossover_hz,
         seen.phase_margin_deg,
         seen.gain_margin_db,
-        step.overshoot,
-        step.settling_s,
+        seen.overshoot,
+        seen.settling_s,
     )
 
 
