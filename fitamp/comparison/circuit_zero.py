@@ -9,7 +9,7 @@ from __future__ import annotations
 from dataclasses import dataclass, replace
 
 from fitamp.arrays import FloatArray
-from fitamp.comparison.bounded import bounded_estimate
+from fitamp.comparison.bounded import bounded_estimates
 from fitamp.comparison.expectation import POLE2_LN_SD
 from fitamp.comparison.rows import is_far_beyond
 from fitamp.design import Design
@@ -27,9 +27,9 @@ from fitamp.units import si
 
 __all__ = ["CircuitZero", "circuit_zero", "zero_time_of"]
 
-# By so much more chi-square than two poles and a zero leave the circuit misses something of the sweep: a chance of a
-# few thousandths. The two have about as many free numbers.
-MISSED = 10.0
+# By so much more chi-square than two poles and a zero leave, the circuit misses something of the sweep. The two have
+# about as many free numbers, and the noise may be larger than estimated.
+MISSED = 20.0
 # Two answers from the same data are two where they differ by so many standard errors of both.
 APART = 3.0
 
@@ -80,9 +80,8 @@ def circuit_zero(fit: LoopFit, design: Design) -> CircuitZero | str:
     def missing_resistor(values: FloatArray) -> float:
         return (design.zero_time_s - zero_time_of(circuit, values)) / circuit.physical(values)["Cc"]
 
-    zero_time, product, change = (
-        bounded_estimate(function, solution, quantile=quantile)
-        for function in (lambda values: zero_time_of(circuit, values), nulling_product, missing_resistor)
+    zero_time, product, change = bounded_estimates(
+        (lambda values: zero_time_of(circuit, values), nulling_product, missing_resistor), solution, quantile=quantile
     )
     found = CircuitZero(
         estimate=estimate,
