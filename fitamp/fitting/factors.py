@@ -15,7 +15,7 @@ import numpy as np
 
 from fitamp.arrays import ComplexArray, FloatArray
 
-__all__ = ["Doublet", "Factor", "RangeStep", "Resonance", "doublets_at", "peak_of", "resonances_at"]
+__all__ = ["Doublet", "Factor", "FurtherPole", "RangeStep", "Resonance", "doublets_at", "peak_of", "resonances_at"]
 
 # Lower quality is too broad to be told from the amplifier's own roots.
 LEAST_QUALITY = 1.5
@@ -107,6 +107,30 @@ class Doublet:
         zero, pole = values.tolist()
         near = zero * pole > 0 and 1 / WIDEST_DOUBLET < zero / pole < WIDEST_DOUBLET
         return bool(near and _are_between(self.roots_hz(values), low_hz, high_hz))
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class FurtherPole:
+    """A real pole beside those of the model; value: its time over `time_s`."""
+
+    time_s: float
+    parts: ClassVar[tuple[str, ...]] = ("pole",)
+
+    def factor_and_derivatives(self, values: FloatArray, s: ComplexArray) -> tuple[ComplexArray, ComplexArray]:
+        """Factor of the loop gain, shape (n,), and the derivative of its logarithm, shape (n, 1)."""
+        x = s * self.time_s
+        below = 1 + values[0] * x
+        return 1 / below, np.asarray((-x / below)[:, np.newaxis])
+
+    def roots_hz(self, values: FloatArray) -> tuple[Roots, Roots]:
+        """The pole as s-plane root over 2π."""
+        value = float(values[0])
+        return ((complex(-1 / (2 * np.pi * value * self.time_s)),) if value else ()), ()
+
+    def is_likely(self, values: FloatArray, low_hz: float, high_hz: float) -> bool:
+        """Whether the pole is stable and inside the band; above it, it is a lag as any other."""
+        poles, _ = self.roots_hz(values)
+        return all(pole.real < 0 and low_hz < abs(pole) < high_hz for pole in poles) and bool(poles)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass, replace
 
+from fitamp.fitting.adequacy import judge
 from fitamp.fitting.orders import needs_more, with_factors
 from fitamp.fitting.screen import screened
 from fitamp.fitting.search import FREE_DELAY, FREE_FAR_POLE, Search
@@ -70,6 +71,15 @@ def found_by(
     any_lag = None
     if not lag_is_known:
         solution, any_lag = search.plain_or_with_lag(solution)
+        if screens and any_lag is not None and not judge(solution).adequate:
+            # Where a lag was missing, its misfit hid bad points.
+            rest = screened(search.sweep, any_lag, search.noise, whole=whole, fewest=fewest)
+            if rest is not search.sweep and rest is not whole:
+                other = replace(search, sweep=rest)
+                cleaned = other.plain_or_with_lag(other.plain())
+                # If not all of it: a step, say, makes its neighbours look bad.
+                if judge(cleaned[0]).adequate:
+                    search, (solution, any_lag) = other, cleaned
     if solution.noise.relative <= HOPELESS_SCATTER and needs_more(solution):
         solution, any_lag = with_factors(search, solution, any_lag)
     found = Found(sweep=search.sweep, solution=solution, any_lag=any_lag)

@@ -18,7 +18,7 @@ from fitamp.fitting.derive import (
     fitted_range_steps,
     fitted_roots,
 )
-from fitamp.fitting.factors import Doublet, Resonance
+from fitamp.fitting.factors import Doublet, FurtherPole, Resonance
 from fitamp.fitting.finding import HOPELESS_SCATTER, found_by
 from fitamp.fitting.intervals import RISE_95, estimate_by_curvature, hull, is_excluded
 from fitamp.fitting.result import LoopFit
@@ -134,6 +134,7 @@ def fit_sweep(
         resonant_zeros=resonant_zeros,
         doublet_poles=doublet_poles,
         doublet_zeros=doublet_zeros,
+        further_poles=fitted_factor_roots(solution, covariance, FurtherPole)[0],
         range_steps=fitted_range_steps(solution, covariance, quantile),
         margins=margins,
         adequacy=adequacy,

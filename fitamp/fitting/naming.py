@@ -7,7 +7,7 @@ from itertools import permutations, product
 import numpy as np
 
 from fitamp.arrays import FloatArray
-from fitamp.fitting.factors import Doublet
+from fitamp.fitting.factors import Doublet, FurtherPole
 from fitamp.fitting.two_pole import Solution, TwoPole, solve
 from fitamp.sweep import Sweep
 
@@ -23,6 +23,7 @@ def named(solution: Solution, sweep: Sweep) -> Solution:
     The likelihood does not tell which pole is pole 2. A design expects pole 2 and the third pole somewhere; without
     one, the pole and the zero that are closest together are taken for what was added.
     """
+    solution = _swapped(solution, sweep)
     model = solution.model
     doublets = [index for index, factor in enumerate(model.factors) if isinstance(factor, Doublet)]
     times_s = _pole_times(model, solution.values)
@@ -53,6 +54,39 @@ def named(solution: Solution, sweep: Sweep) -> Solution:
     renamed = solve(model, sweep, solution.noise, min(choices, key=lambda choice: choice[0])[1])
     as_good = renamed.optimum.chi_square < solution.optimum.chi_square + AS_GOOD
     return renamed if as_good and renamed.optimum.converged else solution
+
+
+def _swapped(solution: Solution, sweep: Sweep) -> Solution:
+    """The same response with pole 2 and a single further pole exchanged, where the design expects it so."""
+    model = solution.model
+    singles = [index for index, factor in enumerate(model.factors) if isinstance(factor, FurtherPole)]
+    times_s = _pole_times(model, solution.values)
+    if model.pole2 is None or not singles or times_s is None or len(times_s) < 2:
+        return solution
+    index = singles[-1]
+    factor = model.factors[index]
+    assert isinstance(factor, FurtherPole)
+    own = list(model.factor_values(solution.values))
+    further_s = float(own[index][0]) * factor.time_s
+    second_s = float(times_s[1])
+    if not 0 < further_s < times_s[0] or abs(np.log(further_s / model.pole2.time_s)) >= abs(
+        np.log(second_s / model.pole2.time_s)
+    ):
+        return solution
+    g, q, _, zero_time_s, far_pole_s, delay_s = model.physical(solution.values)
+    new_q = 1 / (float(times_s[0]) + further_s)
+    base = model.vector(
+        g=g / q * new_q,
+        q=new_q,
+        b=float(times_s[0]) * further_s * new_q,
+        zero_time_s=zero_time_s,
+        far_pole_s=far_pole_s,
+        delay_s=delay_s,
+    )
+    own[index] = np.array([second_s / factor.time_s])
+    swapped = solve(model, sweep, solution.noise, np.concatenate([base, *own]))
+    as_good = swapped.optimum.chi_square < solution.optimum.chi_square + AS_GOOD
+    return swapped if as_good and swapped.optimum.converged else solution
 
 
 def _pole_times(model: TwoPole, values: FloatArray) -> FloatArray | None:

@@ -17,7 +17,7 @@ import numpy as np
 from fitamp.arrays import ComplexArray, FloatArray
 from fitamp.conditioning.steps import step_at
 from fitamp.fitting.adequacy import judge
-from fitamp.fitting.factors import Doublet, Factor, RangeStep, Resonance
+from fitamp.fitting.factors import Doublet, Factor, FurtherPole, RangeStep, Resonance
 from fitamp.fitting.naming import named
 from fitamp.fitting.scan import scanned_starts
 from fitamp.fitting.search import (
@@ -54,10 +54,14 @@ BEYOND = 4.0
 
 # Share of the misfit that may be left by factors that do not make the model adequate.
 WORTH_SHOWING = 0.1
+# Of a resonance, as a share of the distance from point to point.
+LEAST_WIDTH = 0.1
 # Points beside the place of a step over which chi-square may rise before it falls.
 FARTHEST_BESIDE = 3
 # A step that the whole sweep asks for must also be seen by the points around it: two components exceed this in 1 of 90.
 STEP_SIGMA = 3.0
+
+LN_B = 2
 
 Start = tuple[Factor, FloatArray]
 
@@ -197,7 +201,9 @@ def _one_more(search: Search, solution: Solution) -> list[Solution]:
     for end in sorted(ends, key=lambda end: end.optimum.chi_square + _price(search, end.model.factors[-1])):
         best.setdefault(type(end.model.factors[-1]), end)
     settled = (named(search.settled(_stepped(search, end)), search.sweep) for end in best.values())
-    return [end for end in settled if _is_likely(search, end) and _shows_its_step(search, end)]
+    return [
+        end for end in settled if _is_likely(search, end) and _shows_its_step(search, end) and _leaves_pole2_alone(end)
+    ]
 
 
 def _raced_from(search: Search, solution: Solution) -> list[Solution]:
@@ -248,6 +254,23 @@ def _stepped(search: Search, solution: Solution) -> Solution:
             elif abs(index - at) > FARTHEST_BESIDE:
                 break
     return best
+
+
+def _leaves_pole2_alone(solution: Solution) -> bool:
+    """Whether no added pole lies nearer to where the design expects pole 2 than pole 2 itself.
+
+    Then the names would be wrong, and so would be what is said of the zero.
+    """
+    model = solution.model
+    if model.pole2 is None:
+        return True
+    own = abs(solution.values[LN_B] - np.log(model.pole2.time_s))
+    for factor, values in zip(model.factors, model.factor_values(solution.values), strict=True):
+        if isinstance(factor, Doublet | FurtherPole):
+            time_s = abs(values[-1]) * factor.time_s
+            if not time_s or abs(np.log(time_s / model.pole2.time_s)) < own:
+                return False
+    return True
 
 
 def _shows_its_step(search: Search, solution: Solution) -> bool:
@@ -306,6 +329,20 @@ def _is_likely(search: Search, solution: Solution, beyond: float = 1.0) -> bool:
         and search.is_sane(model, solution.values)
         and all(
             factor.is_likely(own, search.sweep.f_min_hz / beyond, search.sweep.f_max_hz * beyond)
+            and not _is_between_points(search, factor, own)
             for factor, own in zip(model.factors, model.factor_values(solution.values), strict=True)
         )
     )
+
+
+def _is_between_points(search: Search, factor: Factor, values: FloatArray) -> bool:
+    """Whether a resonance is so narrow that it passes through a single point: that is a bad point, not a resonance."""
+    if not isinstance(factor, Resonance):
+        return False
+    freq_hz = search.sweep.freq_hz
+    for root in (root for roots in factor.roots_hz(values) for root in roots):
+        at = int(np.clip(np.searchsorted(freq_hz, abs(root)), 1, len(freq_hz) - 1))
+        spacing = np.log(freq_hz[at] / freq_hz[at - 1])
+        if 2 * abs(root.real) / abs(root) < LEAST_WIDTH * spacing:
+            return True
+    return False

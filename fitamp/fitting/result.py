@@ -57,6 +57,7 @@ class WarningCode(StrEnum):
     OUTLYING_POINTS = "outlying-points"
     RESONANCE = "resonance"
     DOUBLET = "doublet"
+    FURTHER_POLE = "further-pole"
     RANGE_STEP = "range-step"
     UNSTABLE_ROOT = "unstable-root"
     DELAY_NOT_STATED = "delay-not-stated"
@@ -148,6 +149,7 @@ class LoopFit:
     resonant_poles, resonant_zeros : roots of resonances beside the two poles and the zero, empty where none was needed;
         of each pair the upper half first
     doublet_poles, doublet_zeros : real pole-zero pairs beside them, in the same order
+    further_poles : single real poles beside them, inside the band
     range_steps : steps of a receiver's range that were fitted; they are the bench's and not in `response`
     solution : parameter vector, covariance and residuals, for those who derive further quantities
     quantile : Student's t by which 95 % intervals are wider than a standard error
@@ -163,6 +165,7 @@ class LoopFit:
     resonant_zeros: tuple[Root, ...]
     doublet_poles: tuple[Root, ...]
     doublet_zeros: tuple[Root, ...]
+    further_poles: tuple[Root, ...]
     range_steps: tuple[FittedStep, ...]
     margins: FittedMargins
     adequacy: Adequacy
@@ -178,13 +181,14 @@ class LoopFit:
     @property
     def model_name(self) -> str:
         """Name of the model in reports and JSON."""
-        return RICHER_MODEL_NAME if self.resonant_poles or self.doublet_poles else MODEL_NAME
+        return RICHER_MODEL_NAME if self.resonant_poles or self.doublet_poles or self.further_poles else MODEL_NAME
 
     @property
     def named_poles(self) -> tuple[tuple[str, Root], ...]:
         """Every pole with its name; the third is named so wherever it was fitted, in band or above."""
         names = [f"pole {count}" for count in range(1, len(self.poles) + 1)]
-        return _named(names, self.poles, self.resonant_poles, self.doublet_poles)
+        named = _named(names, self.poles, self.resonant_poles, self.doublet_poles)
+        return (*named, *(("further pole", pole) for pole in self.further_poles))
 
     @property
     def named_zeros(self) -> tuple[tuple[str, Root], ...]:

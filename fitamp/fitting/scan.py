@@ -14,7 +14,7 @@ from typing import TypeVar
 import numpy as np
 
 from fitamp.arrays import ComplexArray, FloatArray
-from fitamp.fitting.factors import Doublet, Factor, RangeStep, Resonance
+from fitamp.fitting.factors import Doublet, Factor, FurtherPole, RangeStep, Resonance
 from fitamp.fitting.leastsq import interleaved
 from fitamp.fitting.two_pole import Solution, loop_equation
 from fitamp.sweep import Sweep
@@ -40,7 +40,7 @@ Numbers = TypeVar("Numbers", FloatArray, ComplexArray)
 
 
 def scanned_starts(solution: Solution, sweep: Sweep) -> Iterator[tuple[Factor, FloatArray]]:
-    """Starts for one more factor: a doublet, resonances of the two likeliest qualities, a range step."""
+    """Starts for one more factor: a doublet, a pole, resonances of the two likeliest qualities, a range step."""
     scan = _Scan(solution, sweep)
     low_hz, high_hz = sweep.f_min_hz, sweep.f_max_hz
     places_hz = _places(low_hz, high_hz, DOUBLETS_PER_DECADE)
@@ -48,6 +48,7 @@ def scanned_starts(solution: Solution, sweep: Sweep) -> Iterator[tuple[Factor, F
     at = int(np.argmax(gains))
     ratio = float(np.exp(np.clip(sizes[at, 0], -LARGEST_DOUBLET, LARGEST_DOUBLET) / 2))
     yield Doublet(time_s=1 / (2 * np.pi * places_hz[at])), np.array([ratio, 1 / ratio])
+    yield FurtherPole(time_s=1 / (2 * np.pi * high_hz)), np.array([0.5])
     seen = []
     for quality in QUALITIES:
         places_hz = _places(low_hz, high_hz, np.log(10) * quality * PLACES_PER_WIDTH)

@@ -166,10 +166,19 @@ def further_roots(fit: LoopFit) -> list[FitWarning]:
     for pole, zero in zip(fit.doublet_poles, fit.doublet_zeros, strict=True):
         message = (
             f"two poles and a zero were not enough: a pole at {si(abs(pole.value_hz), 'Hz')} with a zero at "
-            f"{si(abs(zero.value_hz), 'Hz')} was fitted beside them, as of a current mirror or a second path; without "
-            "a design file which of the poles is pole 2 goes by nearness"
+            f"{si(abs(zero.value_hz), 'Hz')} was fitted beside them, as of a current mirror or a second path"
         )
+        if fit.solution.model.pole2 is None:
+            message += (
+                "; without a design file which of the poles is pole 2, and which zero the Miller zero, is a guess"
+            )
         found.append(FitWarning(code=WarningCode.DOUBLET, message=message))
+    for pole in fit.further_poles:
+        message = (
+            f"two poles and a zero were not enough: a further pole at {si(abs(pole.value_hz), 'Hz')} was fitted beside "
+            "them; look for a node of the chip or fixture that was not designed to be so slow"
+        )
+        found.append(FitWarning(code=WarningCode.FURTHER_POLE, message=message))
     for name, pole in fit.named_poles:
         if pole.value_hz.real > 0 and pole.value_hz.imag >= 0:
             message = (

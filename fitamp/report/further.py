@@ -19,6 +19,8 @@ def further_sentences(fit: LoopFit) -> Iterator[str]:
         yield f"resonance: poles at {_distance(pole)} (Q = {quality:.3g}), zeros at {_distance(zero)}"
     for pole, zero in zip(fit.doublet_poles, fit.doublet_zeros, strict=True):
         yield f"doublet: pole at {_distance(pole)}, zero at {_distance(zero)}"
+    for pole in fit.further_poles:
+        yield f"further pole: at {_distance(pole)}"
     for step in fit.range_steps:
         size, turn = text_of("size_db", step.size_db), text_of("turn_deg", step.turn_deg)
         yield f"range step: at {si(step.f_hz, 'Hz')} by {size} and {turn}, taken off above it"
@@ -30,6 +32,7 @@ def model_in_words(fit: LoopFit) -> str:
     for count, one, many in (
         (len(fit.resonant_poles) // 2, "a resonance", "resonances"),
         (len(fit.doublet_poles), "a further pole and zero", "further pole-zero pairs"),
+        (len(fit.further_poles), "a further pole", "further poles"),
         (len(fit.range_steps), "a range step", "range steps"),
     ):
         if count:

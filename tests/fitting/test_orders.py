@@ -139,3 +139,22 @@ def test_points_on_a_resonance_come_back_once_it_is_known() -> None:
     fit = fit_sweep(Sweep(freq_hz=freq_hz, gain=gain))
     assert [point.f_hz for point in fit.sweep.left_out] == [freq_hz[glitch]]
     check_roots(fit, true)
+
+
+def test_a_further_pole_in_band_is_not_taken_for_pole_2_where_a_design_expects_that() -> None:
+    """Pole 2 and zero were once taken for a doublet, the further pole for pole 2, and the zero for one at infinity."""
+    true = loop((-40e6,))
+    sweep = Sweep(freq_hz=FREQ_HZ, gain=simulate_bench(true.evaluate(FREQ_HZ), NOISE, np.random.default_rng(9)))
+    prior = Pole2Prior(time_s=1 / (2 * np.pi * 66e6), ln_sd=np.log(2))
+    fit = fit_sweep(sweep, pole2=prior, far_pole=FarPolePrior(), delay=DelayPrior())
+    assert [name for name, _ in fit.named_poles] == ["pole 1", "pole 2", "further pole"]
+    assert WarningCode.FURTHER_POLE in {warning.code for warning in fit.warnings}
+    check_roots(fit, true)
+
+
+def test_a_bad_point_is_no_resonance() -> None:
+    """A resonance narrower than the distance between points can be bent through any single one."""
+    gain = simulate_bench(loop().evaluate(FREQ_HZ), NOISE, np.random.default_rng(10))
+    gain[250] *= 1.3
+    fit = fit_sweep(Sweep(freq_hz=FREQ_HZ, gain=gain), keep_all=True)
+    assert not fit.resonant_poles
