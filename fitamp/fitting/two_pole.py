@@ -140,7 +140,7 @@ class TwoPole:
 
     def gain(self, values: FloatArray, freq_hz: FloatArray) -> ComplexArray:
         """Loop gain of a parameter vector, shape (n,)."""
-        return self.gain_and_derivatives(values, freq_hz)[0]
+        return self.gain_and_log_slopes(values, Grid.over(freq_hz, self.known))[0]
 
     def gain_and_derivatives(self, values: FloatArray, freq_hz: FloatArray) -> tuple[ComplexArray, ComplexArray]:
         """Loop gain, shape (n,), and its derivatives by the parameters, shape (n, p)."""
