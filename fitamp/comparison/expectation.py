@@ -162,11 +162,7 @@ def fit_with_design(
     moved = mirror_moved(design)
     if moved is None:
         return fit
-    # With one noise for all and the same points, or a change of weights would pass for an effect of the mirror.
-    higher, lower = (
-        fit_sweep(fit.sweep, noise=fit.noise, keep_all=True, **expectation(other).as_arguments()) for other in moved
-    )
-    return widened_by_mirror(fit, higher, lower)
+    return widened_by_mirror(fit, [expectation(other).known for other in moved])
 
 
 def designed_as_measured(design: Design, fit: LoopFit) -> LoopFit | None:

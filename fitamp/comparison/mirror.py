@@ -9,13 +9,17 @@ fitted with the pole one standard deviation off to either side, and each quantit
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import replace
 from typing import TypeVar
 
 from fitamp.design import Design
 from fitamp.estimate import Estimate
 from fitamp.fitting import FittedMargins, FittedParameters, LoopFit
+from fitamp.fitting.derive import fitted_margins, fitted_parameters
 from fitamp.fitting.statements import place_of_zero
+from fitamp.fitting.two_pole import solve
+from fitamp.transfer import Transfer
 
 __all__ = ["mirror_moved", "widened_by_mirror"]
 
@@ -39,24 +43,43 @@ def mirror_moved(design: Design) -> tuple[Design, Design] | None:
     return higher, lower
 
 
-def widened_by_mirror(fit: LoopFit, higher: LoopFit, lower: LoopFit) -> LoopFit:
-    """The fit with every estimate's error widened by what moving the mirror pole does to it."""
-    parameters = _widened(fit.parameters, higher.parameters, lower.parameters)
-    margins = _widened(fit.margins, higher.margins, lower.margins)
+def widened_by_mirror(fit: LoopFit, known: Sequence[Transfer | None]) -> LoopFit:
+    """The fit with every estimate's error widened by what moving the mirror pole does to it.
+
+    known : the known factors of the moved designs
+    """
+    moved = [_moved(fit, factor) for factor in known]
+    parameters = _widened(fit.parameters, [parameters for parameters, _ in moved])
+    margins = _widened(fit.margins, [margins for _, margins in moved])
     zero = place_of_zero(parameters, margins, parameters.zero_time_s, fit.adequacy)
     return replace(fit, parameters=parameters, margins=margins, zero=zero)
 
 
-def _widened(all_of: Estimates, higher: Estimates, lower: Estimates) -> Estimates:
+def _moved(fit: LoopFit, known: Transfer | None) -> tuple[FittedParameters, FittedMargins]:
+    """The same model with another known factor, from where the fit ended, under the same noise.
+
+    A search of its own might put a pole or a resonance where the mirror is off its place; a change of noise would pass
+    for an effect of the mirror.
+    """
+    model = replace(fit.solution.model, known=known)
+    solution = solve(model, fit.sweep, fit.noise, fit.solution.values)
+    covariance = solution.covariance * fit.adequacy.inflation
+    return (
+        fitted_parameters(solution, fit.sweep, fit.adequacy, fit.quantile),
+        fitted_margins(solution, covariance, fit.quantile, known),
+    )
+
+
+def _widened(all_of: Estimates, others: Sequence[Estimates]) -> Estimates:
     moved = {
-        name: _with_shift(estimate, getattr(higher, name), getattr(lower, name)) for name, estimate in all_of.items()
+        name: _with_shift(estimate, [getattr(other, name) for other in others]) for name, estimate in all_of.items()
     }
     return replace(all_of, **moved)
 
 
-def _with_shift(estimate: Estimate, higher: Estimate, lower: Estimate) -> Estimate:
-    """Ends moved outwards by the larger of the two shifts, in quadrature; untouched where there is no value."""
-    values = [moved.value for moved in (higher, lower) if moved.value is not None]
+def _with_shift(estimate: Estimate, others: Sequence[Estimate]) -> Estimate:
+    """Ends moved outwards by the largest of the shifts, in quadrature; untouched where there is no value."""
+    values = [moved.value for moved in others if moved.value is not None]
     if estimate.value is None or estimate.stderr is None or not values:
         return estimate
     value = estimate.value
