@@ -3,11 +3,11 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 
 import numpy as np
 
-from fitamp.arrays import FloatArray, frozen_float
+from fitamp.arrays import ComplexArray, FloatArray, frozen_float
 from fitamp.estimate import Estimate, Known
 from fitamp.fitting.adequacy import Adequacy
 from fitamp.fitting.factors import Factor, RangeStep
@@ -15,10 +15,12 @@ from fitamp.fitting.intervals import (
     Profile,
     estimate_by_profile,
     estimates_by_curvature,
+    estimates_by_slopes,
     gradient,
     profile,
 )
 from fitamp.fitting.result import FittedMargins, FittedParameters, FittedStep, Root
+from fitamp.fitting.root_slopes import pole_slopes, quantity_slopes, zero_slopes
 from fitamp.fitting.two_pole import Solution, TwoPole
 from fitamp.sweep import Sweep
 from fitamp.transfer import Transfer
@@ -52,9 +54,12 @@ def fitted_parameters(solution: Solution, sweep: Sweep, adequacy: Adequacy, quan
     def quantity(index: int) -> Callable[[FloatArray], float | None]:
         return lambda values: _quantities(model, values)[index]
 
-    gain, gain_bandwidth, first, second, zero, split = estimates_by_curvature(
-        lambda values: _quantities(model, values),
-        solution.values,
+    found = _quantities(model, solution.values)
+    gain, gain_bandwidth, first, second, zero, split = estimates_by_slopes(
+        found,
+        quantity_slopes(
+            model, solution.values, dc_gain=found[DC_GAIN] or 0.0, poles_hz=_sorted_poles(model, solution.values)
+        ),
         covariance,
         quantile=quantile,
         positive=(True, True, True, True, False, False),
@@ -86,7 +91,11 @@ def fitted_parameters(solution: Solution, sweep: Sweep, adequacy: Adequacy, quan
 def fitted_roots(solution: Solution, covariance: FloatArray) -> tuple[tuple[Root, ...], tuple[Root, ...]]:
     """Poles and zeros of the fitted response, each with the covariance of (re, im) where its error is not larger."""
     model, values = solution.model, solution.values
-    return _roots(model, values, covariance, _sorted_poles), _roots(model, values, covariance, _zeros)
+    poles, zeros = _sorted_poles(model, values), model.response(values).zeros_hz
+    return (
+        _with_errors(poles, pole_slopes(model, values, poles), covariance),
+        _with_errors(zeros, zero_slopes(model, values, zeros), covariance),
+    )
 
 
 def fitted_factor_roots(
@@ -196,10 +205,6 @@ def _sorted_poles(model: TwoPole, values: FloatArray) -> tuple[complex, ...]:
     return tuple(sorted(response.poles_hz, key=lambda pole: (abs(pole), pole.imag)))
 
 
-def _zeros(model: TwoPole, values: FloatArray) -> tuple[complex, ...]:
-    return model.response(values).zeros_hz
-
-
 def _quantities(model: TwoPole, values: FloatArray) -> tuple[float | None, ...]:
     """T(0), gain-bandwidth, pole 1 and pole 2 (Hz), zero time and the split τz − a2/a1 (s)."""
     g, q, b, zero_time_s, *_ = model.physical(values)
@@ -210,7 +215,7 @@ def _quantities(model: TwoPole, values: FloatArray) -> tuple[float | None, ...]:
 
 
 def _roots(model: TwoPole, values: FloatArray, covariance: FloatArray, roots: RootFinder) -> tuple[Root, ...]:
-    """Each root with the covariance of (re, im), where its error is not larger than itself."""
+    """Roots with their errors by differences."""
     found = roots(model, values)
     if not found:
         return ()
@@ -220,10 +225,18 @@ def _roots(model: TwoPole, values: FloatArray, covariance: FloatArray, roots: Ro
         return [*near, *[None] * (2 * len(found))][: 2 * len(found)]
 
     slopes = gradient(parts, values)
-    spreads = [half @ covariance @ half.T for half in np.split(slopes, len(found))]
-    # A trace that is no number: a difference did not exist; below 0: rounding of a huge variance. Then the root is
-    # there, its error is not.
-    return tuple(
-        Root(value_hz=root, covariance=frozen_float(spread) if 0 <= np.trace(spread) < abs(root) ** 2 else None)
-        for root, spread in zip(found, spreads, strict=True)
-    )
+    return _with_errors(found, slopes[0::2] + 1j * slopes[1::2], covariance)
+
+
+def _with_errors(roots: Sequence[complex], slopes: ComplexArray, covariance: FloatArray) -> tuple[Root, ...]:
+    """Each root with the covariance of (re, im), where its error is not larger than itself."""
+    found = []
+    for root, slope in zip(roots, slopes, strict=True):
+        parts = np.stack([slope.real, slope.imag])
+        with np.errstate(all="ignore"):
+            spread = parts @ covariance @ parts.T
+        # No number where there is no derivative; below 0 by rounding of a huge variance: the root is there, its error
+        # is not.
+        known = 0 <= np.trace(spread) < abs(root) ** 2
+        found.append(Root(value_hz=root, covariance=frozen_float(spread) if known else None))
+    return tuple(found)

@@ -26,6 +26,7 @@ __all__ = [
     "estimate_by_curvature",
     "estimate_by_profile",
     "estimates_by_curvature",
+    "estimates_by_slopes",
     "gradient",
     "hull",
     "is_excluded",
@@ -72,9 +73,22 @@ def estimates_by_curvature(
     quantities: Quantities, values: FloatArray, covariance: FloatArray, *, quantile: float, positive: Sequence[bool]
 ) -> tuple[Estimate, ...]:
     """Value, standard error and interval of k derived quantities; `positive` ones get an interval in the logarithm."""
-    found = quantities(values)
-    slopes = gradient(quantities, values)
-    stderrs = np.sqrt(np.maximum(np.einsum("ki,ij,kj->k", slopes, covariance, slopes), 0.0))
+    return estimates_by_slopes(
+        quantities(values), gradient(quantities, values), covariance, quantile=quantile, positive=positive
+    )
+
+
+def estimates_by_slopes(
+    found: Sequence[float | None],
+    slopes: FloatArray,
+    covariance: FloatArray,
+    *,
+    quantile: float,
+    positive: Sequence[bool],
+) -> tuple[Estimate, ...]:
+    """`estimates_by_curvature` of k values with known derivatives by the parameters, shape (k, p)."""
+    with np.errstate(all="ignore"):  # a slope may be infinite or no number: then the error is not known
+        stderrs = np.sqrt(np.maximum(np.einsum("ki,ij,kj->k", slopes, covariance, slopes), 0.0))
     return tuple(
         _estimate(value, float(stderr), quantile, keeps_sign)
         for value, stderr, keeps_sign in zip(found, stderrs, positive, strict=True)
