@@ -15,6 +15,7 @@ from fitamp.comparison.verdict import advise, describes, judge_nulling
 from fitamp.design import Design
 from fitamp.elements import ElementEstimate
 from fitamp.errors import UsageError
+from fitamp.estimate import Estimate
 from fitamp.fitting import LoopFit
 from fitamp.sweep import NoiseLevels, Sweep
 
@@ -55,16 +56,12 @@ def compare(sweep: Sweep, design: Design, *, noise: NoiseLevels | None = None, k
     circuit = None if design.elements is None else circuit_zero(fit, design)
     if isinstance(circuit, CircuitZero) and circuit.doubt is None:
         return _by_circuit(circuit, fit, designed_fit, design)
-    if isinstance(circuit, CircuitZero):
-        return _by_behaviour(fit, designed_fit, design, elements=circuit.estimate, doubt=circuit.doubt)
-    return _by_behaviour(fit, designed_fit, design, elements=None, doubt=circuit)
+    return _by_behaviour(fit, designed_fit, design, circuit)
 
 
 def _by_circuit(circuit: CircuitZero, fit: LoopFit, designed_fit: LoopFit | None, design: Design) -> Comparison:
     verdict = judge_circuit(circuit, fit, design)
-    rows = comparison_rows(
-        fit, designed_fit, design, verdict.window, trusted=describes(fit), zero_time=verdict.zero_time_s
-    )
+    rows = comparison_rows(fit, designed_fit, design, verdict.window, trusted=describes(fit), verdict=verdict)
     return Comparison(
         design=design,
         fit=fit,
@@ -79,18 +76,22 @@ def _by_circuit(circuit: CircuitZero, fit: LoopFit, designed_fit: LoopFit | None
 
 
 def _by_behaviour(
-    fit: LoopFit,
-    designed_fit: LoopFit | None,
-    design: Design,
-    *,
-    elements: ElementEstimate | None,
-    doubt: str | None,
+    fit: LoopFit, designed_fit: LoopFit | None, design: Design, circuit: CircuitZero | str | None
 ) -> Comparison:
-    verdict = judge_nulling(fit, design)
+    """circuit : in doubt; or why there is none; None where there are no elements"""
+    elements: ElementEstimate | None = None
+    others: list[Estimate] = []
+    doubt = None
+    if isinstance(circuit, CircuitZero):
+        elements, doubt, other = circuit.estimate, circuit.doubt, circuit.of_other_set
+        others = [] if other is None else [circuit.zero_time_s, other]
+    else:
+        doubt = circuit
+    verdict = judge_nulling(fit, design, others=others)
     designed_zero_s = design.zero_time_s
     if designed_fit is not None and designed_fit.parameters.zero_time_s.value is not None:
         designed_zero_s = designed_fit.parameters.zero_time_s.value
-    rows = comparison_rows(fit, designed_fit, design, verdict.window, trusted=describes(fit))
+    rows = comparison_rows(fit, designed_fit, design, verdict.window, trusted=describes(fit), verdict=verdict)
     return Comparison(
         design=design,
         fit=fit,

@@ -6,30 +6,39 @@ the design's spreads, where two poles and a zero have them as designed.
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass, replace
+
+import numpy as np
 
 from fitamp.arrays import FloatArray
 from fitamp.comparison.bounded import bounded_estimates
 from fitamp.comparison.expectation import POLE2_LN_SD
+from fitamp.comparison.other_side import other_side, zero_time_of
 from fitamp.comparison.rows import is_far_beyond
+from fitamp.comparison.zero_profile import followed
 from fitamp.design import Design
-from fitamp.elements import Circuit, Condition, ElementEstimate, ElementNoteCode, ElementParasitics, estimate_elements
+from fitamp.elements import Condition, ElementEstimate, ElementNoteCode, ElementParasitics, estimate_elements
 from fitamp.elements.derived import element_parasitics
 from fitamp.elements.residual import Measured
 from fitamp.elements.search import RACE_TOLERANCE, floored
 from fitamp.elements.solving import CircuitSolution, residuals_at, solve
 from fitamp.errors import FitampError
-from fitamp.estimate import Estimate
+from fitamp.estimate import NOT_KNOWN, Estimate
 from fitamp.fitting import LoopFit
 from fitamp.fitting.adequacy import Adequacy, judge
+from fitamp.fitting.intervals import hull
 from fitamp.fitting.result import text_of
 from fitamp.units import si
 
-__all__ = ["CircuitZero", "circuit_zero", "zero_time_of"]
+__all__ = ["CircuitZero", "circuit_zero"]
 
 # By so much more chi-square than two poles and a zero leave, the circuit misses something of the sweep. The two have
 # about as many free numbers, and the noise may be larger than estimated.
 MISSED = 20.0
+# Below this standard error, as a share of Cc/gm2, the zero time is as good as linear in all that may move it.
+SURELY_STRAIGHT = 0.01
+TWO_SETS = "two sets of elements describe the sweep equally well"
 # Two answers from the same data are two where they differ by so many standard errors of both.
 APART = 3.0
 
@@ -43,6 +52,8 @@ class CircuitZero:
     adequacy : of that
     zero_time_s, gm2_rz : Cc·(Rz − 1/gm2) − Cgd/gm2, and gm2·Rz, of this part
     rz_change_ohm : change of Rz that puts this part's zero at the designed place; rz_ohm : its resistor as estimated
+    is_split : whether a zero in the other half plane, with another delay, describes the sweep as well; the three
+        estimates then hold both
     parasitics : capacitance that nobody designed
     doubt : why not to lean on all this, in words; None where there is no doubt
     """
@@ -54,8 +65,18 @@ class CircuitZero:
     gm2_rz: Estimate
     rz_change_ohm: Estimate
     rz_ohm: float
+    is_split: bool
     parasitics: ElementParasitics
     doubt: str | None
+
+    @property
+    def of_other_set(self) -> Estimate | None:
+        """Zero time of the other set of elements that describes the sweep as well, about as certain; None without."""
+        other = self.estimate.other_valley
+        if other is None or self.zero_time_s.stderr is None:
+            return None
+        zero_time_s = other.zero_time_s - other.Cgd / other.gm2
+        return Estimate.gaussian(zero_time_s, self.zero_time_s.stderr, quantile=self.estimate.quantile)
 
 
 def circuit_zero(fit: LoopFit, design: Design) -> CircuitZero | str:
@@ -71,6 +92,28 @@ def circuit_zero(fit: LoopFit, design: Design) -> CircuitZero | str:
     except FitampError as error:
         return f"no circuit could be fitted: {error}"
     solution, quantile = _with_free_load(estimate), estimate.quantile
+    zero_time, product, change = _zero(solution, design, quantile)
+    other = other_side(solution)
+    if other is not None:
+        seen = (zero_time, product, change)
+        zero_time, product, change = map(hull, seen, _zero(other, design, quantile))
+    found = CircuitZero(
+        estimate=estimate,
+        solution=solution,
+        adequacy=judge(solution.residuals_of(0), fit.sweep.freq_hz),
+        zero_time_s=zero_time,
+        gm2_rz=product,
+        rz_change_ohm=change,
+        rz_ohm=max(solution.circuit.physical(solution.values)["Rz"], 0.0),
+        is_split=other is not None,
+        parasitics=element_parasitics(solution, quantile=quantile),
+        doubt=None,
+    )
+    return replace(found, doubt=_doubt(found, fit, design))
+
+
+def _zero(solution: CircuitSolution, design: Design, quantile: float) -> tuple[Estimate, Estimate, Estimate]:
+    """Zero time, gm2·Rz, and the change of Rz that puts the zero at the designed place."""
     circuit = solution.circuit
 
     def nulling_product(values: FloatArray) -> float:
@@ -83,24 +126,46 @@ def circuit_zero(fit: LoopFit, design: Design) -> CircuitZero | str:
     zero_time, product, change = bounded_estimates(
         (lambda values: zero_time_of(circuit, values), nulling_product, missing_resistor), solution, quantile=quantile
     )
-    found = CircuitZero(
-        estimate=estimate,
-        solution=solution,
-        adequacy=judge(solution.residuals_of(0), fit.sweep.freq_hz),
-        zero_time_s=zero_time,
-        gm2_rz=product,
-        rz_change_ohm=change,
-        rz_ohm=max(circuit.physical(solution.values)["Rz"], 0.0),
-        parasitics=element_parasitics(solution, quantile=quantile),
-        doubt=None,
+    is_curved = circuit.index("Rz") is not None and solution.unbounded is None
+    if not is_curved or (zero_time.stderr or 0.0) < SURELY_STRAIGHT * _bare_zero_time_s(design):
+        return zero_time, product, change
+    zero_time = followed(zero_time, solution, quantile=quantile)
+    found = circuit.physical(solution.values)
+    rate, inverse = found["gm2"] / found["Cc"], 1 / found["Cc"]
+    # Of given gm2 and Cc both are straight in the zero time.
+    product = _straight_in(
+        zero_time, rate, product, abs((product.value or 0.0) - 1) * _sd_of_ratio(solution, "gm2", "Cc"), quantile
     )
-    return replace(found, doubt=_doubt(found, fit, design))
+    change = _straight_in(
+        zero_time, -inverse, change, abs(change.value or 0.0) * _sd_of_ratio(solution, "Cc"), quantile
+    )
+    return zero_time, product, change
 
 
-def zero_time_of(circuit: Circuit, values: FloatArray) -> float:
-    """Zero time in s of a vector; Rz may be below 0."""
-    found = circuit.physical(values)
-    return found["Cc"] * (found["Rz"] - 1 / found["gm2"]) - found["Cgd"] / found["gm2"]
+def _straight_in(zero_time: Estimate, slope: float, linear: Estimate, own_sd: float, quantile: float) -> Estimate:
+    """A quantity that follows the zero time with a slope, and has a standard deviation of its own beside it."""
+    if zero_time.value is None or zero_time.stderr is None or linear.value is None:
+        return NOT_KNOWN
+    low_s, high_s = zero_time.ci95
+    assert low_s is not None
+    assert high_s is not None
+    reaches = sorted((slope * (low_s - zero_time.value), slope * (high_s - zero_time.value)))
+    below, above = (math.hypot(reach, quantile * own_sd) for reach in reaches)
+    return Estimate(
+        value=linear.value,
+        stderr=math.hypot(slope * zero_time.stderr, own_sd),
+        ci95=(linear.value - below, linear.value + above),
+    )
+
+
+def _sd_of_ratio(solution: CircuitSolution, *names: str) -> float:
+    """Standard deviation of the logarithm of the first number, over the second where there are two."""
+    weights = np.zeros(len(solution.values))
+    for name, sign in zip(names, (1.0, -1.0), strict=False):
+        index = solution.circuit.index(name)
+        if index is not None:
+            weights[index] = sign
+    return math.sqrt(max(float(weights @ solution.covariance @ weights), 0.0))
 
 
 def _with_free_load(estimate: ElementEstimate) -> CircuitSolution:
@@ -123,12 +188,12 @@ def _doubt(found: CircuitZero, fit: LoopFit, design: Design) -> str | None:
     if not found.solution.optimum.converged or ElementNoteCode.NOT_CONVERGED in notes:
         return "the search for the elements did not settle"
     if found.estimate.other_valley is not None:
-        return "two sets of elements describe the sweep equally well"
+        return TWO_SETS
     if ElementNoteCode.FACTOR_TAKEN_OVER in notes:
         return "what is there beside the amplifier (a resonance, a doublet, a range step) is not the circuit's"
     if not found.adequacy.adequate:
         return f"the circuit does not describe the sweep: {found.adequacy.sentence}"
-    if (found.zero_time_s.stderr or 0.0) > _bare_zero_time_s(design):
+    if not found.zero_time_s.is_measured or (found.zero_time_s.stderr or 0.0) > _bare_zero_time_s(design):
         return "the circuit leaves the zero open"
     pole2_hz = _pole2_hz(found.solution)
     if is_far_beyond(pole2_hz, design):
@@ -157,8 +222,10 @@ def _contradiction(found: CircuitZero, fit: LoopFit, design: Design) -> str | No
         return f"the circuit leaves more of the sweep unexplained than two poles and a zero do, chi-square +{more:.0f}"
     theirs, ours = fit.parameters.zero_time_s, found.zero_time_s
     assert design.elements is not None
-    # An overlap capacitor is exactly as designed in the fit, whose zero time then is surer than it can be.
-    if design.elements.Cgd or not fit.adequacy.adequate or not (theirs.is_measured and ours.is_measured):
+    # Overlap capacitor and mirror are as designed in the fit, which makes up for theirs by the zero.
+    if design.elements.Cgd or design.elements.mirror_pole_hz is not None or not fit.adequacy.adequate:
+        return None
+    if not (theirs.is_measured and ours.is_measured):
         return None
     assert theirs.value is not None
     assert theirs.stderr is not None

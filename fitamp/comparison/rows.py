@@ -8,7 +8,7 @@ from dataclasses import replace
 import numpy as np
 
 from fitamp.arrays import FloatArray
-from fitamp.comparison.result import Row, Window
+from fitamp.comparison.result import Route, Row, Verdict, Window
 from fitamp.design import Design
 from fitamp.estimate import Estimate, Known
 from fitamp.fitting import LoopFit
@@ -92,19 +92,22 @@ def comparison_rows(
     window: Window,
     *,
     trusted: bool = True,
-    zero_time: Estimate | None = None,
+    verdict: Verdict | None = None,
 ) -> tuple[Row, ...]:
     """One row a quantity, in a fixed order; of a fit that is not trusted none is said to be inside or outside.
 
-    zero_time : by the circuit, where that decides. The circuit is exact, and measures the designed zero as designed
+    verdict : whose zero time is the one that counts; the fit's where None
     """
     exact, measured = designed_values(design), measured_values(fit)
     as_measured = (
         {} if designed_fit is None else {name: one.value for name, one in measured_values(designed_fit).items()}
     )
     sure = {name for name in QUANTITIES if trusted}
-    if zero_time is not None:
-        measured["zero_time_s"], as_measured["zero_time_s"] = zero_time, design.zero_time_s
+    if verdict is not None:
+        measured["zero_time_s"] = verdict.zero_time_s
+    if verdict is not None and verdict.route is Route.CIRCUIT:
+        # The circuit is exact, and measures the designed zero as designed.
+        as_measured["zero_time_s"] = design.zero_time_s
         sure.add("zero_time_s")
     rows = []
     for quantity in QUANTITIES:

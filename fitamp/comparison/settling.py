@@ -7,8 +7,9 @@ from collections.abc import Mapping
 import numpy as np
 
 from fitamp.arrays import FloatArray
-from fitamp.comparison.circuit_zero import CircuitZero, zero_time_of
+from fitamp.comparison.circuit_zero import CircuitZero
 from fitamp.comparison.mirror import mirror_moved
+from fitamp.comparison.other_side import zero_time_of
 from fitamp.comparison.rows import designed_poles_hz
 from fitamp.design import Design
 from fitamp.elements.circuit import BENCH_DELAY, BENCH_LOAD, MIRROR_POLE
@@ -66,6 +67,8 @@ def what_settles_circuit(found: CircuitZero, fit: LoopFit, design: Design) -> st
     """The measurement, by the covariance of the circuit's elements."""
     if fit.parameters.pole2_hz.known is not Known.MEASURED:
         return _wider_band(design)
+    if found.is_split:
+        return DELAY
     circuit, covariance = found.solution.circuit, found.solution.covariance
     slopes = gradient(lambda values: (zero_time_of(circuit, values),), found.solution.values)[0]
 

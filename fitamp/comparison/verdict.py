@@ -8,6 +8,7 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 from dataclasses import replace
+from functools import reduce
 
 import numpy as np
 
@@ -17,6 +18,7 @@ from fitamp.comparison.settling import hidden_pole, what_settles
 from fitamp.design import Design, HalfPlane
 from fitamp.estimate import NOT_KNOWN, Estimate, Known
 from fitamp.fitting import LoopFit
+from fitamp.fitting.intervals import hull
 from fitamp.fitting.result import LABELS, text_of
 from fitamp.units import si, si_with_error
 
@@ -109,10 +111,15 @@ def place_among(zero_time: Estimate, design: Design, window: Window) -> tuple[Nu
     return (whole[0] if whole else Nulling.UNDECIDED), touched
 
 
-def judge_nulling(fit: LoopFit, design: Design) -> Verdict:
-    """Verdict of a fit made with the design's priors."""
+def judge_nulling(fit: LoopFit, design: Design, *, others: Sequence[Estimate] = ()) -> Verdict:
+    """Verdict of a fit made with the design's priors.
+
+    others : zero times that describe the sweep as well; the verdict is on all together
+    """
     window = window_of(design)
     zero_time = fit.parameters.zero_time_s
+    if zero_time.is_measured:
+        zero_time = reduce(hull, others, zero_time)
     if not describes(fit):
         nulling = Nulling.UNDECIDED
         reason = (
