@@ -1,7 +1,7 @@
 #!/usr/bin/env python3
 """Verdicts on simulated dies whose true zero is known: how often right, wrong and undecided.
 
-    python scripts/dies.py [--dies 500] [--near 500] [--seed 1] [--jobs 2]
+    python scripts/dies.py [--dies 500] [--near 1000] [--seed 1] [--jobs 2]
 
 The dies are invented: the elements of data_examples/line_buffer.toml, each off by 6 % (one standard deviation), the
 resistor in turn intact, missing, 30 %, at gm2·Rz = 1 and 2.2 times. The exact third-order circuit is swept from 10 Hz
@@ -100,7 +100,7 @@ def parser() -> argparse.ArgumentParser:
         prog="dies", description=__doc__, formatter_class=argparse.RawDescriptionHelpFormatter
     )
     made.add_argument("--dies", type=partial(whole, least=0), default=500, help="with resistors in turn (default 500)")
-    made.add_argument("--near", type=partial(whole, least=0), default=500, help="near limits (default 500)")
+    made.add_argument("--near", type=partial(whole, least=0), default=1000, help="near limits (default 1000)")
     made.add_argument("--seed", type=partial(whole, least=0), default=1, help="of elements and noise (default 1)")
     made.add_argument("--jobs", type=partial(whole, least=1), default=2, help="processes (default 2)")
     return made

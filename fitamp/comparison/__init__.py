@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import replace
 
 from fitamp.comparison.by_circuit import advise_by_circuit, judge_circuit, parasitics_by_circuit
-from fitamp.comparison.circuit_zero import CircuitZero, circuit_zero
+from fitamp.comparison.circuit_zero import CircuitZero, zero_by_circuit
 from fitamp.comparison.expectation import designed_as_measured, fit_with_design
 from fitamp.comparison.notes import comparison_notes
 from fitamp.comparison.parasitic import parasitics
@@ -53,7 +53,7 @@ def compare(sweep: Sweep, design: Design, *, noise: NoiseLevels | None = None, k
         sweep = replace(sweep, noise=noise)  # for every fit of this sweep, the notes' too
     fit = fit_with_design(sweep, design, keep_all=keep_all)
     designed_fit = designed_as_measured(design, fit)
-    circuit = None if design.elements is None else circuit_zero(fit, design)
+    circuit = None if design.elements is None else zero_by_circuit(fit, design)
     if isinstance(circuit, CircuitZero) and circuit.doubt is None:
         return _by_circuit(circuit, fit, designed_fit, design)
     return _by_behaviour(fit, designed_fit, design, circuit)

@@ -31,7 +31,7 @@ from fitamp.fitting.intervals import hull
 from fitamp.fitting.result import text_of
 from fitamp.units import si
 
-__all__ = ["CircuitZero", "circuit_zero"]
+__all__ = ["CircuitZero", "zero_by_circuit"]
 
 # By so much more chi-square than two poles and a zero leave, the circuit misses something of the sweep. The two have
 # about as many free numbers, and the noise may be larger than estimated.
@@ -79,7 +79,7 @@ class CircuitZero:
         return Estimate.gaussian(zero_time_s, self.zero_time_s.stderr, quantile=self.estimate.quantile)
 
 
-def circuit_zero(fit: LoopFit, design: Design) -> CircuitZero | str:
+def zero_by_circuit(fit: LoopFit, design: Design) -> CircuitZero | str:
     """Fit the circuit to the sweep of a fit; words on why, where there is no circuit to be had.
 
     Parameters
@@ -97,6 +97,9 @@ def circuit_zero(fit: LoopFit, design: Design) -> CircuitZero | str:
     if other is not None:
         seen = (zero_time, product, change)
         zero_time, product, change = map(hull, seen, _zero(other, design, quantile))
+    low, high = product.ci95
+    if low is not None:
+        product = replace(product, ci95=(max(low, 0.0), high))
     found = CircuitZero(
         estimate=estimate,
         solution=solution,
