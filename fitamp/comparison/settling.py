@@ -8,11 +8,12 @@ import numpy as np
 
 from fitamp.arrays import FloatArray
 from fitamp.comparison.circuit_zero import CircuitZero
+from fitamp.comparison.expectation import far_pole_time
 from fitamp.comparison.mirror import mirror_moved
 from fitamp.comparison.other_side import zero_time_of
 from fitamp.comparison.rows import designed_poles_hz
 from fitamp.design import Design
-from fitamp.elements.circuit import BENCH_DELAY, BENCH_LOAD, MIRROR_POLE
+from fitamp.elements.circuit import BENCH_DELAY, MIRROR_POLE
 from fitamp.estimate import Known
 from fitamp.fitting import LoopFit
 from fitamp.fitting.intervals import gradient
@@ -27,6 +28,10 @@ OVERLAP = "the overlap capacitor decides: state a tighter spread for Cgd"
 THIRD_POLE = (
     "the third pole decides: state tighter spreads for C1, CL, Cc and gm2 (or pole3), or sweep up to where the third "
     "pole shows"
+)
+# The circuit's load is free, whatever its spread.
+CIRCUITS_THIRD_POLE = (
+    "the third pole decides: state tighter spreads for C1, Cc and gm2, or sweep up to where the third pole shows"
 )
 # What has at least this share of the variance decides.
 DECIDES = 0.5
@@ -69,34 +74,41 @@ def what_settles_circuit(found: CircuitZero, fit: LoopFit, design: Design) -> st
         return _wider_band(design)
     if found.is_split:
         return DELAY
-    circuit, covariance = found.solution.circuit, found.solution.covariance
-    slopes = gradient(lambda values: (zero_time_of(circuit, values),), found.solution.values)[0]
+    circuit, values = found.solution.circuit, found.solution.values
+    zero_time_s = zero_time_of(circuit, values)
 
-    def share(*names: str) -> float:
-        known = [index for index, name in enumerate(circuit.names) if name in names]
-        return _share_of(known, slopes, covariance)
+    def far_pole_s(vector: FloatArray) -> float:
+        # At this very zero time: through Rz the third pole follows the zero, whatever makes that uncertain.
+        return far_pole_time(circuit.loaded(vector), zero_time_s)
+
+    slopes, third = gradient(lambda vector: (zero_time_of(circuit, vector), far_pole_s(vector)), values)
+    # What has a sentence of its own is not asked for twice.
+    third[[index for index, name in enumerate(circuit.names) if name in ("Cgd", "CL")]] = 0.0
+    along = found.solution.covariance @ slopes
+    total = float(along @ slopes)
+
+    def share_of(other: FloatArray) -> float:
+        """Share of the zero time's variance that goes if a number with these slopes were known: by regression."""
+        variance = float(other @ found.solution.covariance @ other)
+        return float(along @ other) ** 2 / (variance * total) if variance and total else 0.0
+
+    def share(name: str) -> float:
+        return share_of(np.array([float(other == name) for other in circuit.names]))
 
     return _decider(
         {
+            _wider_band(design, "the load decides, whatever its spread"): share("CL"),
             MIRROR: share(MIRROR_POLE),
             OVERLAP: share("Cgd"),
             DELAY: share(BENCH_DELAY),
-            THIRD_POLE: share("C1", "CL", "Cc", "gm2", BENCH_LOAD),
+            CIRCUITS_THIRD_POLE: share_of(third),
         }
     )
 
 
-def _share_of(known: list[int], slopes: FloatArray, covariance: FloatArray) -> float:
-    """Share of a function's variance that goes if these numbers were known: by their regression (JCGM 102:2011)."""
-    along = slopes @ covariance
-    explained = along[known] @ np.linalg.pinv(covariance[np.ix_(known, known)]) @ along[known]
-    total = float(along @ slopes)
-    return float(explained) / total if known and total else 0.0
-
-
-def _wider_band(design: Design) -> str:
+def _wider_band(design: Design, why: str = "the band does not determine pole 2") -> str:
     wanted = si(3 * designed_poles_hz(design)[1], "Hz", digits=2)
-    return f"the band does not determine pole 2: sweep up to a few times pole 2, about {wanted}"
+    return f"{why}: sweep up to a few times pole 2, about {wanted}"
 
 
 def _decider(shares: Mapping[str, float]) -> str:

@@ -285,9 +285,10 @@ def test_an_undecided_sentence_names_the_measurement_that_would_settle_it(
     tight = {"C1": 0.001, "CL": 0.001, "Cc": 0.001, "gm2": 0.001, "R1": 0.001, "R2": 0.001}
     spreads = SPREADS if bench.load_spread else SPREADS | tight
     design = Design.from_elements(NOMINAL, spreads=spreads, bench=bench, limits=LIMITS)
-    comparison = compare(measured(NOMINAL, 33, freq_hz=np.geomspace(10, f_max_hz, 121)), design)
-    assert comparison.verdict.nulling is Nulling.UNDECIDED
-    assert words in comparison.verdict.reason
+    sweep = measured(NOMINAL, 33, freq_hz=np.geomspace(10, f_max_hz, 121))
+    verdict = judge_nulling(fit_with_design(sweep, design), design)
+    assert verdict.nulling is Nulling.UNDECIDED
+    assert words in verdict.reason
 
 
 def test_settling_what_the_sentence_names_settles_the_verdict() -> None:
