@@ -45,7 +45,7 @@ def loop_figure(fit: LoopFit, comparison: Comparison | None = None) -> Figure:
         Adds the designed response with the bench's load and delay, the limits, and the verdict.
     """
     with drawing_style():
-        measured = measured_marks(fit)
+        measured = measured_marks(fit, comparison)
         designed = designed_marks(comparison.design) if comparison is not None else ()
         low_hz, high_hz = _view(fit, measured, designed)
         rows = lane_rows(measured, designed, low_hz, high_hz, PANEL_IN, further=further_marks(fit))

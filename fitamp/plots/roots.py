@@ -12,7 +12,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from fitamp.arrays import FloatArray
-from fitamp.comparison import Comparison
+from fitamp.comparison import Comparison, Route
 from fitamp.comparison.rows import designed_values
 from fitamp.design import Design
 from fitamp.estimate import Estimate
@@ -93,8 +93,8 @@ def _zero_hz(zero_time_s: float) -> float:
     return -1 / (2 * math.pi * zero_time_s)
 
 
-def measured_marks(fit: LoopFit) -> tuple[Mark, ...]:
-    """The fitted poles, numbered from the origin outwards, then the zero.
+def measured_marks(fit: LoopFit, comparison: Comparison | None = None) -> tuple[Mark, ...]:
+    """The fitted poles, numbered from the origin outwards, then the zero, by the circuit where the verdict rests on it.
 
     Pole 1 and 2 are there also where only a bound is known. Other roots that lie beyond the sweep without an error of
     their own are what the model needs for its shape, not what the sweep shows: they are left out.
@@ -110,7 +110,10 @@ def measured_marks(fit: LoopFit) -> tuple[Mark, ...]:
             poles.append(_pole(f"pole {index + 1}", estimate, text_of(quantity, estimate)))
         elif is_seen:
             poles.append(_far_pole(f"pole {index + 1}", root, fit))
-    return (*poles, _measured_zero(fit))
+    if comparison is not None and comparison.verdict.route is Route.CIRCUIT:
+        return (*poles, _measured_zero(comparison.verdict.zero_time_s, is_undecided=False))
+    is_undecided = fit.zero.half_plane is ZeroPlace.UNDECIDED
+    return (*poles, _measured_zero(fit.parameters.zero_time_s, is_undecided=is_undecided))
 
 
 def _is_seen(root: Root, index: int, fit: LoopFit) -> bool:
@@ -200,15 +203,14 @@ def _pair(root: Root) -> Mark:
     )
 
 
-def _measured_zero(fit: LoopFit) -> Mark:
-    zero_time = fit.parameters.zero_time_s
+def _measured_zero(zero_time: Estimate, *, is_undecided: bool) -> Mark:
     regions = zero_regions_hz(zero_time)
     through_infinity = len(regions) == 2
     value = complex(_zero_hz(zero_time.value)) if zero_time.value else None
     side = ""
     if regions and not through_infinity:
         side = "left" if regions[0][0] < 0 else "right"
-    if side and fit.zero.half_plane is ZeroPlace.UNDECIDED:
+    if side and is_undecided:
         side = f"{side}, if nothing else lags"
     if through_infinity:
         words = f"beyond {si(-regions[0][1], 'Hz', digits=3)} left or {si(regions[1][0], 'Hz', digits=3)} right"

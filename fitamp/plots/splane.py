@@ -45,7 +45,7 @@ def splane_figure(fit: LoopFit, comparison: Comparison | None = None) -> Figure:
     infinity reaches both edges.
     """
     with drawing_style():
-        measured = measured_marks(fit)
+        measured = measured_marks(fit, comparison)
         designed = designed_marks(comparison.design) if comparison is not None else ()
         if any(mark.is_pair for mark in (*measured, *designed)):
             return draw_pairs(fit, comparison, measured, designed, further_marks(fit))

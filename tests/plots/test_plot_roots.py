@@ -9,6 +9,7 @@ import numpy as np
 import pytest
 from drawn_parts import comparison_of, fit_of_pair
 
+from fitamp.comparison import Route
 from fitamp.design import Design, HalfPlane, Roots
 from fitamp.estimate import NOT_KNOWN, Estimate, Known
 from fitamp.fitting import LoopFit
@@ -77,6 +78,16 @@ def test_measured_marks_carry_value_and_error() -> None:
     assert marks["pole 1"].words.endswith("kHz")
     assert marks["zero"].label == "zero (right)"
     assert "±" in marks["zero"].words
+
+
+def test_the_zero_is_the_one_that_the_verdict_rests_on() -> None:
+    comparison = comparison_of(1300)
+    verdict = replace(comparison.verdict, zero_time_s=Estimate.gaussian(1e-9, 1e-12, quantile=1.96))
+    by_circuit = measured_marks(comparison.fit, replace(comparison, verdict=verdict))[-1]
+    # 1/(2π·1 ns) is 159.15 MHz.
+    assert by_circuit.value_hz == pytest.approx(-159.15e6, rel=1e-4)
+    by_behaviour = replace(comparison, verdict=replace(verdict, route=Route.BEHAVIOUR))
+    assert measured_marks(comparison.fit, by_behaviour) == measured_marks(comparison.fit)
 
 
 def _with_poles(*roots: Root, far_pole_s: tuple[float | None, float | None] = (None, None)) -> LoopFit:

@@ -48,7 +48,7 @@ def test_region_of_the_zero_is_its_interval_of_zero_times() -> None:
 
 def test_region_through_infinity_reaches_both_edges() -> None:
     comparison = comparison_of(625)  # gm2·Rz = 1 sends the zero to infinity (common practice)
-    low, high = comparison.fit.parameters.zero_time_s.ci95
+    low, high = comparison.verdict.zero_time_s.ci95
     assert low is not None
     assert high is not None
     assert low < 0 < high
